@@ -1,0 +1,185 @@
+package report
+
+import (
+	"fmt"
+	"strings"
+	"time"
+
+	"gaugelog/analysis"
+	"gaugelog/config"
+)
+
+// builder carries what every section needs.
+type builder struct {
+	r    *analysis.Result
+	rig  *config.Rig
+	u    units
+	zone *time.Location
+}
+
+func (b *builder) title() string {
+	if b.r.Run.Title != "" {
+		return b.r.Run.Title
+	}
+	return "Sag test"
+}
+
+func (b *builder) subtitle() string {
+	return fmt.Sprintf("Sag test, %s to %s, %s readings",
+		b.local(b.r.Run.First), b.local(b.r.Run.Last), grouped(fmt.Sprint(b.r.Run.Readings)))
+}
+
+// answers is the first page: what a client asks, in words and numbers.
+func (b *builder) answers() Section {
+	t := Table{
+		Columns: []Column{{Name: "Question", Text: true}, {Name: "Answer", Text: true}, {Name: "How sure, and on what terms", Text: true}},
+	}
+	add := func(q, a, sure string) { t.Rows = append(t.Rows, []string{q, a, sure}) }
+	b.answerStiff(add)
+	b.answerSag(add)
+	b.answerCreep(add)
+	b.answerForecast(add)
+	b.answerTrouble(add)
+	return Section{ID: "answers", Title: "In short", Blocks: []Block{t}}
+}
+
+func (b *builder) answerStiff(add func(q, a, s string)) {
+	s := b.r.Stiffness
+	after := span(s.InitialAfterS)
+	if s.Modulus == nil {
+		add("How stiff is it?", "not measured", b.whyMissing("modulus"))
+		return
+	}
+	f := b.figure(*s.Modulus)
+	sure := "standard uncertainty " + percentU(s.Modulus)
+	if f.expanded != "" {
+		sure = "± " + f.expanded + " " + f.unit + " for 95 % (k = " + f.k + ")"
+	}
+	add("How stiff is it?", "E = "+f.value+" "+f.unit, sure+"; "+after+" after full load, so it holds the creep of that time; "+b.shearWords())
+}
+
+// shearWords says where the shear stiffness behind E comes from.
+func (b *builder) shearWords() string {
+	switch b.r.Stiffness.ShearFrom {
+	case "test":
+		return "shear told apart by the test"
+	case "prior":
+		return "shear taken from a stated assumption"
+	}
+	return "shear not separated"
+}
+
+func (b *builder) answerSag(add func(q, a, s string)) {
+	c := b.r.Creep
+	if len(c.After) == 0 {
+		return
+	}
+	var a []string
+	for _, p := range c.After {
+		a = append(a, b.short(&p.Sag)+" at "+span(p.AfterS))
+	}
+	last := c.After[len(c.After)-1]
+	add("How far did it sag?", strings.Join(a, ", "),
+		fmt.Sprintf("gauge %s, step %s, from full load, net of support movement; u = %s %s at the last", c.Gauge, c.Step, b.cellU(&last.Sag), b.u.of("mm")))
+}
+
+func (b *builder) answerCreep(add func(q, a, s string)) {
+	c := b.r.Creep
+	if n, ok := c.Parameters["n"]; ok && c.Model == "power" {
+		last := ""
+		for _, p := range c.After {
+			if p.Coefficient != nil {
+				last = "creep coefficient " + b.short(p.Coefficient) + " at " + span(p.AfterS) + ", "
+			}
+		}
+		add("How does it creep?", last+"time exponent n = "+b.short(&n), "against the sag "+span(c.InitialAfterS)+" after full load of the same step; "+b.stageWords())
+	}
+	if len(c.Recovery) > 0 {
+		p := c.Recovery[len(c.Recovery)-1]
+		share := p.Recovered
+		share.Value *= 100
+		if share.U != nil {
+			u := *share.U * 100
+			share.U = &u
+		}
+		share.Unit, share.K, share.U95 = "%", nil, nil
+		add("Did it come back?", b.short(&share)+" of the sag, "+span(p.AfterS)+" after unloading", "left then: "+b.with(&p.Residual))
+	}
+}
+
+func (b *builder) stageWords() string {
+	switch b.r.Creep.Stage {
+	case "primary":
+		return "the creep is slowing down (primary)"
+	case "secondary":
+		return "the creep is steady (secondary)"
+	case "tertiary":
+		return "THE CREEP IS SPEEDING UP (tertiary): clear the area, do not go near to check"
+	}
+	return "no stage could be told"
+}
+
+func (b *builder) answerForecast(add func(q, a, s string)) {
+	for _, f := range b.r.Creep.Forecast {
+		q := "How far after " + span(f.AfterS) + "?"
+		if f.Sag == nil || f.Lo95 == nil || f.Hi95 == nil {
+			add(q, "no figure", f.Refused)
+			continue
+		}
+		factor, unit := b.u.convert("mm")
+		d := decimalsFor((*f.Hi95 - *f.Lo95) * factor / 4)
+		add(q, b.short(f.Sag), fmt.Sprintf("%s to %s %s for 95 %%; %s decades beyond the data: %s",
+			fixed(*f.Lo95*factor, d), fixed(*f.Hi95*factor, d), unit, fixed(f.Decades, 2), forecastWords(f.Label)))
+	}
+	if m := b.r.Creep.MayStop; len(m) > 0 {
+		var parts []string
+		for _, s := range m {
+			parts = append(parts, span(s.MoreS)+" more: "+b.short(&s.ForecastWidth))
+		}
+		add("May we stop?", "width of the forecast's 95 % band with "+strings.Join(parts, ", "), "from how the band shrinks with time; the decision is the engineer's")
+	}
+}
+
+func forecastWords(label string) string {
+	switch label {
+	case "plain":
+		return "within half a decade"
+	case "caution":
+		return "use with caution"
+	case "informative":
+		return "informative, not for acceptance"
+	}
+	return label
+}
+
+func (b *builder) answerTrouble(add func(q, a, s string)) {
+	n := len(b.r.Disturbances)
+	if n == 0 {
+		add("Was it disturbed?", "no disturbance found", "searched in every gauge")
+		return
+	}
+	counts := map[string]int{}
+	var kinds []string
+	for _, d := range b.r.Disturbances {
+		if counts[d.Kind]++; counts[d.Kind] == 1 {
+			kinds = append(kinds, d.Kind)
+		}
+	}
+	for i, k := range kinds {
+		kinds[i] = fmt.Sprintf("%s (%d)", k, counts[k])
+	}
+	add("Was it disturbed?", strings.Join(kinds, ", "), "each is listed with how it was treated")
+}
+
+// whyMissing finds the warning that explains a missing figure.
+func (b *builder) whyMissing(code string) string {
+	for _, w := range b.r.Warnings {
+		if strings.Contains(w.Code, code) {
+			return w.Text
+		}
+	}
+	if len(b.r.Warnings) > 0 {
+		return b.r.Warnings[0].Text
+	}
+	return "the readings do not allow it"
+}

@@ -1,0 +1,90 @@
+package report
+
+import (
+	"bytes"
+	_ "embed"
+	"fmt"
+	"html/template"
+	"io"
+	"regexp"
+
+	"gonum.org/v1/plot/vg"
+	"gonum.org/v1/plot/vg/draw"
+	"gonum.org/v1/plot/vg/vgsvg"
+)
+
+//go:embed page.html
+var page string
+
+//go:embed page.css
+var style string
+
+var pageTemplate = template.Must(template.New("report").Funcs(template.FuncMap{
+	"kind":  kindOf,
+	"svg":   svgOf,
+	"label": columnLabel,
+	"add":   func(a, b int) int { return a + b },
+}).Parse(page))
+
+// HTML writes the document as one self-contained page: style and plots
+// inline, no script, nothing fetched.
+func HTML(w io.Writer, d *Document) error {
+	var buf bytes.Buffer
+	err := pageTemplate.Execute(&buf, struct {
+		*Document
+		Style template.CSS
+	}{d, template.CSS(style)})
+	if err != nil {
+		return fmt.Errorf("report page: %w", err)
+	}
+	_, err = w.Write(buf.Bytes())
+	return err
+}
+
+// kindOf names a block for the template.
+func kindOf(b Block) string {
+	switch b.(type) {
+	case Paragraph:
+		return "paragraph"
+	case List:
+		return "list"
+	case Table:
+		return "table"
+	case Figure:
+		return "figure"
+	}
+	panic(fmt.Sprintf("report: unknown block %T", b))
+}
+
+func columnLabel(c Column) string {
+	if c.Unit == "" {
+		return c.Name
+	}
+	return c.Name + ", " + c.Unit
+}
+
+var (
+	svgHead = regexp.MustCompile(`(?s)^.*?<svg [^>]*viewBox="([^"]*)"[^>]*>`)
+	svgFont = regexp.MustCompile(`font-family:[^;"]*`)
+)
+
+// svgOf draws a figure as inline SVG that scales to the page and uses a stack
+// of metric-compatible fonts in place of an embedded one.
+func svgOf(f Figure) (template.HTML, error) {
+	w, h := vg.Length(f.Width)*vg.Millimeter, vg.Length(f.Height)*vg.Millimeter
+	c := vgsvg.New(w, h)
+	f.Plot.Draw(draw.New(c))
+	var buf bytes.Buffer
+	if _, err := c.WriteTo(&buf); err != nil {
+		return "", fmt.Errorf("plot %s: %w", f.ID, err)
+	}
+	head := svgHead.FindSubmatch(buf.Bytes())
+	if head == nil {
+		return "", fmt.Errorf("plot %s: no viewBox in its SVG", f.ID)
+	}
+	body := buf.Bytes()[len(head[0]):]
+	body = svgFont.ReplaceAll(body, []byte(`font-family:Liberation Sans,Arimo,Helvetica,Arial,sans-serif`))
+	open := fmt.Sprintf(`<svg xmlns="http://www.w3.org/2000/svg" role="img" aria-label="%s" viewBox="%s">`,
+		template.HTMLEscapeString(f.Alt), head[1])
+	return template.HTML(open + string(body)), nil
+}

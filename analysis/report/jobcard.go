@@ -1,0 +1,113 @@
+package report
+
+import (
+	"fmt"
+	"strings"
+
+	"gaugelog/config"
+)
+
+// jobCard says what hung where: specimen, supports, gauges, loads.
+func (b *builder) jobCard() Section {
+	s := Section{ID: "job", Title: "What was tested"}
+	if b.rig == nil {
+		return s
+	}
+	s.Blocks = append(s.Blocks, b.specimenTable(), b.placesTable(), b.gaugeTable())
+	return s
+}
+
+func (b *builder) specimenTable() Table {
+	g := b.rig
+	t := Table{Caption: "Specimen and test", Columns: []Column{{Name: "Item", Text: true}, {Name: "As recorded", Text: true}}}
+	add := func(k, v string) {
+		if v != "" {
+			t.Rows = append(t.Rows, []string{k, v})
+		}
+	}
+	add("Specimen", g.Specimen.Name)
+	add("Material", g.Specimen.Material)
+	add("Section", sectionWords(g.Specimen.Section))
+	add("Length", g.Specimen.Length.Shown)
+	if g.Specimen.Mass != nil {
+		add("Mass", g.Specimen.Mass.Shown)
+	}
+	add("Test", g.Test.ID)
+	add("Purpose", g.Test.Purpose)
+	add("Operator", g.Test.Operator)
+	for _, d := range g.Details {
+		add(d.Name, d.Text)
+	}
+	add("Gravity", b.with(&b.r.Run.Gravity))
+	return t
+}
+
+func sectionWords(s config.Section) string {
+	parts := []string{s.Shape}
+	for _, d := range []struct {
+		name string
+		list []config.Length
+	}{{"width", s.Width}, {"depth", s.Depth}, {"diameter", s.Diameter}, {"wall", s.Wall}} {
+		if len(d.list) == 0 {
+			continue
+		}
+		var shown []string
+		for _, l := range d.list {
+			shown = append(shown, l.Shown)
+		}
+		parts = append(parts, d.name+" "+strings.Join(shown, ", "))
+	}
+	if s.SecondMoment != nil {
+		parts = append(parts, "second moment of area "+s.SecondMoment.Shown)
+	}
+	if s.U != nil {
+		parts = append(parts, "each with u = "+s.U.Shown)
+	}
+	return strings.Join(parts, "; ")
+}
+
+func (b *builder) placesTable() Table {
+	t := Table{Caption: "Supports and loads", Columns: []Column{{Name: "What", Text: true}, {Name: "Name", Text: true}, {Name: "At", Text: true}, {Name: "Kind", Text: true}}}
+	for _, s := range b.rig.Supports {
+		t.Rows = append(t.Rows, []string{"support", s.Name, shown(s.At), s.Kind})
+	}
+	for _, l := range b.rig.Loads {
+		at, kind := "", "at a place"
+		switch {
+		case l.At != nil:
+			at = shown(*l.At)
+		case l.From != nil && l.To != nil:
+			at, kind = shown(*l.From)+" to "+shown(*l.To), "spread evenly"
+		}
+		t.Rows = append(t.Rows, []string{"load", l.Name, at, kind})
+	}
+	t.Says = "Places are along the beam from the rig's datum."
+	return t
+}
+
+// shown is the text of the rig file, or the value where it was a default.
+func shown(l config.Length) string {
+	if l.Shown != "" {
+		return l.Shown
+	}
+	return fmt.Sprintf("%g mm", l.Value)
+}
+
+func (b *builder) gaugeTable() Table {
+	t := Table{Caption: "Gauges", Columns: []Column{
+		{Name: "Gauge", Text: true}, {Name: "At", Text: true}, {Name: "Sees", Text: true}, {Name: "Resolution", Text: true},
+		{Name: "Serial number", Text: true}, {Name: "Calibrated", Text: true}, {Name: "Due", Text: true}}}
+	for _, g := range b.rig.Gauges {
+		date, due := "not stated", "not stated"
+		if c := g.Calibration; c != nil {
+			if c.Date != "" {
+				date = c.Date
+			}
+			if c.Due != "" {
+				due = c.Due
+			}
+		}
+		t.Rows = append(t.Rows, []string{g.Name, shown(g.At), g.Sees, shown(g.Resolution), g.SerialNumber, date, due})
+	}
+	return t
+}

@@ -1,0 +1,155 @@
+package report
+
+import (
+	"fmt"
+	"sort"
+	"strings"
+
+	"gaugelog/analysis"
+)
+
+// steps is the step table: loads, times, sags.
+func (b *builder) steps() Section {
+	s := Section{ID: "steps", Title: "Load steps",
+		Lead: "Sags are net of support movement and count from full load; the initial sag is read " + span(b.r.Stiffness.InitialAfterS) + " after it and always holds some creep."}
+	if len(b.r.Steps) == 0 {
+		return s
+	}
+	s.Blocks = append(s.Blocks, b.stepTable(), b.sagTable())
+	if f, ok := b.loadSagFigure(); ok {
+		s.Blocks = append(s.Blocks, f)
+	}
+	return s
+}
+
+func (b *builder) stepTable() Table {
+	t := Table{Caption: "Steps and their times", Columns: []Column{
+		{Name: "Step", Text: true}, {Name: "Loads", Unit: b.u.of("N"), Text: true}, {Name: "Full load", Text: true},
+		{Name: "Mark less found", Unit: "s"}, {Name: "u", Unit: "s"}, {Name: "Response", Text: true}}}
+	for _, st := range b.r.Steps {
+		full, offset, u, response := "–", "–", "–", "baseline"
+		if st.Start.Full != nil {
+			full = b.local(*st.Start.Full)
+		}
+		if st.Start.OffsetS != nil {
+			offset = fixed(*st.Start.OffsetS, 1)
+		}
+		if st.Start.US != nil {
+			u = significant(*st.Start.US, 2)
+		}
+		if st.Response != nil {
+			response = map[bool]string{true: "yes", false: "none seen"}[*st.Response]
+		}
+		t.Rows = append(t.Rows, []string{st.Step, b.loadsOf(st), full, offset, u, response})
+	}
+	t.Says = "A positive offset is a mark entered late; the times used are those found in the readings."
+	return t
+}
+
+// loadsOf lists a step's loads by name, in a fixed order.
+func (b *builder) loadsOf(st analysis.Step) string {
+	names := make([]string, 0, len(st.Loads))
+	for n := range st.Loads {
+		names = append(names, n)
+	}
+	sort.Strings(names)
+	factor, _ := b.u.convert("N")
+	var parts []string
+	for _, n := range names {
+		parts = append(parts, fmt.Sprintf("%s %s", n, fixed(st.Loads[n]*factor, 2)))
+	}
+	return strings.Join(parts, ", ")
+}
+
+func (b *builder) sagTable() Table {
+	t := Table{Caption: "Sag of each gauge by step", Columns: []Column{
+		{Name: "Step", Text: true}, {Name: "Gauge", Text: true}, {Name: "Initial", Unit: b.u.of("mm")}, {Name: "u", Unit: b.u.of("mm")},
+		{Name: "Increment", Unit: b.u.of("mm")}, {Name: "Final", Unit: b.u.of("mm")}}}
+	for _, st := range b.r.Steps {
+		for _, g := range st.Gauges {
+			if g.Initial == nil && g.Final == nil {
+				continue
+			}
+			t.Rows = append(t.Rows, []string{st.Step, g.Gauge, b.cell(g.Initial), b.cellU(g.Initial), b.cell(g.Increment), b.cell(g.Final)})
+		}
+	}
+	t.Says = "Increment: initial less the older steps' creep carried forward to that instant. Final: at the end of the step."
+	return t
+}
+
+// shape is the elastic curve and the greatest sag.
+func (b *builder) shape() Section {
+	s := Section{ID: "shape", Title: "The curve along the beam"}
+	if f, ok := b.curveFigure(); ok {
+		s.Blocks = append(s.Blocks, f)
+	}
+	t := Table{Caption: "Greatest sag by step", Columns: []Column{
+		{Name: "Step", Text: true}, {Name: "At", Unit: b.u.of("mm")}, {Name: "u", Unit: b.u.of("mm")},
+		{Name: "Sag", Unit: b.u.of("mm")}, {Name: "u", Unit: b.u.of("mm")}}}
+	for _, st := range b.r.Steps {
+		if l := st.Largest; l != nil {
+			t.Rows = append(t.Rows, []string{st.Step, b.cell(&l.At), b.cellU(&l.At), b.cell(&l.Sag), b.cellU(&l.Sag)})
+		}
+	}
+	if len(t.Rows) > 0 {
+		t.Says = "From the fitted curve, at the initial-sag time."
+		s.Blocks = append(s.Blocks, t)
+	}
+	return s
+}
+
+// stiffness is the result, its fit and its budget.
+func (b *builder) stiffness() Section {
+	st := b.r.Stiffness
+	s := Section{ID: "stiffness", Title: "Stiffness",
+		Lead: "One weighted least-squares estimate from all gauges and steps, " + span(st.InitialAfterS) + " after full load."}
+	t := Table{Caption: "Stiffness", Columns: []Column{{Name: "Quantity", Text: true}, {Name: "Value", Text: true}}}
+	add := func(name string, q *analysis.Q) {
+		if q != nil {
+			t.Rows = append(t.Rows, []string{name, b.with(q)})
+		}
+	}
+	add("Modulus of elasticity E (shear taken out)", st.Modulus)
+	add("Apparent modulus (bending only, from the creep gauge)", st.ApparentModulus)
+	add("Shear modulus G, "+b.shearWords(), st.ShearModulus)
+	add("Bending stiffness EI", st.Bending)
+	add("Shear stiffness", st.Shear)
+	for _, c := range st.Supports {
+		add("Compliance of support "+c.Name, c.Compliance)
+	}
+	for _, g := range st.StiffnessAt {
+		add("Load over sag at "+g.Gauge, g.Ratio)
+		add("Local modulus at "+g.Gauge, g.LocalModulus)
+		add("Global modulus at "+g.Gauge, g.GlobalModulus)
+	}
+	if len(t.Rows) == 0 {
+		return s
+	}
+	s.Blocks = append(s.Blocks, t)
+	if f := st.Fit; f != nil {
+		text := fmt.Sprintf("Fit: chi-square %s with %d degrees of freedom (p = %s); condition number %s.",
+			significant(f.Chi2, 3), f.DOF, significant(f.P, 2), significant(f.Condition, 3))
+		if f.Birge > 1 {
+			text += " The uncertainties were widened by " + fixed(f.Birge, 2) + " because the residuals are larger than stated uncertainties allow."
+		}
+		if st.CorrelationBendingShear != nil {
+			text += " Correlation of bending and shear: " + fixed(*st.CorrelationBendingShear, 3) + "."
+		}
+		s.Blocks = append(s.Blocks, Paragraph{text})
+	}
+	if len(st.Budget) > 0 {
+		s.Blocks = append(s.Blocks, b.budgetTable())
+	}
+	return s
+}
+
+func (b *builder) budgetTable() Table {
+	t := Table{Caption: "Uncertainty budget of E", Columns: []Column{
+		{Name: "Input", Text: true}, {Name: "Type"}, {Name: "Its u", Text: true}, {Name: "Share of variance", Unit: "%"}, {Name: "From", Text: true}}}
+	for _, l := range b.r.Stiffness.Budget {
+		f, unit := b.u.convert(l.UInput.Unit)
+		t.Rows = append(t.Rows, []string{l.Input, l.Type, strings.TrimSpace(significant(l.UInput.Value*f, 2) + " " + unit), fixed(100*l.Share, 1), l.Source})
+	}
+	t.Says = "By the GUM (JCGM 100): the share is each input's part of the variance of E."
+	return t
+}

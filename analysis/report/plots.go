@@ -1,0 +1,264 @@
+package report
+
+import (
+	"fmt"
+	"math"
+
+	"gonum.org/v1/plot"
+	"gonum.org/v1/plot/plotter"
+	"gonum.org/v1/plot/vg"
+	"gonum.org/v1/plot/vg/draw"
+
+	"gaugelog/analysis"
+)
+
+// loadSagFigure plots total load against initial sag, one line a gauge: the
+// model's values as the line, the readings as points.
+func (b *builder) loadSagFigure() (Figure, bool) {
+	mm, n := b.factor("mm"), b.factor("N")
+	p := newPlot("sag, "+b.u.of("mm"), "total load, "+b.u.of("N"))
+	any := false
+	for i, g := range b.spanGauges() {
+		var points, model plotter.XYs
+		model = append(model, plotter.XY{})
+		for _, st := range b.r.Steps {
+			load := total(st) * n
+			for _, sg := range st.Gauges {
+				if sg.Gauge == g && sg.Initial != nil && st.Response != nil {
+					points = append(points, plotter.XY{X: sg.Initial.Value * mm, Y: load})
+				}
+			}
+			if v, ok := b.modelAt(st.Step, g); ok {
+				model = append(model, plotter.XY{X: v * mm, Y: load})
+			}
+		}
+		if len(points) == 0 {
+			continue
+		}
+		any = true
+		addLine(p, model, lineStyle(i), "")
+		addPoints(p, points, glyphStyle(i), g)
+	}
+	p.Legend.Top, p.Legend.Left = false, false
+	return Figure{ID: "load-sag", Width: 170, Height: 95, Plot: p,
+		Caption: fmt.Sprintf("Load against sag, %s after full load of each step. Points: readings; lines: the fitted beam.", span(b.r.Stiffness.InitialAfterS)),
+		Alt:     "Total load against the sag of each gauge at every step, with the fitted beam as lines."}, any
+}
+
+// spanGauges are the gauges that see the beam, in order along it.
+func (b *builder) spanGauges() []string {
+	var out []string
+	for _, g := range b.r.Series.Gauges {
+		if g.Sees == "beam" || g.Sees == "" {
+			out = append(out, g.Gauge)
+		}
+	}
+	return out
+}
+
+func total(st analysis.Step) float64 {
+	sum := 0.0
+	for _, k := range sortedKeys(st.Loads) {
+		sum += st.Loads[k]
+	}
+	return sum
+}
+
+// modelAt reads the fitted curve of a step at a gauge.
+func (b *builder) modelAt(step, gauge string) (float64, bool) {
+	at := math.NaN()
+	for _, g := range b.r.Series.Gauges {
+		if g.Gauge == gauge {
+			at = g.AtMM
+		}
+	}
+	for _, c := range b.r.Series.Curve {
+		if c.Step == step {
+			return interpolate(c.AtMM, c.SagMM, at)
+		}
+	}
+	return 0, false
+}
+
+// interpolate reads y at x on a line through points sorted by x.
+func interpolate(xs, ys []float64, x float64) (float64, bool) {
+	for i := 1; i < len(xs); i++ {
+		if x >= xs[i-1] && x <= xs[i] && xs[i] > xs[i-1] {
+			f := (x - xs[i-1]) / (xs[i] - xs[i-1])
+			return ys[i-1] + f*(ys[i]-ys[i-1]), true
+		}
+	}
+	return 0, false
+}
+
+// curveFigure plots the beam's shape in every loaded step.
+func (b *builder) curveFigure() (Figure, bool) {
+	mm := b.factor("mm")
+	p := newPlot("along the beam, "+b.u.of("mm"), "sag, "+b.u.of("mm"))
+	sagDown(p)
+	for i, c := range b.r.Series.Curve {
+		var line, points plotter.XYs
+		for j := range c.AtMM {
+			line = append(line, plotter.XY{X: c.AtMM[j] * mm, Y: c.SagMM[j] * mm})
+		}
+		for j := range c.PointAtMM {
+			points = append(points, plotter.XY{X: c.PointAtMM[j] * mm, Y: c.PointMM[j] * mm})
+		}
+		addLine(p, line, lineStyle(i), c.Step)
+		addPoints(p, points, glyphStyle(i), "")
+	}
+	b.addSupports(p, mm)
+	p.Legend.Top, p.Legend.Left = false, true
+	return Figure{ID: "curve", Width: 170, Height: 85, Plot: p,
+		Caption: "The beam's shape, much exaggerated. Lines: the fitted beam; markers: gauges; triangles on the zero line: supports.",
+		Alt:     "Sag along the beam for each load step with the gauges' readings on the fitted curves."}, len(b.r.Series.Curve) > 0
+}
+
+func (b *builder) addSupports(p *plot.Plot, mm float64) {
+	if b.rig == nil {
+		return
+	}
+	var at plotter.XYs
+	for _, s := range b.rig.Supports {
+		at = append(at, plotter.XY{X: s.At.Value * mm, Y: 0})
+	}
+	addPoints(p, at, draw.GlyphStyle{Color: ink, Radius: vg.Points(4), Shape: draw.PyramidGlyph{}}, "")
+}
+
+// historyFigure plots every gauge's sag over the whole run.
+func (b *builder) historyFigure() (Figure, bool) {
+	mm := b.factor("mm")
+	unit, per := "d", 86400.0
+	if last := b.lastS(); last < 2*86400 {
+		unit, per = "h", 3600
+	}
+	p := newPlot("time from the first reading, "+unit, "sag, "+b.u.of("mm"))
+	sagDown(p)
+	for i, g := range b.r.Series.Gauges {
+		var line plotter.XYs
+		for j := range g.TimeS {
+			line = append(line, plotter.XY{X: g.TimeS[j] / per, Y: g.SagMM[j] * mm})
+		}
+		name := g.Gauge
+		if g.Sees != "beam" && g.Sees != "" {
+			name += " (" + g.Sees + ")"
+		}
+		addLine(p, line, lineStyle(i), name)
+	}
+	return Figure{ID: "history", Width: 170, Height: 95, Plot: p,
+		Caption: "Sag of every gauge over the whole run, net of support movement and of disturbances' offsets.",
+		Alt:     "Sag of all gauges against time over the whole run."}, len(b.r.Series.Gauges) > 0
+}
+
+func (b *builder) lastS() float64 {
+	last := 0.0
+	for _, g := range b.r.Series.Gauges {
+		if n := len(g.TimeS); n > 0 {
+			last = max(last, g.TimeS[n-1])
+		}
+	}
+	return last
+}
+
+// creepFigure plots the creep gauge over logarithmic time with the law.
+func (b *builder) creepFigure() (Figure, bool) {
+	mm := b.factor("mm")
+	points := b.creepPoints(mm)
+	law := b.r.Series.Law
+	if len(points) < 2 {
+		return Figure{}, false
+	}
+	p := newPlot("time after full load (logarithmic)", "sag, "+b.u.of("mm"))
+	p.X.Scale, p.X.Tick.Marker = plot.LogScale{}, timeTicks{}
+	sagDown(p)
+	var inside, beyond plotter.XYs
+	var x, lo, hi []float64
+	for _, l := range law {
+		if l.AfterS <= 0 {
+			continue
+		}
+		x, lo, hi = append(x, l.AfterS), append(lo, l.Lo95*mm), append(hi, l.Hi95*mm)
+		pt := plotter.XY{X: l.AfterS, Y: l.SagMM * mm}
+		if l.Beyond {
+			beyond = append(beyond, pt)
+		} else {
+			inside = append(inside, pt)
+		}
+	}
+	if len(inside) > 0 && len(beyond) > 0 {
+		beyond = append(plotter.XYs{inside[len(inside)-1]}, beyond...)
+	}
+	addBand(p, x, lo, hi)
+	addPoints(p, points, draw.GlyphStyle{Color: ink, Radius: vg.Points(1.1), Shape: draw.CircleGlyph{}}, "readings, "+b.r.Creep.Gauge)
+	addLine(p, inside, draw.LineStyle{Color: shades[1], Width: vg.Points(1.4)}, "law")
+	addLine(p, beyond, draw.LineStyle{Color: shades[1], Width: vg.Points(1.4), Dashes: dashes[1]}, "law beyond the data")
+	return Figure{ID: "creep-log", Width: 170, Height: 95, Plot: p,
+		Caption: "Creep against logarithmic time after full load. Shaded: 95 % band of the law; dashed: beyond the data.",
+		Alt:     "Sag of the creep gauge against logarithmic time with the fitted law and its band."}, true
+}
+
+// creepPoints is the creep gauge's thinned sag, s after full load of the
+// creep step, within that step.
+func (b *builder) creepPoints(mm float64) plotter.XYs {
+	s := b.r.Series
+	var out plotter.XYs
+	for _, g := range s.Gauges {
+		if g.Gauge != b.r.Creep.Gauge {
+			continue
+		}
+		for j, t := range g.TimeS {
+			if after := t - s.CreepFullS; after > 0 && t <= s.CreepEndS {
+				out = append(out, plotter.XY{X: after, Y: g.SagMM[j] * mm})
+			}
+		}
+	}
+	return out
+}
+
+// residualFigure plots readings less law over logarithmic time.
+func (b *builder) residualFigure() (Figure, bool) {
+	micro, unit := 1000.0, "µm"
+	if b.u.of("mm") == "in" {
+		micro, unit = 1e3*b.factor("mm"), "mil"
+	}
+	var lx, ly []float64
+	for _, l := range b.r.Series.Law {
+		if l.AfterS > 0 {
+			lx, ly = append(lx, math.Log(l.AfterS)), append(ly, l.SagMM)
+		}
+	}
+	p := newPlot("time after full load (logarithmic)", "reading less law, "+unit)
+	p.X.Scale, p.X.Tick.Marker = plot.LogScale{}, timeTicks{}
+	var pts plotter.XYs
+	for _, q := range b.creepPoints(1) {
+		if v, ok := interpolate(lx, ly, math.Log(q.X)); ok {
+			pts = append(pts, plotter.XY{X: q.X, Y: (q.Y - v) * micro})
+		}
+	}
+	if len(pts) < 2 {
+		return Figure{}, false
+	}
+	addPoints(p, pts, draw.GlyphStyle{Color: shades[0], Radius: vg.Points(1.2), Shape: draw.CircleGlyph{}}, "")
+	return Figure{ID: "residuals", Width: 170, Height: 60, Plot: p,
+		Caption: "What the law leaves over: a pattern here is something the law does not know, such as the day's temperature.",
+		Alt:     "Residuals of the creep law against logarithmic time."}, true
+}
+
+// ambientFigure plots temperature and humidity over the run.
+func (b *builder) ambientFigure() (Figure, bool) {
+	p := newPlot("time from the first reading, d", "temperature, °C · humidity, %")
+	any := false
+	for i, a := range b.r.Series.Ambient {
+		for k, v := range [][]float64{a.Celsius, a.HumidityPercent} {
+			var line plotter.XYs
+			for j := range v {
+				line = append(line, plotter.XY{X: a.TimeS[j] / 86400, Y: v[j]})
+			}
+			any = any || len(line) > 1
+			addLine(p, line, lineStyle(2*i+k), a.Probe+[]string{" temperature", " humidity"}[k])
+		}
+	}
+	return Figure{ID: "ambient", Width: 170, Height: 65, Plot: p,
+		Caption: "Temperature and relative humidity by the rig's probes.",
+		Alt:     "Temperature and humidity against time."}, any
+}
