@@ -20,6 +20,9 @@ type Rig struct {
 	Limits   Limits     `mapstructure:"limits"`
 	Evaluate []string   `mapstructure:"evaluate"`
 	Forecast []Duration `mapstructure:"forecast"`
+
+	// source is the text this rig was decoded from; nil for one made in Go.
+	source *source
 }
 
 // Test names the test; every field is free text and optional.
@@ -172,7 +175,7 @@ type Record struct {
 // alone is a fixed interval; Dense and its companions are dense around
 // changes, then log-spaced. What is stored is always a real reading.
 type Sampling struct {
-	All       bool
+	All       bool      `mapstructure:"-"`
 	Every     *Duration `mapstructure:"every"`
 	Dense     *Duration `mapstructure:"dense"`
 	Around    *Duration `mapstructure:"around"`
