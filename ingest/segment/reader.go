@@ -1,0 +1,247 @@
+package segment
+
+import (
+	"errors"
+	"io"
+	"math"
+	"runtime"
+	"sync"
+)
+
+// ReadOptions chooses what a Reader gives.
+type ReadOptions struct {
+	// Workers is how many blocks are read at once; 0 is GOMAXPROCS. The result
+	// does not depend on it.
+	Workers int
+	// From and To bound the instants given, both inclusive, in ns since 1970
+	// UTC; both 0 gives all.
+	From, To int64
+	// Gauges, where not nil, fixes the first numbers of the gauges: the gauge
+	// Gauges[i] gets number i. Others follow in order of appearance.
+	Gauges []string
+	// Only, where not nil, gives indications of these gauges alone, and no
+	// other lines.
+	Only []string
+}
+
+// job is one chunk on its way through the reader.
+type job struct {
+	file  *segFile
+	base  int64 // of text in the file's text
+	text  []byte
+	packd []byte // compressed frame still to be unpacked into text
+	frame *frameInfo
+	first bool // of its file
+	final bool // of its file
+	batch Batch
+	items []item
+	fail  error    // reading the file failed here
+	names []string // of the worker, when it was done
+	who   int      // the worker
+	done  chan struct{}
+}
+
+// Reader gives the records of a run folder in order: segments by number, and
+// in a segment as they stand in it. Not safe for use by several goroutines.
+type Reader struct {
+	folder *Folder
+	opts   ReadOptions
+	order  chan *job
+	free   chan *job
+	quit   chan struct{}
+	wg     sync.WaitGroup
+	held   *job
+	merger merger
+	closed bool
+}
+
+// Read starts a pass over the folder. The caller must call Close.
+func (d *Folder) Read(opts ReadOptions) *Reader {
+	if opts.Workers <= 0 {
+		opts.Workers = runtime.GOMAXPROCS(0)
+	}
+	if opts.From == 0 && opts.To == 0 {
+		opts.From, opts.To = math.MinInt64, math.MaxInt64
+	}
+	slots := 2*opts.Workers + 1
+	r := &Reader{
+		folder: d, opts: opts,
+		order: make(chan *job, slots), free: make(chan *job, slots), quit: make(chan struct{}),
+	}
+	r.merger.init(d, opts)
+	for range slots {
+		r.free <- &job{}
+	}
+	work := make(chan *job, slots)
+	for i := range opts.Workers {
+		r.wg.Go(func() { decodeJobs(work, i) })
+	}
+	r.wg.Go(func() {
+		defer close(work)
+		defer close(r.order)
+		for i := range d.files {
+			if !r.produce(&d.files[i], work) {
+				return
+			}
+		}
+	})
+	return r
+}
+
+// Next returns the next batch that holds a record, io.EOF behind the last.
+// Damage is no error: it is left out and stands in Report.
+func (r *Reader) Next() (*Batch, error) {
+	for {
+		if r.held != nil {
+			r.free <- r.held
+			r.held = nil
+		}
+		if r.closed {
+			return nil, errors.New("the reader is closed")
+		}
+		j, ok := <-r.order
+		if !ok {
+			return nil, io.EOF
+		}
+		<-j.done
+		r.held = j
+		r.merger.merge(j)
+		if j.batch.Len() > 0 {
+			return &j.batch, nil
+		}
+	}
+}
+
+// Gauges names the gauges by their numbers in a Batch, as far as they are known.
+// The slice grows by appending only.
+func (r *Reader) Gauges() []string { return r.merger.names }
+
+// Report tells what was found up to here; whole once Next gave io.EOF.
+func (r *Reader) Report() *Report { return &r.merger.report }
+
+// Close ends the pass, early or not, and waits for its goroutines.
+func (r *Reader) Close() {
+	if r.closed {
+		return
+	}
+	r.closed = true
+	close(r.quit)
+	for range r.order {
+	}
+	r.wg.Wait()
+}
+
+// take waits for a free job; false once the reader is closed.
+func (r *Reader) take() (*job, bool) {
+	select {
+	case j := <-r.free:
+		*j = job{text: j.text[:0], packd: j.packd[:0], batch: j.batch, items: j.items[:0], done: make(chan struct{})}
+		j.batch.reset()
+		return j, true
+	case <-r.quit:
+		return nil, false
+	}
+}
+
+func (r *Reader) send(j *job, work chan<- *job) {
+	// Both have room for every job there is.
+	work <- j
+	r.order <- j
+}
+
+// produce cuts one segment into jobs; false once the reader is closed.
+func (r *Reader) produce(f *segFile, work chan<- *job) bool {
+	file, err := r.folder.fs.Open(f.name)
+	if err != nil {
+		return r.failed(f, 0, err, work)
+	}
+	defer file.Close()
+	if f.index != nil {
+		return r.produceFrames(file, f, work)
+	}
+	text, closeText, err := openText(file, f)
+	if err != nil {
+		return r.failed(f, 0, err, work)
+	}
+	defer closeText()
+	s := splitter{r: text, foreign: !f.own}
+	for first := true; ; first = false {
+		j, ok := r.take()
+		if !ok {
+			return false
+		}
+		j.file, j.base, j.first = f, s.off, first
+		j.text, j.final, err = s.next(j.text)
+		if err != nil {
+			j.fail, j.final, j.text = err, true, nil
+		}
+		final := j.final
+		r.send(j, work)
+		if final {
+			return true
+		}
+	}
+}
+
+func (r *Reader) failed(f *segFile, at int64, err error, work chan<- *job) bool {
+	j, ok := r.take()
+	if !ok {
+		return false
+	}
+	j.file, j.base, j.first, j.final, j.fail = f, at, at == 0, true, err
+	r.send(j, work)
+	return true
+}
+
+func (r *Reader) produceFrames(file File, f *segFile, work chan<- *job) bool { return true }
+
+// decodeJobs is one worker.
+func decodeJobs(work <-chan *job, who int) {
+	names := newInterner(nil)
+	for j := range work {
+		if j.fail == nil {
+			j.decode(names)
+		}
+		j.who, j.names = who, names.names
+		close(j.done)
+	}
+}
+
+func (j *job) decode(names *interner) {
+	if !j.file.own {
+		j.decodeForeign(names)
+		return
+	}
+	j.items = splitBlocks(j.text, j.items)
+	for i := range j.items {
+		it := &j.items[i]
+		if it.kind == itemTail && !j.final {
+			it.kind, it.why = itemLoss, "no whole block"
+		}
+		if it.kind == itemBlock && it.whole {
+			j.lines(it.from, it.from+int(it.c.length), names)
+			it = &j.items[i] // lines may have moved them
+		}
+		it.rows, it.more = len(j.batch.Gauge), len(j.batch.Others)
+	}
+}
+
+// decodeForeign takes a chunk without comments: every whole line counts.
+func (j *job) decodeForeign(names *interner) {
+	end := len(j.text)
+	if j.final {
+		end = lastLineCut(j.text)
+	}
+	j.lines(0, end, names)
+	j.items = append(j.items, item{kind: itemBlock, to: end, whole: true,
+		rows: len(j.batch.Gauge), more: len(j.batch.Others)})
+	if end < len(j.text) {
+		j.items = append(j.items, item{kind: itemTail, from: end, to: len(j.text)})
+	}
+}
+
+func (j *job) lines(from, to int, names *interner) {
+	j.batch.decodeLines(j.text[from:to], names, func(a, b int, why string) {
+		j.items = append(j.items, item{kind: itemLine, from: from + a, to: from + b, why: why})
+	})
+}

@@ -1,0 +1,107 @@
+package segment
+
+import (
+	"errors"
+	"io"
+	"io/fs"
+
+	"github.com/klauspost/compress/zstd"
+)
+
+// splitter cuts a text into chunks of whole blocks (own files) or whole lines
+// (foreign ones), of about chunkSize, in memory bounded by the longest block.
+type splitter struct {
+	r       io.Reader
+	foreign bool
+	carry   []byte
+	off     int64 // of the next chunk in the text
+	eof     bool
+}
+
+// next returns the next chunk in buf's storage; final is true for the last,
+// which may end in an unfinished tail. An own chunk that is not final and holds
+// no valid comment is lost as a whole: no block can be that long.
+func (s *splitter) next(buf []byte) (chunk []byte, final bool, err error) {
+	buf = append(buf[:0], s.carry...)
+	s.carry = s.carry[:0]
+	for target := chunkSize; ; target *= 2 {
+		buf, err = s.fill(buf, target)
+		if err != nil {
+			return nil, false, err
+		}
+		if s.eof {
+			s.off += int64(len(buf))
+			return buf, true, nil
+		}
+		cut := 0
+		if s.foreign {
+			cut = lastLineCut(buf)
+		} else {
+			cut = lastCut(buf)
+		}
+		if cut == 0 && target < 2*(MaxBlock+maxComment) {
+			continue
+		}
+		if cut == 0 {
+			cut = len(buf) - MaxBlock - maxComment
+		}
+		s.carry = append(s.carry, buf[cut:]...)
+		s.off += int64(cut)
+		return buf[:cut], false, nil
+	}
+}
+
+func (s *splitter) fill(buf []byte, target int) ([]byte, error) {
+	if cap(buf) < target {
+		grown := make([]byte, len(buf), target)
+		copy(grown, buf)
+		buf = grown
+	}
+	for len(buf) < target && !s.eof {
+		n, err := s.r.Read(buf[len(buf):target])
+		buf = buf[:len(buf)+n]
+		switch {
+		case err == io.EOF:
+			s.eof = true
+		case err != nil:
+			return buf, err
+		}
+	}
+	return buf, nil
+}
+
+// lastLineCut returns where the last whole line of foreign text ends.
+func lastLineCut(text []byte) int {
+	p := 0
+	for {
+		n := entryEnd(text[p:])
+		if n < 0 {
+			return p
+		}
+		p += n
+	}
+}
+
+// openText gives a segment's text as a stream, unpacked where it is compressed
+// and cut where a later segment wrote the end again.
+func openText(file File, f *segFile) (text io.Reader, closeText func(), err error) {
+	info, err := file.Stat()
+	if err != nil {
+		return nil, nil, err
+	}
+	text, closeText = io.NewSectionReader(file, 0, info.Size()), func() {}
+	if f.compressed {
+		dec, err := zstd.NewReader(text, zstd.WithDecoderConcurrency(1), zstd.WithDecoderLowmem(true),
+			zstd.WithDecoderMaxWindow(maxWindow))
+		if err != nil {
+			return nil, nil, err
+		}
+		text, closeText = dec, dec.Close
+	}
+	if f.limit >= 0 {
+		text = io.LimitReader(text, f.limit)
+	}
+	return text, closeText, nil
+}
+
+func isNotExist(err error) bool { return errors.Is(err, fs.ErrNotExist) }
