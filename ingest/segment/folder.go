@@ -7,6 +7,7 @@ import (
 	"io"
 	"path"
 	"slices"
+	"sync"
 )
 
 // The logs of a run folder beside its segments.
@@ -40,6 +41,9 @@ type Folder struct {
 	fs    FS
 	files []segFile
 	fixes clockFixes
+
+	mu     sync.Mutex
+	chunks map[string][]frameInfo // of plain segments, known after a whole pass
 }
 
 // OpenFolder looks at the segments of a run folder and at the heads of its
@@ -101,8 +105,7 @@ func (d *Folder) look(f *segFile) error {
 	}
 	f.size = info.Size()
 	if f.compressed {
-		f.index, f.damage = readFrameIndex(file, f.name, f.size)
-		if f.index != nil {
+		if f.index = readFrameIndex(file, f.size); f.index != nil {
 			f.own, f.header, f.headed = f.index.own, f.index.header, f.index.headed
 			return nil
 		}
@@ -121,6 +124,10 @@ func (d *Folder) look(f *segFile) error {
 			return fmt.Errorf("%s: %w", f.name, err)
 		}
 		f.header, f.headed = h, err == nil
+	}
+	if f.compressed && f.headed {
+		f.damage = append(f.damage, Damage{File: f.name, Offset: f.size,
+			Why: "the index at its end is damaged or missing; read without it"})
 	}
 	f.own = f.headed || bytes.HasPrefix(start, []byte(headerWord))
 	if !f.own {
@@ -229,8 +236,8 @@ func (d *Folder) findFixes() error {
 		if !f.headed || f.header.Clock.Synced || !need[f.header.Boot] {
 			continue
 		}
-		if f.index != nil && !f.index.last.clock.Synced && f.index.hasLast {
-			continue
+		if last, ok := d.lastCheckpoint(f); ok && !last.clock.Synced {
+			continue // and so were all before it
 		}
 		if fix, ok := d.fixes[f.header.Boot]; ok && fix.boot <= f.header.Clock.Boot {
 			continue
@@ -247,4 +254,34 @@ func (d *Folder) findFixes() error {
 		}
 	}
 	return nil
+}
+
+// lastCheckpoint finds the last checkpoint of a segment without reading it
+// whole; false where that does not do.
+func (d *Folder) lastCheckpoint(f *segFile) (c checkpoint, ok bool) {
+	if f.compressed {
+		if f.index == nil || f.limit >= 0 {
+			return c, false
+		}
+		return f.index.last, f.index.hasLast
+	}
+	file, err := d.fs.Open(f.name)
+	if err != nil {
+		return c, false
+	}
+	defer file.Close()
+	size := f.size
+	if f.limit >= 0 {
+		size = min(size, f.limit)
+	}
+	end := make([]byte, min(size, chunkSize))
+	if readFull(file, end, size-int64(len(end))) != nil {
+		return c, false
+	}
+	cut := lastCut(end)
+	if cut == 0 {
+		return c, false
+	}
+	start := bytes.LastIndexByte(end[:cut-1], '\n') + 1
+	return parseCheckpoint(end[start : cut-1])
 }

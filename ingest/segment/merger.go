@@ -16,6 +16,7 @@ type merger struct {
 	remap  [][]int32 // by worker: its numbers to ours, -1 unknown
 	only   map[uint16]bool
 	some   bool // only some lines are wanted
+	chunks []frameInfo
 	absurd bool // the chunk has quarantined lines, to be dropped
 
 	// of the file being read
@@ -61,14 +62,11 @@ func (m *merger) merge(j *job) {
 	b := &j.batch
 	b.File = j.file.name
 	if j.first {
-		m.chain, m.chained, m.hurt, m.boot, m.prev, m.last, m.end, m.sealed = 0, false, false, "", nil, 0, nil, false
+		m.chain, m.chained, m.hurt, m.boot, m.prev, m.last, m.end, m.sealed = 0, false, false, j.file.header.Boot, nil, 0, nil, false
 		m.report.Damage = append(m.report.Damage, j.file.damage...)
 	}
-	if j.fail != nil {
-		m.damage(Damage{File: j.file.name, Offset: j.base, Length: max(0, j.file.size-j.base), Lines: -1,
-			First: m.last, Why: "cannot be read: " + j.fail.Error()})
-		b.reset()
-		return
+	if j.gap {
+		m.chained, m.prev = false, nil
 	}
 	m.renumber(j)
 	rows, more := 0, 0
@@ -83,9 +81,15 @@ func (m *merger) merge(j *job) {
 		case itemLoss:
 			m.loss(j, it, i)
 		case itemTail:
-			m.tail(j, it)
+			if j.fail == nil {
+				m.tail(j, it)
+			}
 		}
 	}
+	if j.fail != nil {
+		m.failure(j)
+	}
+	m.learn(j)
 	// Lines that are no records stand behind the other items: they were found
 	// while the blocks were decoded.
 	for i := range j.items {
@@ -108,6 +112,61 @@ func (m *merger) merge(j *job) {
 		}
 	}
 	m.report.Lines += int64(b.Len())
+}
+
+// failure reports a chunk that could not be read or unpacked.
+func (m *merger) failure(j *job) {
+	if j.fail == errStored {
+		// The blocks in it were checked one by one; only the storage is hurt.
+		m.damage(Damage{File: j.file.name, Offset: j.base, Length: j.frame.text,
+			Why: "a compressed frame: " + j.fail.Error() + ", though it unpacks"})
+		return
+	}
+	m.hurt = true
+	d := Damage{File: j.file.name, Offset: j.base + int64(len(j.text)), Lines: -1, First: m.last,
+		Why: "cannot be read: " + j.fail.Error()}
+	if j.frame != nil {
+		d.Length, d.First, d.Last = j.frame.text, j.frame.first, j.frame.last
+	} else {
+		d.Length = max(0, j.file.size-d.Offset)
+	}
+	m.damage(d)
+}
+
+// learn remembers where the chunks of a plain segment lie, for a later pass
+// that wants only some of it.
+func (m *merger) learn(j *job) {
+	if j.frame != nil || j.file.compressed {
+		return
+	}
+	if j.first {
+		m.chunks = nil
+	}
+	var f frameInfo
+	if j.file.own {
+		f = chunkInfo(j.items)
+	} else {
+		f = j.batch.bounds()
+	}
+	f.at, f.text = j.base, int64(len(j.text))
+	f.set = f.set && j.fail == nil
+	m.chunks = append(m.chunks, f)
+	if j.final && j.fail == nil {
+		m.folder.learn(j.file.name, m.chunks)
+	}
+}
+
+// bounds sums up a foreign chunk for seeking.
+func (b *Batch) bounds() frameInfo {
+	f := frameInfo{set: true, first: math.MaxInt64, last: math.MinInt64}
+	for _, t := range b.Time {
+		f.first, f.last = min(f.first, t), max(f.last, t)
+	}
+	for i := range b.Others {
+		t := b.Others[i].Time
+		f.first, f.last = min(f.first, t), max(f.last, t)
+	}
+	return f
 }
 
 func (m *merger) header(j *job, it *item) {

@@ -6,6 +6,8 @@ import (
 	"math"
 	"runtime"
 	"sync"
+
+	"github.com/klauspost/compress/zstd"
 )
 
 // ReadOptions chooses what a Reader gives.
@@ -29,10 +31,12 @@ type job struct {
 	file  *segFile
 	base  int64 // of text in the file's text
 	text  []byte
-	packd []byte // compressed frame still to be unpacked into text
+	packd []byte // stored frame, to be unpacked into text
 	frame *frameInfo
-	first bool // of its file
-	final bool // of its file
+	limit int64 // of the frame's text; the rest does not count
+	gap   bool  // chunks before it in the file were passed over
+	first bool  // of its file
+	final bool  // of its file
 	batch Batch
 	items []item
 	fail  error    // reading the file failed here
@@ -157,7 +161,10 @@ func (r *Reader) produce(f *segFile, work chan<- *job) bool {
 	}
 	defer file.Close()
 	if f.index != nil {
-		return r.produceFrames(file, f, work)
+		return r.produceFrames(file, f, f.index.frames, work)
+	}
+	if chunks := r.folder.known(f.name); chunks != nil && r.merger.some {
+		return r.produceFrames(file, f, chunks, work)
 	}
 	text, closeText, err := openText(file, f)
 	if err != nil {
@@ -171,10 +178,7 @@ func (r *Reader) produce(f *segFile, work chan<- *job) bool {
 			return false
 		}
 		j.file, j.base, j.first = f, s.off, first
-		j.text, j.final, err = s.next(j.text)
-		if err != nil {
-			j.fail, j.final, j.text = err, true, nil
-		}
+		j.text, j.final, j.fail = s.next(j.text)
 		final := j.final
 		r.send(j, work)
 		if final {
@@ -193,21 +197,66 @@ func (r *Reader) failed(f *segFile, at int64, err error, work chan<- *job) bool 
 	return true
 }
 
-func (r *Reader) produceFrames(file File, f *segFile, work chan<- *job) bool { return true }
+// produceFrames makes jobs of a segment whose frames (or chunks, where it is
+// plain) are known, and passes over those that hold nothing wanted.
+func (r *Reader) produceFrames(file File, f *segFile, frames []frameInfo, work chan<- *job) bool {
+	gap, first := false, true
+	for i := range frames {
+		fr := &frames[i]
+		if f.limit >= 0 && fr.at >= f.limit {
+			break
+		}
+		if fr.set && (fr.last < r.opts.From || fr.first > r.opts.To) {
+			gap = true
+			continue
+		}
+		j, ok := r.take()
+		if !ok {
+			return false
+		}
+		j.file, j.base, j.frame, j.first, j.gap = f, fr.at, fr, first, gap
+		j.final = i == len(frames)-1
+		j.limit = fr.text
+		if f.limit >= 0 {
+			j.limit = min(j.limit, f.limit-fr.at)
+		}
+		if f.compressed {
+			j.packd = grow(j.packd, fr.size)
+			j.fail = readFull(file, j.packd, fr.offset)
+		} else {
+			j.text = grow(j.text, fr.text)
+			if j.fail = readFull(file, j.text, fr.at); j.fail != nil {
+				j.text = j.text[:0]
+			}
+		}
+		r.send(j, work)
+		gap, first = false, false
+	}
+	return true
+}
 
 // decodeJobs is one worker.
 func decodeJobs(work <-chan *job, who int) {
 	names := newInterner(nil)
+	var dec *zstd.Decoder
 	for j := range work {
-		if j.fail == nil {
-			j.decode(names)
+		if j.frame != nil && j.file.compressed && j.fail == nil {
+			if dec == nil {
+				dec = newFrameDecoder()
+				defer dec.Close()
+			}
+			j.text, j.fail = j.frame.unpack(dec, j.packd, j.text)
 		}
+		j.decode(names)
 		j.who, j.names = who, names.names
 		close(j.done)
 	}
 }
 
 func (j *job) decode(names *interner) {
+	if j.frame != nil && int64(len(j.text)) > j.limit {
+		j.text = j.text[:j.limit]
+	}
 	if !j.file.own {
 		j.decodeForeign(names)
 		return
@@ -244,4 +293,22 @@ func (j *job) lines(from, to int, names *interner) {
 	j.batch.decodeLines(j.text[from:to], names, func(a, b int, why string) {
 		j.items = append(j.items, item{kind: itemLine, from: from + a, to: from + b, why: why})
 	})
+}
+
+// known returns the chunks of a plain segment that a whole pass went through.
+func (d *Folder) known(name string) []frameInfo {
+	d.mu.Lock()
+	defer d.mu.Unlock()
+	return d.chunks[name]
+}
+
+func (d *Folder) learn(name string, chunks []frameInfo) {
+	d.mu.Lock()
+	defer d.mu.Unlock()
+	if d.chunks == nil {
+		d.chunks = map[string][]frameInfo{}
+	}
+	if d.chunks[name] == nil {
+		d.chunks[name] = chunks
+	}
 }

@@ -16,22 +16,21 @@ type splitter struct {
 	carry   []byte
 	off     int64 // of the next chunk in the text
 	eof     bool
+	err     error
 }
 
 // next returns the next chunk in buf's storage; final is true for the last,
 // which may end in an unfinished tail. An own chunk that is not final and holds
-// no valid comment is lost as a whole: no block can be that long.
+// no valid comment is lost as a whole: no block can be that long. On an error
+// the chunk holds what was read before it, and is the last.
 func (s *splitter) next(buf []byte) (chunk []byte, final bool, err error) {
 	buf = append(buf[:0], s.carry...)
 	s.carry = s.carry[:0]
 	for target := chunkSize; ; target *= 2 {
-		buf, err = s.fill(buf, target)
-		if err != nil {
-			return nil, false, err
-		}
+		buf = s.fill(buf, target)
 		if s.eof {
 			s.off += int64(len(buf))
-			return buf, true, nil
+			return buf, true, s.err
 		}
 		cut := 0
 		if s.foreign {
@@ -51,7 +50,7 @@ func (s *splitter) next(buf []byte) (chunk []byte, final bool, err error) {
 	}
 }
 
-func (s *splitter) fill(buf []byte, target int) ([]byte, error) {
+func (s *splitter) fill(buf []byte, target int) []byte {
 	if cap(buf) < target {
 		grown := make([]byte, len(buf), target)
 		copy(grown, buf)
@@ -60,14 +59,14 @@ func (s *splitter) fill(buf []byte, target int) ([]byte, error) {
 	for len(buf) < target && !s.eof {
 		n, err := s.r.Read(buf[len(buf):target])
 		buf = buf[:len(buf)+n]
-		switch {
-		case err == io.EOF:
+		if err != nil {
 			s.eof = true
-		case err != nil:
-			return buf, err
+			if err != io.EOF {
+				s.err = err
+			}
 		}
 	}
-	return buf, nil
+	return buf
 }
 
 // lastLineCut returns where the last whole line of foreign text ends.
