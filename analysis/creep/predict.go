@@ -1,0 +1,232 @@
+package creep
+
+import (
+	"math"
+
+	"gaugelog/analysis/lsq"
+
+	"gonum.org/v1/gonum/mat"
+)
+
+// Value is a figure with its standard uncertainty in the same unit.
+type Value struct{ Value, U float64 }
+
+// gradient returns the law's sag for the changes at tH and its derivatives by
+// the law's coefficients and, where there is one, the search coordinate.
+func (f *Fit) gradient(tH float64, changes []Change) (sag float64, g []float64) {
+	n := len(f.fam.names)
+	value, slope := make([]float64, n), make([]float64, n)
+	f.fam.columns(tH, changes, f.shape, value, slope)
+	var byShape float64
+	for j, c := range f.linear {
+		sag += c * value[j]
+		byShape += c * slope[j]
+	}
+	g = value
+	if f.fam.shape != "" {
+		g = append(g, byShape)
+	}
+	return sag, g
+}
+
+// At returns the law's sag of the creep gauge at tH under the whole load
+// history, mm: load and creep alone.
+func (f *Fit) At(tH float64) float64 {
+	sag, _ := f.gradient(tH, f.changes)
+	return sag
+}
+
+// U returns the standard uncertainty of At(tH), mm.
+func (f *Fit) U(tH float64) float64 {
+	_, g := f.gradient(tH, f.changes)
+	return lsq.PropagateU(f.inner, g)
+}
+
+// Coverage returns the factor from u to half the 95 % interval.
+func (f *Fit) Coverage() float64 { return lsq.Coverage95(f.DOF) }
+
+// Band returns the 95 % limits of At(tH), mm.
+func (f *Fit) Band(tH float64) (lo, hi float64) {
+	sag, g := f.gradient(tH, f.changes)
+	d := f.Coverage() * lsq.PropagateU(f.inner, g)
+	return sag - d, sag + d
+}
+
+// J returns the law itself: sag per newton, mm/N, a time tH after a load is
+// hung at once.
+func (f *Fit) J(tH float64) Value {
+	v, g := f.gradient(tH, []Change{{Newton: 1}})
+	return Value{v, lsq.PropagateU(f.inner, g)}
+}
+
+// Equivalent returns the single-load equivalent J(tH)/J(initialH), the
+// relative creep of a load hung at once.
+func (f *Fit) Equivalent(tH, initialH float64) Value {
+	a, ga := f.gradient(tH, []Change{{Newton: 1}})
+	b, gb := f.gradient(initialH, []Change{{Newton: 1}})
+	return f.ratio(a, ga, b, gb)
+}
+
+// ratio returns a/b with the uncertainty both have in common counted.
+func (f *Fit) ratio(a float64, ga []float64, b float64, gb []float64) Value {
+	g := make([]float64, len(ga))
+	for i := range g {
+		g[i] = (ga[i] - a/b*gb[i]) / b
+	}
+	return Value{a / b, lsq.PropagateU(f.inner, g)}
+}
+
+// Rate returns the law's rate of sag at tH, mm/d, by a central difference
+// over a thousandth of the time since the last change.
+func (f *Fit) Rate(tH float64) Value {
+	last := math.Inf(-1)
+	for _, c := range f.changes {
+		if e := c.AtH + c.RampH; e < tH {
+			last = max(last, e)
+		}
+	}
+	h := 1e-3 * (tH - last)
+	if !(h > 0) || math.IsInf(h, 0) {
+		h = 1e-3
+	}
+	a, ga := f.gradient(tH+h, f.changes)
+	b, gb := f.gradient(tH-h, f.changes)
+	for i := range ga {
+		ga[i] = (ga[i] - gb[i]) / (2 * h) * 24
+	}
+	return Value{(a - b) / (2 * h) * 24, lsq.PropagateU(f.inner, ga)}
+}
+
+// parameters fills Parameters, Cov, Nuisance, Lags and the inner covariance.
+func (f *Fit) parameters(sol *lsq.NonlinearSolution) {
+	s, n := f.sys, len(f.fam.names)
+	cov := sol.Covariance
+	if cov == nil { // unidentifiable: Status and a Note say so
+		cov = mat.NewSymDense(len(sol.P), nil)
+	}
+	scale := f.inflation() * s.between(f.ResidualMM)
+	pick := make([]int, n, n+1)
+	for j := range pick {
+		pick[j] = j
+	}
+	if f.fam.shape != "" {
+		pick = append(pick, s.columns())
+	}
+	f.inner = mat.NewSymDense(len(pick), nil)
+	for a, i := range pick {
+		for b := a; b < len(pick); b++ {
+			f.inner.SetSym(a, b, scale*cov.At(i, pick[b]))
+		}
+	}
+	f.lawParameters(sol.AtBound, pick)
+	for j, x := range s.extra {
+		k := n + j
+		f.Nuisance = append(f.Nuisance, Nuisance{Parameter: Parameter{Name: x.name, Value: sol.P[k], U: math.Sqrt(scale * cov.At(k, k)), Unit: x.unit},
+			Kind: x.kind.String(), Series: x.series, Ambient: x.ambient})
+	}
+	_, lag := s.at(f.q)
+	for a := range s.in.Ambient {
+		p := Parameter{Name: "lag of " + s.in.Ambient[a].Name, Value: math.Exp(lag[a]), Unit: "h"}
+		for k, b := range s.searched {
+			if c := s.columns() + s.shapes() + k; a == b && c < len(sol.P) {
+				p.U, p.AtBound = p.Value*math.Sqrt(scale*cov.At(c, c)), sol.AtBound[c]
+			}
+		}
+		f.Lags = append(f.Lags, p)
+	}
+}
+
+// lawParameters turns coefficients and search coordinate into Parameters.
+func (f *Fit) lawParameters(atBound []bool, pick []int) {
+	n := len(f.fam.names)
+	factor := make([]float64, len(pick))
+	for j := range factor {
+		factor[j] = 1
+	}
+	for j, name := range f.fam.names {
+		f.Parameters = append(f.Parameters, Parameter{Name: name, Value: f.linear[j], Unit: f.fam.units[j], AtBound: atBound[j]})
+	}
+	if f.fam.shape != "" {
+		v := f.shape
+		if f.fam.logShape {
+			v = math.Exp(v)
+			factor[n] = v
+		}
+		f.Parameters = append(f.Parameters, Parameter{Name: f.fam.shape, Value: v, Unit: f.fam.shapeUnit, AtBound: atBound[pick[n]]})
+	}
+	f.Cov = mat.NewSymDense(len(pick), nil)
+	for a := range pick {
+		for b := a; b < len(pick); b++ {
+			f.Cov.SetSym(a, b, f.inner.At(a, b)*factor[a]*factor[b])
+		}
+		f.Parameters[a].U = math.Sqrt(f.Cov.At(a, a))
+	}
+	for i, tau := range f.fam.taus {
+		f.Parameters = append(f.Parameters, Parameter{Name: "tau" + f.fam.names[i+1][1:], Value: tau, Unit: "h"})
+	}
+}
+
+// String returns the kind in one word.
+func (k kind) String() string {
+	return [...]string{"offset", "drift", "zero", "ambient"}[k]
+}
+
+// compensate fills CompensatedMM: the reading less all that is not law.
+func (f *Fit) compensate(sol *lsq.NonlinearSolution) {
+	s := f.sys
+	a := mat.NewDense(len(s.y), s.columns(), nil)
+	_, lag := s.at(f.q)
+	s.extraColumns(lag, a)
+	out := append([]float64(nil), s.y...)
+	for i := range out {
+		for j := len(s.fam.names); j < s.columns(); j++ {
+			out[i] -= a.At(i, j) * sol.P[j]
+		}
+	}
+	for i := range s.in.Series {
+		f.CompensatedMM = append(f.CompensatedMM, out[s.first[i]:s.first[i+1]])
+	}
+}
+
+// between is the factor by which residuals that gauges have in common weaken
+// a joint fit: 1 + (gauges - 1) times their mean correlation, at least 1.
+func (s *system) between(residual [][]float64) float64 {
+	g := len(residual)
+	if g < 2 {
+		return 1
+	}
+	var sum float64
+	var pairs int
+	for i := range g {
+		for j := i + 1; j < g; j++ {
+			c, ok := commonCorrelation(s.in.Series[i].TimeH, residual[i], s.in.Series[j].TimeH, residual[j])
+			if ok {
+				sum += c
+				pairs++
+			}
+		}
+	}
+	if pairs == 0 {
+		return 1
+	}
+	return 1 + float64(g-1)*max(sum/float64(pairs), 0)
+}
+
+// commonCorrelation correlates a with b read at a's times where both run.
+func commonCorrelation(ta, a, tb, b []float64) (float64, bool) {
+	if len(ta) < 8 || len(tb) < 8 {
+		return 0, false
+	}
+	var aa, bb, ab float64
+	for i, t := range ta {
+		if t < tb[0] || t > tb[len(tb)-1] {
+			continue
+		}
+		v := interpolate(tb, b, t)
+		aa, bb, ab = aa+a[i]*a[i], bb+v*v, ab+a[i]*v
+	}
+	if aa == 0 || bb == 0 {
+		return 0, false
+	}
+	return ab / math.Sqrt(aa*bb), true
+}
