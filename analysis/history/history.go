@@ -2,9 +2,14 @@
 // duration and its number of steps, not by its number of readings.
 //
 // It promises exact medians per bin, real readings in the windows asked for,
-// marks with withdrawals applied and loads as a timeline, and the same answer
-// whatever the number of cores. It corrects nothing: values are indications
-// in mm as recorded.
+// marks with withdrawals applied, and the same answer whatever the number of
+// cores. It corrects nothing: values are indications in mm as recorded.
+//
+// An indication is a multiple of its gauge's resolution, so a bin is a table
+// of counts and its median is exact however many readings it holds. Where
+// readings are no multiples of the stated resolution the gauge falls back to
+// counts of a nanometre (the finest the format writes), which is as exact and
+// only takes more memory; the note "not-a-multiple" says so.
 package history
 
 import (
@@ -79,6 +84,9 @@ type History struct {
 	Damaged     []string // blocks left out, in words
 	Notes       []Note
 
+	// GaugeReadings counts the readings of each gauge of the rig.
+	GaugeReadings []int64
+
 	source Source
 }
 
@@ -88,15 +96,41 @@ type Note struct {
 	Time              int64
 }
 
-// Source gives readings by gauge. The run folder is one; tests make others
-// from samples in memory.
+// Source gives readings by gauge, a gauge being an index in the rig's list.
+// The run folder is one; FromSamples makes another from memory.
 type Source interface {
-	// Bins returns the whole run of one gauge (index in the rig's list) in
-	// bins: fine (down to single readings) near marks and jumps, wider with
-	// time since, at most ten minutes.
+	// Bins returns the whole run of one gauge in bins of equal width, at most
+	// ten minutes each; bins without a reading are left out. The caller must
+	// not change them.
 	Bins(gauge int) []Bin
-	// Raw returns every reading of one gauge in [from, to].
-	Raw(gauge int, from, to int64) ([]Sample, error)
+	// Window returns every reading of every gauge in [from, to].
+	Window(from, to int64) ([][]Sample, error)
+	// Fine returns, for every gauge, the bins between successive edges (which
+	// must rise); bins without a reading are left out.
+	Fine(edges []int64) ([][]Bin, error)
 	// Ambient returns a probe's readings, thinned to at most one a minute.
 	Ambient(probe int) []AmbientSample
 }
+
+// Bins returns one gauge's whole run in bins of equal width (BinWidth), empty
+// ones left out. The slice is shared: do not change it.
+func (h *History) Bins(gauge int) []Bin { return h.source.Bins(gauge) }
+
+// Window returns every reading of every gauge in [from, to], by gauge.
+func (h *History) Window(from, to int64) ([][]Sample, error) { return h.source.Window(from, to) }
+
+// Fine returns, by gauge, the bins between successive edges, empty ones left
+// out. The edges must rise.
+func (h *History) Fine(edges []int64) ([][]Bin, error) { return h.source.Fine(edges) }
+
+// Raw returns every reading of one gauge in [from, to].
+func (h *History) Raw(gauge int, from, to int64) ([]Sample, error) {
+	all, err := h.source.Window(from, to)
+	if err != nil {
+		return nil, err
+	}
+	return all[gauge], nil
+}
+
+// Ambient returns one probe's readings, thinned to at most one a minute.
+func (h *History) Ambient(probe int) []AmbientSample { return h.source.Ambient(probe) }

@@ -1,0 +1,171 @@
+package history
+
+import (
+	"fmt"
+	"math"
+	"slices"
+	"sort"
+
+	"gaugelog/config"
+)
+
+// Given is what FromSamples makes a History of.
+type Given struct {
+	Rig        *config.Rig
+	Amendments []config.Amendment
+	// Samples holds the readings by gauge of the rig, in order of time.
+	Samples [][]Sample
+	// Ambient holds the surroundings by probe of the rig; nil for none.
+	Ambient [][]AmbientSample
+	Marks   []Mark // in any order
+	Events  []Event
+}
+
+// FromSamples returns a History of readings held in memory: for tests, and
+// for readings that were never in a folder. It fails on a reading that is not
+// a number or out of order.
+func FromSamples(g Given) (*History, error) {
+	if len(g.Samples) != len(g.Rig.Gauges) {
+		return nil, fmt.Errorf("history: %d lists of readings for %d gauges", len(g.Samples), len(g.Rig.Gauges))
+	}
+	h := &History{Rig: g.Rig, Amendments: g.Amendments, Events: g.Events, GaugeReadings: make([]int64, len(g.Samples))}
+	h.Marks = slices.Clone(g.Marks)
+	sort.SliceStable(h.Marks, func(i, j int) bool { return h.Marks[i].Time < h.Marks[j].Time })
+	for i, list := range g.Samples {
+		for k, s := range list {
+			if math.IsNaN(s.MM) || math.IsInf(s.MM, 0) || k > 0 && s.Time <= list[k-1].Time {
+				return nil, fmt.Errorf("history: reading %d of gauge %s is not a number or out of order", k, g.Rig.Gauges[i].Name)
+			}
+		}
+		if len(list) == 0 {
+			continue
+		}
+		h.GaugeReadings[i] = int64(len(list))
+		if h.Readings == 0 || list[0].Time < h.First {
+			h.First = list[0].Time
+		}
+		if h.Readings == 0 || list[len(list)-1].Time > h.Last {
+			h.Last = list[len(list)-1].Time
+		}
+		h.Readings += int64(len(list))
+	}
+	m := &memory{samples: g.Samples, ambient: g.Ambient, rig: g.Rig}
+	width := BinWidth(h.First, h.Last)
+	for i := range g.Samples {
+		bins, inexact := binSamples(g.Samples[i], g.Rig.Gauges[i].Resolution.Value, gridEdges(h.First, h.Last, width))
+		m.bins = append(m.bins, bins)
+		if inexact {
+			h.Notes = append(h.Notes, notMultiple(g.Rig.Gauges[i]))
+		}
+	}
+	h.source = m
+	h.Gaps = findGaps(h)
+	return h, nil
+}
+
+func notMultiple(g config.Gauge) Note {
+	return Note{Code: "not-a-multiple", Gauge: g.Name, Text: fmt.Sprintf(
+		"indications of gauge %s are no multiples of its resolution of %g mm; medians are exact to a nanometre instead: check the resolution in the rig file", g.Name, g.Resolution.Value)}
+}
+
+// widths are the bin widths to choose from, in seconds.
+var widths = []int64{10, 20, 30, 60, 120, 300, 600}
+
+// BinWidth returns the width of the bins of a run, in nanoseconds: the least
+// of a fixed list that gives at most some 6,000 bins, and at most ten minutes.
+func BinWidth(first, last int64) int64 {
+	for _, w := range widths {
+		if (last-first)/(w*second) <= 6000 {
+			return w * second
+		}
+	}
+	return widths[len(widths)-1] * second
+}
+
+const second = int64(1e9)
+
+// gridEdges returns the edges of the equal bins that cover [first, last].
+func gridEdges(first, last, width int64) []int64 {
+	from := first - mod(first, width)
+	var edges []int64
+	for e := from; ; e += width {
+		edges = append(edges, e)
+		if e > last {
+			return edges
+		}
+	}
+}
+
+func mod(a, b int64) int64 {
+	m := a % b
+	if m < 0 {
+		m += b
+	}
+	return m
+}
+
+// memory is a Source of readings held in memory.
+type memory struct {
+	rig     *config.Rig
+	samples [][]Sample
+	bins    [][]Bin
+	ambient [][]AmbientSample
+}
+
+func (m *memory) Bins(gauge int) []Bin { return m.bins[gauge] }
+
+func (m *memory) Window(from, to int64) ([][]Sample, error) {
+	out := make([][]Sample, len(m.samples))
+	for i, list := range m.samples {
+		lo := sort.Search(len(list), func(k int) bool { return list[k].Time >= from })
+		hi := sort.Search(len(list), func(k int) bool { return list[k].Time > to })
+		out[i] = list[lo:hi:hi]
+	}
+	return out, nil
+}
+
+func (m *memory) Fine(edges []int64) ([][]Bin, error) {
+	out := make([][]Bin, len(m.samples))
+	for i, list := range m.samples {
+		out[i], _ = binSamples(list, m.rig.Gauges[i].Resolution.Value, edges)
+	}
+	return out, nil
+}
+
+func (m *memory) Ambient(probe int) []AmbientSample {
+	if probe >= len(m.ambient) {
+		return nil
+	}
+	return m.ambient[probe]
+}
+
+// binSamples bins one gauge's readings between the edges.
+func binSamples(list []Sample, resolution float64, edges []int64) (bins []Bin, inexact bool) {
+	if len(edges) < 2 {
+		return nil, false
+	}
+	c := newCounter(resolution)
+	var scratch []tally
+	cell := 0
+	c.start(edges[0], edges[1])
+	lo := sort.Search(len(list), func(k int) bool { return list[k].Time >= edges[0] })
+	for _, s := range list[lo:] {
+		if s.Time >= c.to {
+			if b, ok := c.finish(&scratch); ok {
+				bins = append(bins, b)
+			}
+			for cell+1 < len(edges) && s.Time >= edges[cell+1] {
+				cell++
+			}
+			if cell+1 == len(edges) {
+				return bins, c.inexact
+			}
+			c.start(edges[cell], edges[cell+1])
+		}
+		c.add(s.Time, s.MM)
+	}
+	if b, ok := c.finish(&scratch); ok {
+		bins = append(bins, b)
+	}
+	return bins, c.inexact
+}

@@ -1,0 +1,221 @@
+package steps
+
+import (
+	"fmt"
+	"math"
+)
+
+// inch is the factor between millimetres and inches, exact.
+const inch = 25.4
+
+// unitKeys looks for gauges whose unit key was pressed: the indication became
+// 25.4 times less or more, as near as its resolution tells. It returns true
+// where it changed a gauge's scale, so that the search must start over.
+func (r *run) unitKeys() bool {
+	for i := range r.events {
+		e := &r.events[i]
+		ruling := r.ruling(e)
+		for g := range r.gauges {
+			if !e.moved[g] || ruling != "" && ruling != string(UnitKey) {
+				continue
+			}
+			if f := r.unitFactor(e, g); f != 0 {
+				r.pressUnit(e, g, f)
+				return true
+			}
+		}
+	}
+	return false
+}
+
+// unitFactor returns what the indication must be multiplied by behind the
+// cluster, relative to before, 0 where the ratio is not 25.4.
+func (r *run) unitFactor(e *cluster, g int) float64 {
+	gg := &r.gauges[g]
+	before, after := rawEdges(e, g)
+	if len(before) == 0 || len(after) == 0 {
+		return 0
+	}
+	// Right beside the cluster, so that creep does not spoil the ratio.
+	b, a := Median(before[max(0, len(before)-3):]), Median(after[:min(3, len(after))])
+	for _, f := range []float64{inch, 1 / inch} {
+		// The coarser side's half count, in the unit of the finer.
+		small := math.Abs(a)
+		if f < 1 {
+			small = math.Abs(b)
+		}
+		tol := inch*gg.res*1.01 + 4*gg.noise*math.Sqrt(2)
+		diff := math.Abs(a*f - b)
+		if f < 1 {
+			diff = math.Abs(a - b*inch)
+		}
+		if small > 12*gg.res && small*inch > 10*tol && diff <= tol {
+			return f
+		}
+	}
+	return 0
+}
+
+// pressUnit notes the key and rescales the readings until it is pressed back.
+func (r *run) pressUnit(e *cluster, g int, f float64) {
+	gg := &r.gauges[g]
+	t := e.hi
+	if n := len(gg.scales); n > 0 && gg.scales[n-1].to == 0 && math.Abs(gg.scales[n-1].factor*f-1) < 1e-9 && t > gg.scales[n-1].from {
+		gg.scales[n-1].to = t
+	} else {
+		gg.scales = append(gg.scales, scale{from: t, factor: f})
+	}
+	gg.refresh(r.h)
+	r.keys = append(r.keys, key{g, e.lo, e.hi, f})
+}
+
+// key is one press of a unit key.
+type key struct {
+	gauge  int
+	lo, hi int64
+	factor float64
+}
+
+// reportKeys lists the presses found as disturbances.
+func (r *run) reportKeys() {
+	for i := 0; i < len(r.keys); i++ {
+		k := r.keys[i]
+		d := Disturbance{Kind: UnitKey, Gauges: []int{k.gauge}, From: k.lo,
+			Treated:  "readings from then on converted",
+			Evidence: fmt.Sprintf("the indication of gauge %s changed by the factor 25.4 within its resolution", r.name(k.gauge))}
+		for _, other := range r.keys[i+1:] {
+			if other.gauge == k.gauge {
+				d.To = other.hi
+				r.keys = removeKey(r.keys, other)
+				break
+			}
+		}
+		r.exclude(k.gauge, k.lo, k.hi, string(UnitKey))
+		r.add(d)
+	}
+}
+
+func removeKey(list []key, k key) []key {
+	var out []key
+	for _, v := range list {
+		if v != k {
+			out = append(out, v)
+		}
+	}
+	return out
+}
+
+// acts believes the marked acts on gauges: the jump of that gauge nearest to
+// the mark is its doing.
+func (r *run) acts() {
+	for _, m := range r.h.Marks {
+		if m.Kind != "touch" {
+			continue
+		}
+		g := r.gauge(m.Gauge)
+		if g < 0 {
+			r.warn("unknown-gauge", -1, m.Time, fmt.Sprintf("a mark names gauge %q, which the rig file does not; it was left out", m.Gauge))
+			continue
+		}
+		e := r.nearestMove(g, m.Time)
+		if e == nil {
+			r.warn("act-without-response", g, m.Time, fmt.Sprintf("gauge %s was marked as %s, but its readings show nothing near that time", m.Gauge, m.Act))
+			continue
+		}
+		kind := GaugeKnock
+		if m.Act == "zeroed" {
+			kind = ZeroPressed
+		}
+		r.act(e, g, kind, m.Act)
+	}
+}
+
+// nearestMove returns the cluster nearest to t in which the gauge moved.
+func (r *run) nearestMove(g int, t int64) *cluster {
+	var best *cluster
+	dist := r.near()
+	for i := range r.events {
+		e := &r.events[i]
+		d := max(e.lo-t, t-e.hi, 0)
+		if e.moved[g] && !e.taken && d <= dist {
+			best, dist = e, d
+		}
+	}
+	return best
+}
+
+// act takes one gauge's jump out of a cluster and reports it. What the other
+// gauges did in it stays to be explained.
+func (r *run) act(e *cluster, g int, kind Kind, did string) {
+	d := Disturbance{Kind: kind, Gauges: []int{g}, From: e.lo + (e.hi-e.lo)/2, Marked: true,
+		By: []Value{e.jump[g]}, Treated: "offset taken off as a parameter with its uncertainty",
+		Evidence: fmt.Sprintf("marked: %s %s", r.name(g), did)}
+	d.Size = largest(d.By)
+	r.add(d)
+	r.offset(e, []int{g}, kind)
+	r.exclude(g, e.lo, e.hi, string(kind))
+	e.known[g], e.moved[g] = false, false
+	if len(e.movedGauges()) == 0 {
+		e.taken = true
+	}
+}
+
+// weakResponses looks again at marks whose loads were too small to stand out
+// by themselves: all gauges together, in the expected proportions, may still
+// show them.
+func (r *run) weakResponses() {
+	for i, c := range r.changes {
+		if r.matched[i] >= 0 {
+			continue
+		}
+		e, ok := r.around(c.mark())
+		if !ok {
+			continue
+		}
+		if e == nil {
+			continue
+		}
+		v := r.expected(c)
+		num, den := 0.0, 0.0
+		for g := range v {
+			if e.known[g] {
+				u := r.jumpU(e, g)
+				num += v[g] * e.jump[g].MM / sq(u)
+				den += sq(v[g] / u)
+			}
+		}
+		if den > 0 && num/math.Sqrt(den) > 4 && r.alike(e, v) > 0.6 {
+			e.taken = true
+			e.weak = true
+			r.events = append(r.events, *e)
+			r.matched[i] = len(r.events) - 1
+		}
+	}
+}
+
+// around makes a cluster of the readings on either side of a mark; ok is
+// false where something else happened there.
+func (r *run) around(t int64) (*cluster, bool) {
+	reach := r.near()
+	half := max(10*second, nanos(r.interval()))
+	for i := range r.events {
+		if r.events[i].lo < t+half && r.events[i].hi > t-half {
+			return nil, false
+		}
+	}
+	raw, err := r.h.Window(t-reach, t+reach)
+	if err != nil {
+		return nil, false
+	}
+	c := &cluster{lo: t - half, hi: t + half}
+	n := len(r.gauges)
+	c.raw = make([][]point, n)
+	c.jump, c.moved, c.peak, c.known = make([]Value, n), make([]bool, n), make([]float64, n), make([]bool, n)
+	for g := range r.gauges {
+		for _, s := range raw[g] {
+			c.raw[g] = append(c.raw[g], r.gauges[g].fromSample(s))
+		}
+		c.measureGauge(&r.gauges[g], t-reach, t+reach)
+	}
+	return c, true
+}

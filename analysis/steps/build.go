@@ -1,0 +1,156 @@
+package steps
+
+import (
+	"fmt"
+	"math"
+	"sort"
+)
+
+// part is what a step was built from.
+type part struct {
+	change int // index of the marked change, -1
+	event  *cluster
+	at     timing
+	un     *unmarkedStep
+}
+
+// buildSteps tiles the run with steps from the marks, where the readings say
+// when, and from the load changes nobody marked.
+func (r *run) buildSteps() {
+	r.parts = []part{{change: -1}}
+	for i, c := range r.changes {
+		p := part{change: i, event: r.matchOf(i)}
+		switch {
+		case p.event == nil:
+			p.at = timing{start: c.first, full: c.last, ramp: seconds(c.last - c.first)}
+			p.at.u = hypot(r.reach(i)) / math.Sqrt(3)
+		case p.event.weak:
+			p.at = r.coarse(p.event, c.mark())
+		default:
+			p.at = r.time(p.event, c.mark())
+		}
+		r.ruleStep(c.name, &p.at)
+		if p.at.start > r.h.Last {
+			r.warn("mark-after-last-reading", -1, c.first, fmt.Sprintf("step %s was marked after the last reading; there is nothing to say of it", c.name))
+			continue
+		}
+		r.parts = append(r.parts, p)
+	}
+	for i := range r.unmarked {
+		r.parts = append(r.parts, part{change: -1, event: r.unmarked[i].event, at: r.unmarked[i].at, un: &r.unmarked[i]})
+	}
+	sort.SliceStable(r.parts[1:], func(a, b int) bool { return r.parts[1+a].at.start < r.parts[1+b].at.start })
+	r.fillSteps()
+	r.chooseBaseline()
+}
+
+// ruleStep applies what a person decided about a step's instants.
+func (r *run) ruleStep(name string, t *timing) {
+	for i := range r.rules {
+		u := &r.rules[i]
+		if u.what != "step" || u.name != name {
+			continue
+		}
+		switch u.field {
+		case "found":
+			t.start, u.used = u.instant, true
+		case "full":
+			t.full, u.used = u.instant, true
+		}
+		t.ramp = max(0, seconds(t.full-t.start))
+		t.full = max(t.full, t.start)
+	}
+}
+
+func (r *run) fillSteps() {
+	n := len(r.h.Rig.Loads)
+	state := append([]float64(nil), r.before.newton...)
+	kg := cloneMap(r.before.kilogram)
+	unnamed := 0
+	for k, p := range r.parts {
+		s := Step{From: r.h.First, To: r.h.Last, Gauges: make([]GaugeFigures, len(r.gauges))}
+		delta := make([]float64, n)
+		switch {
+		case k == 0:
+			s.Name = r.planName(0)
+			if r.before.name != "" {
+				s.Name = r.before.name
+			}
+		case p.un != nil:
+			unnamed++
+			s.Name = fmt.Sprintf("unmarked-%d", unnamed)
+			s.Unmarked = true
+			s.Response = truth(true)
+			if j := p.un.fit.p.load; j >= 0 && p.un.newton != nil {
+				delta[j] = p.un.newton.MM
+				state[j] += delta[j]
+				delete(kg, r.h.Rig.Loads[j].Name)
+			}
+			r.warn("unmarked-step", -1, p.at.start, fmt.Sprintf("the load changed and nobody marked it: confirm what happened, and mark it with --when (%s)", s.Name))
+		default:
+			c := r.changes[p.change]
+			s.Name, s.Marked = c.name, c.first
+			for j := range state {
+				if c.set[j] {
+					delta[j] = c.newton[j] - state[j]
+					state[j] = c.newton[j]
+				}
+			}
+			kg = cloneMap(c.kilogram)
+			s.Response = truth(p.event != nil)
+			r.ruleResponse(&s)
+		}
+		if k > 0 {
+			s.From, s.Full = max(p.at.start, r.out.Steps[k-1].From), max(p.at.full, r.out.Steps[k-1].From)
+			r.out.Steps[k-1].To = s.From
+			s.RampS, s.RingingS, s.RingingMM = p.at.ramp, p.at.ringing, p.at.swingMM
+			if p.event != nil {
+				s.Found, s.StartU = p.at.start, p.at.u
+				if s.Marked != 0 {
+					s.OffsetS = seconds(s.Marked - s.Found)
+				}
+			}
+			r.out.Loads = append(r.out.Loads, LoadChange{Step: k, Full: s.Full, RampS: s.RampS, Delta: delta})
+		}
+		s.Loads, s.Kilogram = map[string]float64{}, cloneMap(kg)
+		for j, l := range r.h.Rig.Loads {
+			s.Loads[l.Name] = state[j]
+		}
+		r.out.Steps = append(r.out.Steps, s)
+	}
+}
+
+func truth(b bool) *bool { return &b }
+
+func (r *run) ruleResponse(s *Step) {
+	for i := range r.rules {
+		u := &r.rules[i]
+		if u.what == "step" && u.name == s.Name && u.field == "response" {
+			s.Response, u.used = truth(u.value == "true"), true
+		}
+	}
+}
+
+// chooseBaseline picks the step with the least load before the first rise,
+// the last such where several are alike.
+func (r *run) chooseBaseline() {
+	best, least := 0, math.Inf(1)
+	former := math.Inf(-1)
+	for k, s := range r.out.Steps {
+		sum := 0.0
+		for _, v := range s.Loads {
+			sum += v
+		}
+		if k > 0 && sum > former+1e-9 {
+			break
+		}
+		if sum <= least {
+			best, least = k, sum
+		}
+		former = sum
+	}
+	r.out.Baseline = best
+	if least > 0 {
+		r.warn("baseline-loaded", -1, r.out.Steps[best].From, fmt.Sprintf("%.4g N hung on the beam at the baseline (step %s): sags count from there", least, r.out.Steps[best].Name))
+	}
+}

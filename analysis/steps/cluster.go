@@ -1,0 +1,212 @@
+package steps
+
+import (
+	"fmt"
+	"math"
+	"sort"
+
+	"gaugelog/analysis/history"
+)
+
+// cluster is one happening: what several gauges did at the same time.
+type cluster struct {
+	// lo is the last instant before anything moved, hi the first behind.
+	lo, hi int64
+	// jump is each gauge's lasting change, moved whether it is beyond doubt;
+	// peak its greatest excursion within [lo, hi].
+	jump  []Value
+	moved []bool
+	peak  []float64
+	known []bool // the gauge has readings on both sides
+	// raw holds the readings of every gauge around it.
+	raw [][]point
+	// gap is true where the gauges left no reading between lo and hi though
+	// they should have.
+	gap bool
+
+	taken bool // explained
+	weak  bool // too small to be timed by itself
+}
+
+// scan looks at the single readings of every hot stretch and gathers what
+// the gauges did there into clusters.
+func (r *run) scan() error {
+	for _, v := range r.hot {
+		raw, err := r.h.Window(v.from-r.pad(), v.to+r.pad())
+		if err != nil {
+			return fmt.Errorf("reading back around a jump: %w", err)
+		}
+		r.scanWindow(raw)
+	}
+	sort.SliceStable(r.events, func(a, b int) bool { return r.events[a].lo < r.events[b].lo })
+	r.events = dedupe(r.events)
+	r.measure()
+	return nil
+}
+
+func (r *run) scanWindow(raw [][]history.Sample) {
+	pts := make([][]point, len(raw))
+	var all []transition
+	for gi := range r.gauges {
+		g := &r.gauges[gi]
+		pts[gi] = make([]point, 0, len(raw[gi]))
+		for _, s := range raw[gi] {
+			pts[gi] = append(pts[gi], g.fromSample(s))
+		}
+		flat, singles := hampel(g, pts[gi])
+		all = append(all, singles...)
+		all = append(all, jumps(g, flat, []int{1, 2, 5, 15, 45}, func(point) float64 { return g.noise })...)
+	}
+	sort.SliceStable(all, func(a, b int) bool { return all[a].lo < all[b].lo })
+	join := max(apart, 2*nanos(r.interval()))
+	if r.interval() > 20 {
+		join = nanos(r.interval())
+	}
+	for i := 0; i < len(all); {
+		c := cluster{lo: all[i].lo, hi: all[i].hi, raw: pts}
+		j := i
+		for j < len(all) && all[j].lo <= c.hi+join {
+			c.hi = max(c.hi, all[j].hi)
+			j++
+		}
+		r.events = append(r.events, c)
+		i = j
+	}
+}
+
+// dedupe drops clusters that two overlapping windows both found.
+func dedupe(list []cluster) []cluster {
+	var out []cluster
+	for _, c := range list {
+		if n := len(out); n > 0 && c.lo <= out[n-1].hi {
+			out[n-1].hi = max(out[n-1].hi, c.hi)
+			continue
+		}
+		out = append(out, c)
+	}
+	return out
+}
+
+// hampel takes out single readings (up to three together) that stand off the
+// median of the eleven around them, and returns them as pairs of transitions.
+func hampel(g *gauge, seq []point) (rest []point, singles []transition) {
+	const half = 5
+	bad := make([]bool, len(seq))
+	w := make([]float64, 0, 2*half+1)
+	for i := range seq {
+		if i < half || i+half >= len(seq) {
+			continue
+		}
+		w = w[:0]
+		for _, p := range seq[i-half : i+half+1] {
+			w = append(w, p.y)
+		}
+		m := Median(w)
+		// Both sides must agree with each other: a step is no spike.
+		left, right := Median(w[:half-1]), Median(w[half+2:])
+		need := max(5*madScale*MAD(w), 3*g.res, 6*g.noise)
+		bad[i] = math.Abs(seq[i].y-m) > need && math.Abs(left-right) < math.Abs(seq[i].y-m)/3
+	}
+	for i := 0; i < len(seq); i++ {
+		if !bad[i] {
+			rest = append(rest, seq[i])
+			continue
+		}
+		j := i
+		for j < len(seq) && bad[j] {
+			j++
+		}
+		if i > 0 && j < len(seq) {
+			singles = append(singles,
+				transition{g.index, seq[i-1].t, seq[i].t, seq[i].y - seq[i-1].y, 1, i - 1},
+				transition{g.index, seq[j-1].t, seq[j].t, seq[j].y - seq[j-1].y, 1, j - 1})
+		}
+		i = j - 1
+	}
+	return rest, singles
+}
+
+// measure works out how far each gauge moved in each cluster. The readings
+// compared are those between this cluster and its neighbours.
+func (r *run) measure() {
+	for i := range r.events {
+		c := &r.events[i]
+		before, after := int64(math.MinInt64), int64(math.MaxInt64)
+		if i > 0 {
+			before = r.events[i-1].hi
+		}
+		if i+1 < len(r.events) {
+			after = r.events[i+1].lo
+		}
+		n := len(r.gauges)
+		c.jump, c.moved = make([]Value, n), make([]bool, n)
+		c.peak, c.known = make([]float64, n), make([]bool, n)
+		for gi := range r.gauges {
+			c.measureGauge(&r.gauges[gi], before, after)
+		}
+		c.gap = seconds(c.hi-c.lo) > 5*r.interval() && c.empty()
+	}
+}
+
+// empty says that no gauge left a reading inside the cluster.
+func (c *cluster) empty() bool {
+	for _, pts := range c.raw {
+		for _, p := range pts {
+			if p.t > c.lo && p.t < c.hi {
+				return false
+			}
+		}
+	}
+	return true
+}
+
+// sides is how many readings on either side of a cluster are compared.
+const sides = 12
+
+func (c *cluster) measureGauge(g *gauge, before, after int64) {
+	pts := c.raw[g.index]
+	a := sort.Search(len(pts), func(k int) bool { return pts[k].t > c.lo })
+	b := sort.Search(len(pts), func(k int) bool { return pts[k].t >= c.hi })
+	lo := a
+	for lo > 0 && a-lo < sides && pts[lo-1].t >= before {
+		lo--
+	}
+	hi := b
+	for hi < len(pts) && hi-b < sides && pts[hi].t <= after {
+		hi++
+	}
+	if lo == a || hi == b {
+		return
+	}
+	c.known[g.index] = true
+	mid := c.lo + (c.hi-c.lo)/2
+	l, lu := edge(g, pts[lo:a], mid)
+	r, ru := edge(g, pts[b:hi], mid)
+	c.jump[g.index] = Value{r - l, hypot(lu, ru)}
+	c.moved[g.index] = math.Abs(r-l) > max(4*hypot(lu, ru), 1.5*g.res)
+	for _, p := range pts[a:b] {
+		if d := p.y - l; math.Abs(d) > math.Abs(c.peak[g.index]) {
+			c.peak[g.index] = d
+		}
+	}
+}
+
+// edge estimates a gauge's level at the instant t from readings on one side
+// of it: their line where there are eight, else their median.
+func edge(g *gauge, pts []point, t int64) (level, u float64) {
+	x, y, s := make([]float64, len(pts)), make([]float64, len(pts)), make([]float64, len(pts))
+	for i, p := range pts {
+		x[i], y[i], s[i] = seconds(p.t-t), p.y, g.noise
+	}
+	floor := floorU(g.res)
+	if len(pts) < 8 {
+		v := Location(y, g.res)
+		return v.MM, max(v.U, 1.253*g.noise/math.Sqrt(float64(len(pts))), floor)
+	}
+	fit, ok := fitPoly(x, y, s, 1)
+	if !ok {
+		v := Location(y, g.res)
+		return v.MM, v.U
+	}
+	return fit.at(0), max(fit.u(0), floor)
+}

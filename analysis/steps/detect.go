@@ -1,0 +1,252 @@
+package steps
+
+import (
+	"math"
+	"slices"
+	"sort"
+)
+
+// transition is a sudden change of one gauge between two of its points.
+type transition struct {
+	gauge  int
+	lo, hi int64 // the last point before and the first behind
+	size   float64
+	scale  int // points on either side that showed it
+	index  int // of the point before
+}
+
+// How a jump must stand out. With medians of five readings on either side the
+// first is about seven times the scatter of one reading, so that ten times
+// the scatter is found and one false alarm needs far more than a
+// gauge-century of readings; the second keeps a staircase of single counts
+// from ever being a jump.
+const (
+	jumpSigmas = 5.5
+	jumpCounts = 2.05
+	// jumpShare is the least share of a rise that must not be explained by the
+	// slopes on either side: a smooth curve, however steep, has less.
+	jumpShare = 0.4
+)
+
+// blocks holds the medians and mean instants of k successive points.
+type blocks struct{ y, t []float64 }
+
+func blockMedians(seq []point, k int) blocks {
+	n := len(seq) - k + 1
+	if n <= 0 {
+		return blocks{}
+	}
+	b := blocks{make([]float64, n), make([]float64, n)}
+	w := make([]float64, 0, k)
+	t0 := seq[0].t
+	sum := 0.0
+	for i, p := range seq {
+		if len(w) == k {
+			old := seq[i-k]
+			j, _ := slices.BinarySearch(w, old.y)
+			w = slices.Delete(w, j, j+1)
+			sum -= seconds(old.t - t0)
+		}
+		j, _ := slices.BinarySearch(w, p.y)
+		w = slices.Insert(w, j, p.y)
+		sum += seconds(p.t - t0)
+		if i >= k-1 {
+			b.y[i-k+1] = (w[(k-1)/2] + w[k/2]) / 2
+			b.t[i-k+1] = sum / float64(k)
+		}
+	}
+	return b
+}
+
+// score is how far the rise behind point i stands out at one scale.
+type score struct {
+	i           int
+	rise, jump  float64
+	need, ratio float64
+}
+
+// scores works out, for every place between points, the rise between the
+// medians of k points on either side less what the slopes beside it explain.
+func scores(seq []point, k int, sigma func(point) float64, res float64) []score {
+	b := blockMedians(seq, k)
+	n := len(seq)
+	if len(b.y) == 0 {
+		return nil
+	}
+	out := make([]score, 0, n)
+	abs := make([]float64, 0, n)
+	for i := k - 1; i+k < n; i++ {
+		l, r := i-k+1, i+1
+		rise, dt := b.y[r]-b.y[l], b.t[r]-b.t[l]
+		var slopes []float64
+		va, vb, vo := 1.0, 1.0, 0.0
+		if l-k >= 0 {
+			d := b.t[l] - b.t[l-k]
+			slopes = append(slopes, (b.y[l]-b.y[l-k])/d)
+			va, vo = dt/d, vo+1
+		}
+		if r+k < len(b.y) {
+			d := b.t[r+k] - b.t[r]
+			slopes = append(slopes, (b.y[r+k]-b.y[r])/d)
+			vb, vo = dt/d, vo+1
+		}
+		s := score{i: i, rise: rise, jump: rise}
+		v := 1.57 * sq(sigma(seq[i])) / float64(k)
+		bend := 0.0
+		switch len(slopes) {
+		case 2:
+			s.jump -= dt * (slopes[0] + slopes[1]) / 2
+			bend = dt * math.Abs(slopes[1]-slopes[0]) / 2
+			v *= sq(1+va/2) + sq(1+vb/2) + sq(va/2) + sq(vb/2)
+		case 1:
+			s.jump -= dt * slopes[0]
+			bend = math.Abs(dt*slopes[0]) / 2
+			w := va * vb // one of them is 1
+			v *= sq(1+w) + 1 + sq(w)
+		default:
+			v *= 2
+		}
+		s.need = max(jumpSigmas*math.Sqrt(v), jumpCounts*res) + bend
+		abs = append(abs, math.Abs(s.jump))
+		out = append(out, s)
+	}
+	// The run's own unrest (temperature, vibration) sets a floor of its own.
+	unrest := 0.0
+	if len(abs) >= 30 {
+		unrest = 6 * madScale * Median(abs)
+	}
+	for i := range out {
+		s := &out[i]
+		s.need = max(s.need, unrest)
+		if s.jump*s.rise > 0 && math.Abs(s.jump) >= jumpShare*math.Abs(s.rise) {
+			s.ratio = math.Abs(s.jump) / s.need
+		}
+	}
+	return out
+}
+
+func sq(x float64) float64 { return x * x }
+
+// jumps finds the sudden changes in one gauge's points. Small scales come
+// first, because they tell the place best; a larger one only adds what they
+// could not see.
+func jumps(g *gauge, seq []point, scales []int, sigma func(point) float64) []transition {
+	var found []transition
+	for _, k := range scales {
+		list := scores(seq, k, sigma, g.res)
+		sort.SliceStable(list, func(a, b int) bool { return list[a].ratio > list[b].ratio })
+		for _, s := range list {
+			if s.ratio <= 1 {
+				break
+			}
+			near := false
+			for _, f := range found {
+				if d := f.index - s.i; d <= k && -d <= k {
+					near = true
+					break
+				}
+			}
+			if !near {
+				// A large scale sees that there was a rise, not where within it.
+				lo, hi := s.i, s.i+1
+				if k > 2 {
+					lo, hi = s.i-k+1, s.i+k
+				}
+				found = append(found, transition{g.index, seq[lo].t, seq[hi].t, s.jump, k, s.i})
+			}
+		}
+	}
+	sort.SliceStable(found, func(a, b int) bool { return found[a].lo < found[b].lo })
+	return found
+}
+
+// interval is a stretch of time.
+type interval struct{ from, to int64 }
+
+// merge joins intervals that overlap or lie within gap of each other.
+func merge(list []interval, gap int64) []interval {
+	sort.Slice(list, func(a, b int) bool {
+		return list[a].from < list[b].from || list[a].from == list[b].from && list[a].to < list[b].to
+	})
+	var out []interval
+	for _, v := range list {
+		if n := len(out); n > 0 && v.from <= out[n-1].to+gap {
+			out[n-1].to = max(out[n-1].to, v.to)
+		} else {
+			out = append(out, v)
+		}
+	}
+	return out
+}
+
+// findHot says where single readings are worth looking at: around the marks,
+// and wherever the bins show a jump or an excursion.
+func (r *run) findHot() {
+	var hot []interval
+	for gi := range r.gauges {
+		g := &r.gauges[gi]
+		sigma := func(p point) float64 { return binSigma(g, p) }
+		for _, t := range jumps(g, g.seq, []int{1, 2, 4, 8}, sigma) {
+			pad := 1 + t.scale/2
+			lo, hi := max(0, t.index-pad), min(len(g.seq)-1, t.index+1+pad)
+			hot = append(hot, interval{g.seq[lo].from, g.seq[hi].to})
+		}
+		hot = append(hot, excursions(g)...)
+	}
+	for _, m := range r.h.Marks {
+		if m.Kind != "load" && m.Kind != "touch" {
+			continue
+		}
+		hot = append(hot, interval{m.Time - r.near(), m.Time + r.near()})
+	}
+	for i := range hot {
+		hot[i].from, hot[i].to = max(hot[i].from, r.h.First), min(hot[i].to, r.h.Last)
+	}
+	hot = slices.DeleteFunc(hot, func(v interval) bool { return v.from > v.to })
+	r.hot = merge(hot, r.pad())
+}
+
+// near is how far from a mark single readings are always looked at.
+func (r *run) near() int64 { return max(120*second, 6*nanos(r.interval())) }
+
+// pad is how far beyond a hot stretch readings are taken for comparison.
+func (r *run) pad() int64 { return max(60*second, 12*nanos(r.interval())) }
+
+// interval is the typical spacing of the slowest gauge's readings, s.
+func (r *run) interval() float64 {
+	w := 0.0
+	for i := range r.gauges {
+		if len(r.gauges[i].seq) > 1 {
+			w = max(w, r.gauges[i].interval)
+		}
+	}
+	return w
+}
+
+// binSigma is the scatter of a bin's median, as a single point's.
+func binSigma(g *gauge, p point) float64 {
+	return max(g.noise/math.Sqrt(float64(p.n)), g.res/10)
+}
+
+// excursions finds bins whose extremes stand far off their median though the
+// median of their neighbours does not.
+func excursions(g *gauge) []interval {
+	var out []interval
+	for i, p := range g.seq {
+		if p.n < 2 {
+			continue
+		}
+		slack := 0.0
+		if i > 0 {
+			slack = math.Abs(p.y - g.seq[i-1].y)
+		}
+		if i+1 < len(g.seq) {
+			slack = max(slack, math.Abs(p.y-g.seq[i+1].y))
+		}
+		need := max(7*g.noise, 3*g.res) + slack
+		if p.max-p.y > need || p.y-p.min > need {
+			out = append(out, interval{p.from, p.to})
+		}
+	}
+	return out
+}

@@ -1,0 +1,70 @@
+package steps
+
+import (
+	"errors"
+	"fmt"
+
+	"gaugelog/analysis/history"
+)
+
+// Find says what happened in a run. It fails only where the run cannot be
+// read back or holds no readings at all; everything short of that is a
+// warning, and what can still be computed is.
+func Find(h *history.History, opt Options) (*Findings, error) {
+	if h.Readings == 0 {
+		return nil, errors.New("the run holds no readings: was the recording started, and do the gauges' names in readings/ match the rig file?")
+	}
+	if opt.Influence != nil {
+		if len(opt.Influence) != len(h.Rig.Gauges) {
+			return nil, fmt.Errorf("influence of %d gauges given, the rig has %d", len(opt.Influence), len(h.Rig.Gauges))
+		}
+	}
+	if opt.Gravity == 0 {
+		opt.Gravity = standardGravity
+	}
+	r := &run{h: h, opt: opt, out: &Findings{}}
+	for i := range h.Rig.Gauges {
+		r.gauges = append(r.gauges, newGauge(h, i))
+		if len(r.gauges[i].seq) == 0 {
+			r.warn("gauge-without-readings", i, 0, fmt.Sprintf("gauge %s left no reading", r.name(i)))
+		}
+	}
+	r.decide()
+	r.before = r.readMarks()
+	if err := r.happenings(); err != nil {
+		return nil, err
+	}
+	r.chooseChord()
+	r.buildSteps()
+	r.lasting()
+	if err := r.tracks(); err != nil {
+		return nil, err
+	}
+	r.figures()
+	r.settlements()
+	r.finish()
+	return r.out, nil
+}
+
+// happenings finds the clusters and explains them. A unit key that was pressed
+// changes the very scale of a gauge's readings, so it starts over then.
+func (r *run) happenings() error {
+	for range 6 {
+		r.hot, r.events, r.matched = nil, nil, nil
+		r.out.Disturbances = nil
+		r.findHot()
+		if err := r.scan(); err != nil {
+			return err
+		}
+		if r.unitKeys() {
+			continue
+		}
+		r.acts()
+		r.matchChanges()
+		r.findStuck()
+		r.weakResponses()
+		r.classify()
+		return nil
+	}
+	return nil
+}

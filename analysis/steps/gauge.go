@@ -1,0 +1,164 @@
+package steps
+
+import (
+	"math"
+
+	"gaugelog/analysis/history"
+	"gaugelog/config"
+)
+
+// second is one second in the unit of instants.
+const second = int64(1e9)
+
+func seconds(ns int64) float64 { return float64(ns) / 1e9 }
+
+func nanos(s float64) int64 { return int64(math.Round(s * 1e9)) }
+
+// point is one reading or bin of a gauge, as sag: calibrated and down
+// positive, but no baseline subtracted.
+type point struct {
+	t        int64
+	y, raw   float64
+	n        int
+	mad      float64 // of its readings, mm
+	from, to int64   // of its readings
+	min, max float64 // as sag
+}
+
+// gauge is what the finder knows of one gauge.
+type gauge struct {
+	cfg          *config.Gauge
+	index        int
+	sign         float64
+	gain, offset float64
+	res          float64
+	noise        float64 // sd of one reading, mm
+	interval     float64 // typical spacing of readings, s
+	seq          []point // the whole run in bins
+	scales       []scale
+}
+
+// scale is a stretch in which the indication must be multiplied, a unit key
+// having been pressed.
+type scale struct {
+	from, to int64 // to 0: to the end
+	factor   float64
+}
+
+func newGauge(h *history.History, i int) gauge {
+	cfg := &h.Rig.Gauges[i]
+	g := gauge{cfg: cfg, index: i, sign: 1, gain: 1, res: cfg.Resolution.Value}
+	if cfg.Sense == "up" {
+		g.sign = -1
+	}
+	if c := cfg.Calibration; c != nil {
+		g.offset = c.Offset.Value
+		if c.Gain.Value != 0 {
+			g.gain = c.Gain.Value
+		}
+	}
+	g.refresh(h)
+	return g
+}
+
+// refresh rebuilds the sequence after scales changed.
+func (g *gauge) refresh(h *history.History) {
+	bins := h.Bins(g.index)
+	g.seq = make([]point, 0, len(bins))
+	for _, b := range bins {
+		g.seq = append(g.seq, g.fromBin(b))
+	}
+	g.noise, g.interval = g.scatter()
+}
+
+func (g *gauge) fromBin(b history.Bin) point {
+	p := point{t: b.Time, raw: b.Median, n: b.N, from: b.From, to: b.LastTime}
+	f := g.factor(b.Time)
+	p.y = g.sag(b.Median * f)
+	p.mad = b.MAD * f / math.Abs(g.gain)
+	p.min, p.max = g.sag(b.Min*f), g.sag(b.Max*f)
+	if p.min > p.max {
+		p.min, p.max = p.max, p.min
+	}
+	if b.N == 1 {
+		p.from = b.Time
+	}
+	return p
+}
+
+func (g *gauge) fromSample(s history.Sample) point {
+	y := g.sag(s.MM * g.factor(s.Time))
+	return point{t: s.Time, y: y, raw: s.MM, n: 1, from: s.Time, to: s.Time, min: y, max: y}
+}
+
+func (g *gauge) factor(t int64) float64 {
+	for _, s := range g.scales {
+		if t >= s.from && (s.to == 0 || t < s.to) {
+			return s.factor
+		}
+	}
+	return 1
+}
+
+// sag turns an indication into downward movement, mm, from where the
+// calibrated gauge would read 0.
+func (g *gauge) sag(mm float64) float64 { return g.sign * (mm - g.offset) / g.gain }
+
+// scatter estimates the standard deviation of one reading and the typical
+// interval. Within bins of several readings their median deviation tells, or,
+// where resolution leaves that at nothing, their range over what the range of
+// as many normal readings is; otherwise second differences of neighbours do,
+// which no steady trend enters. It is never below the resolution's floor.
+func (g *gauge) scatter() (noise, interval float64) {
+	var spread, ranges, second, gaps []float64
+	for i, p := range g.seq {
+		if p.n >= 5 {
+			spread = append(spread, madScale*p.mad)
+			ranges = append(ranges, (p.max-p.min)/normalRange(p.n))
+		}
+		if i > 0 {
+			gaps = append(gaps, seconds(p.to-g.seq[i-1].to)/float64(p.n))
+		}
+		if i > 1 {
+			d := g.seq[i-2].y - 2*g.seq[i-1].y + p.y
+			second = append(second, math.Abs(d))
+		}
+	}
+	floor := floorU(g.res)
+	interval = Median(gaps)
+	if len(spread) > 3 && len(spread) > len(g.seq)/2 {
+		return max(Median(spread), Median(ranges), floor), interval
+	}
+	return max(madScale*Median(second)/math.Sqrt(6), floor), interval
+}
+
+// normalRange is the expected range of n normal readings in standard
+// deviations, by Blom's approximation of the extremes (within 1 % from n = 5).
+func normalRange(n int) float64 {
+	p := (float64(n) - 0.375) / (float64(n) + 0.25)
+	return 2 * math.Sqrt2 * math.Erfinv(2*p-1)
+}
+
+// pointU is the standard uncertainty of a point from scatter and resolution.
+func (g *gauge) pointU(p point) float64 {
+	s := g.noise
+	if p.n >= 5 {
+		s = max(s, madScale*p.mad)
+	}
+	return max(1.253*s/math.Sqrt(float64(p.n)), floorU(g.res))
+}
+
+// inSpan says whether the gauge stands between the outermost supports.
+func (r *run) inSpan(g int) bool {
+	lo, hi := math.Inf(1), math.Inf(-1)
+	for _, s := range r.h.Rig.Supports {
+		lo, hi = min(lo, s.At.Value), max(hi, s.At.Value)
+	}
+	at := r.h.Rig.Gauges[g].At.Value
+	return at > lo && at < hi || len(r.h.Rig.Supports) < 2
+}
+
+func (r *run) seesBeam(g int) bool {
+	s := r.h.Rig.Gauges[g].Sees
+	return s == "" || s == "beam"
+}

@@ -1,0 +1,234 @@
+package steps
+
+import (
+	"math"
+	"sort"
+)
+
+// timing is when a change began and was complete.
+type timing struct {
+	start, full      int64
+	u                float64 // of start, s
+	ramp             float64 // s
+	ringing, swingMM float64
+}
+
+// share is how much of the whole change had happened at one instant, from all
+// gauges read about then.
+type share struct {
+	t    int64
+	z, u float64
+}
+
+// settled is the share of the change within which it counts as complete: the
+// first seconds of creep are not part of the ramp.
+const settled = 0.03
+
+// time finds the first movement and the instant of full load of a cluster
+// from all gauges that moved, each weighted by its jump over its scatter.
+// mark is the operator's instant, 0 for none.
+func (r *run) time(c *cluster, mark int64) timing {
+	s := r.shares(c)
+	// The change has begun by the first share beyond half.
+	mid := -1
+	for i := range s {
+		if s[i].t >= c.lo && s[i].z > 0.5 && (i+1 >= len(s) || s[i+1].z > 0.4) {
+			mid = i
+			break
+		}
+	}
+	if mid <= 0 {
+		return r.coarse(c, mark)
+	}
+	first := mid
+	for first > 0 && !still(s, first-1) {
+		first--
+	}
+	if first == 0 {
+		return r.coarse(c, mark)
+	}
+	lo, hi := s[first-1].t, s[first].t
+	after := r.aftermath(s, c, hi)
+	done := first
+	for done < len(s) && !complete(s, done, after) {
+		done++
+	}
+	if done == len(s) {
+		done = mid
+	}
+	t := r.ramped(s, first, done, lo, hi, mark)
+	t.ringing, t.swingMM = r.ringing(c, s, done, after)
+	return t
+}
+
+// still says that share i and the one before it show no movement.
+func still(s []share, i int) bool {
+	quiet := func(v share) bool { return v.z < max(4*v.u, 0.004) }
+	return quiet(s[i]) && (i == 0 || quiet(s[i-1]) || s[i].z < s[i].u)
+}
+
+// complete says that share i, and most of the next, lie at the later level.
+func complete(s []share, i int, after func(int64) float64) bool {
+	good, seen := 0, 0
+	for j := i; j < len(s) && j < i+3; j++ {
+		seen++
+		if math.Abs(s[j].z-after(s[j].t)) < max(4*s[j].u, settled) {
+			good++
+		}
+	}
+	first := math.Abs(s[i].z-after(s[i].t)) < max(4*s[i].u, settled)
+	return first && 2*good > seen
+}
+
+// coarse is the timing where single readings cannot tell more than the
+// interval in which it happened.
+func (r *run) coarse(c *cluster, mark int64) timing {
+	t := timing{start: c.lo + (c.hi-c.lo)/2, u: seconds(c.hi-c.lo) / math.Sqrt(12)}
+	if mark > c.lo && mark < c.hi {
+		t.start = mark
+	}
+	t.full = t.start
+	return t
+}
+
+// ramped turns the first moved and the first settled share into instants.
+func (r *run) ramped(s []share, first, done int, lo, hi, mark int64) timing {
+	var t timing
+	gap := seconds(hi - lo)
+	t.start = lo + (hi-lo)/2
+	if gap > 5 && mark > lo && mark < hi {
+		t.start = mark // nothing between these readings contradicts it
+	}
+	t.full = t.start
+	if done > first {
+		// Part of the change was seen under way: its line gives both ends.
+		t.full = s[done-1].t + (s[done].t-s[done-1].t)/2
+		var x, y, u []float64
+		for _, v := range s[first:done] {
+			if v.z > 0.05 && v.z < 0.95 {
+				x, y, u = append(x, seconds(v.t-hi)), append(y, v.z), append(u, max(v.u, 0.01))
+			}
+		}
+		if len(x) >= 3 {
+			slope, at0 := TheilSen(x, y)
+			if slope > 0 {
+				t.start = clamp(hi+nanos(-at0/slope), lo, hi)
+				t.full = clamp(hi+nanos((1-at0)/slope), s[done-1].t, s[done].t)
+			}
+		}
+		t.ramp = seconds(t.full - t.start)
+	}
+	t.u = hypot(gap, t.ramp) / math.Sqrt(12)
+	return t
+}
+
+func clamp(v, lo, hi int64) int64 { return max(lo, min(v, hi)) }
+
+// shares merges the readings of the moved gauges around a cluster into one
+// rising signal: 0 before, 1 behind.
+func (r *run) shares(c *cluster) []share {
+	var all []share
+	for g := range r.gauges {
+		if !c.moved[g] {
+			continue
+		}
+		gg := &r.gauges[g]
+		base, ok := levelBefore(c.raw[g], c.lo, gg)
+		if !ok {
+			continue
+		}
+		j := c.jump[g].MM
+		u := max(gg.noise, floorU(gg.res)) / math.Abs(j)
+		for _, p := range c.raw[g] {
+			if p.t >= c.lo-60*second-12*nanos(gg.interval) && p.t <= c.hi+120*second+12*nanos(gg.interval) {
+				all = append(all, share{p.t, (p.y - base(p.t)) / j, u})
+			}
+		}
+	}
+	sort.SliceStable(all, func(a, b int) bool { return all[a].t < all[b].t })
+	return combine(all, nanos(r.interval()/20))
+}
+
+// combine averages shares taken within tol of one another.
+func combine(all []share, tol int64) []share {
+	var out []share
+	for i := 0; i < len(all); {
+		sw, sz, st := 0.0, 0.0, 0.0
+		j := i
+		for j < len(all) && all[j].t-all[i].t <= tol {
+			w := 1 / sq(all[j].u)
+			sw += w
+			sz += w * all[j].z
+			st += w * seconds(all[j].t-all[i].t)
+			j++
+		}
+		out = append(out, share{all[i].t + nanos(st/sw), sz / sw, 1 / math.Sqrt(sw)})
+		i = j
+	}
+	return out
+}
+
+// levelBefore is a gauge's line before a cluster, as a function of time.
+func levelBefore(pts []point, lo int64, g *gauge) (func(int64) float64, bool) {
+	b := sort.Search(len(pts), func(k int) bool { return pts[k].t > lo })
+	a := max(0, b-30)
+	if a == b {
+		return nil, false
+	}
+	var x, y, u []float64
+	for _, p := range pts[a:b] {
+		x, y, u = append(x, seconds(p.t-lo)), append(y, p.y), append(u, g.noise)
+	}
+	if len(x) < 8 {
+		m := Median(y)
+		return func(int64) float64 { return m }, true
+	}
+	fit, ok := fitPoly(x, y, u, 1)
+	if !ok {
+		return nil, false
+	}
+	return func(t int64) float64 { return fit.at(seconds(t - lo)) }, true
+}
+
+// aftermath is the level behind a change as a function of time: a straight
+// line in the logarithm of the time since, from the settled readings.
+func (r *run) aftermath(s []share, c *cluster, since int64) func(int64) float64 {
+	h := max(r.interval(), 1e-3)
+	var x, y, u []float64
+	for _, v := range s {
+		if v.t > c.hi && len(x) < 60 {
+			x, y, u = append(x, math.Log(seconds(v.t-since)+h)), append(y, v.z), append(u, v.u)
+		}
+	}
+	if len(x) < 3 {
+		return func(int64) float64 { return 1 }
+	}
+	degree := 1
+	if len(x) < 6 {
+		degree = 0
+	}
+	fit, ok := fitPoly(x, y, u, degree)
+	if !ok {
+		return func(int64) float64 { return 1 }
+	}
+	return func(t int64) float64 { return fit.at(math.Log(seconds(max(t-since, 0)) + h)) }
+}
+
+// ringing measures how long the shares swing about the later level, and by
+// how much of the greatest jump.
+func (r *run) ringing(c *cluster, s []share, done int, after func(int64) float64) (lasts, swing float64) {
+	most := 0.0
+	for g := range c.jump {
+		most = max(most, math.Abs(c.jump[g].MM))
+	}
+	last := done
+	for i := done; i < len(s) && s[i].t < s[done].t+60*second; i++ {
+		if d := math.Abs(s[i].z - after(s[i].t)); d > max(4*s[i].u, settled) {
+			last, swing = i, max(swing, d*most)
+		}
+	}
+	if swing == 0 {
+		return 0, 0
+	}
+	return seconds(s[last].t - s[done].t), swing
+}
