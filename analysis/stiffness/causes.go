@@ -1,0 +1,194 @@
+package stiffness
+
+import (
+	"fmt"
+	"math"
+	"sort"
+
+	"gaugelog/config"
+)
+
+// cause is one shared input with its error.
+type cause struct {
+	name, kind, unit, source string
+	u, dof                   float64
+	rectangular              bool
+	move                     func(*state, float64)
+}
+
+// priors are the assumed ratios E/G: timber 16 within 30 %, all else 2.6
+// within 20 %; a stated shear modulus is trusted within 10 % where it states
+// no uncertainty of its own.
+const (
+	timberRatio, timberSpread = 16, 0.30
+	otherRatio, otherSpread   = 2.6, 0.20
+	statedSpread              = 0.10
+)
+
+// causes lists every stated error of the rig and the loads, in a fixed order.
+func causes(in *Input, m *model, gravity Value, gravitySource string) []cause {
+	var out []cause
+	add := func(name, kind, unit, source string, u float64, move func(*state, float64)) {
+		if u > 0 {
+			out = append(out, cause{name: name, kind: kind, unit: unit, source: source, u: u, move: move})
+		}
+	}
+	for _, d := range m.sec.causes {
+		out = append(out, cause{name: d.name, kind: d.kind, unit: d.unit, source: d.source, u: d.u, dof: d.dof,
+			move: func(s *state, v float64) { d.move(&s.dims, v) }})
+	}
+	if m.weighed() {
+		add("gravity", "B", "m/s2", gravitySource, gravity.U, func(s *state, v float64) { s.gravity += v / gravity.Value })
+	}
+	loadCauses(in, m, add)
+	for i, s := range in.Rig.Supports {
+		add("place of support "+s.Name, "B", "mm", "stated in the rig file", s.At.U, func(st *state, v float64) { st.support[i] += v })
+		if s.Compliance != nil && !m.fitted(i) {
+			add("compliance of support "+s.Name, "B", "mm/N", "stated in the rig file", s.Compliance.U, func(st *state, v float64) { st.given[i] += v })
+		}
+	}
+	gaugeCauses(in, m, add)
+	switch m.mode {
+	case shearRatio:
+		ratio, spread := assumedRatio(in.Rig)
+		add("E/G", "B", "1", "assumed: "+m.ratioWords(), ratio*spread, func(s *state, v float64) { s.ratio += v })
+	case shearGiven:
+		g := in.Rig.Specimen.Expect.ShearModulus
+		u, source := g.U, "stated in the rig file"
+		if u == 0 {
+			u, source = statedSpread*g.Value, "expect.shear_modulus, taken within 10 %"
+		}
+		add("shear modulus", "B", "MPa", source, u, func(s *state, v float64) { s.shear += v })
+	}
+	return out
+}
+
+func (m *model) ratioWords() string {
+	ratio, spread := assumedRatio(m.rig)
+	return fmt.Sprintf("%g within %g %%", ratio, spread*100)
+}
+
+func assumedRatio(rig *config.Rig) (ratio, spread float64) {
+	if rig.Specimen.Material == "timber" {
+		return timberRatio, timberSpread
+	}
+	return otherRatio, otherSpread
+}
+
+type adder func(name, kind, unit, source string, u float64, move func(*state, float64))
+
+func loadCauses(in *Input, m *model, add adder) {
+	rel := relativeWeights(in)
+	for i, l := range in.Rig.Loads {
+		if !m.hangs(i) {
+			continue
+		}
+		add("weight of load "+l.Name, "B", "1", "stated with the load, relative, common to its steps", rel[l.Name], func(s *state, v float64) { s.weight[i] += v })
+		if l.Lever != nil && l.Lever.Value != 0 {
+			add("lever of load "+l.Name, "B", "1", "stated in the rig file", l.Lever.U, func(s *state, v float64) { s.weight[i] *= 1 + v/l.Lever.Value })
+		}
+		if l.At != nil {
+			add("place of load "+l.Name, "B", "mm", "stated in the rig file", l.At.U, func(s *state, v float64) { s.loadFrom[i] += v; s.loadTo[i] += v })
+			continue
+		}
+		add("beginning of load "+l.Name, "B", "mm", "stated in the rig file", l.From.U, func(s *state, v float64) { s.loadFrom[i] += v })
+		add("end of load "+l.Name, "B", "mm", "stated in the rig file", l.To.U, func(s *state, v float64) { s.loadTo[i] += v })
+	}
+}
+
+// relativeWeights is each load's greatest relative uncertainty over the steps.
+func relativeWeights(in *Input) map[string]float64 {
+	rel := map[string]float64{}
+	for _, s := range in.Steps {
+		for _, l := range s.Loads {
+			if l.N != 0 {
+				rel[l.Load] = math.Max(rel[l.Load], l.U/math.Abs(l.N))
+			}
+		}
+	}
+	return rel
+}
+
+func gaugeCauses(in *Input, m *model, add adder) {
+	for i, g := range in.Rig.Gauges {
+		if !m.reads(i) {
+			continue
+		}
+		if sees(g) == "beam" {
+			add("place of gauge "+g.Name, "B", "mm", "stated in the rig file", g.At.U, func(s *state, v float64) { s.gauge[i] += v })
+		}
+		for e := range g.Bar {
+			add(fmt.Sprintf("foot %d of gauge %s's bar", e+1, g.Name), "B", "mm", "stated in the rig file", g.Bar[e].U, func(s *state, v float64) { s.bar[i][e] += v })
+		}
+		if c := g.Calibration; c != nil && c.UGain != nil {
+			gain := c.Gain.Value
+			if gain == 0 {
+				gain = 1
+			}
+			add("gain of gauge "+g.Name, "B", "1", "its calibration", c.UGain.Value/gain, func(s *state, v float64) { s.gain[i] += v })
+		}
+		if g.Contact != nil && g.Contact.Stiffness != nil && sees(g) == "beam" {
+			add("plunger stiffness of gauge "+g.Name, "B", "N/mm", "stated in the rig file", g.Contact.Stiffness.U, func(s *state, v float64) { s.contact[i] += v })
+		}
+		if i < len(in.Stiction) {
+			add("friction of gauge "+g.Name+"'s plunger", "B", "N", "its half-width over sqrt(3)", in.Stiction[i]/math.Sqrt(3), func(s *state, v float64) { s.stuck[i] += v })
+		}
+	}
+	var stands []string
+	for name := range in.StandU {
+		stands = append(stands, name)
+	}
+	sort.Strings(stands)
+	for _, name := range stands {
+		for k, step := range in.Steps {
+			add("movement of stand "+name+" in step "+step.Name, "A", "mm", "the drift analysis", in.StandU[name], func(s *state, v float64) { s.nudge(name, k, v) })
+		}
+	}
+}
+
+func (s *state) nudge(stand string, k int, v float64) {
+	for len(s.offset[stand]) <= k {
+		s.offset[stand] = append(s.offset[stand], 0)
+	}
+	s.offset[stand][k] += v
+}
+
+func (m *model) hangs(load int) bool {
+	for _, k := range m.changes {
+		for _, c := range k {
+			if c.load == load && c.n != 0 {
+				return true
+			}
+		}
+	}
+	return false
+}
+
+func (m *model) weighed() bool {
+	for _, k := range m.changes {
+		for _, c := range k {
+			if c.weighed && c.n != 0 {
+				return true
+			}
+		}
+	}
+	return false
+}
+
+func (m *model) reads(gauge int) bool {
+	for _, r := range m.rows {
+		if r.gauge == gauge {
+			return true
+		}
+	}
+	return false
+}
+
+func (m *model) fitted(support int) bool {
+	for _, s := range m.yields {
+		if s == support {
+			return true
+		}
+	}
+	return false
+}

@@ -1,0 +1,32 @@
+// Package stiffness finds a beam's bending and shear stiffness and the
+// yielding of its supports from the sags of all gauges in all steps, with the
+// uncertainty that follows from every stated cause, and foretells what a rig
+// and its plan can reach.
+//
+// The estimate is one weighted least-squares fit. An observation is an
+// Increment: how much further a gauge's gross sag was, the initial-sag time
+// after a change of load, than the trend before the change would have had it.
+// Increments are free of the older steps' creep and of slow drift, and their
+// sum over the steps says the same as cumulative sags would: both give the
+// same estimate, because the covariance knows which plateau each pair of
+// neighbouring increments shares. The model of an increment is
+//
+//	alpha B + gamma Q + sum over supports of c_s R_s N_s
+//
+// with alpha = 1/EI, gamma = 1/S, c the supports' compliances; B, Q, R, N are
+// the beam package's. Gauges that see a seat read c_s R_s alone, gauges on a
+// bar the difference to the bar's two feet. Plungers whose stiffness is known
+// act as known loads -k times the reading. A beam with redundant supports is
+// fitted by Gauss-Newton steps on the same lines.
+//
+// Every error that several readings share (a gauge's gain, a load's mass,
+// gravity, each position, a plunger's stiffness, the section's dimensions,
+// the assumed E/G) is a Cause: it moves all readings together through the
+// model, so the covariance of the readings is J u2 J^T summed over the
+// causes, beside each reading's own. The same list makes the budget and the
+// Monte Carlo draws.
+//
+// It promises errors, never NaN, for tests that cannot tell; warnings in
+// plain words for what the figures leave out; and the same bits for the same
+// input. It reads nothing but what it is handed.
+package stiffness
