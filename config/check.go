@@ -85,12 +85,3 @@ func (c *checker) oneOf(path, key, word string, known ...string) {
 	}
 	c.fail(path, key+" is "+quoted(word), nearestMend(word, known))
 }
-
-// CheckPorts looks at the ports and frames, which only recording needs: an
-// analysis of readings made elsewhere does without. Errors and warnings, in
-// the order of the file's lines.
-func (r *Rig) CheckPorts() []Problem {
-	c := &checker{rig: r}
-	c.problems.sort()
-	return c.problems
-}

@@ -176,28 +176,26 @@ func (c *checker) probes(seen map[string]string) {
 	}
 }
 
-// channels refuses two instruments on one port and channel.
+// channels refuses two gauges on one port and channel. A probe may share both
+// with a gauge or a probe: one instrument can send several figures.
 func (c *checker) channels() {
 	type place struct{ port, channel string }
 	taken := map[place]string{}
-	take := func(path, who string, at place) {
-		if at.port == "" {
-			return
-		}
-		if other, twice := taken[at]; twice {
-			which := "port " + at.port
-			if at.channel != "" {
-				which += ", channel " + at.channel
-			}
-			c.fail(path, other+" and "+who+" are both on "+which, "correct one port, or give each its own channel: where one port serves several")
-			return
-		}
-		taken[at] = who
-	}
 	for i, g := range c.rig.Gauges {
-		take(at("gauges", i)+".port", "gauge "+g.Name, place{g.Port, g.Channel})
-	}
-	for i, b := range c.rig.Probes {
-		take(at("probes", i)+".port", "probe "+b.Name, place{b.Port, b.Channel})
+		if g.Port == "" {
+			continue
+		}
+		where := place{g.Port, g.Channel}
+		other, twice := taken[where]
+		if !twice {
+			taken[where] = g.Name
+			continue
+		}
+		which := "port " + g.Port
+		if g.Channel != "" {
+			which += ", channel " + g.Channel
+		}
+		c.fail(at("gauges", i)+".port", "gauges "+other+" and "+g.Name+" are both on "+which,
+			"correct one port; where one port serves several gauges, give each its own channel:")
 	}
 }

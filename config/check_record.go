@@ -36,17 +36,13 @@ func (c *checker) records() {
 func (c *checker) sampling() {
 	const p = "record.sampling"
 	s := c.rig.Record.Sampling
-	dense := []struct {
+	for _, d := range []struct {
 		key  string
 		with bool
-	}{{"around", s.Around != nil}, {"per_decade", s.PerDecade != nil}, {"longest", s.Longest != nil}, {"dead_band", s.DeadBand != nil}}
-	if s.Every != nil && s.Dense != nil {
-		c.fail(p, "sampling is both at a fixed interval (every) and dense around changes (dense)", "keep every, or dense and its companions")
-		return
-	}
-	for _, d := range dense {
-		if d.with && s.Dense == nil {
-			c.fail(p+"."+d.key, "sampling has "+d.key+" without dense", "add dense: 1 s (the interval around changes), or take "+d.key+" out")
+	}{{"dense", s.Dense != nil}, {"around", s.Around != nil}, {"per_decade", s.PerDecade != nil}, {"longest", s.Longest != nil}} {
+		if d.with && s.Every != nil {
+			c.fail(p+"."+d.key, "sampling is at a fixed interval (every), and "+d.key+" belongs to the dense-then-sparse one",
+				"keep every, or dense, around, per_decade and longest")
 			return
 		}
 	}

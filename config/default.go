@@ -21,6 +21,7 @@ func (r *Rig) fillDefaults() {
 	for i := range r.Gauges {
 		r.Gauges[i].fillDefaults()
 	}
+	r.addBuiltinFrames()
 	for i := range r.Frames {
 		r.fillFrame(i)
 	}
@@ -30,9 +31,8 @@ func (r *Rig) fillDefaults() {
 			r.Loads[i].Lever = &lever
 		}
 	}
-	if s := &r.Record.Sampling; !s.All && s.Every == nil && s.Dense == nil {
-		every := seconds(1)
-		s.Every = &every
+	if r.Record.Sampling == (Sampling{}) {
+		r.Record.Sampling.All = true // nothing was said: lose nothing
 	}
 	r.duration(&r.Record.Sync, "record.sync", 10)
 	r.duration(&r.Record.Roll.Age, "record.roll.age", 86400)
@@ -79,7 +79,14 @@ func (r *Rig) fillFrame(i int) {
 	setDefault(&f.Line.Parity, "none")
 	setDefault(&f.Line.StopBits, "1")
 	r.whole(&f.Longest, path+".longest", DefaultLongestFrame)
-	if f.Timeout == nil && (f.Request != "" || f.Kind == "modbus" || f.Kind == "scpi") {
+	if !f.Asked() {
+		return
+	}
+	if f.Every == nil {
+		every := seconds(1)
+		f.Every = &every
+	}
+	if f.Timeout == nil {
 		timeout := seconds(0.5)
 		f.Timeout = &timeout
 	}
@@ -90,6 +97,9 @@ func (r *Rig) whole(field *int, path string, value int) {
 		*field = value
 	}
 }
+
+// Asked reports whether the instrument answers only when asked.
+func (f Frame) Asked() bool { return f.Request != "" || f.Kind == "modbus" || f.Kind == "scpi" }
 
 // LineWith returns the frame's line with what over states put in its place;
 // over may be nil.

@@ -19,7 +19,7 @@ type Frame struct {
 
 	// Asked instruments (text, nibbles, binary; modbus and scpi always).
 	Request string    `mapstructure:"request"` // bytes, Go escapes; {channel} stands for the gauge's channel
-	Every   *Duration `mapstructure:"every"`
+	Every   *Duration `mapstructure:"every"`   // default 1 s for asked instruments
 	Timeout *Duration `mapstructure:"timeout"` // default 500 ms
 	// Button is true where the instrument sends only when its button or a
 	// foot switch is pressed.

@@ -74,3 +74,6 @@ func distance(a, b []rune) int {
 	}
 	return rows[len(a)][len(b)]
 }
+
+// sortedKeys gives the messages about a map one order.
+func sortedKeys(m map[string]string) []string { return slices.Sorted(maps.Keys(m)) }

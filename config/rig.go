@@ -171,7 +171,8 @@ type Record struct {
 	Roll     Roll     `mapstructure:"roll"`
 }
 
-// Sampling chooses which readings are stored. All is the text "all"; Every
+// Sampling chooses which readings are stored. All is the text "all", and the
+// default where nothing is stated; Every
 // alone is a fixed interval; Dense and its companions are dense around
 // changes, then log-spaced. What is stored is always a real reading.
 type Sampling struct {
