@@ -1,0 +1,34 @@
+package ingest
+
+// writer is the goroutine between a live recorder and its disk. One batch is
+// on its way at a time; what comes meanwhile gathers in the recorder.
+type writer struct {
+	todo chan *batch
+	done chan outcome
+	gone chan struct{}
+}
+
+func startWriter(s *store) *writer {
+	w := &writer{todo: make(chan *batch, 1), done: make(chan outcome, 1), gone: make(chan struct{})}
+	go func() {
+		defer close(w.gone)
+		for b := range w.todo {
+			err := s.commit(b)
+			w.done <- outcome{batch: b, err: err, moved: s.takeMoved()}
+		}
+	}()
+	return w
+}
+
+// stop waits for the batch on its way and for the goroutine's end. It returns
+// the outcome nobody collected, if there is one.
+func (w *writer) stop() outcome {
+	close(w.todo)
+	<-w.gone
+	select {
+	case o := <-w.done:
+		return o
+	default:
+		return outcome{}
+	}
+}
