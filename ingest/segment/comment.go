@@ -161,10 +161,17 @@ func (c *checkpoint) append(b []byte) []byte {
 	return b
 }
 
-// closing is the checkpoint that repeats c, the first closing one, so that no
-// single damaged byte can make a closed file look like an unfinished one.
-func (c *checkpoint) closing() checkpoint {
-	return checkpoint{block: c.block + 1, crc: c.self, clock: c.clock, end: true, after: c.self}
+// closing is what stands behind c, the first closing checkpoint, in a closed
+// file: a blank line as the last block, and its checkpoint, which says again
+// that the file ends. So no single damaged byte, not even a newline, can make a
+// closed file look like an unfinished one.
+func (c *checkpoint) closing() (again checkpoint, text []byte) {
+	again = checkpoint{
+		block: c.block + 1, length: 1, crc: crc32.Update(c.self, castagnoli, []byte{'\n'}),
+		clock: c.clock, end: true, after: c.self,
+	}
+	text = again.append([]byte{'\n'})
+	return again, text
 }
 
 var (

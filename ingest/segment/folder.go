@@ -132,7 +132,11 @@ func (d *Folder) look(f *segFile) error {
 	f.own = f.headed || bytes.HasPrefix(start, []byte(headerWord))
 	if !f.own {
 		// A damaged first line: any valid comment behind it tells.
-		rest := make([]byte, 2*MaxBlock)
+		size := int64(2 * MaxBlock)
+		if !f.compressed {
+			size = min(size, f.size)
+		}
+		rest := make([]byte, size)
 		n, _ := io.ReadFull(text, rest)
 		f.own = own(append(start, rest[:n]...))
 	}

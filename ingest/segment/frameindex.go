@@ -127,7 +127,7 @@ func readFrameIndex(file File, size int64) *frameIndex {
 	text = text[8:]
 	cut := len(text) - 1 - 8
 	self := fieldReader{rest: append(bytes.Clone(text[cut:cut+8]), ' ')}
-	if self.crc("") != crc32.Checksum(text[:cut-len("self=")], castagnoli) || self.bad || text[len(text)-1] != '\n' {
+	if string(text[cut-len("self="):cut]) != "self=" || self.crc("") != crc32.Checksum(text[:cut-len("self=")], castagnoli) || self.bad || text[len(text)-1] != '\n' {
 		return nil
 	}
 	ix := parseIndex(text)

@@ -193,7 +193,7 @@ func (m *merger) block(j *job, it *item, rows, more int) {
 		m.damage(Damage{File: j.file.name, Block: c.block, Offset: at, First: m.last, Last: c.first, Lines: -1,
 			Why: "blocks are missing before this one"})
 	case m.end != nil:
-		if want := m.end.closing(); m.sealed || !c.end || c.after != want.after || c.length != 0 {
+		if want, _ := m.end.closing(); m.sealed || c.self != want.self {
 			m.damage(Damage{File: j.file.name, Block: c.block, Offset: at, Length: int64(it.to - it.from),
 				Lines: c.lines, Why: "bytes behind the end of a closed file"})
 		}
@@ -281,8 +281,7 @@ func (m *merger) loss(j *job, it *item, index int) {
 
 func (m *merger) tail(j *job, it *item) {
 	if m.end != nil {
-		want := m.end.closing()
-		text := want.append(nil)
+		_, text := m.end.closing()
 		rest := bytes.TrimRight(j.text[it.from:it.to], "\x00")
 		if m.sealed || !bytes.HasPrefix(text, rest) {
 			m.damage(Damage{File: j.file.name, Offset: j.base + int64(it.from), Length: int64(it.to - it.from),

@@ -172,6 +172,9 @@ func (r *Reader) produce(f *segFile, work chan<- *job) bool {
 	}
 	defer closeText()
 	s := splitter{r: text, foreign: !f.own}
+	if !f.compressed {
+		s.size = f.size
+	}
 	for first := true; ; first = false {
 		j, ok := r.take()
 		if !ok {

@@ -17,6 +17,8 @@ type splitter struct {
 	off     int64 // of the next chunk in the text
 	eof     bool
 	err     error
+	// size is the length of the text where it is known: no more is set aside.
+	size int64
 }
 
 // next returns the next chunk in buf's storage; final is true for the last,
@@ -51,6 +53,10 @@ func (s *splitter) next(buf []byte) (chunk []byte, final bool, err error) {
 }
 
 func (s *splitter) fill(buf []byte, target int) []byte {
+	if s.size > 0 {
+		// One byte more, so that the end is seen.
+		target = min(target, int(s.size-s.off)+1)
+	}
 	if cap(buf) < target {
 		grown := make([]byte, len(buf), target)
 		copy(grown, buf)

@@ -291,8 +291,8 @@ func (w *Writer) put(clock ClockState, end bool) error {
 	lines := len(w.buf)
 	w.buf = c.append(w.buf)
 	if end {
-		again := c.closing()
-		w.buf = again.append(w.buf)
+		_, text := c.closing()
+		w.buf = append(w.buf, text...)
 	}
 	written := len(w.buf)
 	_, err := w.f.Write(w.buf)

@@ -1,0 +1,6 @@
+//go:build campaign
+
+package segment_test
+
+// campaign runs the long forms: go test -tags campaign ./ingest/segment
+const campaign = true
