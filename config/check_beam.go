@@ -77,6 +77,11 @@ func (c *checker) supports() {
 			c.fail(p, "support "+s.Name+" has no place", "add at: and its place along the beam, such as at: 0 mm")
 			continue
 		}
+		if s.Kind == "clamp" {
+			clamps++
+		} else {
+			pins++
+		}
 		c.inside(p+".at", "support "+s.Name, s.At.Value)
 		if other, twice := places[s.At.Value]; twice {
 			c.fail(p+".at", "supports "+other+" and "+s.Name+" stand at one place", "correct one of the two, or take it out")
@@ -85,11 +90,6 @@ func (c *checker) supports() {
 		places[s.At.Value] = s.Name
 		if s.Compliance != nil && s.Compliance.Value < 0 {
 			c.fail(p+".compliance", "compliance must not be negative", "write how far the support yields per newton, such as 0.00005 mm/N")
-		}
-		if s.Kind == "clamp" {
-			clamps++
-		} else {
-			pins++
 		}
 	}
 	if clamps == 0 && pins < 2 {

@@ -13,6 +13,9 @@ import (
 // a point in the unit itself) and an optional exponent.
 var numberText = regexp.MustCompile(`^([+-]?)(\d+(?:\.\d+)?)(?:\((\d+(?:\.\d+)?)\))?(?:[eE]([+-]?\d+))?`)
 
+// A second number behind the first: 12 400 kg, 6 ft 6 in, 1_000 mm.
+var secondNumber = regexp.MustCompile(`^ *[0-9_]|^.* [0-9]`)
+
 // Longest accepted mantissa and largest exponent: far beyond any rig, and they
 // bound the exact arithmetic below.
 const (
@@ -155,7 +158,7 @@ func oddNumber(rest, shown string) *Problem {
 		return &Problem{What: what + ": plus-minus could be a tolerance or an uncertainty",
 			Fix: "write the standard uncertainty in parentheses: 300.0(5) mm is 300.0 mm with 0.5 mm"}
 	}
-	if next := strings.TrimLeft(rest, " "); next != "" && (next[0] >= '0' && next[0] <= '9' || next[0] == '_') {
+	if secondNumber.MatchString(rest) {
 		return &Problem{What: what + ": it holds two numbers", Fix: "write one number without blanks in it and one unit: 6.5 ft, not 6 ft 6 in"}
 	}
 	return nil
