@@ -28,6 +28,39 @@ func (b Beam) Solve(loads []Load) (*Solution, error) {
 	return b.solveResting(loads)
 }
 
+// SolveEach finds the elastic line under each of several sets of loads. It
+// gives what Solve would for each, but decomposes the beam's system once;
+// with LiftOff, whose system depends on the loads, it does not.
+func (b Beam) SolveEach(sets [][]Load) ([]*Solution, error) {
+	out := make([]*Solution, len(sets))
+	if b.LiftOff {
+		for i, loads := range sets {
+			s, err := b.Solve(loads)
+			if err != nil {
+				return nil, err
+			}
+			out[i] = s
+		}
+		return out, nil
+	}
+	if err := b.check(); err != nil {
+		return nil, err
+	}
+	f, err := b.factor(nil)
+	if err != nil {
+		return nil, err
+	}
+	for i, loads := range sets {
+		for j, l := range loads {
+			if err := b.checkLoad(j, l); err != nil {
+				return nil, err
+			}
+		}
+		out[i] = f.solve(loads)
+	}
+	return out, nil
+}
+
 // Influence is the sag in mm at each place (rows) for one newton of each load
 // (columns): a load's places count, its Force does not. Supports hold both
 // ways, whatever LiftOff says, and do not settle, or the matrix would depend

@@ -60,6 +60,10 @@ func causes(in *Input, m *model, gravity Value, gravitySource string) []cause {
 		}
 		add("shear modulus", "B", "MPa", source, u, func(s *state, v float64) { s.shear += v })
 	}
+	for i := range out {
+		// Friction and gravity somewhere on the globe are known as ranges only.
+		out[i].rectangular = out[i].unit == "N" || (out[i].name == "gravity" && gravity.U == unplacedGravity)
+	}
 	return out
 }
 

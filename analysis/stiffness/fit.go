@@ -67,7 +67,7 @@ func (m *model) readingCovariance() *mat.SymDense {
 
 // rounds of weighting: the covariance's shared part needs the fit, and
 // changes little once the fit is near.
-const rounds = 3
+const rounds = 2
 
 func (f *fitted) solve() error {
 	if err := f.start(); err != nil {

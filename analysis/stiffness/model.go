@@ -197,37 +197,42 @@ func (m *model) linear(st *state, theta []float64) ([]float64, *mat.Dense, error
 	f := make([]float64, len(m.rows))
 	inf := math.Inf(1)
 	none := make([]float64, len(m.rig.Supports))
-	for k := range m.changes {
-		rows := m.rowsOf(k)
-		if len(rows) == 0 {
-			continue
-		}
-		loads := m.loads(st, k)
-		bend, err := m.beam(st, 1, inf, none).Solve(loads)
-		if err != nil {
+	sets := make([][]beam.Load, len(m.changes))
+	for k := range sets {
+		sets[k] = m.loads(st, k)
+	}
+	bend, err := m.beam(st, 1, inf, none).SolveEach(sets)
+	if err != nil {
+		return nil, nil, err
+	}
+	var shear []*beam.Solution
+	if m.mode != shearNone {
+		if shear, err = m.beam(st, inf, 1, none).SolveEach(sets); err != nil {
 			return nil, nil, err
 		}
-		var shear *beam.Solution
-		if m.mode != shearNone {
-			if shear, err = m.beam(st, inf, 1, none).Solve(loads); err != nil {
-				return nil, nil, err
-			}
+	}
+	rho, gamma := 0.0, 0.0
+	switch m.mode {
+	case shearRatio:
+		rho = m.rho(st)
+	case shearGiven:
+		gamma = m.gammaGiven(st)
+	}
+	for r, o := range m.rows {
+		b := m.see(st, o.gauge, bend[o.step], none)
+		switch m.mode {
+		case shearFree:
+			x.Set(r, 1, m.see(st, o.gauge, shear[o.step], none))
+		case shearRatio:
+			b += rho * m.see(st, o.gauge, shear[o.step], none)
+		case shearGiven:
+			f[r] += gamma * m.see(st, o.gauge, shear[o.step], none)
 		}
-		for _, r := range rows {
-			g := m.rows[r].gauge
-			b := m.see(st, g, bend, none)
-			switch m.mode {
-			case shearFree:
-				x.Set(r, 1, m.see(st, g, shear, none))
-			case shearRatio:
-				b += m.rho(st) * m.see(st, g, shear, none)
-			case shearGiven:
-				f[r] += m.gammaGiven(st) * m.see(st, g, shear, none)
-			}
-			x.Set(r, 0, b)
-			f[r] += st.moved(m.rig.Gauges[g].Stand, k)
-		}
-		if err := m.supportColumns(st, k, rows, loads, f, x); err != nil {
+		x.Set(r, 0, b)
+		f[r] += st.moved(m.rig.Gauges[o.gauge].Stand, o.step)
+	}
+	for s := range m.rig.Supports {
+		if err := m.supportColumns(st, s, sets, f, x); err != nil {
 			return nil, nil, err
 		}
 	}
@@ -246,60 +251,47 @@ func (s *state) moved(stand string, k int) float64 {
 	return 0
 }
 
-// supportColumns adds what yielding supports do to step k of a determinate
-// beam.
-func (m *model) supportColumns(st *state, k int, rows []int, loads []beam.Load, f []float64, x *mat.Dense) error {
+// supportColumns adds what support s of a determinate beam does by yielding.
+func (m *model) supportColumns(st *state, s int, sets [][]beam.Load, f []float64, x *mat.Dense) error {
+	yields := -1
+	for j, y := range m.yields {
+		if y == s {
+			yields = j
+		}
+	}
+	if yields < 0 && st.given[s] == 0 {
+		return nil
+	}
 	inf := math.Inf(1)
-	for s := range m.rig.Supports {
-		col := -1
-		for j, y := range m.yields {
-			if y == s {
-				col = m.firstYield() + j
-				if m.rigid {
-					col = m.firstYield() + k*len(m.yields) + j
-				}
+	one := make([]float64, len(m.rig.Supports))
+	one[s] = 1
+	b := m.beam(st, inf, inf, one)
+	if m.rigid && yields >= 0 {
+		b.Supports[s].Compliance, b.Supports[s].Settlement = 0, 1
+		sets = make([][]beam.Load, len(sets))
+	}
+	lines, err := b.SolveEach(sets)
+	if err != nil {
+		return err
+	}
+	for r, o := range m.rows {
+		line := lines[o.step]
+		v := st.gain[o.gauge] * m.look(st, o.gauge, line, func(i int) float64 {
+			if i != s {
+				return 0
 			}
-		}
-		if col < 0 && st.given[s] == 0 {
-			continue
-		}
-		one := make([]float64, len(m.rig.Supports))
-		one[s] = 1
-		b, forces := m.beam(st, inf, inf, one), loads
-		if m.rigid && col >= 0 {
-			b.Supports[s].Compliance, b.Supports[s].Settlement = 0, 1
-			forces = nil
-		}
-		line, err := b.Solve(forces)
-		if err != nil {
-			return err
-		}
-		for _, r := range rows {
-			g := m.rows[r].gauge
-			v := st.gain[g] * m.look(st, g, line, func(i int) float64 {
-				if i != s {
-					return 0
-				}
-				return line.Deflection(st.support[s])
-			})
-			if col >= 0 {
-				x.Set(r, col, v)
-			} else {
-				f[r] += st.given[s] * v
-			}
+			return line.Deflection(st.support[s])
+		})
+		switch {
+		case yields < 0:
+			f[r] += st.given[s] * v
+		case m.rigid:
+			x.Set(r, m.firstYield()+o.step*len(m.yields)+yields, v)
+		default:
+			x.Set(r, m.firstYield()+yields, v)
 		}
 	}
 	return nil
-}
-
-func (m *model) rowsOf(k int) []int {
-	var out []int
-	for r, o := range m.rows {
-		if o.step == k {
-			out = append(out, r)
-		}
-	}
-	return out
 }
 
 // curved solves a redundant beam as it is; derivatives are differences. A
@@ -366,20 +358,16 @@ func (m *model) solved(st *state, theta []float64) ([]float64, error) {
 		s = 1 / gamma
 	}
 	f := make([]float64, len(m.rows))
-	b := m.beam(st, 1/alpha, s, compliance)
-	for k := range m.changes {
-		rows := m.rowsOf(k)
-		if len(rows) == 0 {
-			continue
-		}
-		line, err := b.Solve(m.loads(st, k))
-		if err != nil {
-			return nil, err
-		}
-		for _, r := range rows {
-			g := m.rows[r].gauge
-			f[r] = m.see(st, g, line, compliance) + st.moved(m.rig.Gauges[g].Stand, k)
-		}
+	sets := make([][]beam.Load, len(m.changes))
+	for k := range sets {
+		sets[k] = m.loads(st, k)
+	}
+	lines, err := m.beam(st, 1/alpha, s, compliance).SolveEach(sets)
+	if err != nil {
+		return nil, err
+	}
+	for r, o := range m.rows {
+		f[r] = m.see(st, o.gauge, lines[o.step], compliance) + st.moved(m.rig.Gauges[o.gauge].Stand, o.step)
 	}
 	return f, nil
 }
