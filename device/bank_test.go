@@ -17,7 +17,7 @@ func TestStream(t *testing.T) {
 		var o devicetest.Opener
 		var l log
 		w := o.Plug("p0")
-		b := start(t, device.Options{Rigs: []*config.Rig{rig(1, signed)}, Opener: &o, Sink: &l})
+		b := start(t, device.Options{Rigs: []*config.Rig{rig(1, signed)}, Opener: &o, Stamper: bubble{}, Sink: &l})
 		w.Send([]byte("+001.250\r\n-000.000\r\n"))
 		if err := b.WaitConsumed(t.Context(), "p0", 20); err != nil {
 			t.Fatal(err)
@@ -47,7 +47,7 @@ func TestPolled(t *testing.T) {
 				w.Send([]byte("+000.386\r\n"))
 			}
 		}()
-		start(t, device.Options{Rigs: []*config.Rig{rig(1, askedFrame(500*time.Millisecond, 300*time.Millisecond))}, Opener: &o, Sink: &l})
+		start(t, device.Options{Rigs: []*config.Rig{rig(1, askedFrame(500*time.Millisecond, 300*time.Millisecond))}, Opener: &o, Stamper: bubble{}, Sink: &l})
 		time.Sleep(10*time.Second + 100*time.Millisecond)
 		if n := len(l.of(device.Indication)); n != 21 {
 			t.Errorf("%d answers in 10 s at 500 ms, want 21", n)
@@ -61,7 +61,7 @@ func TestUnplugAndReplug(t *testing.T) {
 		var o devicetest.Opener
 		var l log
 		w := o.Plug("p0")
-		start(t, device.Options{Rigs: []*config.Rig{rig(1, signed)}, Opener: &o, Sink: &l})
+		start(t, device.Options{Rigs: []*config.Rig{rig(1, signed)}, Opener: &o, Stamper: bubble{}, Sink: &l})
 		w.Send([]byte("+001.000\r\n+002."))
 		synctest.Wait()
 		o.Unplug("p0")
@@ -74,7 +74,7 @@ func TestUnplugAndReplug(t *testing.T) {
 		w.Send([]byte("000\r\n+003.000\r\n"))
 		synctest.Wait()
 		lost, back := l.of(device.PortLost), l.of(device.PortBack)
-		if len(lost) != 1 || len(back) != 1 || !strings.HasPrefix(back[0].Detail, "gap ") {
+		if len(lost) != 1 || len(back) != 1 || !strings.HasPrefix(back[0].Detail, "gap 3660.000 s") {
 			t.Fatalf("lost %+v, back %+v", lost, back)
 		}
 		if got := l.of(device.Indication); len(got) != 2 || got[1].MM != 3 {

@@ -82,3 +82,13 @@ func start(t *testing.T, o device.Options) *device.Bank {
 	})
 	return b
 }
+
+// bubble is the clock of a synctest bubble, on which both clocks agree.
+type bubble struct{}
+
+func (bubble) Now() device.Instant {
+	now := time.Now().UnixNano()
+	return device.Instant{Wall: now, Boot: now}
+}
+
+func (b bubble) Stamp(string, int64) device.Instant { return b.Now() }
