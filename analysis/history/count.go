@@ -5,8 +5,11 @@ import (
 	"slices"
 )
 
-// nanometre is the quantum of the fallback: the finest the format writes.
-const nanometre = 1e-6
+// micro is how many quanta of the format (its finest decimal) a millimetre has.
+const micro = 1e6
+
+// toMicro turns mm into millionths, the nearest where mm is finer.
+func toMicro(mm float64) int64 { return int64(math.Round(mm * micro)) }
 
 // dense is the number of quanta on either side of a bin's first reading that
 // are counted in an array; rarer ones go to a map.
@@ -15,51 +18,50 @@ const dense = 128
 // counter gathers one gauge's readings into bins. It allocates nothing per
 // reading while readings stay within dense quanta of the bin's first.
 type counter struct {
-	quantum, perMM float64
-	inexact        bool // the fallback is in force
+	quantum int64 // millionths of a mm
+	inexact bool  // a reading was no multiple of the resolution: the quantum is 1
 
-	n           int
-	origin      int64 // quanta of the bin's first reading
-	near        [2*dense + 1]int32
-	low, high   int64 // quanta seen
-	far         map[int64]int32
-	timeSum     int64 // nanoseconds after From
-	from, to    int64
-	first, last float64
-	lastTime    int64
-	min, max    float64
+	n         int
+	origin    int64 // quanta of the bin's first reading
+	near      [2*dense + 1]int32
+	low, high int64 // quanta seen
+	far       map[int64]int32
+	timeSum   int64 // nanoseconds after From
+	from, to  int64
+	first     int64 // millionths, as the next three
+	last      int64
+	min, max  int64
+	lastTime  int64
 }
 
 func newCounter(resolution float64) *counter {
-	c := &counter{far: map[int64]int32{}}
-	c.setQuantum(resolution)
-	return c
-}
-
-func (c *counter) setQuantum(q float64) {
-	if !(q > 0) || math.IsInf(q, 0) {
-		q = nanometre
-		c.inexact = true
+	c := &counter{far: map[int64]int32{}, quantum: toMicro(resolution)}
+	if c.quantum <= 0 || math.Abs(float64(c.quantum)-resolution*micro) > 1e-3 {
+		c.quantum, c.inexact = 1, true
 	}
-	c.quantum, c.perMM = q, 1/q
+	return c
 }
 
 // start opens a bin over [from, to).
 func (c *counter) start(from, to int64) { c.from, c.to = from, to }
 
-// add counts one reading of the open bin.
-func (c *counter) add(t int64, mm float64) {
-	q := c.toQuanta(mm)
+// add counts one reading (millionths of a mm) of the open bin.
+func (c *counter) add(t, v int64) {
+	q := v / c.quantum
+	if q*c.quantum != v {
+		c.toFallback()
+		q = v
+	}
 	if c.n == 0 {
 		c.origin, c.low, c.high = q, q, q
-		c.first, c.min, c.max = mm, mm, mm
+		c.first, c.min, c.max = v, v, v
 		c.timeSum = 0
 	}
 	c.n++
-	c.count(q, 1)
 	c.timeSum += t - c.from
-	c.last, c.lastTime = mm, t
-	c.min, c.max = min(c.min, mm), max(c.max, mm)
+	c.last, c.lastTime = v, t
+	c.min, c.max = min(c.min, v), max(c.max, v)
+	c.count(q, 1)
 }
 
 func (c *counter) count(q int64, n int32) {
@@ -71,30 +73,19 @@ func (c *counter) count(q int64, n int32) {
 	}
 }
 
-// toQuanta turns mm into whole quanta; a reading that is none switches to the
-// fallback, and what the open bin holds with it.
-func (c *counter) toQuanta(mm float64) int64 {
-	q := math.Round(mm * c.perMM)
-	if !c.inexact && math.Abs(q*c.quantum-mm) > nanometre/2 {
-		c.toFallback()
-		q = math.Round(mm * c.perMM)
-	}
-	return int64(q)
-}
-
+// toFallback counts single millionths from here on, and what the open bin
+// holds with them.
 func (c *counter) toFallback() {
 	kept := c.drain(nil)
 	old := c.quantum
-	c.setQuantum(nanometre)
-	c.inexact = true
+	c.quantum, c.inexact = 1, true
 	if c.n == 0 {
 		return
 	}
-	requantum := func(q int64) int64 { return int64(math.Round(float64(q) * old * c.perMM)) }
-	c.origin = requantum(c.origin)
+	c.origin *= old
 	c.low, c.high = c.origin, c.origin
 	for _, k := range kept {
-		c.count(requantum(k.q), k.n)
+		c.count(k.q*old, k.n)
 	}
 }
 
@@ -150,14 +141,16 @@ func (c *counter) finish(scratch *[]tally) (b Bin, ok bool) {
 	*scratch = c.drain((*scratch)[:0])
 	b = Bin{
 		From: c.from, To: c.to, Time: c.from + c.timeSum/int64(c.n), N: c.n,
-		Min: c.min, Max: c.max, First: c.first, Last: c.last, LastTime: c.lastTime,
+		Min: mm(c.min), Max: mm(c.max), First: mm(c.first), Last: mm(c.last), LastTime: c.lastTime,
 	}
 	twice := medianTwice(*scratch, c.n)
-	b.Median = float64(twice) * c.quantum / 2
-	b.MAD = float64(madTwice(*scratch, c.n, twice)) * c.quantum / 2
+	b.Median = mm(twice*c.quantum) / 2
+	b.MAD = mm(madTwice(*scratch, c.n, twice)*c.quantum) / 2
 	c.n = 0
 	return b, true
 }
+
+func mm(v int64) float64 { return float64(v) / micro }
 
 // medianTwice returns twice the median in quanta, which is whole.
 func medianTwice(t []tally, n int) int64 {

@@ -9,7 +9,9 @@
 // of counts and its median is exact however many readings it holds. Where
 // readings are no multiples of the stated resolution the gauge falls back to
 // counts of a nanometre (the finest the format writes), which is as exact and
-// only takes more memory; the note "not-a-multiple" says so.
+// only takes more memory; the note "not-a-multiple" says so. Readings of a
+// gauge that stand in no order of time give bins that are merged afterwards,
+// whose medians are then approximate; the note "out-of-order" says so.
 package history
 
 import (
@@ -87,7 +89,9 @@ type History struct {
 	// GaugeReadings counts the readings of each gauge of the rig.
 	GaugeReadings []int64
 
-	source Source
+	source    Source
+	withdrawn map[string]string // id: why
+	close     func() error
 }
 
 // Note is a warning found while reading: a code and a text.

@@ -65,7 +65,7 @@ func FromSamples(g Given) (*History, error) {
 
 func notMultiple(g config.Gauge) Note {
 	return Note{Code: "not-a-multiple", Gauge: g.Name, Text: fmt.Sprintf(
-		"indications of gauge %s are no multiples of its resolution of %g mm; medians are exact to a nanometre instead: check the resolution in the rig file", g.Name, g.Resolution.Value)}
+		"indications of gauge %s are no multiples of its resolution of %g mm; medians are exact to a nanometre all the same, but check the resolution in the rig file", g.Name, g.Resolution.Value)}
 }
 
 // widths are the bin widths to choose from, in seconds.
@@ -144,28 +144,13 @@ func binSamples(list []Sample, resolution float64, edges []int64) (bins []Bin, i
 	if len(edges) < 2 {
 		return nil, false
 	}
-	c := newCounter(resolution)
-	var scratch []tally
-	cell := 0
-	c.start(edges[0], edges[1])
+	f := newFineBins(resolution, edges)
 	lo := sort.Search(len(list), func(k int) bool { return list[k].Time >= edges[0] })
 	for _, s := range list[lo:] {
-		if s.Time >= c.to {
-			if b, ok := c.finish(&scratch); ok {
-				bins = append(bins, b)
-			}
-			for cell+1 < len(edges) && s.Time >= edges[cell+1] {
-				cell++
-			}
-			if cell+1 == len(edges) {
-				return bins, c.inexact
-			}
-			c.start(edges[cell], edges[cell+1])
+		if s.Time >= edges[len(edges)-1] {
+			break
 		}
-		c.add(s.Time, s.MM)
+		f.add(s.Time, toMicro(s.MM))
 	}
-	if b, ok := c.finish(&scratch); ok {
-		bins = append(bins, b)
-	}
-	return bins, c.inexact
+	return f.close(), f.counter.inexact
 }
