@@ -3,6 +3,7 @@ package device
 import (
 	"fmt"
 	"reflect"
+	"strings"
 	"time"
 
 	"gaugelog/config"
@@ -123,6 +124,9 @@ func (p *portPlan) add(t target, spec config.Frame, channel string, silent *conf
 	request, err := requestFor(spec, channel)
 	if err != nil {
 		return err
+	}
+	if t.gauge != "" && spec.Kind == string(frame.Text) && !strings.Contains(spec.Pattern, "<value>") {
+		return fmt.Errorf("pattern %q has no group value: write (?P<value>...)", spec.Pattern)
 	}
 	p.instruments = append(p.instruments, &instrument{
 		channel: channel, spec: spec, request: request, button: spec.Button,
