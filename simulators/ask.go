@@ -9,7 +9,7 @@ import "bytes"
 // overwritten by the next call of Ask or Next.
 func (s *Sim) Ask(port int, heard []byte, at int64) Batch {
 	l := &s.lines[port]
-	l.batch.Start = l.sent
+	l.batch.Start, l.batch.Delay = l.sent, 0
 	l.batch.Bytes, l.batch.Frames = l.batch.Bytes[:0], l.batch.Frames[:0]
 	l.heard = append(l.heard, heard...)
 	for at < s.end {
@@ -19,7 +19,14 @@ func (s *Sim) Ask(port int, heard []byte, at int64) Batch {
 		}
 		request := append([]byte(nil), g.encoder.Request()...)
 		l.heard = append(l.heard[:0], l.heard[end:]...)
-		s.send(g, at, request)
+		l.batch.Delay = s.turn
+		for _, e := range l.touch {
+			if e.kind == LateReply && e.on(at, g) {
+				e.truth.Frames++
+				l.batch.Delay += e.delay
+			}
+		}
+		s.send(g, at+l.batch.Delay, request)
 	}
 	if len(l.heard) > longest {
 		l.heard = append(l.heard[:0], l.heard[len(l.heard)-longest:]...)

@@ -12,7 +12,7 @@ func (s *Sim) Next(until int64, most int) *Stretch {
 	until = min(until, s.end)
 	for i := range s.lines {
 		l := &s.lines[i]
-		l.batch.Start = l.sent
+		l.batch.Start, l.batch.Delay = l.sent, 0
 		l.batch.Bytes, l.batch.Frames = l.batch.Bytes[:0], l.batch.Frames[:0]
 	}
 	s.stretch.Events = s.stretch.Events[:0]
@@ -63,7 +63,6 @@ func (s *Sim) happen(at int64) {
 
 // hand gives the stretch out.
 func (s *Sim) hand(reached int64) *Stretch {
-	s.now = reached
 	s.stretch.Batches = s.stretch.Batches[:0]
 	for i := range s.lines {
 		if l := &s.lines[i]; len(l.batch.Frames) > 0 || len(l.batch.Bytes) > 0 {
@@ -71,7 +70,7 @@ func (s *Sim) hand(reached int64) *Stretch {
 		}
 	}
 	s.stretch.Reached, s.stretch.At = reached, s.Instant(reached)
-	s.stretch.Done = reached >= s.end && len(s.events) == 0 || reached >= s.end
+	s.stretch.Done = reached >= s.end
 	return &s.stretch
 }
 

@@ -31,6 +31,9 @@ type Batch struct {
 	Start  int64
 	Bytes  []byte
 	Frames []Frame // in order of Offset and of At
+	// Delay is how long an answer takes, in nanoseconds (only from Ask; the
+	// frames' instants contain it).
+	Delay int64
 }
 
 // EventKind says what an Event is.

@@ -25,6 +25,9 @@ type Options struct {
 	// ones do. Without it they send their answers by themselves, as though
 	// asked at their interval, which is what a conductor of virtual time wants.
 	Asked bool
+	// Beyond lets the gauges go on for so long after the plan's end, under
+	// its last loads, as a recording does; real time wants this long.
+	Beyond time.Duration
 }
 
 // Port is one simulated serial port.
@@ -55,8 +58,8 @@ type Sim struct {
 	stands   []string       // of each instrument; empty for none
 	supports []string
 	breakAt  float64 // s; infinite
+	turn     int64   // ns an asked gauge takes to answer
 	end      int64
-	now      int64
 	stretch  Stretch
 }
 
@@ -109,7 +112,12 @@ func New(o Options) (*Sim, error) {
 	if s.timeline, err = newTimeline(o.Rig, o.Truth, s.gravity); err != nil {
 		return nil, err
 	}
+	s.timeline.extend(o.Beyond.Seconds())
 	s.end = nanoseconds(s.timeline.end)
+	s.turn = 5e6
+	if d := o.Truth.Lines.Delay; d > 0 {
+		s.turn = nanoseconds(float64(d))
+	}
 	if s.beam, err = newBeam(o.Rig, o.Truth); err != nil {
 		return nil, err
 	}

@@ -159,6 +159,14 @@ func (tl *timeline) add(i int, p config.PlanStep, late TruthStep, at float64, re
 	return nil
 }
 
+// extend lets the last step go on by so many seconds.
+func (tl *timeline) extend(by float64) {
+	if by > 0 {
+		tl.end += by
+		tl.steps[len(tl.steps)-1].To = nanoseconds(tl.end)
+	}
+}
+
 // settle collects the supports' own movements.
 func (tl *timeline) settle(rig *config.Rig, truth *Truth) error {
 	for _, s := range truth.Supports {
