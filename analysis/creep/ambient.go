@@ -15,16 +15,18 @@ func Lagged(timeH, value []float64, lagH float64) (out, slope []float64) {
 		copy(out, value)
 		return out, slope
 	}
+	before, e, g := math.NaN(), 0.0, 0.0
 	for i := range value {
 		if i == 0 {
 			out[0] = value[0]
 			continue
 		}
 		a := (timeH[i] - timeH[i-1]) / lagH
-		e := math.Exp(-a)
-		g := 1 - a/2 // (1-e)/a where a is too small to divide by
-		if a > 1e-9 {
-			g = -math.Expm1(-a) / a
+		if math.Abs(a-before) > 1e-9*a || i == 1 { // mostly the interval is the same
+			before, e, g = a, math.Exp(-a), 1-a/2 // g is (1-e)/a where a is too small to divide by
+			if a > 1e-9 {
+				g = -math.Expm1(-a) / a
+			}
 		}
 		de, dg := a*e, g-e
 		out[i] = e*out[i-1] + (g-e)*value[i-1] + (1-g)*value[i]

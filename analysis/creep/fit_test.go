@@ -17,6 +17,7 @@ type plan struct {
 	temperature float64 // mm/K, 0: none
 	lag         float64
 	seed        uint64
+	coarse      bool // 10 bins a decade instead of 20
 }
 
 func ladder() plan {
@@ -65,7 +66,11 @@ func (p plan) times() []float64 {
 		begin := c.AtH + c.RampH
 		for age := 5.0 / 3600; begin+age < next; {
 			out = append(out, begin+age)
-			age += min(age*0.122, 1)
+			if p.coarse {
+				age += min(age*0.259, 3)
+			} else {
+				age += min(age*0.122, 1)
+			}
 		}
 	}
 	return out

@@ -94,7 +94,9 @@ func estimateNoise(timeH, u, r []float64, lost float64) *noise {
 		scale = max(scale, leastScale)
 		return f.logDet + 2*float64(n)*math.Log(scale) + s/(scale*scale), scale
 	}
+	// The fading part brings two parameters and must earn them.
 	best, scale := cost(0, 1)
+	best -= 4
 	ratio, fade := 0.0, 1.0
 	if n < 8 {
 		return newNoise(timeH, u, scale, 0, 1)

@@ -46,12 +46,21 @@ type system struct {
 	notes    []Note
 
 	value, slope []float64
+	// memory holds the last lagged column of each ambient record: design and
+	// derivative ask for the same one.
+	memory map[int]lagColumn
+}
+
+// lagColumn is a lagged column with its derivative by ln lag.
+type lagColumn struct {
+	lnLag        float64
+	value, slope []float64
 }
 
 // newSystem lays out rows and columns. lags gives ln lag of each ambient
 // record to start from; nil: the middle of its bounds.
 func newSystem(in *Input, fam family, lags []float64) *system {
-	s := &system{in: in, fam: fam, value: make([]float64, len(fam.names)), slope: make([]float64, len(fam.names))}
+	s := &system{in: in, fam: fam, value: make([]float64, len(fam.names)), slope: make([]float64, len(fam.names)), memory: map[int]lagColumn{}}
 	for i := range in.Series {
 		s.first = append(s.first, len(s.y))
 		q := &in.Series[i]
@@ -166,6 +175,9 @@ func (s *system) shapes() int {
 // derivative by ln lag at every row, relative to the baseline of the row's
 // series.
 func (s *system) ambientColumn(a int, lnLag float64) (value, slope []float64) {
+	if m, ok := s.memory[a]; ok && m.lnLag == lnLag {
+		return m.value, m.slope
+	}
 	rec := &s.in.Ambient[a]
 	f, d := Lagged(rec.TimeH, rec.Value, math.Exp(lnLag))
 	value, slope = make([]float64, len(s.y)), make([]float64, len(s.y))
@@ -191,6 +203,7 @@ func (s *system) ambientColumn(a int, lnLag float64) (value, slope []float64) {
 			slope[r] -= d0
 		}
 	}
+	s.memory[a] = lagColumn{lnLag, value, slope}
 	return value, slope
 }
 

@@ -1,0 +1,25 @@
+//go:build campaign
+
+package creep
+
+import "testing"
+
+// The full coverage campaign; see coverage_test.go. Run with
+//
+//	go test -tags campaign -run Campaign -v -timeout 60m ./analysis/creep
+func TestCoverageCampaign(t *testing.T) {
+	c := coverage(t, 1000, true)
+	c.log(t)
+	for name, hit := range map[string]int{"n": c.n, "sag": c.sag} {
+		if share := float64(hit) / float64(c.tests); share < 0.93 || share > 0.97 {
+			t.Errorf("95 %% intervals of %s hold the truth in %.1f %%, want 93 to 97", name, 100*share)
+		}
+	}
+	if share := float64(c.averaged) / float64(c.tests); share < 0.93 {
+		t.Errorf("averaged intervals hold the truth in %.1f %%, want 93 or more", 100*share)
+	}
+	if c.widthRatio > 2 {
+		t.Errorf("averaged intervals are %.2f times as wide, want at most 2", c.widthRatio)
+	}
+}
+
