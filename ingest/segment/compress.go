@@ -82,7 +82,7 @@ func pack(fs FS, src File, plain, partial string, out *Compressed) (ix *frameInd
 		return nil, err
 	}
 	p := packer{dst: dst, enc: enc, name: plain, ix: new(frameIndex)}
-	s := splitter{r: io.NewSectionReader(src, 0, info.Size())}
+	s := splitter{r: io.NewSectionReader(src, 0, info.Size()), size: info.Size()}
 	for final := false; !final; {
 		at := s.off
 		p.text, final, err = s.next(p.text)

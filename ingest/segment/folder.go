@@ -187,6 +187,9 @@ func (d *Folder) comments(f *segFile, see func(item) bool) error {
 	}
 	defer closeText()
 	s := splitter{r: text}
+	if info, err := file.Stat(); err == nil && !f.compressed {
+		s.size = info.Size()
+	}
 	for {
 		chunk, final, err := s.next(nil)
 		if err != nil {

@@ -153,7 +153,7 @@ func (l *Log) catchUp(f File, size int64) error {
 	if size < l.good {
 		return fmt.Errorf("%s has become shorter (%d bytes, %d were on disk): was it replaced?", l.name, size, l.good)
 	}
-	s := splitter{r: io.NewSectionReader(f, l.good, size-l.good)}
+	s := splitter{r: io.NewSectionReader(f, l.good, size-l.good), size: size - l.good}
 	base := l.good
 	for {
 		at := base + s.off

@@ -1,0 +1,236 @@
+package segment
+
+import (
+	"bytes"
+	"fmt"
+	"math/rand/v2"
+	"regexp"
+	"testing"
+
+	"github.com/influxdata/line-protocol/v2/lineprotocol"
+)
+
+// exactForm is what the fast path may take (design of the format), written in
+// another way than the code.
+var exactForm = regexp.MustCompile(`^indication,gauge=[A-Za-z0-9_.-]{1,64} mm=-?[0-9]{1,9}(\.[0-9]{1,6})? [1-9][0-9]{18}\n$`)
+
+// agree checks one line: where the fast path takes it, it has exactly the form
+// and the library's decoder reads the same; where it has the form (and the
+// stamp fits), the fast path takes it.
+func agree(t *testing.T, line []byte) {
+	t.Helper()
+	names := newInterner(nil)
+	var cols columns
+	taken := fastLines(line, &cols, names)
+	if taken == 0 {
+		if exactForm.Match(line) {
+			if rec, ok, err := slowLine(line); ok && err == nil && rec.Kind == Indication {
+				t.Fatalf("the fast path refuses %q", line)
+			}
+		}
+		return
+	}
+	line = line[:taken]
+	for i := range cols.gauge {
+		n := bytes.IndexByte(line, '\n') + 1
+		one := line[:n]
+		line = line[n:]
+		if !exactForm.Match(one) {
+			t.Fatalf("the fast path takes %q", one)
+		}
+		d := lineprotocol.NewDecoderWithBytes(one)
+		d.Next()
+		m, err := d.Measurement()
+		key, value, err2 := d.NextTag()
+		if err != nil || err2 != nil || string(m) != "indication" || string(key) != "gauge" || string(value) != names.names[cols.gauge[i]] {
+			t.Fatalf("%q: gauge %q, the library says %q", one, names.names[cols.gauge[i]], value)
+		}
+		f, v, err := d.NextField()
+		if err != nil || string(f) != "mm" || v.FloatV() != float64(cols.micro[i])/1e6 {
+			t.Fatalf("%q: %d millionths, the library says %v", one, cols.micro[i], v)
+		}
+		raw, err := d.TimeBytes()
+		if err != nil || fmt.Sprint(cols.time[i]) != string(raw) {
+			t.Fatalf("%q: time %d, the library says %s", one, cols.time[i], raw)
+		}
+		rec, ok, err := slowLine(one)
+		if err != nil || !ok || rec.Point != nil || rec.MM != float64(cols.micro[i])/1e6 || rec.Time != cols.time[i] || rec.Name != string(value) {
+			t.Fatalf("%q: the slow path gives %+v %v", one, rec, err)
+		}
+	}
+	if len(line) > 0 {
+		t.Fatalf("%q taken without a row", line)
+	}
+}
+
+var seeds = []string{
+	"indication,gauge=mid mm=1.234 1790000000000000000\n",
+	"indication,gauge=mid mm=-0 1790000000000000000\n",
+	"indication,gauge=g mm=-0.000001 9223372036854775807\n",
+	"indication,gauge=g mm=1 9223372036854775808\n",
+	"indication,gauge=a-rather_long.name mm=123456789.123456 1790000000000000000\n",
+	"indication,gauge=mid mm=1234567890 1790000000000000000\n",
+	"indication,gauge=mid mm=1.2345678 1790000000000000000\n",
+	"indication,gauge=mid mm=0x1p3 1790000000000000000\n",
+	"indication,gauge=mid mm=1_0.5 1790000000000000000\n",
+	"indication,gauge=mid mm=.5 1790000000000000000\n",
+	"indication,gauge=mid mm=5. 1790000000000000000\n",
+	"indication,gauge=mid mm=1e3 1790000000000000000\n",
+	"indication,gauge=mid mm=01.5 1790000000000000000\n",
+	"indication,gauge=mid mm=1i 1790000000000000000\n",
+	"indication,gauge=mid mm=1.5 179000000000000000\n",
+	"indication,gauge=mid mm=1.5\n",
+	"indication,gauge=mid  mm=1.5 1790000000000000000\n",
+	"indication,gauge=mid mm=1.5,mm=2 1790000000000000000\n",
+	"indication,gauge=mi\\ d mm=1.5 1790000000000000000\n",
+	"indication,gauge=mid mm=1.5 1790000000000000000\r\n",
+	"indication,gauge=mid,x=y mm=1.5 1790000000000000000\n",
+	"indication,gauge=12345678 mm=1.5 1790000000000000000\nindication,gauge=123456789 mm=1.5 1790000000000000000\n",
+}
+
+func FuzzFastPathAgreesWithTheLibrary(f *testing.F) {
+	for _, s := range seeds {
+		f.Add([]byte(s))
+	}
+	f.Fuzz(func(t *testing.T, line []byte) { agree(t, line) })
+}
+
+// Every change of one byte of lines of the form is judged alike by both paths.
+func TestFastPathAgreesOnAllNeighbours(t *testing.T) {
+	for _, s := range seeds {
+		for i := range s {
+			for c := range 256 {
+				b := []byte(s)
+				b[i] = byte(c)
+				agree(t, b)
+			}
+			agree(t, []byte(s[:i]+s[i+1:]))
+			agree(t, []byte(s[:i]+"0"+s[i:]))
+		}
+		agree(t, []byte(s[:len(s)-1]))
+	}
+}
+
+// A careful reader refuses what the library's decoder lets pass.
+func TestOdditiesAreRefused(t *testing.T) {
+	for _, s := range []string{
+		"indication,gauge=mid mm=0x1p3 1790000000000000000\n",
+		"indication,gauge=mid mm=1_0.5 1790000000000000000\n",
+		"indication,gauge=mid mm=1.5,mm=2 1790000000000000000\n",
+		"indication,gauge=mid,gauge=mid mm=1.5 1790000000000000000\n",
+		"indication,gauge=mid mm=1.5\n",
+		"indication mm=1.5 1790000000000000000\n",
+		"indication,gauge=mid mm=\"1.5\" 1790000000000000000\n",
+		"indication,gauge=mid mm=1.5 1790000000000000000 x\n",
+		"note text=\"a",
+	} {
+		if rec, ok, err := slowLine([]byte(s)); err == nil {
+			t.Errorf("%q is taken: %+v %v", s, rec, ok)
+		}
+	}
+}
+
+// mixed makes lines of n readings of eight gauges as the writer writes them.
+func mixed(n int) []byte {
+	rng := rand.New(rand.NewPCG(5, 6))
+	enc := lineEncoder{stamps: new(Stamps)}
+	var b []byte
+	gauges := []string{"left", "q1", "mid", "q3", "right", "ref", "seat-l", "seat-r"}
+	for i := range n {
+		in := Shown{Gauge: gauges[i%8], MM: float64(rng.IntN(12700)) / 1000, Time: t0 + int64(i)*1e7}
+		b, _, _ = enc.indication(b, &in)
+	}
+	return b
+}
+
+func BenchmarkDecodeFastPath(b *testing.B) {
+	text := mixed(20000)
+	names := newInterner(nil)
+	var cols columns
+	b.SetBytes(int64(len(text)))
+	for b.Loop() {
+		cols = columns{cols.gauge[:0], cols.micro[:0], cols.time[:0]}
+		if fastLines(text, &cols, names) != len(text) {
+			b.Fatal("not all taken")
+		}
+	}
+	b.ReportMetric(20000*float64(b.N)/b.Elapsed().Seconds()/1e6, "Mreadings/s")
+}
+
+func BenchmarkDecodeLibrary(b *testing.B) {
+	text := mixed(20000)
+	b.SetBytes(int64(len(text)))
+	sum := 0.0
+	for b.Loop() {
+		d := lineprotocol.NewDecoderWithBytes(text)
+		for d.Next() {
+			if _, err := d.Measurement(); err != nil {
+				b.Fatal(err)
+			}
+			for {
+				key, _, err := d.NextTag()
+				if err != nil {
+					b.Fatal(err)
+				}
+				if key == nil {
+					break
+				}
+			}
+			for {
+				key, v, err := d.NextField()
+				if err != nil {
+					b.Fatal(err)
+				}
+				if key == nil {
+					break
+				}
+				sum += v.FloatV()
+			}
+			if _, err := d.TimeBytes(); err != nil {
+				b.Fatal(err)
+			}
+		}
+	}
+	b.ReportMetric(20000*float64(b.N)/b.Elapsed().Seconds()/1e6, "Mreadings/s")
+}
+
+// Appending indications allocates nothing once the buffers have grown.
+func TestAppendingAllocatesNothing(t *testing.T) {
+	fs, _ := testFS(t)
+	w, err := NewWriter(fs, ReadingsDir, 1, WriterOptions{Header: testHeader()})
+	if err != nil {
+		t.Fatal(err)
+	}
+	now := t0
+	in := Shown{Gauge: "mid", MM: 1.234, Shown: 0.0486, Unit: "in"}
+	round := func() {
+		for range 200 {
+			now += 1e6
+			in.Time = now
+			if err := w.Indication(&in); err != nil {
+				t.Fatal(err)
+			}
+			if err := w.Ambient("air", 20.1, 48.5, now); err != nil {
+				t.Fatal(err)
+			}
+		}
+	}
+	for range 4 {
+		round()
+	}
+	w.Checkpoint(synced(now))
+	if n := testing.AllocsPerRun(1, round); n != 0 {
+		t.Errorf("%v allocations for 400 lines", n)
+	}
+	if err := w.Checkpoint(synced(now)); err != nil {
+		t.Fatal(err)
+	}
+	if n := testing.AllocsPerRun(5, func() {
+		if err := w.Checkpoint(synced(now)); err != nil {
+			t.Fatal(err)
+		}
+	}); n != 0 {
+		t.Logf("%v allocations a checkpoint", n)
+	}
+	w.Close(synced(now))
+}
