@@ -4,6 +4,7 @@ import (
 	"bytes"
 	"fmt"
 	"os"
+	"path/filepath"
 
 	"go.yaml.in/yaml/v3"
 )
@@ -97,6 +98,12 @@ func replaceFile(path string, text []byte) error {
 	if err != nil {
 		_ = os.Remove(temporary)
 		return fmt.Errorf("writing amendments: %w", err)
+	}
+	// The new name must outlive a power cut too. Not every system can sync a
+	// folder; those that cannot keep names safe by other means.
+	if folder, err := os.Open(filepath.Dir(path)); err == nil {
+		_ = folder.Sync()
+		_ = folder.Close()
 	}
 	return nil
 }

@@ -11,6 +11,12 @@
 // file, the line, the column and the mend; and that nothing it reads is ever
 // rewritten, except for the single scalar a caller asks to splice.
 //
+// LoadRig and Parse read a rig, (*Rig).Check and (*Rig).CheckPorts say what is
+// wrong or doubtful in it, LoadAmendments and (*Rig).Apply put in what was
+// learned later, Splice writes one value back, and Template is the file that
+// gaugelog new writes. What is wrong comes as a Problems list. The readers of
+// single quantities (ParseLength, ParseWeight and so on) serve the command line.
+//
 // It knows nothing of bytes on a line, of beams or of readings, and imports
 // nothing else of gaugelog.
 package config

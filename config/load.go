@@ -133,13 +133,19 @@ func (w *walker) add(n *yaml.Node, what, fix string) {
 	w.problems = append(w.problems, Problem{File: w.file, Line: n.Line, Col: n.Column, What: what, Fix: fix})
 }
 
-// value returns the tree for node n; nil where it is wrong, which has then
-// been reported.
-func (w *walker) value(n *yaml.Node, t target) any {
-	defer func(file string) { w.file = file }(w.file)
+// enter changes to the file that node n stands in; the result changes back.
+func (w *walker) enter(n *yaml.Node) (leave func()) {
+	before := w.file
 	if file, ok := w.src.foreign[n]; ok {
 		w.file = file
 	}
+	return func() { w.file = before }
+}
+
+// value returns the tree for node n; nil where it is wrong, which has then
+// been reported.
+func (w *walker) value(n *yaml.Node, t target) any {
+	defer w.enter(n)()
 	w.src.places[t.path] = place{w.file, n.Line, n.Column}
 	for t.typ.Kind() == reflect.Pointer {
 		t.typ = t.typ.Elem()
@@ -233,10 +239,7 @@ func (w *walker) mapping(n *yaml.Node, t target) any {
 // key runs f with the file that the key stands in, after refusing keys that
 // are no plain text.
 func (w *walker) key(key *yaml.Node, f func()) {
-	defer func(file string) { w.file = file }(w.file)
-	if file, ok := w.src.foreign[key]; ok {
-		w.file = file
-	}
+	defer w.enter(key)()
 	if key.Kind != yaml.ScalarNode || key.ShortTag() == "!!merge" {
 		w.add(key, "a key is a plain word", "write key: value")
 		return

@@ -36,3 +36,31 @@ func TestSplice(t *testing.T) {
 		}
 	}
 }
+
+func TestSpliceInOtherLayouts(t *testing.T) {
+	for _, tc := range []struct{ text, path, value, want string }{
+		{"a: 1 # one\r\nb: 2\r\n", "a", "3", "a: 3 # one\r\nb: 2\r\n"},
+		{"a: 1\r\nb: 2\r\n", "c", "3", "a: 1\r\nb: 2\r\nc: 3\r\n"},
+		{"a: 1\nb: 2", "c", "3", "a: 1\nb: 2\nc: 3"},
+		{"ä: ü # µ\nb: {é: 2, c: 'it''s'}\n", "b.é", "x y", "ä: ü # µ\nb: {é: x y, c: 'it''s'}\n"},
+		{"b: {c: it's, d: [1, \"}\"] } # }\n", "b.e", "5", "b: {c: it's, d: [1, \"}\"], e: 5 } # }\n"},
+		{"b: {}\n", "b.e", "5", "b: {e: 5}\n"},
+		{"a:\n  b: |\n    text\n    more\nz: 1\n", "a.c", "5", "a:\n  c: 5\n  b: |\n    text\n    more\nz: 1\n"},
+		{"l:\n  - name: x\n    v: 1 mm\n\n  - name: y\n", "l[x].w", "2 mm", "l:\n  - name: x\n    v: 1 mm\n    w: 2 mm\n\n  - name: y\n"},
+		{"\ufeffa: 1\n", "a", "2", "\ufeffa: 2\n"},
+		{"{\n  a: 1, # one }\n  b: 2\n}\n", "c.d", "on", "{\n  a: 1, # one }\n  b: 2\n, c: {d: \"on\"}}\n"},
+	} {
+		got, err := Splice([]byte(tc.text), tc.path, tc.value)
+		if err != nil || string(got) != tc.want {
+			t.Errorf("%s of %q\n got %q %v\nwant %q", tc.path, tc.text, got, err, tc.want)
+		}
+	}
+	for _, tc := range []struct{ text, path string }{
+		{"a: |\n  text\n", "a"}, {"a: one\n  two\n", "a"}, {"a: &x 1\nb: *x\n", "a"}, {"a: [1, 2]\n", "a"},
+		{"- name: x\n- name: x\n", "x"}, {"l: [{name: x}, {name: x}]\n", "l[x].v"}, {"a: {b\n", "a"}, {"", "a"},
+	} {
+		if got, err := Splice([]byte(tc.text), tc.path, "5"); err == nil {
+			t.Errorf("%s of %q was written: %q", tc.path, tc.text, got)
+		}
+	}
+}
