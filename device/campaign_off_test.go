@@ -1,0 +1,5 @@
+//go:build !campaign
+
+package device_test
+
+const replugs = 100
