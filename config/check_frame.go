@@ -147,7 +147,7 @@ func (c *checker) textFrame(p string, f *Frame) {
 		set        bool
 	}{{"units", "unit", len(f.Units) > 0}, {"statuses", "status", len(f.Statuses) > 0}} {
 		if k.set && !slices.Contains(groups, k.group) {
-			c.fail(p+"."+k.key, k.key+" of frame "+f.Name+" has no effect: its pattern has no group "+k.group, "add (?P<"+k.group+">...) to the pattern, or take "+k.key+" out")
+			c.fail(p+"."+k.key, k.key+" of frame "+f.Name+" have no effect: its pattern has no group "+k.group, "add (?P<"+k.group+">...) to the pattern, or take "+k.key+" out")
 		}
 	}
 }

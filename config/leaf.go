@@ -173,16 +173,16 @@ func kindName(n *yaml.Node) string {
 }
 
 // pairs calls f for each key and value of a group with free keys, each a
-// scalar.
-func (l *leaf) pairs(f func(key, val *yaml.Node) *Problem) *Problem {
+// scalar; example is an entry as it should be.
+func (l *leaf) pairs(example string, f func(key, val *yaml.Node) *Problem) *Problem {
 	if l.node.Kind != yaml.MappingNode {
-		return l.problem(l.node, l.shown+" is a group of keys, and here is "+kindName(l.node), "write {key: value, ...}")
+		return l.problem(l.node, l.shown+" is a group of keys, and here is "+kindName(l.node), "write {"+example+", ...}")
 	}
 	first := map[string]int{}
 	for i := 0; i+1 < len(l.node.Content); i += 2 {
 		key, val := l.node.Content[i], l.node.Content[i+1]
 		if key.Kind != yaml.ScalarNode || val.Kind != yaml.ScalarNode {
-			return l.problem(key, "each entry of "+l.shown+" is one word and one value", "write key: value")
+			return l.problem(key, "each entry of "+l.shown+" is one word and one value", "write it as "+example)
 		}
 		if line, twice := first[key.Value]; twice {
 			return l.problem(key, fmt.Sprintf("key %s stands twice in %s (first in line %d)", key.Value, l.shown, line), "keep one of the two")
@@ -200,7 +200,7 @@ func (l *leaf) pairs(f func(key, val *yaml.Node) *Problem) *Problem {
 
 func (l *leaf) details() (any, *Problem) {
 	out := []Detail{}
-	problem := l.pairs(func(key, val *yaml.Node) *Problem {
+	problem := l.pairs(`moisture: "11.2 %"`, func(key, val *yaml.Node) *Problem {
 		l.places[join(l.path, key.Value)] = place{l.file, val.Line, val.Column}
 		out = append(out, Detail{key.Value, val.Value})
 		return nil
@@ -210,7 +210,7 @@ func (l *leaf) details() (any, *Problem) {
 
 func (l *leaf) words() (any, *Problem) {
 	out := map[string]string{}
-	problem := l.pairs(func(key, val *yaml.Node) *Problem {
+	problem := l.pairs("H: hold", func(key, val *yaml.Node) *Problem {
 		l.places[join(l.path, key.Value)] = place{l.file, val.Line, val.Column}
 		out[key.Value] = val.Value
 		return nil
@@ -220,7 +220,7 @@ func (l *leaf) words() (any, *Problem) {
 
 func (l *leaf) set() (any, *Problem) {
 	out := []SetWeight{}
-	problem := l.pairs(func(key, val *yaml.Node) *Problem {
+	problem := l.pairs("pan: 12.40 kg", func(key, val *yaml.Node) *Problem {
 		l.places[join(l.path, key.Value)] = place{l.file, key.Line, key.Column}
 		w, problem := parseWeight(val.Value)
 		if problem != nil {

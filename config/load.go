@@ -193,7 +193,7 @@ func (w *walker) list(n *yaml.Node, t target) any {
 		return []any{w.value(n, target{typ: elem, path: t.path + "[0]", shown: t.shown, percent: t.percent})}
 	}
 	if n.Kind != yaml.SequenceNode {
-		w.add(n, display(t)+" is a list", "begin each entry with \"- \", or write [ , ] on one line")
+		w.add(n, display(t)+" is a list, and here is "+kindName(n), "begin each entry with \"- \", or write [ , ] on one line")
 		return nil
 	}
 	out := make([]any, 0, len(n.Content))
@@ -209,7 +209,7 @@ func (w *walker) list(n *yaml.Node, t target) any {
 func (w *walker) mapping(n *yaml.Node, t target) any {
 	keys := keysOf(t.typ)
 	if n.Kind != yaml.MappingNode {
-		w.add(n, display(t)+" is a group of keys", "write key: value lines under it, or {key: value, ...}; its keys: "+strings.Join(keyNames(keys), ", "))
+		w.add(n, display(t)+" is a group of keys, and here is "+kindName(n), "write key: value lines under it, or {key: value, ...}; its keys: "+strings.Join(keyNames(keys), ", "))
 		return nil
 	}
 	tree := map[string]any{}

@@ -27,20 +27,31 @@ func nearestMend(word string, known []string) string {
 }
 
 // nearest returns the known word with the smallest edit distance, ignoring
-// case, hyphens and underscores; "" if more than a third of its letters
-// differ.
+// case, hyphens and underscores, and of equals the one that begins alike for
+// longer; "" if more than a third of its letters differ, or any of a word of
+// two (mm is no mend for cm).
 func nearest(word string, known []string) string {
-	best, bestDistance := "", 1<<30
+	best, bestDistance, bestAlike := "", 1<<30, 0
 	for _, k := range known {
-		d := distance([]rune(flat(word)), []rune(flat(k)))
-		if d < bestDistance {
-			best, bestDistance = k, d
+		d, same := distance([]rune(flat(word)), []rune(flat(k))), alike(flat(word), flat(k))
+		if d < bestDistance || d == bestDistance && same > bestAlike {
+			best, bestDistance, bestAlike = k, d, same
 		}
 	}
-	if bestDistance > max(1, len([]rune(best))/3) {
+	switch letters := len([]rune(best)); {
+	case letters <= 2 && bestDistance > 0, bestDistance > max(1, letters/3):
 		return ""
 	}
 	return best
+}
+
+// alike counts the bytes that two words have in common at the front.
+func alike(a, b string) int {
+	n := 0
+	for n < min(len(a), len(b)) && a[n] == b[n] {
+		n++
+	}
+	return n
 }
 
 func flat(s string) string {
