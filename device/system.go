@@ -245,11 +245,20 @@ func (p *systemPort) Drain() error {
 
 // Close waits until the reader has left the library (at most the read
 // time-out), closes and gives the lock back. A second Close does nothing.
+// A write the driver will not finish is not waited for: the kernel keeps the
+// device it writes to, whatever becomes of the descriptor.
 func (p *systemPort) Close() error {
 	p.once.Do(func() {
 		p.closing.Store(true)
-		p.using.Lock()
-		defer p.using.Unlock()
+		for end := time.Now().Add(5 * readTimeout); ; time.Sleep(time.Millisecond) {
+			if p.using.TryLock() {
+				defer p.using.Unlock()
+				break
+			}
+			if time.Now().After(end) {
+				break
+			}
+		}
 		p.err = p.port.Close()
 		p.lock.release()
 	})

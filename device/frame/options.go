@@ -32,7 +32,9 @@ type Options struct {
 	Unit Unit
 	// Units translates what the instrument prints, beside mm, in, inch and ".
 	Units map[string]Unit
-	// Statuses translates status codes to the words of Frame.Status.
+	// Statuses translates status codes to the words of Frame.Status. A blank
+	// or absent code is ordinary unless it stands here; a frame with any other
+	// code is rejected, since what it says of the value is not known.
 	Statuses map[string]string
 	// NoReadings are whole texts, or texts of the value group, that are no
 	// number, with the reason.
