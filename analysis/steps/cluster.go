@@ -55,7 +55,7 @@ func (r *run) scanWindow(raw [][]history.Sample) {
 		}
 		flat, singles := hampel(g, pts[gi])
 		all = append(all, singles...)
-		all = append(all, jumps(g, flat, []int{1, 2, 5, 15, 45}, func(point) float64 { return g.noise })...)
+		all = append(all, jumps(g, flat, []int{1, 2, 5, 15, 45}, func(p point) float64 { return g.noise * p.f })...)
 	}
 	sort.SliceStable(all, func(a, b int) bool { return all[a].lo < all[b].lo })
 	join := max(apart, 2*nanos(r.interval()))
@@ -104,7 +104,7 @@ func hampel(g *gauge, seq []point) (rest []point, singles []transition) {
 		m := Median(w)
 		// Both sides must agree with each other: a step is no spike.
 		left, right := Median(w[:half-1]), Median(w[half+2:])
-		need := max(5*madScale*MAD(w), 3*g.res, 6*g.noise)
+		need := max(5*madScale*MAD(w), 3*g.res*seq[i].f, 6*g.noise*seq[i].f)
 		bad[i] = math.Abs(seq[i].y-m) > need && math.Abs(left-right) < math.Abs(seq[i].y-m)/3
 	}
 	for i := 0; i < len(seq); i++ {
@@ -183,7 +183,7 @@ func (c *cluster) measureGauge(g *gauge, before, after int64) {
 	l, lu := edge(g, pts[lo:a], mid)
 	r, ru := edge(g, pts[b:hi], mid)
 	c.jump[g.index] = Value{r - l, hypot(lu, ru)}
-	c.moved[g.index] = math.Abs(r-l) > max(4*hypot(lu, ru), 1.5*g.res)
+	c.moved[g.index] = math.Abs(r-l) > max(4*hypot(lu, ru), 1.5*g.res*max(pts[a-1].f, pts[b].f))
 	for _, p := range pts[a:b] {
 		if d := p.y - l; math.Abs(d) > math.Abs(c.peak[g.index]) {
 			c.peak[g.index] = d
@@ -194,14 +194,16 @@ func (c *cluster) measureGauge(g *gauge, before, after int64) {
 // edge estimates a gauge's level at the instant t from readings on one side
 // of it: their line where there are eight, else their median.
 func edge(g *gauge, pts []point, t int64) (level, u float64) {
+	coarse := 1.0
 	x, y, s := make([]float64, len(pts)), make([]float64, len(pts)), make([]float64, len(pts))
 	for i, p := range pts {
-		x[i], y[i], s[i] = seconds(p.t-t), p.y, g.noise
+		x[i], y[i], s[i] = seconds(p.t-t), p.y, g.noise*p.f
+		coarse = max(coarse, p.f)
 	}
-	floor := floorU(g.res)
+	floor := floorU(g.res * coarse)
 	if len(pts) < 8 {
-		v := Location(y, g.res)
-		return v.MM, max(v.U, 1.253*g.noise/math.Sqrt(float64(len(pts))), floor)
+		v := Location(y, g.res*coarse)
+		return v.MM, max(v.U, 1.253*g.noise*coarse/math.Sqrt(float64(len(pts))), floor)
 	}
 	fit, ok := fitPoly(x, y, s, 1)
 	if !ok {

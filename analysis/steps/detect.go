@@ -106,7 +106,7 @@ func scores(seq []point, k int, sigma func(point) float64, res float64) []score 
 		default:
 			v *= 2
 		}
-		s.need = max(jumpSigmas*math.Sqrt(v), jumpCounts*res) + bend
+		s.need = max(jumpSigmas*math.Sqrt(v), jumpCounts*res*max(seq[i].f, seq[i+1].f)) + bend
 		abs = append(abs, math.Abs(s.jump))
 		out = append(out, s)
 	}
@@ -147,10 +147,9 @@ func jumps(g *gauge, seq []point, scales []int, sigma func(point) float64) []tra
 				}
 			}
 			if !near {
-				// A large scale sees that there was a rise, not where within it.
 				lo, hi := s.i, s.i+1
 				if k > 2 {
-					lo, hi = s.i-k+1, s.i+k
+					lo, hi = place(seq, s.i, k, sigma(seq[s.i]))
 				}
 				found = append(found, transition{g.index, seq[lo].t, seq[hi].t, s.jump, k, s.i})
 			}
@@ -158,6 +157,42 @@ func jumps(g *gauge, seq []point, scales []int, sigma func(point) float64) []tra
 	}
 	sort.SliceStable(found, func(a, b int) bool { return found[a].lo < found[b].lo })
 	return found
+}
+
+// place narrows down a rise that k points on either side of i show: to the
+// best split between two levels, widened while points lie at neither.
+func place(seq []point, i, k int, sigma float64) (lo, hi int) {
+	a, b := i-k+1, i+k
+	var outer, inner []float64
+	for _, p := range seq[a : a+(k+1)/2] {
+		outer = append(outer, p.y)
+	}
+	for _, p := range seq[b+1-(k+1)/2 : b+1] {
+		inner = append(inner, p.y)
+	}
+	left, right := Median(outer), Median(inner)
+	cost := 0.0
+	for _, p := range seq[a : b+1] {
+		cost += math.Abs(p.y - right)
+	}
+	best, split := cost, a
+	for j := a; j < b; j++ {
+		cost += math.Abs(seq[j].y-left) - math.Abs(seq[j].y-right)
+		if cost < best {
+			best, split = cost, j
+		}
+	}
+	tol := max(3*sigma, 0.05*math.Abs(right-left))
+	lo, hi = split, split+1
+	for lo > a && math.Abs(seq[lo].y-left) > tol {
+		lo--
+	}
+	for hi < b && math.Abs(seq[hi].y-right) > tol {
+		hi++
+	}
+	// A rise of little more than the scatter is placed by so many points only.
+	extra := int(min(4*sq(sigma/max(math.Abs(right-left), sigma/100)), float64(k)))
+	return max(a, lo-extra), min(b, hi+extra)
 }
 
 // interval is a stretch of time.
@@ -225,7 +260,7 @@ func (r *run) interval() float64 {
 
 // binSigma is the scatter of a bin's median, as a single point's.
 func binSigma(g *gauge, p point) float64 {
-	return max(g.noise/math.Sqrt(float64(p.n)), g.res/10)
+	return p.f * max(g.noise/math.Sqrt(float64(p.n)), g.res/10)
 }
 
 // excursions finds bins whose extremes stand far off their median though the
@@ -243,7 +278,7 @@ func excursions(g *gauge) []interval {
 		if i+1 < len(g.seq) {
 			slack = max(slack, math.Abs(p.y-g.seq[i+1].y))
 		}
-		need := max(7*g.noise, 3*g.res) + slack
+		need := p.f*max(7*g.noise, 3*g.res) + slack
 		if p.max-p.y > need || p.y-p.min > need {
 			out = append(out, interval{p.from, p.to})
 		}

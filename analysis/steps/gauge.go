@@ -2,6 +2,7 @@ package steps
 
 import (
 	"math"
+	"slices"
 
 	"gaugelog/analysis/history"
 	"gaugelog/config"
@@ -23,6 +24,7 @@ type point struct {
 	mad      float64 // of its readings, mm
 	from, to int64   // of its readings
 	min, max float64 // as sag
+	f        float64 // how many times coarser a unit key made it: 1 usually
 }
 
 // gauge is what the finder knows of one gauge.
@@ -74,6 +76,7 @@ func (g *gauge) refresh(h *history.History) {
 func (g *gauge) fromBin(b history.Bin) point {
 	p := point{t: b.Time, raw: b.Median, n: b.N, from: b.From, to: b.LastTime}
 	f := g.factor(b.Time)
+	p.f = max(f, 1)
 	p.y = g.sag(b.Median * f)
 	p.mad = b.MAD * f / math.Abs(g.gain)
 	p.min, p.max = g.sag(b.Min*f), g.sag(b.Max*f)
@@ -87,8 +90,9 @@ func (g *gauge) fromBin(b history.Bin) point {
 }
 
 func (g *gauge) fromSample(s history.Sample) point {
-	y := g.sag(s.MM * g.factor(s.Time))
-	return point{t: s.Time, y: y, raw: s.MM, n: 1, from: s.Time, to: s.Time, min: y, max: y}
+	f := g.factor(s.Time)
+	y := g.sag(s.MM * f)
+	return point{t: s.Time, y: y, raw: s.MM, n: 1, from: s.Time, to: s.Time, min: y, max: y, f: max(f, 1)}
 }
 
 func (g *gauge) factor(t int64) float64 {
@@ -121,7 +125,7 @@ func (g *gauge) scatter() (noise, interval float64) {
 		}
 		if i > 1 {
 			d := g.seq[i-2].y - 2*g.seq[i-1].y + p.y
-			second = append(second, math.Abs(d))
+			second = append(second, math.Abs(d)*math.Sqrt(float64(p.n)))
 		}
 	}
 	floor := floorU(g.res)
@@ -129,7 +133,20 @@ func (g *gauge) scatter() (noise, interval float64) {
 	if len(spread) > 3 && len(spread) > len(g.seq)/2 {
 		return max(Median(spread), Median(ranges), floor), interval
 	}
-	return max(madScale*Median(second)/math.Sqrt(6), floor), interval
+	return max(trimmedSigma(second)/math.Sqrt(6), floor), interval
+}
+
+// trimmedSigma estimates a standard deviation from absolute deviations: the
+// mean of their lower nine tenths over what it is for normal ones, 0.6573
+// (from the normal density). Unlike a median it does not stick at a count.
+func trimmedSigma(abs []float64) float64 {
+	s := slices.Clone(abs)
+	slices.Sort(s)
+	s = s[:len(s)*9/10]
+	if len(s) == 0 {
+		return 0
+	}
+	return total(s) / float64(len(s)) / 0.6573
 }
 
 // normalRange is the expected range of n normal readings in standard
@@ -141,11 +158,11 @@ func normalRange(n int) float64 {
 
 // pointU is the standard uncertainty of a point from scatter and resolution.
 func (g *gauge) pointU(p point) float64 {
-	s := g.noise
+	s := g.noise * p.f
 	if p.n >= 5 {
 		s = max(s, madScale*p.mad)
 	}
-	return max(1.253*s/math.Sqrt(float64(p.n)), floorU(g.res))
+	return max(1.253*s/math.Sqrt(float64(p.n)), floorU(g.res*p.f))
 }
 
 // inSpan says whether the gauge stands between the outermost supports.

@@ -101,7 +101,7 @@ func (r *run) judgeStill(g int, v interval) (stuck, bool) {
 	gg := &r.gauges[g]
 	s := stuck{gauge: g, from: v.from, to: v.to, kind: Frozen}
 	want, by := r.shouldHave(g, v)
-	if want <= 6*gg.res {
+	if want <= 6*gg.res*max(gg.factor(v.from+1), 1) {
 		return s, false
 	}
 	s.evidence = fmt.Sprintf("gauge %s showed the same value for %.0f s while %s moved: it should have moved %.3g mm", r.name(g), seconds(v.to-v.from), r.names(by), want)

@@ -4,6 +4,7 @@ import (
 	"math"
 	"math/rand/v2"
 	"testing"
+	"time"
 
 	"gaugelog/analysis/history"
 	"gaugelog/config"
@@ -282,4 +283,9 @@ func plank() *world {
 		},
 		readTimes: []float64{60, 600, 3600},
 	}
+}
+
+// stamp is RFC 3339 for a second of the world.
+func stamp(s float64) string {
+	return time.Unix(0, at(s)).UTC().Format(time.RFC3339Nano)
 }
