@@ -23,6 +23,7 @@ func (e *Estimate) cautions() {
 	e.supportCautions()
 	e.shapeCautions()
 	e.twist()
+	e.departures()
 	if e.Fit.P < 0.01 && e.Fit.DOF > 0 {
 		e.warn("poor-fit", "", "the beam model does not hold the readings within their uncertainties: chi2 %.1f at %d degrees of freedom (probability %.2g); look at the residuals by gauge and step", e.Fit.Chi2, e.Fit.DOF, e.Fit.P)
 		if hint := e.fit.wiring(); hint != "" {

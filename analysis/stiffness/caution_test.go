@@ -1,0 +1,157 @@
+package stiffness
+
+import (
+	"math"
+	"math/rand/v2"
+	"testing"
+
+	"gaugelog/config"
+)
+
+func codes(e *Estimate) map[string]bool {
+	out := map[string]bool{}
+	for _, w := range e.Warnings {
+		out[w.Code] = true
+	}
+	return out
+}
+
+func mustCompute(t *testing.T, in Input) *Estimate {
+	t.Helper()
+	e, err := Compute(in)
+	if err != nil {
+		t.Fatal(err)
+	}
+	return e
+}
+
+func TestCautions(t *testing.T) {
+	for _, c := range []struct {
+		name  string
+		spoil func(*plank, *Input)
+		want  []string
+		not   []string
+	}{
+		{"as it is", func(*plank, *Input) {}, []string{"section-without-uncertainty", "loads-without-uncertainty", "plunger-unknown", "friction-bound"},
+			[]string{"poor-fit", "taper", "half-corrected", "supports-unmeasured", "large-deflection", "twist", "seating", "not-linear", "gravity-unplaced", "wiring"}},
+		{"taper", func(p *plank, _ *Input) { p.rig.Specimen.Section.Depth = lengths(37.7, 38, 38.3) }, []string{"taper"}, nil},
+		{"gravity", func(p *plank, _ *Input) { p.rig.Gravity = config.Gravity{} }, []string{"gravity-unplaced"}, nil},
+		{"one seat blind", func(_ *plank, in *Input) { without(in, "s2") }, []string{"half-corrected"}, []string{"supports-unmeasured"}},
+		{"both seats blind", func(_ *plank, in *Input) { without(in, "s1"); without(in, "s2") }, []string{"supports-unmeasured"}, []string{"half-corrected"}},
+		{"seating", func(_ *plank, in *Input) { scale(in, 0, 1.08) }, []string{"seating"}, nil},
+		{"stiffening", func(_ *plank, in *Input) {
+			scale(in, 1, 0.98)
+			scale(in, 2, 0.95)
+			scale(in, 3, 0.92)
+		}, []string{"not-linear"}, []string{"seating"}},
+		{"large", func(_ *plank, in *Input) {
+			for k := range in.Steps {
+				scale(in, k, 8)
+				for i := range in.Steps[k].Loads {
+					in.Steps[k].Loads[i].N *= 8
+				}
+			}
+		}, []string{"large-deflection"}, nil},
+		{"twist", func(p *plank, in *Input) {
+			p.rig.Gauges[4].At = p.rig.Gauges[3].At
+			for k := range in.Steps {
+				in.Steps[k].Gauges[4].MM = in.Steps[k].Gauges[3].MM * 1.03
+			}
+		}, []string{"twist"}, nil},
+	} {
+		p := newPlank()
+		in := noisy(p.ladder(), 0.002, rand.New(rand.NewPCG(8, 9)))
+		c.spoil(p, &in)
+		got := codes(mustCompute(t, in))
+		for _, w := range c.want {
+			if !got[w] {
+				t.Errorf("%s: no %s in %v", c.name, w, got)
+			}
+		}
+		for _, w := range c.not {
+			if got[w] {
+				t.Errorf("%s: %s in %v", c.name, w, got)
+			}
+		}
+	}
+}
+
+func scale(in *Input, step int, by float64) {
+	for i := range in.Steps[step].Gauges {
+		in.Steps[step].Gauges[i].MM *= by
+	}
+}
+
+func without(in *Input, gauge string) {
+	for k := range in.Steps {
+		var left []Obs
+		for _, o := range in.Steps[k].Gauges {
+			if in.Rig.Gauges[o.Gauge].Name != gauge {
+				left = append(left, o)
+			}
+		}
+		in.Steps[k].Gauges = left
+	}
+}
+
+// Two equal loads at thirds of the span, a bar between them and a gauge at
+// mid-span: the moduli of EN 408 and ASTM D198 by their own definitions.
+func TestModuliByStandards(t *testing.T) {
+	p := newPlank()
+	p.rig.Gauges = []config.Gauge{
+		{Name: "mid", At: length(1050, 0), Sees: "beam", Resolution: length(0.001, 0)},
+		{Name: "bar", At: length(1050, 0), Sees: "beam", Bar: lengths(800, 1300), Resolution: length(0.001, 0)},
+	}
+	mid := p.sag(1050, 700, 200) + p.sag(1050, 1400, 200)
+	end := p.sag(800, 700, 200) + p.sag(800, 1400, 200)
+	e := mustCompute(t, Input{Rig: p.rig, Steps: []StepObs{{Name: "1", Loads: []StepLoad{{Load: "a", N: 200}, {Load: "b", N: 200}},
+		Gauges: []Obs{{Gauge: 0, MM: mid, U: 0.001}, {Gauge: 1, MM: mid - end, U: 0.001}}}}})
+	relative(t, "ratio", e.StiffnessAt[0].Ratio.Value, 400/mid, 1e-12)
+	if e.StiffnessAt[0].Global == nil || e.StiffnessAt[1].Local == nil {
+		t.Fatalf("global %v, local %v", e.StiffnessAt[0].Global, e.StiffnessAt[1].Local)
+	}
+	// Between the loads the moment is constant: the local modulus is E.
+	relative(t, "local", e.StiffnessAt[1].Local.Value, 11800, 1e-9)
+	bent := 200 * 700 * (3*2100.0*2100 - 4*700*700) / (24 * p.ei)
+	relative(t, "global", e.StiffnessAt[0].Global.Value, 11800*bent/mid, 1e-9)
+	if e.StiffnessAt[0].Local != nil || e.StiffnessAt[1].Global != nil {
+		t.Error("a modulus was given for the wrong gauge")
+	}
+	names := map[string]bool{}
+	for _, s := range e.Standards {
+		names[s.Standard] = s.Includes != "" && s.Modulus.U > 0
+	}
+	if len(names) != 4 {
+		t.Errorf("standards %v, want EN 408 and ASTM D198, two each", names)
+	}
+	// Not rectangular, or not symmetric: no such modulus.
+	off := length(500, 0)
+	p.rig.Loads[0].At = &off
+	e = mustCompute(t, Input{Rig: p.rig, Steps: []StepObs{{Name: "1", Loads: []StepLoad{{Load: "a", N: 200}, {Load: "b", N: 200}}, Gauges: []Obs{{Gauge: 0, MM: mid, U: 0.001}}}}})
+	if len(e.Standards) != 0 {
+		t.Errorf("standards for loads off their places: %v", e.Standards)
+	}
+}
+
+// No figure of an estimate is ever NaN or infinite.
+func TestNoNaN(t *testing.T) {
+	for seed := range uint64(5) {
+		in, _ := simulate(rand.New(rand.NewPCG(99, seed)))
+		e := mustCompute(t, in)
+		for name, q := range map[string]*Quantity{"modulus": e.Modulus, "apparent": e.ApparentModulus, "shear": e.Shear, "shear modulus": e.ShearModulus, "bending": &e.Bending} {
+			for _, v := range []float64{q.Value, q.U, q.DOF, q.K, q.U95} {
+				if math.IsNaN(v) || math.IsInf(v, 0) {
+					t.Errorf("%s: %+v", name, *q)
+				}
+			}
+			if q.U <= 0 {
+				t.Errorf("%s has no uncertainty", name)
+			}
+		}
+		for _, l := range append(e.Budget, e.BendingBudget...) {
+			if math.IsNaN(l.Share + l.Sensitivity + l.U) {
+				t.Errorf("budget line %+v", l)
+			}
+		}
+	}
+}
