@@ -50,7 +50,7 @@ func fillGrid(moments []float64, end, finest, perDecade float64) *grid {
 
 func (g *grid) add(from, to, finest, perDecade float64) {
 	width := math.Log1p((to - from) / gridScale)
-	steps := math.Ceil(perDecade*width/math.Ln10) + 3
+	steps := math.Ceil(perDecade*width/math.Ln10) + 4
 	if finest > 0 {
 		steps = math.Max(steps, math.Min(20000, math.Ceil(width*(to-from)/finest)))
 	}
@@ -78,21 +78,20 @@ func (g *grid) find(t float64, hint int) int {
 // by the grid's own coordinate.
 type curve struct{ value, slope []float64 }
 
-// newCurve takes slopes from the neighbours: by second-order differences,
-// one-sided at a piece's ends.
+// newCurve takes slopes from the neighbours by fourth-order differences,
+// one-sided at a piece's ends (every piece has five nodes or more).
 func newCurve(g *grid, value []float64) curve {
 	slope := make([]float64, len(value))
 	for _, p := range g.pieces {
 		v, s := value[p.first:p.first+p.steps+1], slope[p.first:p.first+p.steps+1]
 		n := p.steps
-		for i := 1; i < n; i++ {
-			s[i] = (v[i+1] - v[i-1]) / 2
-			if i > 1 && i < n-1 {
-				s[i] = (8*(v[i+1]-v[i-1]) - (v[i+2] - v[i-2])) / 12
-			}
+		for i := 2; i < n-1; i++ {
+			s[i] = (8*(v[i+1]-v[i-1]) - (v[i+2] - v[i-2])) / 12
 		}
-		s[0] = (-3*v[0] + 4*v[1] - v[2]) / 2
-		s[n] = (3*v[n] - 4*v[n-1] + v[n-2]) / 2
+		s[0] = (-25*v[0] + 48*v[1] - 36*v[2] + 16*v[3] - 3*v[4]) / 12
+		s[1] = (-3*v[0] - 10*v[1] + 18*v[2] - 6*v[3] + v[4]) / 12
+		s[n] = (25*v[n] - 48*v[n-1] + 36*v[n-2] - 16*v[n-3] + 3*v[n-4]) / 12
+		s[n-1] = (3*v[n] + 10*v[n-1] - 18*v[n-2] + 6*v[n-3] - v[n-4]) / 12
 	}
 	return curve{value: value, slope: slope}
 }

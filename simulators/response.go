@@ -23,7 +23,7 @@ type response struct {
 func newResponse(b *beam, loads []*pusher, springs []spring, shifts []shift, moments []float64, end float64, views []view) *response {
 	finest := 0.0
 	if b.law.Tertiary.Amplitude > 0 {
-		finest = b.law.Tertiary.Growth / 8
+		finest = b.law.Tertiary.Growth / 12
 	}
 	r := &response{grid: newGrid(withOnsets(b, loads, moments), end, finest)}
 	pushers := append(append([]*pusher(nil), loads...), b.frictions(loads, springs, moments)...)
