@@ -220,7 +220,25 @@ func (b *builder) choose(re *syntax.Regexp) error {
 			}
 		}
 	}
-	return b.walk(re.Sub[0])
+	before := len(b.text.parts)
+	err := b.walk(re.Sub[0])
+	if optional := re.Op == syntax.OpQuest || re.Op == syntax.OpStar || re.Op == syntax.OpRepeat && re.Min == 0; optional {
+		b.mayBeMissing(b.text.parts[min(before, len(b.text.parts)):])
+	}
+	return err
+}
+
+// mayBeMissing lets an optional unit group say the unit it has no text for by
+// saying nothing, as instruments do that print a sign for inches only.
+func (b *builder) mayBeMissing(parts []part) {
+	if len(parts) != 1 || parts[0].kind != unitPart {
+		return
+	}
+	for _, unit := range []string{"mm", "in"} {
+		if _, has := parts[0].units[unit]; !has {
+			parts[0].units[unit] = ""
+		}
+	}
 }
 
 func hasGroup(re *syntax.Regexp) bool {
