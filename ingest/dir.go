@@ -147,7 +147,7 @@ func (d *Dir) AppendMark(m Mark, clock Clock) (string, error) {
 // renewMarksSum brings the sum of the marks file up to date where it stands in
 // SHA256SUMS, which it does once the run has ended.
 func (d *Dir) renewMarksSum() error {
-	known, err := loadSums(d.fs)
+	known, err := segment.ReadSums(d.fs)
 	if err != nil {
 		return err
 	}
@@ -162,10 +162,7 @@ func (d *Dir) renewMarksSum() error {
 	if err != nil {
 		return err
 	}
-	if err := known.add(d.fs, marksName); err != nil {
-		return errors.Join(err, unlock())
-	}
-	return errors.Join(known.save(d.fs), unlock())
+	return errors.Join(segment.UpdateSums(d.fs, marksName), unlock())
 }
 
 // DiskFree is the free space on the folder's disk, in bytes.

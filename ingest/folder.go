@@ -50,7 +50,6 @@ type folder struct {
 	// where nothing tells.
 	last  int64
 	marks []Mark
-	sums  sums
 	// unsealed are the segments an earlier recorder did not seal.
 	unsealed []string
 }
@@ -73,7 +72,10 @@ func layFolder(o *Options) (*folder, error) {
 		if !bytes.HasPrefix(o.RigBytes, there) || exists(o.FS, eventsName) {
 			return nil, &RigDiffersError{Difference: lineDifference(there, o.RigBytes)}
 		}
-		if err := replaceFile(o.FS, rigName, o.RigBytes); err != nil {
+		if err := o.FS.Remove(rigName); err != nil {
+			return nil, err
+		}
+		if err := writeNew(o.FS, ".", rigName, o.RigBytes); err != nil {
 			return nil, err
 		}
 	}
@@ -88,14 +90,7 @@ func layFolder(o *Options) (*folder, error) {
 
 // lookBack finds out what an earlier recorder left.
 func (d *folder) lookBack(fsys segment.FS) (err error) {
-	if d.sums, err = loadSums(fsys); err != nil {
-		return err
-	}
-	// These go on growing: their sums stand again when the run ends.
-	for _, name := range []string{marksName, eventsName, amendmentsName} {
-		delete(d.sums, name)
-	}
-	if d.unsealed, err = unsealed(fsys, d.sums); err != nil {
+	if d.unsealed, err = unsealed(fsys); err != nil {
 		return err
 	}
 	if d.marks, err = ListMarks(fsys); err != nil {

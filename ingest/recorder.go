@@ -212,7 +212,7 @@ func (r *Recorder) layChannels() {
 func (r *Recorder) openStore(found *folder) error {
 	state := r.o.Clock.State()
 	header := segment.Header{Run: found.run, Boot: state.BootID, Rig: found.rigSum, Program: r.o.Program, Clock: r.clockState()}
-	r.sealer = newSealer(r.o.FS, found.sums, r.o.Compress)
+	r.sealer = newSealer(r.o.FS, r.o.Compress)
 	s := &store{fs: r.o.FS, header: header, channels: r.channels,
 		rollSize: int64(r.o.Rig.Record.Roll.Size.Value), rollAge: int64(r.o.Rig.Record.Roll.Age.Value * 1e9),
 		closed: r.sealer.take}

@@ -17,6 +17,13 @@ import (
 	"gaugelog/ingest/segment"
 )
 
+// tester is what the helpers need of a test, or of a property's run.
+type tester interface {
+	Helper()
+	Fatal(...any)
+	Fatalf(string, ...any)
+}
+
 // testStart is 2026-09-21 14:13:20 UTC, with a machine up for 100 s.
 var testStart = device.Instant{Wall: 1_790_000_000_000_000_000, Boot: 100_000_000_000}
 
@@ -63,7 +70,7 @@ func osFS(t testing.TB) (segment.FS, string) {
 	return d.FS(), dir
 }
 
-func mustOpen(t testing.TB, o Options) *Recorder {
+func mustOpen(t tester, o Options) *Recorder {
 	t.Helper()
 	r, err := Open(o)
 	if err != nil {
@@ -72,7 +79,7 @@ func mustOpen(t testing.TB, o Options) *Recorder {
 	return r
 }
 
-func must(t testing.TB, err error) {
+func must(t tester, err error) {
 	t.Helper()
 	if err != nil {
 		t.Fatal(err)
@@ -84,7 +91,7 @@ func indication(gauge string, mm float64, at device.Instant) device.Reading {
 }
 
 // stored reads back the indications of a run folder, by gauge, in file order.
-func stored(t testing.TB, fsys segment.FS) map[string][]segment.Record {
+func stored(t tester, fsys segment.FS) map[string][]segment.Record {
 	t.Helper()
 	folder, err := segment.OpenFolder(fsys)
 	must(t, err)
@@ -97,14 +104,14 @@ func stored(t testing.TB, fsys segment.FS) map[string][]segment.Record {
 			got[rec.Name] = append(got[rec.Name], rec)
 		}
 	}
-	if d := r.Report().Damage; len(d) > 0 {
+	if d := r.Report().Damage; len(d) > 0 { // of the segments
 		t.Fatalf("the folder is damaged: %+v", d)
 	}
 	return got
 }
 
 // events reads back events.lp as "kind gauge detail", and the stamps.
-func events(t testing.TB, fsys segment.FS) []string {
+func events(t tester, fsys segment.FS) []string {
 	t.Helper()
 	folder, err := segment.OpenFolder(fsys)
 	must(t, err)

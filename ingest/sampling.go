@@ -167,13 +167,8 @@ func (c *channel) wants(s *sample, p *policy) bool {
 	if p.all {
 		return true
 	}
-	// Each pace sees each reading, whatever the others say: a reading stored
-	// because it moved does not put off the next evenly spaced one.
 	keep := !c.stored
 	if p.every > 0 && c.evenly.take(s.boot, p.every, c.interval) {
-		keep = true
-	}
-	if p.denseThenLog && c.densely.take(s.boot, p.spacing(s.boot), c.interval) {
 		keep = true
 	}
 	if !p.denseThenLog && p.around > 0 && s.boot-p.changedAt <= p.around {
@@ -182,5 +177,16 @@ func (c *channel) wants(s *sample, p *policy) bool {
 	if p.deadBand > 0 && !c.probe && math.Abs(s.mm-c.storedMM) > p.deadBand {
 		keep = true
 	}
-	return keep || s.unit != c.unit || s.status != c.status
+	keep = keep || s.unit != c.unit || s.status != c.status
+	if !p.denseThenLog {
+		return keep
+	}
+	// A reading stored for another reason counts: the next is due one spacing
+	// behind it.
+	spacing := p.spacing(s.boot)
+	if keep {
+		c.densely.due = max(c.densely.due, s.boot+spacing)
+		return true
+	}
+	return c.densely.take(s.boot, spacing, c.interval)
 }

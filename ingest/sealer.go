@@ -2,20 +2,23 @@ package ingest
 
 import (
 	"errors"
+	"fmt"
 	"io/fs"
 	"path"
+	"strconv"
 	"strings"
 
 	"gaugelog/ingest/segment"
 )
 
 // sealer looks after closed segments: it compresses them, verified before the
-// plain file goes, and keeps SHA256SUMS. A live recorder has it work in a
-// goroutine, so that no sync waits for it; a fault of it costs no reading, and
-// what it could not do is done at the next start of the run.
+// plain file goes, and enters them in SHA256SUMS. A live recorder has it work
+// in a goroutine, so that no sync waits for it; a fault of it costs no reading,
+// and what it could not do is done when the run ends or goes on.
+//
+// The logs are entered only when the run ends: before that they grow.
 type sealer struct {
 	fs       segment.FS
-	sums     sums
 	compress bool
 
 	queue chan string
@@ -27,8 +30,8 @@ type sealer struct {
 // beyond it stays plain until the run ends.
 const waitingSegments = 64
 
-func newSealer(fs segment.FS, s sums, compress bool) *sealer {
-	return &sealer{fs: fs, sums: s, compress: compress}
+func newSealer(fs segment.FS, compress bool) *sealer {
+	return &sealer{fs: fs, compress: compress}
 }
 
 // start puts the work behind a goroutine, which finish ends.
@@ -69,24 +72,29 @@ func (z *sealer) note(err error) {
 	}
 }
 
-// seal compresses one segment, where asked, and enters it in SHA256SUMS.
+// seal compresses one segment, where asked, and enters it in SHA256SUMS. A
+// damaged segment is entered as it lies.
 func (z *sealer) seal(name string) error {
-	kept := name
-	if z.compress && strings.HasSuffix(name, ".lp") {
-		// A segment without its closing checkpoints stays as it lies.
-		packed, err := compressSegment(z.fs, name)
-		if err != nil {
-			return err
+	if number := segmentNumber(name); z.compress && number > 0 {
+		packed, err := segment.Compress(z.fs, number)
+		var damage *segment.Damage
+		if err != nil && !errors.As(err, &damage) {
+			return fmt.Errorf("compressing %s: %w", name, err)
 		}
-		kept = packed
+		if err == nil {
+			name = packed.Name
+		}
 	}
-	if kept != name {
-		delete(z.sums, name)
+	return segment.UpdateSums(z.fs, name, rigName)
+}
+
+// segmentNumber is the number of a plain segment; 0 for any other name.
+func segmentNumber(name string) int {
+	n, err := strconv.Atoi(strings.TrimSuffix(path.Base(name), ".lp"))
+	if err != nil || segment.SegmentName(segment.ReadingsDir, n) != name {
+		return 0
 	}
-	if err := z.sums.add(z.fs, kept); err != nil {
-		return err
-	}
-	return z.sums.save(z.fs)
+	return n
 }
 
 // finish ends the goroutine, takes up what was left, and enters every file of
@@ -98,29 +106,27 @@ func (z *sealer) finish() error {
 		z.queue = nil
 	}
 	errs := append([]error(nil), z.errs...)
-	errs = append(errs, z.sealAll())
-	for _, name := range []string{rigName, marksName, eventsName, amendmentsName} {
-		if exists(z.fs, name) {
-			errs = append(errs, z.sums.add(z.fs, name))
-		}
-	}
-	errs = append(errs, z.sums.save(z.fs))
-	return errors.Join(errs...)
-}
-
-// sealAll takes up closed segments that SHA256SUMS does not name.
-func (z *sealer) sealAll() error {
-	names, err := unsealed(z.fs, z.sums)
-	errs := []error{err}
+	names, err := unsealed(z.fs)
+	errs = append(errs, err)
 	for _, name := range names {
 		errs = append(errs, z.seal(name))
 	}
+	closed := []string{rigName}
+	for _, name := range []string{marksName, eventsName, amendmentsName} {
+		if exists(z.fs, name) {
+			closed = append(closed, name)
+		}
+	}
+	errs = append(errs, segment.UpdateSums(z.fs, closed...))
 	return errors.Join(errs...)
 }
 
-// unsealed lists the segments that SHA256SUMS does not name. Where a crash
-// left a segment both plain and compressed, the plain one is listed.
-func unsealed(fsys segment.FS, known sums) ([]string, error) {
+// unsealed lists the segments that SHA256SUMS does not name.
+func unsealed(fsys segment.FS) ([]string, error) {
+	known, err := segment.ReadSums(fsys)
+	if err != nil {
+		return nil, err
+	}
 	entries, err := fsys.ReadDir(segment.ReadingsDir)
 	if errors.Is(err, fs.ErrNotExist) {
 		return nil, nil
