@@ -23,3 +23,16 @@ func TestCoverageCampaign(t *testing.T) {
 	}
 }
 
+// The full acceleration campaign; see watch_test.go.
+func TestAccelerationCampaign(t *testing.T) {
+	w := failures(t, 500)
+	t.Logf("clear-area in time in %d of %d, median lead %.1f h; missed: %v", w.inTime, w.tests, w.medianLead, w.missed)
+	if w.inTime < 495 {
+		t.Errorf("clear-area in time in %d of 500, want 495", w.inTime)
+	}
+	sound := soundTests(t, 500)
+	t.Logf("warned: %v", sound)
+	if len(sound) > 2 {
+		t.Errorf("%d sound tests of 500 raised a warning, want at most 2", len(sound))
+	}
+}

@@ -39,7 +39,13 @@ func (a *Analysis) stage(in *Input) {
 		}
 	}
 	a.Stage = stageOf(age, sag, f, in)
-	a.Acceleration = Watch(age, sag, Limits{})
+	var changes []float64
+	for _, c := range in.Series[0].Changes {
+		if c.AtH > in.FullH && c.AtH < in.EndH {
+			changes = append(changes, c.AtH+c.RampH-in.FullH)
+		}
+	}
+	a.Acceleration = Watch(age, sag, Limits{ChangesH: changes})
 	if a.Acceleration.CautionH != nil {
 		a.Stage = Tertiary
 	}

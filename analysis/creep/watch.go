@@ -17,9 +17,12 @@ type Acceleration struct {
 	CautionH, ClearAreaH *float64
 }
 
-// Limits are what Watch holds the sag against.
+// Limits are what Watch holds the sag against, and what it must know.
 type Limits struct {
 	SagMM float64 // 0: none
+	// ChangesH are load changes within the ages given, h: after each the creep
+	// begins anew and so does the watch.
+	ChangesH []float64
 }
 
 // The rules of the two levels. Two windows in succession must agree, so that
@@ -29,20 +32,82 @@ type Limits struct {
 const (
 	cautionRatio = 1.25
 	clearRatio   = 1.5
-	leastZ       = 6
+	firstZ       = 3 // of the first of two windows, then of the second
+	secondZ      = 5
 	leastHistory = 8 // windows before a rate can be judged
 )
 
 // Watch looks for acceleration in the temperature-compensated sag (mm) of
-// one steady load, at ages in h (rising), with windows of 3 h and its
-// doublings. Offsets that are known must have been taken out.
+// one load, at ages in h (rising), with windows of 3 h and its doublings.
+// Jumps that stay are taken out first: a knock is no acceleration.
 func Watch(ageH, sagMM []float64, l Limits) Acceleration {
 	var out Acceleration
-	if len(ageH) < 10 {
+	sag := withoutJumps(sagMM)
+	for i, origin := 0, 0.0; i < len(ageH); {
+		end := math.Inf(1)
+		for _, c := range l.ChangesH {
+			if c > ageH[i] {
+				end = min(end, c)
+			}
+		}
+		j := i
+		var age []float64
+		for j < len(ageH) && ageH[j] < end {
+			age = append(age, ageH[j]-origin)
+			j++
+		}
+		watchSegment(age, sag[i:j], origin, l, &out)
+		i, origin = j, end
+	}
+	return out
+}
+
+// watchSegment watches one interval of steady load that began at origin.
+func watchSegment(age, sag []float64, origin float64, l Limits, out *Acceleration) {
+	if len(age) < 10 {
+		return
+	}
+	var own Acceleration
+	for w := 3.0; w <= age[len(age)-1]/float64(leastHistory); w *= 2 {
+		// Windows at several phases, so that none waits long for its end.
+		for phase := 0.0; phase < w; phase += max(w/8, 3) {
+			watchScale(age, sag, w, phase, l, &own)
+		}
+	}
+	for _, p := range []struct{ from, to **float64 }{{&own.MinimumH, &out.MinimumH}, {&own.CautionH, &out.CautionH}, {&own.ClearAreaH, &out.ClearAreaH}} {
+		if *p.from != nil {
+			earliest(p.to, origin+**p.from)
+		}
+	}
+}
+
+// withoutJumps returns the sag with jumps taken out that stand out from the
+// differences about them and stay: medians of three readings before and
+// after differ by most of the jump.
+func withoutJumps(sag []float64) []float64 {
+	out := make([]float64, len(sag))
+	copy(out, sag)
+	if len(sag) < 12 {
 		return out
 	}
-	for w := 3.0; w <= ageH[len(ageH)-1]/float64(leastHistory); w *= 2 {
-		watchScale(ageH, sagMM, w, l, &out)
+	d := make([]float64, len(sag)-1)
+	for i := range d {
+		d[i] = sag[i+1] - sag[i]
+	}
+	var shift, sigma, middle float64
+	for i := 1; i < len(sag); i++ {
+		if i%8 == 1 {
+			near := d[max(0, i-41):min(len(d), i+8)]
+			middle, sigma = lsq.Median(near), lsq.MADScale*lsq.MAD(near)
+		}
+		jump := d[i-1] - middle
+		if i >= 3 && i+3 <= len(sag) && math.Abs(jump) > 8*sigma && sigma > 0 {
+			step := lsq.Median(sag[i:i+3]) - lsq.Median(sag[i-3:i])
+			if math.Abs(step) > 0.7*math.Abs(jump) {
+				shift += jump
+			}
+		}
+		out[i] = sag[i] - shift
 	}
 	return out
 }
@@ -52,17 +117,17 @@ type window struct {
 	endH, rate, last float64 // h, mm/h, mm
 }
 
-// windows cuts the record into windows of w hours that do not overlap and
+// windows cuts the record, from phase on, into windows of w hours that do not overlap and
 // have a robust slope each; windows with too few readings are left out.
-func windows(age, sag []float64, w float64) []window {
+func windows(age, sag []float64, w, phase float64) []window {
 	var out []window
 	i := 0
-	for k := math.Floor(age[0] / w); i < len(age); k++ {
+	for k := math.Floor((age[0] - phase) / w); i < len(age); k++ {
 		var x, y []float64
-		for ; i < len(age) && age[i] < (k+1)*w; i++ {
+		for ; i < len(age) && age[i]-phase < (k+1)*w; i++ {
 			x, y = append(x, age[i]), append(y, sag[i])
 		}
-		if k == 0 || len(x) < 4 || x[len(x)-1]-x[0] < 0.6*w {
+		if k <= 0 || len(x) < 4 || x[len(x)-1]-x[0] < 0.6*w {
 			continue // the first window holds the fast begin
 		}
 		x, y = thin(x, y, 24)
@@ -80,8 +145,8 @@ func slope(x, y []float64) (float64, bool) {
 }
 
 // watchScale looks at one window length and keeps the earliest findings.
-func watchScale(age, sag []float64, w float64, l Limits, out *Acceleration) {
-	win := windows(age, sag, w)
+func watchScale(age, sag []float64, w, phase float64, l Limits, out *Acceleration) {
+	win := windows(age, sag, w, phase)
 	least, leastAt := math.Inf(1), 0.0
 	for i := range win {
 		if i < leastHistory+1 {
@@ -96,7 +161,7 @@ func watchScale(age, sag []float64, w float64, l Limits, out *Acceleration) {
 		a, b := win[i-1].rate, win[i].rate
 		low := min(a, b)
 		base := max(least, 0)
-		if low-base < leastZ*u {
+		if a-base < firstZ*u || b-base < secondZ*u {
 			continue
 		}
 		if low > cautionRatio*base {
@@ -128,13 +193,18 @@ func median5(win []window, i int) float64 {
 	return lsq.Median(v)
 }
 
-// scatter is the robust standard deviation of a window's rate about the
-// median of its neighbours, over the last forty windows: what daily cycles
-// and noise do.
+// scatter is the standard deviation of a window's rate from window to
+// window over the last forty, by second differences, which a steady trend
+// leaves at 0: what daily cycles and noise do. The sum of squares is not
+// robust on purpose: where windows scatter wildly nothing can be said.
 func scatter(win []window) float64 {
-	var d []float64
-	for i := max(2, len(win)-40); i < len(win); i++ {
-		d = append(d, win[i].rate-median5(win, i))
+	var s, n float64
+	for i := max(1, len(win)-40); i+1 < len(win); i++ {
+		d := win[i+1].rate - 2*win[i].rate + win[i-1].rate
+		s, n = s+d*d, n+1
 	}
-	return lsq.MADScale * lsq.MAD(d)
+	if n < 3 {
+		return math.Inf(1)
+	}
+	return math.Sqrt(s/(6*n)) * (1 + 4/n)
 }
