@@ -44,8 +44,9 @@ func (s *Solution) place(xi float64) float64 { return s.beam.From + xi*s.beam.Le
 // segments are the stretches between forces within lo..hi.
 func (s *Solution) segments(lo, hi float64) [][2]float64 {
 	var out [][2]float64
-	for i := 1; i < len(s.cuts); i++ {
-		a, b := math.Max(lo, s.cuts[i-1]), math.Min(hi, s.cuts[i])
+	cuts := s.places()
+	for i := 1; i < len(cuts); i++ {
+		a, b := math.Max(lo, cuts[i-1]), math.Min(hi, cuts[i])
 		if b > a {
 			out = append(out, [2]float64{a, b})
 		}

@@ -35,14 +35,14 @@ type Solution struct {
 	moments          []pointForce // at clamps, force times the beam's length
 	patches          []patchForce
 	a, b             float64 // in units of d
-	cuts             []float64
 	reactions        []Reaction
 	springs          []SpringForce
 	lifted           []bool
 }
 
 func newSolution(f *factored, loads []Load) *Solution {
-	s := &Solution{beam: f.beam, d: f.d, bend: f.bend, shear: f.shear, lifted: make([]bool, len(f.beam.Supports))}
+	s := &Solution{beam: f.beam, d: f.d, bend: f.bend, shear: f.shear}
+	s.points = make([]pointForce, 0, len(loads))
 	for _, l := range loads {
 		from, to := clip(f.xi(l.From)), clip(f.xi(l.To))
 		if to-from <= near {
@@ -104,6 +104,8 @@ func (s *Solution) resultant() (force, moment float64) {
 func (s *Solution) take(f *factored, x []float64) {
 	n := len(f.held)
 	s.a, s.b = x[len(x)-2], x[len(x)-1]
+	s.reactions = make([]Reaction, 0, len(s.beam.Supports))
+	s.supports = make([]pointForce, 0, n)
 	for _, sup := range s.beam.Supports {
 		s.reactions = append(s.reactions, Reaction{Name: sup.Name, At: sup.At, Lifted: true})
 	}
@@ -122,7 +124,6 @@ func (s *Solution) take(f *factored, x []float64) {
 		s.moments = append(s.moments, pointForce{f.held[i].xi, x[n+j]})
 		s.reactions[f.held[i].support].Moment = -x[n+j] * s.beam.Length
 	}
-	s.cuts = s.places()
 }
 
 // places are all xi at which the line's polynomial changes, ends included.
@@ -243,6 +244,9 @@ func (s *Solution) inside(x float64) float64 {
 
 // Reactions are the supports' forces and moments, in the beam's order.
 func (s *Solution) Reactions() []Reaction { return append([]Reaction(nil), s.reactions...) }
+
+// Reaction is that of the support of this index, as in Reactions.
+func (s *Solution) Reaction(i int) Reaction { return s.reactions[i] }
 
 // SpringForces are the springs' forces, in the beam's order.
 func (s *Solution) SpringForces() []SpringForce { return append([]SpringForce(nil), s.springs...) }

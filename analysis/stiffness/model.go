@@ -130,7 +130,7 @@ func (m *model) beam(st *state, ei, s float64, compliance []float64) beam.Beam {
 
 // see is what gauge g reads of a line, its gain included.
 func (m *model) see(st *state, g int, s *beam.Solution, compliance []float64) float64 {
-	return st.gain[g] * m.look(st, g, s, func(i int) float64 { return compliance[i] * s.Reactions()[i].Force })
+	return st.gain[g] * m.look(st, g, s, func(i int) float64 { return compliance[i] * s.Reaction(i).Force })
 }
 
 func (m *model) look(st *state, g int, s *beam.Solution, seatMoves func(int) float64) float64 {

@@ -226,7 +226,7 @@ func (p *predictor) step(name string, forces []StepLoad, loads []beam.Load, line
 func (p *predictor) sag(g config.Gauge, line *beam.Solution) float64 {
 	if sees(g) == "seat" {
 		s := seat(p.rig, g.At.Value)
-		return line.Reactions()[s].Force * p.beam.Supports[s].Compliance
+		return line.Reaction(s).Force * p.beam.Supports[s].Compliance
 	}
 	w := line.Deflection(g.At.Value)
 	if len(g.Bar) == 2 {
