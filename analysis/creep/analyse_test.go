@@ -131,3 +131,40 @@ func TestTooShortIsSaid(t *testing.T) {
 		}
 	}
 }
+
+// A year read every ten minutes must fit as fast as any, and as well.
+func TestManyBinsAreMerged(t *testing.T) {
+	p := ladder()
+	p.steps = p.steps[:4]
+	p.last, p.end = 365*24, 365*24
+	in := p.input()
+	s := &in.Series[0]
+	s.TimeH, s.SagMM, s.U = nil, nil, nil
+	for at := p.full + 1.0/60; at < p.last; at += 1.0 / 6 {
+		s.TimeH, s.SagMM, s.U = append(s.TimeH, at), append(s.SagMM, 490*(p.d0+p.d1*math.Pow(at-0.19, p.n))), append(s.U, 0.0005)
+	}
+	before := len(s.TimeH)
+	a, err := Analyse(in, Options{ForecastH: []float64{20000}})
+	if err != nil {
+		t.Fatal(err)
+	}
+	if a.Best.N > mostBins || a.Best.N < mostBins/4 || len(in.Series[0].TimeH) != before {
+		t.Errorf("%d bins of %d", a.Best.N, before)
+	}
+	if n := param(t, a.Best, "n"); math.Abs(n.Value-p.n) > 0.002 {
+		t.Errorf("n %g", n.Value)
+	}
+}
+
+func TestShortTemperatureIsLeftOut(t *testing.T) {
+	p := ladder()
+	p.steps, p.last, p.end = p.steps[:4], 30, 30
+	p.temperature, p.lag = -0.0025, 1.5
+	f, err := FitLaw(p.input(), Power)
+	if err != nil {
+		t.Fatal(err)
+	}
+	if len(f.Nuisance) != 0 || !hasNote(f.Notes, "ambient-short") {
+		t.Errorf("%v %v", f.Nuisance, f.Notes)
+	}
+}

@@ -51,10 +51,11 @@ type Analysis struct {
 	PermanentSet *Value
 	// LoadingOnly is true where the recovery contradicts the law of the
 	// loading part, so that the law was fitted to the loading part alone.
-	LoadingOnly  bool
-	Rate         *Value // mm/d, at the end of the creep step
-	Method       string // of the rate: law | local
-	Stage        Stage
+	LoadingOnly bool
+	Rate        *Value // mm/d, at the end of the creep step
+	Method      string // of the rate: law | local
+	Stage       Stage
+	// Acceleration's times are counted from the caller's origin, h.
 	Acceleration Acceleration
 	Forecast     []Forecast
 	MayStop      []MayStop
@@ -76,6 +77,7 @@ func Analyse(in Input, o Options) (*Analysis, error) {
 	if err := in.validate(); err != nil {
 		return nil, err
 	}
+	in.compact()
 	a := &Analysis{}
 	whole := a.fitAll(&in)
 	loading := whole

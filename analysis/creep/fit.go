@@ -36,8 +36,9 @@ type Fit struct {
 	Nuisance []Nuisance
 	Lags     []Parameter
 	// ResidualMM is reading minus fit by series and bin; CompensatedMM the
-	// reading without everything that is neither load nor creep.
-	ResidualMM, CompensatedMM [][]float64
+	// reading without everything that is neither load nor creep. TimeH are the
+	// bins' times: bins were merged where there were more than mostBins.
+	TimeH, ResidualMM, CompensatedMM [][]float64
 	// RMSmm is that of the creep gauge's residuals; N the number of its bins,
 	// NEffective what they are worth (for equal spacing N(1-r)/(1+r)), Lag1
 	// the correlation of neighbouring residuals.
@@ -83,6 +84,7 @@ func FitLaw(in Input, m Model) (*Fit, error) {
 	if err := in.validate(); err != nil {
 		return nil, err
 	}
+	in.compact()
 	return fitLaw(&in, m, nil)
 }
 
@@ -255,6 +257,7 @@ func (s *system) result(sol *lsq.NonlinearSolution) *Fit {
 func (f *Fit) spread(r []float64) {
 	s := f.sys
 	for i := range s.in.Series {
+		f.TimeH = append(f.TimeH, s.in.Series[i].TimeH)
 		f.ResidualMM = append(f.ResidualMM, r[s.first[i]:s.first[i+1]])
 	}
 	own := f.ResidualMM[0]

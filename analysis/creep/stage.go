@@ -46,6 +46,11 @@ func (a *Analysis) stage(in *Input) {
 		}
 	}
 	a.Acceleration = Watch(age, sag, Limits{ChangesH: changes})
+	for _, p := range []*float64{a.Acceleration.MinimumH, a.Acceleration.CautionH, a.Acceleration.ClearAreaH} {
+		if p != nil {
+			*p += in.FullH
+		}
+	}
 	if a.Acceleration.CautionH != nil {
 		a.Stage = Tertiary
 	}

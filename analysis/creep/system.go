@@ -78,7 +78,7 @@ func newSystem(in *Input, fam family, lags []float64) *system {
 			at = lags[i]
 		}
 		s.lag = append(s.lag, at)
-		if search && s.reach(i) {
+		if search && s.reach(i) && s.long(i) {
 			s.searched = append(s.searched, i)
 		}
 	}
@@ -86,6 +86,22 @@ func newSystem(in *Input, fam family, lags []float64) *system {
 	s.layDrifts()
 	s.layAmbient()
 	return s
+}
+
+// leastAmbientH is two daily cycles: with less, an answer to the weather and
+// creep cannot be told apart, and only a prior helps.
+const leastAmbientH = 48
+
+// long reports whether an ambient record covers two days of the readings.
+func (s *system) long(a int) bool {
+	rec := &s.in.Ambient[a]
+	lo, hi := math.Inf(1), math.Inf(-1)
+	for i, t := range s.timeH {
+		if rec.answers(s.series[i]) && t >= rec.TimeH[0] && t <= rec.TimeH[len(rec.TimeH)-1] {
+			lo, hi = min(lo, t), max(hi, t)
+		}
+	}
+	return hi-lo >= leastAmbientH
 }
 
 // reach reports whether an ambient record varies over the rows that answer.
@@ -149,6 +165,10 @@ func (s *system) layAmbient() {
 		rec := &s.in.Ambient[a]
 		if !s.reach(a) {
 			s.notes = append(s.notes, Note{Code: "ambient-constant", Text: rec.Name + " did not vary; no coefficient can be found"})
+			continue
+		}
+		if !s.long(a) && rec.Prior == nil {
+			s.notes = append(s.notes, Note{Code: "ambient-short", Text: fmt.Sprintf("%s covers less than %d h of the readings; its part cannot be told from creep and stays in the sag", rec.Name, leastAmbientH)})
 			continue
 		}
 		for i := range s.in.Series {

@@ -232,7 +232,7 @@ func (p Separable) grid(t *projection, nq, m int) [][]float64 {
 		return dot(r, r)
 	}
 	if nq == 1 {
-		x := Minimize(func(x float64) float64 { return cost([]float64{x}) }, p.Lower[0], p.Upper[0], 24, 1e-7)
+		x := Minimize(func(x float64) float64 { return cost([]float64{x}) }, p.Lower[0], p.Upper[0], 24, 1e-4)
 		return [][]float64{{x}}
 	}
 	const side = 5
