@@ -122,7 +122,7 @@ func flipEvery(t *testing.T, fs *segmenttest.FS, name string, want []reading, mo
 // A change of any single byte of a closed segment is found, gives no wrong
 // reading, and costs the readings of one block at most.
 func TestEveryFlippedByteIsFound(t *testing.T) {
-	n := 200
+	n := 60
 	if campaign {
 		n = 1180 // 64 KiB
 	}
@@ -136,7 +136,10 @@ func TestEveryFlippedByteIsFound(t *testing.T) {
 // The same of a compressed one; it may cost a frame.
 func TestEveryFlippedByteOfACompressedSegmentIsFound(t *testing.T) {
 	fs := segmenttest.New()
-	n := 1180
+	n := 60
+	if campaign {
+		n = 1180 // 64 KiB
+	}
 	fill(t, fs, 1, 0, n, 20, true)
 	if _, err := segment.Compress(fs, 1); err != nil {
 		t.Fatal(err)

@@ -99,9 +99,9 @@ func FuzzFastPathAgreesWithTheLibrary(f *testing.F) {
 func TestFastPathAgreesOnAllNeighbours(t *testing.T) {
 	for _, s := range seeds {
 		for i := range s {
-			for c := range 256 {
+			for _, c := range []byte("0159 .,-+=\"\\_/:aexzEZ#\n\r\t\x00\x7f\x80\xb0\xff") {
 				b := []byte(s)
-				b[i] = byte(c)
+				b[i] = c
 				agree(t, b)
 			}
 			agree(t, []byte(s[:i]+s[i+1:]))

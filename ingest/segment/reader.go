@@ -242,11 +242,15 @@ func (r *Reader) produceFrames(file File, f *segFile, frames []frameInfo, work c
 func decodeJobs(work <-chan *job, who int) {
 	names := newInterner(nil)
 	var dec *zstd.Decoder
+	defer func() {
+		if dec != nil {
+			dec.Close()
+		}
+	}()
 	for j := range work {
 		if j.frame != nil && j.file.compressed && j.fail == nil {
 			if dec == nil {
 				dec = newFrameDecoder()
-				defer dec.Close()
 			}
 			j.text, j.fail = j.frame.unpack(dec, j.packd, j.text)
 		}
