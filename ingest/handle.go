@@ -147,8 +147,8 @@ func (r *Recorder) value(d *device.Reading) error {
 }
 
 // keep puts a sample into the batch, or counts it as dropped where the bound
-// on what waits for the disk is reached.
-func (r *Recorder) keep(i int, s *sample, late bool) {
+// on what waits for the disk is reached; it says whether it was taken.
+func (r *Recorder) keep(i int, s *sample, late bool) bool {
 	s.kept = true
 	c := r.channels[i]
 	c.stored, c.storedMM = true, s.mm
@@ -158,11 +158,12 @@ func (r *Recorder) keep(i int, s *sample, late bool) {
 		}
 		r.dropped[i].n++
 		r.lost++
-		return
+		return false
 	}
 	r.filling.entries = append(r.filling.entries, entry{sample: *s, channel: int32(i), late: late})
 	r.held++
 	r.stored++
+	return true
 }
 
 func (o *Options) mostWaiting() int {
@@ -224,8 +225,9 @@ func (r *Recorder) recall(from, to int64) {
 		}
 		// keep remembers the newest stored value for the dead band; the
 		// samples come in order, so that is the latest one recalled.
-		r.keep(best, r.channels[best].memory.at(next[best]), late)
-		late = false
+		if r.keep(best, r.channels[best].memory.at(next[best]), late) {
+			late = false
+		}
 		next[best]++
 	}
 }

@@ -15,6 +15,7 @@ import (
 	"gaugelog/config"
 	"gaugelog/device"
 	"gaugelog/ingest/segment"
+	"gaugelog/ingest/segment/segmenttest"
 )
 
 // tester is what the helpers need of a test, or of a property's run.
@@ -299,5 +300,32 @@ func TestSteppedClockKeepsTrueIntervals(t *testing.T) {
 		if d := time.Duration(got[10].Raw - got[9].Raw); d != time.Second+step {
 			t.Errorf("step %s: stamps move by %s across it", step, d)
 		}
+	}
+}
+
+// TestWear measures what a day at the default settings writes: eight gauges of
+// one reading a second, all stored, synced every ten seconds.
+func TestWear(t *testing.T) {
+	mem := segmenttest.New()
+	rig := testRig(8, config.Sampling{All: true})
+	rig.Record.Roll.Size.Value = 250_000
+	r := mustOpen(t, testOptions(mem, rig))
+	at := testStart
+	const seconds = 3600
+	for range seconds {
+		at = later(at, time.Second)
+		for g := range 8 {
+			must(t, r.Handle(Seen(indication(fmt.Sprintf("g%d", g), 1.234, at))))
+		}
+	}
+	must(t, r.Close(at))
+	bytes := 0
+	for _, name := range mem.Names() {
+		bytes += len(mem.Bytes(name))
+	}
+	each := float64(bytes) / (8 * seconds)
+	t.Logf("%.1f bytes a reading, %.1f MB a day, 8640 syncs a day", each, each*8*86400/1e6)
+	if each > 60 {
+		t.Errorf("%.1f bytes a reading; a line has 49, and its share of the checkpoints should be under 11", each)
 	}
 }
