@@ -95,8 +95,8 @@ func (p *pump) session(ctx context.Context, port Port, tried func()) error {
 				return c.err
 			}
 			l.free <- c.p[:cap(c.p)]
-		case now := <-timer.C:
-			if err := p.tick(now, w); err != nil {
+		case <-timer.C:
+			if err := p.tick(time.Now(), w); err != nil {
 				return err
 			}
 		case a := <-p.asks:
@@ -156,7 +156,7 @@ const idleGap = 50 * time.Millisecond
 // tick does what is due at now.
 func (p *pump) tick(now time.Time, w *writer) error {
 	p.poll.armed = time.Time{}
-	if now = time.Now(); !p.o.Conducted && now.Sub(p.poll.lastBytes) >= idleGap {
+	if !p.o.Conducted && now.Sub(p.poll.lastBytes) >= idleGap {
 		for _, s := range p.slots {
 			if s.gaps && s.decoder.Pending() > 0 {
 				s.decoder.Quiet(s.emit)
