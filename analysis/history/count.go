@@ -27,6 +27,8 @@ type counter struct {
 	low, high int64 // quanta seen
 	far       map[int64]int32
 	timeSum   int64 // nanoseconds after From
+	sum       int64 // of quanta above origin
+	squares   float64
 	from, to  int64
 	first     int64 // millionths, as the next three
 	last      int64
@@ -55,8 +57,11 @@ func (c *counter) add(t, v int64) {
 	if c.n == 0 {
 		c.origin, c.low, c.high = q, q, q
 		c.first, c.min, c.max = v, v, v
-		c.timeSum = 0
+		c.timeSum, c.sum, c.squares = 0, 0, 0
 	}
+	d := q - c.origin
+	c.sum += d
+	c.squares += float64(d) * float64(d)
 	c.n++
 	c.timeSum += t - c.from
 	c.last, c.lastTime = v, t
@@ -84,6 +89,8 @@ func (c *counter) toFallback() {
 	}
 	c.origin *= old
 	c.low, c.high = c.origin, c.origin
+	c.sum *= old
+	c.squares *= float64(old) * float64(old)
 	for _, k := range kept {
 		c.count(k.q*old, k.n)
 	}
@@ -146,6 +153,9 @@ func (c *counter) finish(scratch *[]tally) (b Bin, ok bool) {
 	twice := medianTwice(*scratch, c.n)
 	b.Median = mm(twice*c.quantum) / 2
 	b.MAD = mm(madTwice(*scratch, c.n, twice)*c.quantum) / 2
+	if n := float64(c.n); c.n > 1 {
+		b.SD = math.Sqrt(max(c.squares-float64(c.sum)*float64(c.sum)/n, 0)/(n-1)) * mm(c.quantum)
+	}
 	c.n = 0
 	return b, true
 }

@@ -5,6 +5,7 @@ import (
 	"slices"
 	"testing"
 
+	"gonum.org/v1/gonum/stat"
 	"pgregory.net/rapid"
 )
 
@@ -46,6 +47,9 @@ func TestCountsGiveExactMedians(t *testing.T) {
 		near := func(a, b float64) bool { return math.Abs(a-b) < 1e-9 }
 		if !near(b.Median, m) || !near(b.MAD, plainMedian(dev)) {
 			t.Fatalf("median %v MAD %v, want %v %v", b.Median, b.MAD, m, plainMedian(dev))
+		}
+		if n > 1 && math.Abs(b.SD-stat.StdDev(x, nil)) > 1e-6*(1+b.SD) {
+			t.Fatalf("SD %v, want %v", b.SD, stat.StdDev(x, nil))
 		}
 		if !near(b.Min, slices.Min(x)) || !near(b.Max, slices.Max(x)) || !near(b.First, x[0]) || !near(b.Last, x[n-1]) {
 			t.Fatalf("extremes or ends wrong: %+v", b)

@@ -25,12 +25,13 @@ type Sample struct {
 }
 
 // Bin is the readings of one gauge in [From, To): their number, exact median,
-// median absolute deviation about it, extremes, and the mean of their times.
+// median absolute deviation about it, standard deviation, extremes, and the mean of their times.
 type Bin struct {
 	From, To    int64
 	Time        int64 // mean instant of its readings
 	N           int
 	Median, MAD float64
+	SD          float64 // standard deviation of its readings, 0 for one
 	Min, Max    float64
 	First, Last float64
 	LastTime    int64

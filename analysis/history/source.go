@@ -209,6 +209,7 @@ func mergeBins(a, b Bin) Bin {
 	a.Time += int64(float64(b.Time-a.Time) * f)
 	a.Median += (b.Median - a.Median) * f
 	a.MAD += (b.MAD - a.MAD) * f
+	a.SD += (b.SD - a.SD) * f
 	a.Min, a.Max = min(a.Min, b.Min), max(a.Max, b.Max)
 	if b.LastTime > a.LastTime {
 		a.Last, a.LastTime = b.Last, b.LastTime

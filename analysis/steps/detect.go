@@ -26,6 +26,12 @@ const (
 	// jumpShare is the least share of a rise that must not be explained by the
 	// slopes on either side: a smooth curve, however steep, has less.
 	jumpShare = 0.4
+	// riseCounts is the least rise between medians: two medians on either side
+	// of a rounding limit differ by one count for no reason.
+	riseCounts = 1.75
+	// longest bounds the time k points may span, s: beyond it the daily
+	// temperature is no straight line any more. Two points are always taken.
+	longest = 5400
 )
 
 // blocks holds the medians and mean instants of k successive points.
@@ -91,7 +97,8 @@ func scores(seq []point, k int, sigma func(point) float64, res float64) []score 
 			vb, vo = dt/d, vo+1
 		}
 		s := score{i: i, rise: rise, jump: rise}
-		v := 1.57 * sq(sigma(seq[i])) / float64(k)
+		coarse := max(seq[l].f, seq[i+k].f)
+		v := 1.57 * sq(max(sigma(seq[l]), sigma(seq[i+k]))) / float64(k)
 		bend := 0.0
 		switch len(slopes) {
 		case 2:
@@ -106,7 +113,7 @@ func scores(seq []point, k int, sigma func(point) float64, res float64) []score 
 		default:
 			v *= 2
 		}
-		s.need = max(jumpSigmas*math.Sqrt(v), jumpCounts*res*max(seq[i].f, seq[i+1].f)) + bend
+		s.need = max(jumpSigmas*math.Sqrt(v), jumpCounts*res*coarse) + bend
 		abs = append(abs, math.Abs(s.jump))
 		out = append(out, s)
 	}
@@ -118,6 +125,14 @@ func scores(seq []point, k int, sigma func(point) float64, res float64) []score 
 	for i := range out {
 		s := &out[i]
 		s.need = max(s.need, unrest)
+		if math.Abs(s.rise) < riseCounts*res*seq[s.i].f {
+			continue
+		}
+		// What a slope beside it alone makes of a small rise is no jump: that
+		// slope holds a change of its own. A spike has one and a half.
+		if math.Abs(s.jump) > 2*math.Abs(s.rise) {
+			continue
+		}
 		if s.jump*s.rise > 0 && math.Abs(s.jump) >= jumpShare*math.Abs(s.rise) {
 			s.ratio = math.Abs(s.jump) / s.need
 		}
@@ -133,6 +148,9 @@ func sq(x float64) float64 { return x * x }
 func jumps(g *gauge, seq []point, scales []int, sigma func(point) float64) []transition {
 	var found []transition
 	for _, k := range scales {
+		if k > 2 && len(seq) > 1 && float64(k)*seconds(seq[len(seq)-1].t-seq[0].t)/float64(len(seq)-1) > longest {
+			break
+		}
 		list := scores(seq, k, sigma, g.res)
 		sort.SliceStable(list, func(a, b int) bool { return list[a].ratio > list[b].ratio })
 		for _, s := range list {

@@ -21,7 +21,7 @@ type point struct {
 	t        int64
 	y, raw   float64
 	n        int
-	mad      float64 // of its readings, mm
+	mad, sd  float64 // of its readings, mm
 	from, to int64   // of its readings
 	min, max float64 // as sag
 	f        float64 // how many times coarser a unit key made it: 1 usually
@@ -78,7 +78,7 @@ func (g *gauge) fromBin(b history.Bin) point {
 	f := g.factor(b.Time)
 	p.f = max(f, 1)
 	p.y = g.sag(b.Median * f)
-	p.mad = b.MAD * f / math.Abs(g.gain)
+	p.mad, p.sd = b.MAD*f/math.Abs(g.gain), b.SD*f/math.Abs(g.gain)
 	p.min, p.max = g.sag(b.Min*f), g.sag(b.Max*f)
 	if p.min > p.max {
 		p.min, p.max = p.max, p.min
@@ -109,16 +109,15 @@ func (g *gauge) factor(t int64) float64 {
 func (g *gauge) sag(mm float64) float64 { return g.sign * (mm - g.offset) / g.gain }
 
 // scatter estimates the standard deviation of one reading and the typical
-// interval. Within bins of several readings their median deviation tells, or,
-// where resolution leaves that at nothing, their range over what the range of
-// as many normal readings is; otherwise second differences of neighbours do,
-// which no steady trend enters. It is never below the resolution's floor.
+// interval. Within bins of several readings it is their standard deviation, of
+// all bins the median, which no spike enters; otherwise second differences of
+// neighbours tell, which no steady trend enters. It is never below the
+// resolution's floor.
 func (g *gauge) scatter() (noise, interval float64) {
-	var spread, ranges, second, gaps []float64
+	var spread, second, gaps []float64
 	for i, p := range g.seq {
 		if p.n >= 5 {
-			spread = append(spread, madScale*p.mad)
-			ranges = append(ranges, (p.max-p.min)/normalRange(p.n))
+			spread = append(spread, p.sd)
 		}
 		if i > 0 {
 			gaps = append(gaps, seconds(p.to-g.seq[i-1].to)/float64(p.n))
@@ -131,7 +130,7 @@ func (g *gauge) scatter() (noise, interval float64) {
 	floor := floorU(g.res)
 	interval = Median(gaps)
 	if len(spread) > 3 && len(spread) > len(g.seq)/2 {
-		return max(Median(spread), Median(ranges), floor), interval
+		return max(Median(spread), floor), interval
 	}
 	return max(trimmedSigma(second)/math.Sqrt(6), floor), interval
 }
@@ -147,13 +146,6 @@ func trimmedSigma(abs []float64) float64 {
 		return 0
 	}
 	return total(s) / float64(len(s)) / 0.6573
-}
-
-// normalRange is the expected range of n normal readings in standard
-// deviations, by Blom's approximation of the extremes (within 1 % from n = 5).
-func normalRange(n int) float64 {
-	p := (float64(n) - 0.375) / (float64(n) + 0.25)
-	return 2 * math.Sqrt2 * math.Erfinv(2*p-1)
 }
 
 // pointU is the standard uncertainty of a point from scatter and resolution.

@@ -88,7 +88,7 @@ func (r *run) constantRuns(g int) []interval {
 			n += seq[j].n
 			j++
 		}
-		if n >= stillReadings || j-i >= 6 {
+		if n >= stillReadings {
 			out = append(out, interval{seq[i].from, seq[j-1].to})
 		}
 		i = max(j, i+1)
