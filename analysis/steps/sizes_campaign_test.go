@@ -9,4 +9,5 @@ const (
 	stepsDrawn = 2000
 	calmDrawn  = 1000
 	foulDrawn  = 1000
+	calmDays   = 30
 )

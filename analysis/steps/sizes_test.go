@@ -7,5 +7,6 @@ package steps
 const (
 	stepsDrawn = 60
 	calmDrawn  = 4
-	foulDrawn  = 8
+	foulDrawn  = 12
+	calmDays   = 3
 )

@@ -24,6 +24,7 @@ type world struct {
 	every         float64 // s
 	length        float64 // s
 	daily         float64 // amplitude on gauges with a frame, mm
+	drift         float64 // over the whole test, on all gauges, mm
 	seed          uint64
 	happenings    []happening
 	silent        [][2]float64 // no readings between, s
@@ -195,7 +196,7 @@ func (w *world) history(t *testing.T) *history.History {
 				}
 			}
 			gross, _ := w.sag(g, when)
-			y := 3 + gross + w.daily*math.Sin(2*math.Pi*when/86400) + gg.noise*rng.NormFloat64()
+			y := 3 + gross + w.daily*math.Sin(2*math.Pi*when/86400) + w.drift*when/w.length + gg.noise*rng.NormFloat64()
 			ind := sign * y
 			quantum := gg.res
 			freeze := false
