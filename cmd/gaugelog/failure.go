@@ -77,3 +77,12 @@ func flatten(err error) []error {
 	}
 	return []error{err}
 }
+
+// mendOf is what an error says to do, "" where it says nothing.
+func mendOf(err error) string {
+	var m mender
+	if errors.As(err, &m) {
+		return m.Mend()
+	}
+	return ""
+}

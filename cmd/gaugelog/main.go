@@ -15,6 +15,7 @@ import (
 	"os"
 	"os/signal"
 	"syscall"
+	_ "time/tzdata" // the rig's time zone, on machines without a database
 
 	"github.com/spf13/cobra"
 )

@@ -1,0 +1,138 @@
+package analysis
+
+import (
+	"fmt"
+
+	"gaugelog/analysis/creep"
+	"gaugelog/analysis/history"
+	"gaugelog/analysis/steps"
+	"gaugelog/analysis/stiffness"
+)
+
+// Options chooses what Analyse does.
+type Options struct {
+	// Program names the program and its version in the result.
+	Program string
+	// Beyond allows forecasts more than two decades of time beyond the data.
+	Beyond bool
+}
+
+// Analyse reads a run folder back and says everything about it. Its error is
+// a folder that cannot be read, a rig file that is wrong or a run without
+// readings; whatever else is missing becomes a warning in the result.
+func Analyse(dir string, o Options) (*Result, error) {
+	h, err := history.Load(dir)
+	if err != nil {
+		return nil, err
+	}
+	return Evaluate(h, o)
+}
+
+// Evaluate works out the result of a run that was read back.
+func Evaluate(h *history.History, o Options) (*Result, error) {
+	g, _, err := stiffness.GravityOf(h.Rig.Gravity)
+	if err != nil {
+		return nil, err
+	}
+	ei, s, err := nominal(h.Rig)
+	if err != nil {
+		return nil, err
+	}
+	expected, err := influence(h.Rig, ei, s, false)
+	if err != nil {
+		return nil, err
+	}
+	f, err := steps.Find(h, steps.Options{Gravity: g.Value, Influence: expected})
+	if err != nil {
+		return nil, err
+	}
+	r := &Result{
+		Schema: Schema, Run: runOf(h, g, o), Steps: stepsOf(h.Rig, f),
+		Stiffness: emptyStiffness(h.Rig), Creep: emptyCreep(h.Rig),
+		Drift:    driftOf(h, nil, nil),
+		Supports: supportsOf(h.Rig, f), Disturbances: disturbancesOf(h.Rig, f), Decisions: decisionsOf(f),
+		Evaluations: []Evaluation{}, Warnings: append(notesOf(h), warningsOf(h.Rig, f)...), Series: seriesOf(h, f),
+	}
+	if e := r.addStiffness(h, f, g.Value); e != nil {
+		ei, s = e.Bending.Value, shearOf(e, s)
+	}
+	if err := r.addCreep(h, f, ei, s, o); err != nil {
+		return nil, err
+	}
+	return r, nil
+}
+
+// shearOf is the fitted shear stiffness, or the nominal one where the fit has
+// none.
+func shearOf(e *stiffness.Estimate, nominal float64) float64 {
+	if e.Shear != nil && e.Shear.Value > 0 {
+		return e.Shear.Value
+	}
+	return nominal
+}
+
+func runOf(h *history.History, g stiffness.Value, o Options) Run {
+	return Run{
+		Title: h.Rig.Title, Readings: h.Readings, First: instant(h.First), Last: instant(h.Last),
+		RigSHA256: h.RigSHA256, Amendments: len(h.Amendments), Gravity: quantity(g.Value, g.U, "m/s2"),
+		Program: o.Program, DamagedBlocks: len(h.Damaged),
+	}
+}
+
+// notesOf renders what was found while reading.
+func notesOf(h *history.History) []Warning {
+	out := []Warning{}
+	for _, n := range h.Notes {
+		w := Warning{Code: n.Code, Gauge: n.Gauge, Text: n.Text}
+		if n.Time != 0 {
+			w.Time = instant(n.Time)
+		}
+		out = append(out, w)
+	}
+	for _, d := range h.Damaged {
+		out = append(out, Warning{Code: "damaged-block", Text: d})
+	}
+	return out
+}
+
+// addStiffness fits the beam; where that cannot be, a warning says why.
+func (r *Result) addStiffness(h *history.History, f *steps.Findings, gravity float64) *stiffness.Estimate {
+	e, err := stiffness.Compute(stiffnessInput(h, f, gravity))
+	if err != nil {
+		r.Warnings = append(r.Warnings, Warning{Code: "no-modulus", Text: fmt.Sprintf("no stiffness: %v", err)})
+		return nil
+	}
+	r.Stiffness = stiffnessOf(h.Rig, e)
+	for _, w := range e.Warnings {
+		r.Warnings = append(r.Warnings, Warning{Code: w.Code, Gauge: w.Gauge, Text: w.Text})
+	}
+	addCurves(r, h.Rig, f, e)
+	return e
+}
+
+// addCreep fits the laws; where that cannot be, a warning says why.
+func (r *Result) addCreep(h *history.History, f *steps.Findings, ei, s float64, o Options) error {
+	shares, err := influence(h.Rig, ei, s, true)
+	if err != nil {
+		return err
+	}
+	t, ok := creepTaskOf(h, f, shares)
+	if !ok {
+		r.Warnings = append(r.Warnings, Warning{Code: "no-creep", Text: "no loaded step was found, so there is no creep to speak of"})
+		return nil
+	}
+	opt := creepOptions(h.Rig)
+	opt.Beyond = o.Beyond
+	a, err := creep.Analyse(t.in, opt)
+	if err != nil {
+		r.Warnings = append(r.Warnings, Warning{Code: "no-creep", Text: fmt.Sprintf("no creep law: %v", err)})
+		return nil
+	}
+	r.Creep = creepOf(h, t, f.Steps[t.step].Name, a)
+	r.Drift = driftOf(h, t, a)
+	for _, n := range a.Notes {
+		r.Warnings = append(r.Warnings, Warning{Code: n.Code, Gauge: r.Creep.Gauge, Text: n.Text})
+	}
+	addLaw(r, h, t, a)
+	return nil
+}

@@ -1,0 +1,190 @@
+package analysis
+
+import (
+	"math"
+
+	"gaugelog/analysis/creep"
+	"gaugelog/analysis/history"
+	"gaugelog/analysis/steps"
+	"gaugelog/config"
+)
+
+const hour = int64(3600e9)
+
+// creepTask is what the creep fit is asked and how to read its answer.
+type creepTask struct {
+	in     creep.Input
+	step   int   // index of the creep step
+	gauge  int   // index of the creep gauge
+	origin int64 // instant of hour 0
+	full   int64 // full load of the creep step
+	end    int64 // its end
+	// unload is the first change after the creep step, -1 where there is none.
+	unload int
+}
+
+// hours turns an instant into hours from the task's origin.
+func (t *creepTask) hours(ns int64) float64 { return float64(ns-t.origin) / float64(hour) }
+
+// creepStep is the longest loaded step; -1 where there is none.
+func creepStep(f *steps.Findings) int {
+	best, longest := -1, int64(0)
+	for i, s := range f.Steps {
+		if i <= f.Baseline || s.Unmarked || s.Response != nil && !*s.Response {
+			continue
+		}
+		if sum := totalOf(s.Loads) - totalOf(f.Steps[f.Baseline].Loads); sum > 0 && s.To-s.From > longest {
+			best, longest = i, s.To-s.From
+		}
+	}
+	return best
+}
+
+func totalOf(loads map[string]float64) float64 {
+	sum := 0.0
+	for _, name := range sortedNames(loads) {
+		sum += loads[name]
+	}
+	return sum
+}
+
+// creepGauge is the one the rig names, else the one between the supports
+// that sags most in the creep step; -1 where none sags.
+func creepGauge(rig *config.Rig, f *steps.Findings, step int) int {
+	best, most := -1, 0.0
+	for i, g := range rig.Gauges {
+		if g.Name == rig.Read.CreepGauge {
+			return i
+		}
+		if !touches(g) || i >= len(f.Steps[step].Gauges) {
+			continue
+		}
+		if v := f.Steps[step].Gauges[i].Net.Final; v != nil && v.MM > most {
+			best, most = i, v.MM
+		}
+	}
+	return best
+}
+
+// creepTaskOf builds the fit's input from the creep gauge's net track.
+// shares is the net sag per newton of each load at each gauge.
+func creepTaskOf(h *history.History, f *steps.Findings, shares [][]float64) (*creepTask, bool) {
+	step := creepStep(f)
+	if step < 0 || len(f.Loads) == 0 {
+		return nil, false
+	}
+	gauge := creepGauge(h.Rig, f, step)
+	if gauge < 0 || gauge >= len(f.Tracks) {
+		return nil, false
+	}
+	t := &creepTask{step: step, gauge: gauge, unload: -1}
+	first := f.Loads[0]
+	t.origin = first.Full - int64(first.RampS*1e9)
+	t.full, t.end = f.Steps[step].Full, f.Steps[step].To
+	for i, c := range f.Loads {
+		if c.Step == step {
+			t.full = c.Full
+		}
+		if c.Step == step+1 {
+			t.unload, t.end = i, c.Full-int64(c.RampS*1e9)
+		}
+	}
+	pattern, load := patternShare(h.Rig, f, step, shares[gauge])
+	if load == 0 || pattern == 0 {
+		return nil, false
+	}
+	t.in = creep.Input{FullH: t.hours(t.full), EndH: t.hours(t.end), LoadN: load, InitialH: h.Rig.Read.InitialAfter.Value / 3600}
+	t.in.Series = []creep.Series{t.series(h, f, shares[gauge], pattern)}
+	t.in.Offsets = t.offsets(f)
+	t.in.Ambient = t.ambient(h)
+	return t, true
+}
+
+// patternShare is the creep gauge's sag per newton of total load in the creep
+// step's pattern, and that total, above the baseline.
+func patternShare(rig *config.Rig, f *steps.Findings, step int, share []float64) (perNewton, total float64) {
+	base := f.Steps[f.Baseline].Loads
+	sum := 0.0
+	for j, l := range rig.Loads {
+		n := f.Steps[step].Loads[l.Name] - base[l.Name]
+		sum += n * share[j]
+		total += n
+	}
+	if total == 0 {
+		return 0, 0
+	}
+	return sum / total, total
+}
+
+// series is the creep gauge's track from the first change of load on, without
+// what was read while a load was being placed.
+func (t *creepTask) series(h *history.History, f *steps.Findings, share []float64, pattern float64) creep.Series {
+	s := creep.Series{Name: h.Rig.Gauges[t.gauge].Name}
+	for _, c := range f.Loads {
+		newton := 0.0
+		for j, n := range c.Delta {
+			newton += n * share[j] / pattern
+		}
+		s.Changes = append(s.Changes, creep.Change{AtH: t.hours(c.Full) - c.RampS/3600, RampH: c.RampS / 3600, Newton: newton})
+	}
+	track := f.Tracks[t.gauge]
+	s.ZeroU = track.Baseline.U
+	for _, p := range track.Points {
+		if p.Time <= t.origin || placing(f, p.Time) || !(p.NetU > 0) {
+			continue
+		}
+		at := t.hours(p.Time)
+		if n := len(s.TimeH); n > 0 && at <= s.TimeH[n-1] || math.IsNaN(p.Net) {
+			continue
+		}
+		s.TimeH, s.SagMM = append(s.TimeH, at), append(s.SagMM, p.Net)
+		s.U, s.N = append(s.U, p.NetU), append(s.N, p.N)
+	}
+	return s
+}
+
+// placing reports whether a load was being placed or its swing dying out.
+func placing(f *steps.Findings, at int64) bool {
+	for _, c := range f.Loads {
+		s := f.Steps[c.Step]
+		settled := c.Full + int64(max(s.RingingS, 5)*1e9)
+		if at >= c.Full-int64((c.RampS+2)*1e9) && at < settled {
+			return true
+		}
+	}
+	return false
+}
+
+// offsets hands on the jumps that were taken off the creep gauge's track:
+// what is left of them is 0 with the uncertainty they were found with.
+func (t *creepTask) offsets(f *steps.Findings) []creep.Offset {
+	var out []creep.Offset
+	for _, o := range f.Tracks[t.gauge].Offsets {
+		if o.Value.U > 0 {
+			out = append(out, creep.Offset{Name: string(o.Kind), AtH: t.hours(o.Time), Prior: &creep.Knowledge{U: o.Value.U}})
+		}
+	}
+	return out
+}
+
+// ambient hands over the first probe that reads temperature and covers the
+// creep step with two readings or more.
+func (t *creepTask) ambient(h *history.History) []creep.Ambient {
+	for i, p := range h.Rig.Probes {
+		if p.Temperature == "" {
+			continue
+		}
+		a := creep.Ambient{Name: "temperature"}
+		for _, v := range h.Ambient(i) {
+			at := t.hours(v.Time)
+			if n := len(a.TimeH); math.IsNaN(v.Celsius) || n > 0 && at <= a.TimeH[n-1] {
+				continue
+			}
+			a.TimeH, a.Value = append(a.TimeH, at), append(a.Value, v.Celsius)
+		}
+		if n := len(a.TimeH); n >= 2 && a.TimeH[n-1]-a.TimeH[0] >= 48 {
+			return []creep.Ambient{a}
+		}
+	}
+	return nil
+}

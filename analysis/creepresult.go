@@ -1,0 +1,164 @@
+package analysis
+
+import (
+	"math"
+
+	"gaugelog/analysis/creep"
+	"gaugelog/analysis/history"
+	"gaugelog/config"
+)
+
+// emptyCreep is the section of a run that shows no creep.
+func emptyCreep(rig *config.Rig) Creep {
+	return Creep{
+		Parameters: map[string]Q{}, Candidates: []Candidate{}, After: []After{}, Equivalent: []Equivalent{},
+		Recovery: []Recovery{}, Forecast: []Forecast{}, MayStop: []MayStop{}, InitialAfterS: rig.Read.InitialAfter.Value,
+	}
+}
+
+// creepOptions are the times the rig asks for.
+func creepOptions(rig *config.Rig) creep.Options {
+	o := creep.Options{}
+	for _, t := range rig.Read.Times {
+		o.TimesH = append(o.TimesH, t.Value/3600)
+	}
+	for _, t := range rig.Forecast {
+		o.ForecastH = append(o.ForecastH, t.Value/3600)
+	}
+	return o
+}
+
+func valueQ(v creep.Value, unit string) Q { return quantity(v.Value, v.U, unit) }
+
+func valueQOrNil(v *creep.Value, unit string) *Q {
+	if v == nil || math.IsNaN(v.Value) {
+		return nil
+	}
+	q := valueQ(*v, unit)
+	return &q
+}
+
+// creepOf renders the creep analysis.
+func creepOf(h *history.History, t *creepTask, step string, a *creep.Analysis) Creep {
+	c := emptyCreep(h.Rig)
+	c.Gauge, c.Step = h.Rig.Gauges[t.gauge].Name, step
+	if a.Best == nil {
+		return c
+	}
+	c.Model = string(a.Best.Model)
+	for _, p := range a.Best.Parameters {
+		c.Parameters[p.Name] = quantity(p.Value, p.U, p.Unit)
+	}
+	for _, m := range a.Candidates {
+		if m.Fit != nil && !math.IsNaN(m.AICc) && !math.IsInf(m.AICc, 0) {
+			c.Candidates = append(c.Candidates, Candidate{Model: string(m.Model), AICc: m.AICc, Weight: m.Weight})
+		}
+	}
+	for _, v := range a.After {
+		c.After = append(c.After, After{
+			AfterS: secondsOf(v.AfterH), Sag: valueQ(v.Sag, "mm"), Modelled: v.Modelled,
+			Relative: valueQOrNil(v.Relative, "1"), Coefficient: valueQOrNil(v.Coefficient, "1"),
+		})
+	}
+	for _, v := range a.Equivalent {
+		c.Equivalent = append(c.Equivalent, Equivalent{AfterS: secondsOf(v.AfterH), Relative: valueQ(v.Value, "1")})
+	}
+	c.Rate, c.Method, c.Stage = valueQOrNil(a.Rate, "mm/d"), a.Method, string(a.Stage)
+	c.Acceleration = Acceleration{
+		MinimumTime: t.instantOf(a.Acceleration.MinimumH), CautionTime: t.instantOf(a.Acceleration.CautionH),
+		ClearAreaTime: t.instantOf(a.Acceleration.ClearAreaH),
+	}
+	for _, v := range a.Recovery {
+		c.Recovery = append(c.Recovery, Recovery{AfterS: secondsOf(v.AfterH), Recovered: valueQ(v.Share, "1"), Residual: valueQ(v.Residual, "mm")})
+	}
+	c.PermanentSet = valueQOrNil(a.PermanentSet, "mm")
+	for i, v := range a.Forecast {
+		c.Forecast = append(c.Forecast, forecastOf(h.Rig, i, v))
+	}
+	for _, v := range a.MayStop {
+		c.MayStop = append(c.MayStop, MayStop{MoreS: secondsOf(v.MoreH), ForecastWidth: quantity(v.Width, 0, "mm")})
+	}
+	f := a.Best
+	c.Fit = &CreepFit{RMSmm: f.RMSmm, N: f.N, NEffective: f.NEffective, Lag1: f.Lag1}
+	for _, p := range f.Parameters {
+		c.Fit.AtBound = c.Fit.AtBound || p.AtBound
+	}
+	return c
+}
+
+// secondsOf turns hours back into the seconds they came from.
+func secondsOf(h float64) float64 { return math.Round(h*3600*1e6) / 1e6 }
+
+func (t *creepTask) instantOf(h *float64) *string {
+	if h == nil {
+		return nil
+	}
+	s := instant(t.origin + int64(*h*float64(hour)))
+	return &s
+}
+
+func forecastOf(rig *config.Rig, i int, v creep.Forecast) Forecast {
+	f := Forecast{AfterS: secondsOf(v.AfterH), Decades: v.Decades, Label: string(v.Label), Refused: v.Refused, ByModel: []ByModel{}}
+	if i < len(rig.Forecast) {
+		f.After = rig.Forecast[i].Shown
+	}
+	if v.Refused == "" {
+		q := valueQ(v.Sag, "mm")
+		lo, hi := v.Lo, v.Hi
+		f.Sag, f.Lo95, f.Hi95 = &q, &lo, &hi
+	}
+	for _, m := range v.ByModel {
+		f.ByModel = append(f.ByModel, ByModel{Model: string(m.Model), Sag: valueQ(m.Sag, "mm")})
+	}
+	return f
+}
+
+// driftOf renders what the surroundings did to the creep gauge.
+func driftOf(h *history.History, t *creepTask, a *creep.Analysis) Drift {
+	d := Drift{Gauges: []GaugeDrift{}, Temperature: []AmbientTerm{}, Humidity: []AmbientTerm{}}
+	if a == nil || a.Best == nil {
+		return d
+	}
+	for _, n := range a.Best.Nuisance {
+		name := h.Rig.Gauges[t.gauge].Name
+		switch n.Kind {
+		case "ambient":
+			term := AmbientTerm{Gauge: name, Coefficient: quantity(n.Value, n.U, "mm/K")}
+			if n.Ambient < len(a.Best.Lags) {
+				lag := quantity(a.Best.Lags[n.Ambient].Value, a.Best.Lags[n.Ambient].U, "h")
+				term.LagH = &lag
+			}
+			d.Temperature = append(d.Temperature, term)
+		case "drift":
+			d.Gauges = append(d.Gauges, GaugeDrift{Gauge: name, Rate: quantity(n.Value, n.U, "mm/d")})
+		}
+	}
+	return d
+}
+
+// lawPoints is how many points of the law a plot gets within the data.
+const lawPoints = 120
+
+// addLaw draws the law with its band, and beyond the data as far as the
+// forecasts reach that were not refused.
+func addLaw(r *Result, h *history.History, t *creepTask, a *creep.Analysis) {
+	r.Series.CreepFullS, r.Series.CreepEndS = seconds(t.full-h.First), seconds(t.end-h.First)
+	if a.Best == nil {
+		return
+	}
+	last := (t.in.EndH - t.in.FullH) * 3600
+	first := math.Min(5, last/10)
+	for i := range lawPoints {
+		after := first * math.Pow(last/first, float64(i)/float64(lawPoints-1))
+		at := t.in.FullH + after/3600
+		lo, hi := a.Best.Band(at)
+		if v := a.Best.At(at); !math.IsNaN(v + lo + hi) {
+			r.Series.Law = append(r.Series.Law, LawPoint{AfterS: after, SagMM: v, Lo95: lo, Hi95: hi})
+		}
+	}
+	for _, f := range a.Forecast {
+		if f.Refused == "" && f.AfterH*3600 > last {
+			r.Series.Law = append(r.Series.Law, LawPoint{AfterS: f.AfterH * 3600, SagMM: f.Sag.Value, Lo95: f.Lo, Hi95: f.Hi, Beyond: true})
+		}
+	}
+}

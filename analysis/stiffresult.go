@@ -1,0 +1,122 @@
+package analysis
+
+import (
+	"math"
+
+	"gaugelog/analysis/steps"
+	"gaugelog/analysis/stiffness"
+	"gaugelog/config"
+)
+
+// expanded makes a Q with its freedom, coverage factor and U95.
+func expanded(v *stiffness.Quantity, unit string) *Q {
+	if v == nil || math.IsNaN(v.Value) {
+		return nil
+	}
+	q := quantity(v.Value, v.U, unit)
+	if q.U != nil && v.K > 0 {
+		k, u95 := v.K, v.U95
+		q.K, q.U95 = &k, &u95
+		if v.DOF > 0 && !math.IsInf(v.DOF, 0) {
+			dof := v.DOF
+			q.DOF = &dof
+		}
+	}
+	return &q
+}
+
+// emptyStiffness is the section of a run that fixes no stiffness.
+func emptyStiffness(rig *config.Rig) Stiffness {
+	return Stiffness{
+		Supports: []SupportStiffness{}, StiffnessAt: []StiffnessAt{}, Budget: []BudgetLine{}, Residuals: []Residual{},
+		InitialAfterS: rig.Read.InitialAfter.Value,
+	}
+}
+
+// stiffnessOf renders an estimate.
+func stiffnessOf(rig *config.Rig, e *stiffness.Estimate) Stiffness {
+	s := emptyStiffness(rig)
+	s.Modulus = expanded(e.Modulus, "MPa")
+	s.ApparentModulus = expanded(e.ApparentModulus, "MPa")
+	s.ShearModulus = expanded(e.ShearModulus, "MPa")
+	s.Bending = expanded(&e.Bending, "N.mm2")
+	s.Shear = expanded(e.Shear, "N")
+	s.ShearFrom = e.ShearFrom
+	s.CorrelationBendingShear = e.CorrelationBendingShear
+	for _, p := range e.Supports {
+		s.Supports = append(s.Supports, SupportStiffness{Name: p.Name, Compliance: expanded(p.Compliance, "mm/N")})
+	}
+	for _, g := range e.StiffnessAt {
+		s.StiffnessAt = append(s.StiffnessAt, StiffnessAt{
+			Gauge: g.Gauge, Ratio: expanded(g.Ratio, "N/mm"),
+			LocalModulus: expanded(g.Local, "MPa"), GlobalModulus: expanded(g.Global, "MPa"),
+		})
+	}
+	s.Fit = &Fit{Chi2: e.Fit.Chi2, DOF: e.Fit.DOF, P: e.Fit.P, Birge: e.Fit.Birge, Condition: e.Fit.Condition}
+	for _, l := range e.Budget {
+		s.Budget = append(s.Budget, BudgetLine{
+			Input: l.Input, Type: l.Type, UInput: quantity(l.U, 0, l.Unit),
+			Sensitivity: l.Sensitivity, Share: l.Share, Source: l.Source,
+		})
+	}
+	for _, r := range e.Residuals {
+		s.Residuals = append(s.Residuals, Residual{Gauge: r.Gauge, Step: r.Step, MM: r.MM, U: r.U})
+	}
+	return s
+}
+
+// curvePlaces is at how many places the fitted curve is drawn.
+const curvePlaces = 121
+
+// addCurves draws the fitted beam in every answered step and sets the step's
+// greatest sag. The estimate's steps begin behind the baseline.
+func addCurves(r *Result, rig *config.Rig, f *steps.Findings, e *stiffness.Estimate) {
+	places := make([]float64, curvePlaces)
+	for i := range places {
+		places[i] = rig.Specimen.From.Value + rig.Specimen.Length.Value*float64(i)/float64(curvePlaces-1)
+	}
+	sums := make([]steps.Value, len(rig.Gauges))
+	whole := make([]bool, len(rig.Gauges))
+	for i := range whole {
+		whole[i] = true
+	}
+	for i := f.Baseline + 1; i < len(f.Steps); i++ {
+		step := f.Steps[i]
+		addIncrements(step, sums, whole)
+		if step.Response == nil || !*step.Response || totalOf(step.Loads) <= totalOf(f.Steps[f.Baseline].Loads) {
+			continue
+		}
+		k := i - f.Baseline - 1
+		sags, err := e.Curve(k, places)
+		if err != nil {
+			r.Warnings = append(r.Warnings, Warning{Code: "no-curve", Text: "step " + step.Name + ": " + err.Error()})
+			continue
+		}
+		c := ElasticCurve{Step: step.Name, AtMM: places, SagMM: sags, PointAtMM: []float64{}, PointMM: []float64{}, PointU: []float64{}}
+		for g, v := range sums {
+			if whole[g] && touches(rig.Gauges[g]) && len(rig.Gauges[g].Bar) == 0 {
+				c.PointAtMM = append(c.PointAtMM, rig.Gauges[g].At.Value)
+				c.PointMM, c.PointU = append(c.PointMM, v.MM), append(c.PointU, v.U)
+			}
+		}
+		r.Series.Curve = append(r.Series.Curve, c)
+		if peak, err := e.Largest(k); err == nil {
+			r.Steps[i].Largest = &Largest{At: *expanded(&peak.At, "mm"), Sag: *expanded(&peak.Sag, "mm")}
+		} else {
+			r.Warnings = append(r.Warnings, Warning{Code: "no-greatest-sag", Text: "step " + step.Name + ": " + err.Error()})
+		}
+	}
+}
+
+// addIncrements adds a step's gross increments; a gauge that misses one is no
+// longer whole.
+func addIncrements(s steps.Step, sums []steps.Value, whole []bool) {
+	for g := range sums {
+		if g >= len(s.Gauges) || s.Gauges[g].Gross.Increment == nil {
+			whole[g] = false
+			continue
+		}
+		v := s.Gauges[g].Gross.Increment
+		sums[g] = steps.Value{MM: sums[g].MM + v.MM, U: math.Hypot(sums[g].U, v.U)}
+	}
+}

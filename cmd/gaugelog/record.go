@@ -1,0 +1,238 @@
+package main
+
+import (
+	"bufio"
+	"context"
+	"errors"
+	"fmt"
+	"log/slog"
+	"os"
+	"path/filepath"
+	"strings"
+	"time"
+
+	"github.com/spf13/cobra"
+
+	"gaugelog/config"
+	"gaugelog/device"
+	"gaugelog/ingest"
+)
+
+// recordFlags are the flags of `record`.
+type recordFlags struct {
+	into, lasts, ports string
+	quiet              bool
+}
+
+func recordCommand() *cobra.Command {
+	var f recordFlags
+	c := &cobra.Command{
+		Use:     "record RIG...",
+		GroupID: "run",
+		Short:   "Records one rig or several until it is ended",
+		Long: `Reads the gauges and probes of one rig or several and keeps their readings in a
+run folder each, until Ctrl-C or SIGTERM ends it cleanly. It prints "recording
+RUN" when every port was tried. Lost ports are reopened for ever. An existing run
+goes on in a new segment if the rig file is the same, and is refused if not. The
+end of the plan does not stop the recording.
+
+What is older than the last completed sync survives a power cut.
+Suspended loads hurt people: a recording is no safety device.`,
+		Example: "  gaugelog record rig.yaml --into runs/first",
+		Args:    cobra.MinimumNArgs(1),
+		RunE: func(cmd *cobra.Command, args []string) error {
+			if f.into == "" {
+				return wrongf("give --into RUN, the folder to keep the readings in", "no folder was given")
+			}
+			return runRecord(cmd, args, f)
+		},
+	}
+	c.Flags().StringVar(&f.into, "into", "", "run folder; with several rigs a folder each under it")
+	c.Flags().StringVar(&f.lasts, "for", "", "end after this time, such as 24h (default: run until ended)")
+	c.Flags().StringVar(&f.ports, "ports", "", "file of \"name path\" lines that say where the rig's ports are, as `simulate` prints them")
+	c.Flags().BoolVar(&f.quiet, "quiet", false, "log warnings and errors only")
+	return c
+}
+
+// recording is everything one `record` process holds open.
+type recording struct {
+	rigs []*config.Rig
+	dirs []*ingest.Dir
+	recs []*ingest.Recorder
+	runs []string
+}
+
+func runRecord(cmd *cobra.Command, rigFiles []string, f recordFlags) (err error) {
+	ctx := cmd.Context()
+	if f.lasts != "" {
+		d, err := config.ParseDuration(f.lasts)
+		if err != nil {
+			return wrong(fmt.Errorf("--for: %w", err), mendOf(err))
+		}
+		var stop context.CancelFunc
+		ctx, stop = context.WithTimeout(ctx, time.Duration(d.Value*float64(time.Second)))
+		defer stop()
+	}
+	opener, err := openerOf(f.ports)
+	if err != nil {
+		return err
+	}
+	r := &recording{}
+	defer func() { err = errors.Join(err, r.close()) }()
+	if err := r.open(rigFiles, f.into); err != nil {
+		return err
+	}
+	level := slog.LevelInfo
+	if f.quiet {
+		level = slog.LevelWarn
+	}
+	logger := slog.New(slog.NewTextHandler(cmd.ErrOrStderr(), &slog.HandlerOptions{Level: level}))
+	return r.run(ctx, cmd, opener, logger)
+}
+
+// open loads the rigs and opens a recorder for each.
+func (r *recording) open(rigFiles []string, into string) error {
+	for _, file := range rigFiles {
+		text, err := os.ReadFile(file)
+		if err != nil {
+			return wrong(err, "name a rig file; `gaugelog new` writes one")
+		}
+		rig, err := config.Parse(file, text)
+		if err != nil {
+			return err
+		}
+		run := into
+		if len(rigFiles) > 1 {
+			run = filepath.Join(into, rig.Specimen.Name)
+		}
+		if err := r.openOne(rig, text, run); err != nil {
+			return err
+		}
+	}
+	return nil
+}
+
+func (r *recording) openOne(rig *config.Rig, text []byte, run string) error {
+	amendments, err := config.LoadAmendments(filepath.Join(run, "amendments.yaml"))
+	if err != nil {
+		return err
+	}
+	if rig, err = rig.Apply(amendments); err != nil {
+		return err
+	}
+	if err := config.Problems(rig.CheckPorts()).Err(); err != nil {
+		return err
+	}
+	dir, err := ingest.OpenDir(run, ingest.DirOptions{Create: true})
+	if err != nil {
+		return err
+	}
+	r.dirs = append(r.dirs, dir)
+	rec, err := ingest.Open(ingest.Options{
+		FS: dir.FS(), Lock: dir.Lock(fmt.Sprintf("gaugelog record, process %d", os.Getpid())),
+		Rig: rig, RigBytes: text, Amendments: len(amendments), Program: version(),
+		Clock: ingest.SystemClock{}, Start: ingest.SystemClock{}.Now(), Live: true, Compress: true,
+		DiskFree: dir.DiskFree, LeastFree: leastFree,
+	})
+	if err != nil {
+		return refused(run, err)
+	}
+	r.rigs, r.recs, r.runs = append(r.rigs, rig), append(r.recs, rec), append(r.runs, run)
+	return nil
+}
+
+// leastFree is the room a recording needs before it begins, bytes: a few
+// segments with their compressed twins.
+const leastFree = 64_000_000
+
+// refused tells of a run that cannot be recorded into.
+func refused(run string, err error) error {
+	var differs *ingest.RigDiffersError
+	var holder *ingest.HeldError
+	switch {
+	case errors.As(err, &differs), errors.As(err, &holder):
+		return wrong(fmt.Errorf("%s: %w", run, err), mendOf(err))
+	}
+	return fmt.Errorf("%s: %w", run, err)
+}
+
+// run records until the context ends, then closes ports before recorders, so
+// that nothing that was read is lost.
+func (r *recording) run(ctx context.Context, cmd *cobra.Command, opener device.Opener, logger *slog.Logger) error {
+	sink := &lateSink{}
+	bank, err := device.Open(device.Options{Rigs: r.rigs, Opener: opener, Sink: sink, Logger: logger})
+	if err != nil {
+		return wrong(err, mendOf(err))
+	}
+	runner, err := ingest.NewRunner(ingest.RunnerOptions{
+		Recorders: r.recs, Clock: ingest.SystemClock{}, PortsTried: bank.Tried(),
+		Ready: func() {
+			for _, run := range r.runs {
+				fmt.Fprintf(cmd.OutOrStdout(), "recording %s\n", run)
+			}
+		},
+	})
+	if err != nil {
+		return err
+	}
+	sink.Runner = runner
+	r.recs = nil // the runner's from now on
+	recording, stop := context.WithCancel(context.WithoutCancel(ctx))
+	defer stop()
+	recorded := make(chan error, 1)
+	go func() { recorded <- runner.Run(recording) }()
+	bankErr := bank.Run(ctx)
+	stop()
+	return errors.Join(bankErr, <-recorded)
+}
+
+// close lets go of what run did not take over.
+func (r *recording) close() error {
+	var errs []error
+	for _, rec := range r.recs {
+		errs = append(errs, rec.Close(ingest.SystemClock{}.Now()))
+	}
+	for _, d := range r.dirs {
+		errs = append(errs, d.Close())
+	}
+	return errors.Join(errs...)
+}
+
+// lateSink is a runner that is set after the bank was planned and before it runs.
+type lateSink struct{ *ingest.Runner }
+
+// openerOf opens the machine's ports, or those a list of "name path" names.
+func openerOf(file string) (device.Opener, error) {
+	if file == "" {
+		return device.SystemOpener{}, nil
+	}
+	f, err := os.Open(file)
+	if err != nil {
+		return nil, wrong(err, "give the list that `gaugelog simulate` printed")
+	}
+	defer f.Close()
+	paths := map[string]string{}
+	lines := bufio.NewScanner(f)
+	for n := 1; lines.Scan(); n++ {
+		fields := strings.Fields(lines.Text())
+		if len(fields) == 0 {
+			continue
+		}
+		if len(fields) != 2 {
+			return nil, wrongf(`write "name path" a line`, "%s:%d: %q is not two words", file, n, lines.Text())
+		}
+		paths[fields[0]] = fields[1]
+	}
+	return listedOpener(paths), lines.Err()
+}
+
+// listedOpener opens ports at the paths of a list, others by their own name.
+type listedOpener map[string]string
+
+// Open opens the port behind a name.
+func (o listedOpener) Open(ctx context.Context, name string, line config.Line) (device.Port, error) {
+	if path, ok := o[name]; ok {
+		name = path
+	}
+	return device.SystemOpener{}.Open(ctx, name, line)
+}
