@@ -89,6 +89,7 @@ func coverage(t *testing.T, tests int, averaged bool) tally {
 // Of 100 right 95 % intervals 88 or fewer hold in one case of 200
 // (binomial); the campaign has the narrow band.
 func TestCoverageSmall(t *testing.T) {
+	t.Parallel()
 	c := coverage(t, 100, false)
 	c.log(t)
 	if c.n < 89 || c.sag < 89 || c.failed > 0 {

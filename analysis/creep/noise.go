@@ -75,7 +75,7 @@ func (n *noise) effective(u []float64) float64 {
 }
 
 // estimateNoise finds the noise of greatest likelihood for residuals r (mm),
-// its scale never below least. lost is the number of parameters already
+// its scale never below leastScale. lost is the number of parameters already
 // fitted to them.
 func estimateNoise(timeH, u, r []float64, lost float64) *noise {
 	n := len(r)
@@ -97,7 +97,7 @@ func estimateNoise(timeH, u, r []float64, lost float64) *noise {
 	// The fading part brings two parameters and must earn them.
 	best, scale := cost(0, 1)
 	best -= 4
-	ratio, fade := 0.0, 1.0
+	found := false
 	if n < 8 {
 		return newNoise(timeH, u, scale, 0, 1)
 	}
@@ -108,11 +108,11 @@ func estimateNoise(timeH, u, r []float64, lost float64) *noise {
 		for f := math.Log(1.0 / 60); f <= math.Log(max(span/5, 0.1)); f += 1 {
 			if c, s := cost(math.Exp(i), math.Exp(f)); c < best-1e-9 {
 				best, scale, lnRatio, lnFade = c, s, i, f
-				ratio, fade = math.Exp(i), math.Exp(f)
+				found = true
 			}
 		}
 	}
-	if ratio == 0 {
+	if !found {
 		return newNoise(timeH, u, scale, 0, 1)
 	}
 	for step > 0.02 {
@@ -130,8 +130,7 @@ func estimateNoise(timeH, u, r []float64, lost float64) *noise {
 			step /= 2
 		}
 	}
-	ratio, fade = math.Exp(lnRatio), math.Exp(lnFade)
-	return newNoise(timeH, u, scale, ratio*typical*scale, fade)
+	return newNoise(timeH, u, scale, math.Exp(lnRatio)*typical*scale, math.Exp(lnFade))
 }
 
 // leastScale bounds how much smaller than stated the scatter may be taken: a

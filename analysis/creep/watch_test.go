@@ -117,6 +117,7 @@ func soundTests(t *testing.T, tests int) (warned []string) {
 
 // The campaign runs 500 of each; here enough to see a rule that is off.
 func TestWatch(t *testing.T) {
+	t.Parallel()
 	w := failures(t, 30)
 	t.Logf("clear-area in time in %d of %d, median lead %.1f h; missed: %v", w.inTime, w.tests, w.medianLead, w.missed)
 	if w.inTime < 27 {
