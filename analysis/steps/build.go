@@ -98,6 +98,9 @@ func (r *run) fillSteps() {
 			}
 			kg = cloneMap(c.kilogram)
 			s.Response = truth(p.event != nil)
+			if p.event == nil && r.beside(c) {
+				s.Response = nil
+			}
 			r.ruleResponse(&s)
 		}
 		if k > 0 {
@@ -153,4 +156,16 @@ func (r *run) chooseBaseline() {
 	if least > 0 {
 		r.warn("baseline-loaded", -1, r.out.Steps[best].From, fmt.Sprintf("%.4g N hung on the beam at the baseline (step %s): sags count from there", least, r.out.Steps[best].Name))
 	}
+}
+
+// beside says that a change without a cluster of its own was marked where
+// another one's readings cannot tell the two apart.
+func (r *run) beside(c change) bool {
+	tol := nanos(r.interval())
+	for _, j := range r.matched {
+		if j >= 0 && c.last >= r.events[j].lo-tol && c.first <= r.events[j].hi+tol {
+			return true
+		}
+	}
+	return false
 }

@@ -259,3 +259,59 @@ func TestDecisionOverrules(t *testing.T) {
 		t.Error(tell(f))
 	}
 }
+
+// warned says whether a warning of this code was given.
+func warned(f *Findings, code string) bool {
+	for _, w := range f.Warnings {
+		if w.Code == code {
+			return true
+		}
+	}
+	return false
+}
+
+// Bad input gets a plain message each, and what can be computed is.
+func TestBadInput(t *testing.T) {
+	short := plank()
+	short.every, short.length = 600, 6*3600
+	short.changes = []wchange{
+		{at: 3610, late: 0, newton: []float64{100, 0}, name: "s1"},
+		{at: 3700, late: 0, newton: []float64{200, 0}, name: "s2"},
+	}
+	twice := quiet()
+	twice.marks = []history.Mark{{Kind: "load", Load: "loada", Newton: 12, Time: at(1806)}}
+	loaded := quiet()
+	loaded.marks = []history.Mark{{Kind: "load", Load: "loada", Newton: 50, Time: at(-100)}}
+	still := quiet()
+	still.creep, still.ei, still.compliance, still.daily = 0, 1e30, 0, 0
+	for i := range still.gauges {
+		still.gauges[i].noise = 0
+	}
+	bare := quiet()
+	bare.changes = nil
+	stranger := quiet()
+	stranger.marks = []history.Mark{{Kind: "load", Load: "bucket", Newton: 50, Time: at(5000)}, {Kind: "touch", Gauge: "g99", Act: "moved", Time: at(5000)}}
+	decision := quiet()
+	decision.amend = []config.Amendment{{Path: "decisions[whatever]", Value: "x", Why: "y"}}
+	for _, c := range []struct {
+		code string
+		w    *world
+	}{
+		{"step-shorter-than-sampling", short},
+		{"contradictory-marks", twice},
+		{"baseline-loaded", loaded},
+		{"all-gauges-still", still},
+		{"no-loads-marked", bare},
+		{"unknown-load", stranger},
+		{"unknown-gauge", stranger},
+		{"decision-not-understood", decision},
+	} {
+		f := c.w.find(t)
+		if !warned(f, c.code) {
+			t.Errorf("%s: not among %v", c.code, f.Warnings)
+		}
+		if len(f.Tracks[3].Points) == 0 {
+			t.Errorf("%s: nothing was computed", c.code)
+		}
+	}
+}

@@ -190,7 +190,9 @@ func (r *run) finish() {
 			continue
 		}
 		switch {
-		case s.Response != nil && !*s.Response:
+		case s.Response == nil:
+			r.warn("step-shorter-than-sampling", -1, s.Marked, fmt.Sprintf("step %s began and ended between two readings of its neighbour's change: its own response cannot be told apart", s.Name))
+		case !*s.Response:
 			r.warn("mark-without-response", -1, s.Marked, fmt.Sprintf("step %s was marked, but no gauge shows it: wrong load, wrong time, or nothing hung?", s.Name))
 		case s.Found != 0 && math.Abs(s.OffsetS) > lateMark:
 			word := "late"
@@ -203,6 +205,7 @@ func (r *run) finish() {
 			r.warn("ringing", -1, s.Full, fmt.Sprintf("the beam swung for %.3g s after step %s (up to %.3g mm): the load was not put on gently", s.RingingS, s.Name, s.RingingMM))
 		}
 	}
+	r.warnStill()
 	for _, u := range r.rules {
 		if !u.used {
 			r.warn("decision-without-object", -1, u.at, fmt.Sprintf("amendment %s: nothing in the run answers to it", u.path))
@@ -213,4 +216,16 @@ func (r *run) finish() {
 	}
 	sort.SliceStable(r.out.Disturbances, func(a, b int) bool { return r.out.Disturbances[a].From < r.out.Disturbances[b].From })
 	sort.SliceStable(r.out.Excluded, func(a, b int) bool { return r.out.Excluded[a].From < r.out.Excluded[b].From })
+}
+
+// warnStill says so where no gauge ever changed its indication.
+func (r *run) warnStill() {
+	for g := range r.gauges {
+		for _, p := range r.gauges[g].seq {
+			if p.min != r.gauges[g].seq[0].min || p.max != p.min {
+				return
+			}
+		}
+	}
+	r.warn("all-gauges-still", -1, r.h.First, "no gauge ever changed its indication: are they on hold, or is one old reading repeated? There is no sag to state")
 }
