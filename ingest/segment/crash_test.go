@@ -322,3 +322,34 @@ func TestAFailedSyncIsNotTriedAgain(t *testing.T) {
 		}
 	}
 }
+
+// Power cut at any call of Compress: one whole file is always left, and a
+// second try finishes.
+func TestCompressMayBeCutAnywhere(t *testing.T) {
+	for at := 1; ; at++ {
+		fs := segmenttest.New()
+		fill(t, fs, 1, 0, 50, 10, true)
+		fs.Inject(&segmenttest.Failure{At: at, Persistent: true, Err: segmenttest.ErrInjected})
+		_, err := segment.Compress(fs, 1)
+		done := fs.Calls() < at
+		fs.Inject(nil)
+		for seed := range 40 {
+			c := fs.Crash(rand.New(rand.NewPCG(uint64(at), uint64(seed))), false)
+			for range 2 {
+				got, report := read(t, c, segment.ReadOptions{Workers: 1})
+				if !slices.Equal(got, expect(0, 50)) || len(report.Damage) > 0 {
+					t.Fatalf("cut at call %d, seed %d: %d readings, %v, in %v", at, seed, len(got), report.Damage, c.Names())
+				}
+				if _, err := segment.Compress(c, 1); err != nil && c.Bytes("readings/000001.lp") != nil {
+					t.Fatalf("cut at call %d, seed %d: trying again: %v", at, seed, err)
+				}
+			}
+		}
+		if done {
+			if err != nil {
+				t.Fatal(err)
+			}
+			return
+		}
+	}
+}

@@ -110,12 +110,16 @@ func (m *FS) Crash(rng *rand.Rand, keep bool) *FS {
 	for n, f := range m.durable {
 		names[n] = f
 	}
-	ops := len(m.pending)
+	// Half of the crashes keep names in the order of their changes, as a
+	// journal does; the others any of them, as POSIX allows.
+	ops, any := len(m.pending), false
 	if !keep {
-		ops = rng.IntN(ops + 1)
+		ops, any = rng.IntN(ops+1), rng.IntN(2) == 0
 	}
-	for _, op := range m.pending[:ops] {
-		op.apply(names)
+	for i, op := range m.pending {
+		if any && rng.IntN(2) == 0 || !any && i < ops {
+			op.apply(names)
+		}
 	}
 	for _, n := range slices.Sorted(func(yield func(string) bool) {
 		for n := range names {
