@@ -64,7 +64,7 @@ func foul(seed uint64, days float64) (*world, Kind, float64) {
 	}
 	when := w.length * (0.3 + 0.6*rng.Float64())
 	g := 2 + rng.IntN(len(w.gauges)-3)
-	switch rng.IntN(6) {
+	switch rng.IntN(8) {
 	case 0:
 		w.happenings = []happening{{gauge: g, from: when, to: when + 120*(1+3*rng.Float64()), by: size}}
 		return w, Spike, when
@@ -88,6 +88,12 @@ func foul(seed uint64, days float64) (*world, Kind, float64) {
 		n := w.changes[0].newton
 		w.changes = append(w.changes, wchange{at: when, late: math.NaN(), newton: []float64{n[0] + size/best, n[1]}})
 		return w, LoadChanged, when
+	case 5:
+		w.happenings = []happening{{gauge: g, from: when, to: when + 86400, inch: true}}
+		return w, UnitKey, when
+	case 6:
+		w.silent = [][2]float64{{when, when + 2400 + 7200*rng.Float64()}}
+		return w, GapKind, when
 	default:
 		w.fallSupport, w.fallAt = math.Abs(size), when
 		return w, SupportShift, when

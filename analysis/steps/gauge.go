@@ -129,7 +129,7 @@ func (g *gauge) scatter() (noise, interval float64) {
 	}
 	floor := floorU(g.res)
 	interval = Median(gaps)
-	if len(spread) > 3 && len(spread) > len(g.seq)/2 {
+	if 2*len(spread) > len(g.seq) {
 		return max(Median(spread), floor), interval
 	}
 	return max(trimmedSigma(second)/math.Sqrt(6), floor), interval
