@@ -66,6 +66,7 @@ func TestAnalyseLadder(t *testing.T) {
 
 func TestPermanentSetIsFound(t *testing.T) {
 	p := ladder()
+	p.coarse = true
 	in := p.input()
 	for i, at := range in.Series[0].TimeH {
 		if at > 168 {
@@ -94,6 +95,7 @@ func TestPermanentSetIsFound(t *testing.T) {
 
 func TestMayStopWhileLoaded(t *testing.T) {
 	p := ladder()
+	p.coarse = true
 	p.steps, p.last = p.steps[:4], 168
 	p.noise = 0.002
 	a, err := Analyse(p.input(), Options{ForecastH: []float64{1680}, TimesH: readTimes})

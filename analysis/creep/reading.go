@@ -33,8 +33,9 @@ type Recovered struct {
 // near reads the compensated sag of the creep gauge at tH: the law plus a
 // straight line in ln(age) through the residuals within an octave each side,
 // so that the law's curvature cannot bias it. age counts from origin; from
-// and to bound the readings that may be used.
-func near(law func(tH float64) float64, f *Fit, tH, origin, from, to float64) (Value, bool) {
+// and to bound the readings that may be used. Compensated readings are f's;
+// the noise is another fit's where f itself is in question.
+func near(law func(tH float64) float64, f, noise *Fit, tH, origin, from, to float64) (Value, bool) {
 	s := &f.sys.in.Series[0]
 	var x, y, u []float64
 	left, right := false, false
@@ -43,7 +44,7 @@ func near(law func(tH float64) float64, f *Fit, tH, origin, from, to float64) (V
 		if t < from || t > to || age < at/2 || age > at*2 {
 			continue
 		}
-		x, y, u = append(x, math.Log(age/at)), append(y, f.CompensatedMM[0][i]-law(t)), append(u, f.Scale*s.U[i])
+		x, y, u = append(x, math.Log(age/at)), append(y, f.CompensatedMM[0][i]-law(t)), append(u, noise.Scale*s.U[i])
 		left, right = left || age <= at*1.05, right || age >= at/1.05
 	}
 	if len(x) < 3 || !left || !right {
@@ -62,7 +63,7 @@ func near(law func(tH float64) float64, f *Fit, tH, origin, from, to float64) (V
 		}
 	}
 	scatter := max(1, sol.ResidualSD())
-	return Value{law(tH) + sol.X[0], math.Hypot(sol.U(0)*scatter, f.SlowMM)}, true
+	return Value{law(tH) + sol.X[0], math.Hypot(sol.U(0)*scatter, noise.SlowMM)}, true
 }
 
 func ones(n int) []float64 {
@@ -77,7 +78,7 @@ func ones(n int) []float64 {
 func (a *Analysis) read(in *Input, o Options) {
 	f := a.Best
 	at := func(h float64) (Value, bool) {
-		return near(f.At, f, in.FullH+h, in.FullH, in.FullH, in.EndH)
+		return near(f.At, f, f, in.FullH+h, in.FullH, in.FullH, in.EndH)
 	}
 	initial, hasInitial := at(in.initialH())
 	if !hasInitial {
@@ -132,12 +133,12 @@ func (a *Analysis) recover(in *Input, loading []*Fit, unload Change, o Options) 
 		return Value{m, math.Hypot(w, s)}
 	}
 	law := func(t float64) float64 { return predict(t).Value }
-	before, ok := near(law, a.Best, unload.AtH-1e-6, in.FullH, in.FullH, unload.AtH)
+	before, ok := near(law, a.Best, b.Best, unload.AtH-1e-6, in.FullH, in.FullH, unload.AtH)
 	if !ok {
 		before = Value{law(unload.AtH - 1e-6), predict(unload.AtH - 1e-6).U}
 	}
 	at := func(h float64) (Recovered, bool) {
-		v, ok := near(law, a.Best, free+h, free, free, last)
+		v, ok := near(law, a.Best, b.Best, free+h, free, free, last)
 		if !ok || before.Value == 0 {
 			return Recovered{}, false
 		}
