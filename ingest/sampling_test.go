@@ -251,11 +251,9 @@ func TestSteadyStateAllocatesNothing(t *testing.T) {
 		{Every: duration(1)},
 		{Dense: duration(1), Around: duration(60), PerDecade: number(50), Longest: duration(900), DeadBand: length(0.005)},
 	} {
-		mem := segmenttest.New()
-		rig := testRig(4, s)
-		rig.Record.Sync = *duration(1e6) // the disk is not what is measured
-		r := mustOpen(t, testOptions(mem, rig))
-		r.filling.entries = make([]entry, 0, 200_000)
+		d, err := OpenDir(t.TempDir(), DirOptions{Virtual: true})
+		must(t, err)
+		r := mustOpen(t, testOptions(d.FS(), testRig(4, s)))
 		at, names := testStart, []string{"g0", "g1", "g2", "g3"}
 		n := 0
 		read := func() {
@@ -269,8 +267,10 @@ func TestSteadyStateAllocatesNothing(t *testing.T) {
 			read()
 		}
 		if a := testing.AllocsPerRun(20_000, read); a != 0 {
-			t.Errorf("%+v: %g allocations a reading", s, a)
+			t.Errorf("%+v: %g allocations a reading, syncs included", s, a)
 		}
+		must(t, r.Close(at))
+		must(t, d.Close())
 	}
 }
 

@@ -62,6 +62,7 @@ type store struct {
 	moved []string
 	// refused counts values that cannot be written as line protocol.
 	refused int64
+	shown   segment.Shown
 }
 
 // commit puts the batch on disk. After an error the batch is kept and given
@@ -168,7 +169,6 @@ func (s *store) put(e *entry, clock segment.ClockState) error {
 	}
 	for {
 		err := s.append(e)
-		var failed *segment.WriteError
 		switch {
 		case err == nil:
 			return nil
@@ -178,7 +178,7 @@ func (s *store) put(e *entry, clock segment.ClockState) error {
 			}
 		case errors.Is(err, segment.ErrClockBack):
 			s.writer.Stamps().Forget()
-		case errors.As(err, &failed):
+		case s.writer.Err() != nil:
 			return err
 		default:
 			s.refused++
@@ -192,11 +192,12 @@ func (s *store) append(e *entry) error {
 	if c.probe {
 		return s.writer.Ambient(c.name, finite(e.mm), finite(e.shown), e.wall)
 	}
-	in := segment.Shown{Gauge: c.name, MM: e.mm, Time: e.wall, Status: e.status}
+	// One value for all: handed over by address, each would be an allocation.
+	s.shown = segment.Shown{Gauge: c.name, MM: e.mm, Time: e.wall, Status: e.status}
 	if e.unit != "" && e.unit != "mm" {
-		in.Shown, in.Unit = e.shown, e.unit
+		s.shown.Shown, s.shown.Unit = e.shown, e.unit
 	}
-	return s.writer.Indication(&in)
+	return s.writer.Indication(&s.shown)
 }
 
 func finite(v float64) float64 {
