@@ -66,7 +66,7 @@ func (r *Recorder) send() {
 			r.writer.todo <- r.inFlight
 			return
 		}
-		r.settle(outcome{batch: r.inFlight, err: r.store.commit(r.inFlight), moved: r.store.takeMoved()})
+		r.settle(outcome{batch: r.inFlight, err: r.store.commit(r.inFlight), moved: r.store.takeMoved(), refused: r.store.takeRefused()})
 		if r.failing {
 			return
 		}
@@ -93,6 +93,8 @@ type outcome struct {
 	batch *batch
 	err   error
 	moved []string
+	// refused counts values that line protocol cannot carry.
+	refused int64
 }
 
 // settle draws the consequences of a commit.
@@ -103,6 +105,9 @@ func (r *Recorder) settle(o outcome) {
 	r.inFlight = nil
 	for _, text := range o.moved {
 		r.happened(Happening{Kind: DiskBack, Detail: text})
+	}
+	if o.refused > 0 {
+		r.happened(Happening{Kind: Dropped, N: o.refused, Detail: "readings dropped: line protocol cannot carry them"})
 	}
 	if o.err != nil {
 		r.fail(o.err)
@@ -186,7 +191,7 @@ func (r *Recorder) flushSync() error {
 			b := r.waiting[0]
 			err := r.store.commit(b)
 			r.inFlight, r.sentAt, r.lastCommit = b, r.now, r.now
-			r.settle(outcome{batch: b, err: err, moved: r.store.takeMoved()})
+			r.settle(outcome{batch: b, err: err, moved: r.store.takeMoved(), refused: r.store.takeRefused()})
 			if err != nil {
 				return fmt.Errorf("%s: %w", faultText(err), err)
 			}

@@ -33,3 +33,10 @@ func (s *store) takeMoved() []string {
 	s.moved = nil
 	return moved
 }
+
+// takeRefused hands over, once, how many values could not be written.
+func (s *store) takeRefused() int64 {
+	n := s.refused
+	s.refused = 0
+	return n
+}

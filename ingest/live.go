@@ -14,7 +14,7 @@ func startWriter(s *store) *writer {
 		defer close(w.gone)
 		for b := range w.todo {
 			err := s.commit(b)
-			w.done <- outcome{batch: b, err: err, moved: s.takeMoved()}
+			w.done <- outcome{batch: b, err: err, moved: s.takeMoved(), refused: s.takeRefused()}
 		}
 	}()
 	return w
