@@ -111,6 +111,9 @@ func scores(seq []point, k int, sigma func(point) float64, res float64) []score 
 			w := va * vb // one of them is 1
 			v *= sq(1+w) + 1 + sq(w)
 		default:
+			if k > 2 {
+				continue // so long a rise may be any slope
+			}
 			v *= 2
 		}
 		s.need = max(jumpSigmas*math.Sqrt(v), jumpCounts*res*coarse) + bend
@@ -245,6 +248,10 @@ func (r *run) findHot() {
 			hot = append(hot, interval{g.seq[lo].from, g.seq[hi].to})
 		}
 		hot = append(hot, excursions(g)...)
+		_, singles := hampel(g, g.seq)
+		for _, t := range singles {
+			hot = append(hot, interval{t.lo, t.hi})
+		}
 	}
 	for _, m := range r.h.Marks {
 		if m.Kind != "load" && m.Kind != "touch" {
@@ -263,7 +270,7 @@ func (r *run) findHot() {
 func (r *run) near() int64 { return max(120*second, 6*nanos(r.interval())) }
 
 // pad is how far beyond a hot stretch readings are taken for comparison.
-func (r *run) pad() int64 { return max(60*second, 12*nanos(r.interval())) }
+func (r *run) pad() int64 { return max(60*second, 30*nanos(r.interval())) }
 
 // interval is the typical spacing of the slowest gauge's readings, s.
 func (r *run) interval() float64 {
