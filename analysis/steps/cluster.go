@@ -104,7 +104,12 @@ func hampel(g *gauge, seq []point) (rest []point, singles []transition) {
 		m := Median(w)
 		// Both sides must agree with each other: a step is no spike.
 		left, right := Median(w[:half-1]), Median(w[half+2:])
-		need := max(5*madScale*MAD(w), 3*g.res*seq[i].f, 6*g.noise*seq[i].f)
+		spread := MAD(w)
+		if spread <= g.res*seq[i].f {
+			// Of two counts the median deviation tells nothing.
+			spread = min(spread, g.noise*seq[i].f/madScale)
+		}
+		need := max(5*madScale*spread, 3*g.res*seq[i].f, 6*g.noise*seq[i].f)
 		bad[i] = math.Abs(seq[i].y-m) > need && math.Abs(left-right) < math.Abs(seq[i].y-m)/3
 	}
 	for i := 0; i < len(seq); i++ {

@@ -123,7 +123,7 @@ func scores(seq []point, k int, sigma func(point) float64, res float64) []score 
 	// The run's own unrest (temperature, vibration) sets a floor of its own.
 	unrest := 0.0
 	if len(abs) >= 30 {
-		unrest = 6 * madScale * Median(abs)
+		unrest = jumpSigmas * trimmedSigma(abs)
 	}
 	for i := range out {
 		s := &out[i]
