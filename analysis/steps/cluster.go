@@ -55,7 +55,7 @@ func (r *run) scanWindow(raw [][]history.Sample) {
 		}
 		flat, singles := hampel(g, pts[gi])
 		all = append(all, singles...)
-		all = append(all, jumps(g, flat, []int{1, 2, 5, 15, 45}, func(p point) float64 { return g.noise * p.f })...)
+		all = append(all, jumps(g, flat, []int{1, 2, 5, 15, 45}, func(p point) float64 { return g.noise * p.f }, 1)...)
 	}
 	sort.SliceStable(all, func(a, b int) bool { return all[a].lo < all[b].lo })
 	join := max(apart, 2*nanos(r.interval()))

@@ -147,8 +147,9 @@ func sq(x float64) float64 { return x * x }
 
 // jumps finds the sudden changes in one gauge's points. Small scales come
 // first, because they tell the place best; a larger one only adds what they
-// could not see.
-func jumps(g *gauge, seq []point, scales []int, sigma func(point) float64) []transition {
+// could not see. least is 1, or less where what is found is only looked at
+// again.
+func jumps(g *gauge, seq []point, scales []int, sigma func(point) float64, least float64) []transition {
 	var found []transition
 	for _, k := range scales {
 		if k > 2 && len(seq) > 1 && float64(k)*seconds(seq[len(seq)-1].t-seq[0].t)/float64(len(seq)-1) > longest {
@@ -157,7 +158,7 @@ func jumps(g *gauge, seq []point, scales []int, sigma func(point) float64) []tra
 		list := scores(seq, k, sigma, g.res)
 		sort.SliceStable(list, func(a, b int) bool { return list[a].ratio > list[b].ratio })
 		for _, s := range list {
-			if s.ratio <= 1 {
+			if s.ratio <= least {
 				break
 			}
 			near := false
@@ -242,7 +243,7 @@ func (r *run) findHot() {
 	for gi := range r.gauges {
 		g := &r.gauges[gi]
 		sigma := func(p point) float64 { return binSigma(g, p) }
-		for _, t := range jumps(g, g.seq, []int{1, 2, 4, 8}, sigma) {
+		for _, t := range jumps(g, g.seq, []int{1, 2, 4, 8}, sigma, 0.75) {
 			pad := 1 + t.scale/2
 			lo, hi := max(0, t.index-pad), min(len(g.seq)-1, t.index+1+pad)
 			hot = append(hot, interval{g.seq[lo].from, g.seq[hi].to})
