@@ -85,16 +85,16 @@ func scores(seq []point, k int, sigma func(point) float64, res float64) []score 
 		l, r := i-k+1, i+1
 		rise, dt := b.y[r]-b.y[l], b.t[r]-b.t[l]
 		var slopes []float64
-		va, vb, vo := 1.0, 1.0, 0.0
+		va, vb := 1.0, 1.0
 		if l-k >= 0 {
 			d := b.t[l] - b.t[l-k]
 			slopes = append(slopes, (b.y[l]-b.y[l-k])/d)
-			va, vo = dt/d, vo+1
+			va = dt / d
 		}
 		if r+k < len(b.y) {
 			d := b.t[r+k] - b.t[r]
 			slopes = append(slopes, (b.y[r+k]-b.y[r])/d)
-			vb, vo = dt/d, vo+1
+			vb = dt / d
 		}
 		s := score{i: i, rise: rise, jump: rise}
 		coarse := max(seq[l].f, seq[i+k].f)

@@ -103,10 +103,10 @@ func (r *run) ramped(s []share, first, done int, lo, hi, mark int64) timing {
 	if done > first {
 		// Part of the change was seen under way: its line gives both ends.
 		t.full = s[done-1].t + (s[done].t-s[done-1].t)/2
-		var x, y, u []float64
+		var x, y []float64
 		for _, v := range s[first:done] {
 			if v.z > 0.05 && v.z < 0.95 {
-				x, y, u = append(x, seconds(v.t-hi)), append(y, v.z), append(u, max(v.u, 0.01))
+				x, y = append(x, seconds(v.t-hi)), append(y, v.z)
 			}
 		}
 		if len(x) >= 3 {

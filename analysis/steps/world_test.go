@@ -55,7 +55,6 @@ type wchange struct {
 	newton   []float64
 	ramp     float64
 	name     string
-	kg       bool
 }
 
 // happening disturbs one gauge's indication (mm in sag) from, to (0: for good).
