@@ -116,8 +116,8 @@ func patternShare(rig *config.Rig, f *steps.Findings, step int, share []float64)
 	return sum / total, total
 }
 
-// series is the creep gauge's track from the first change of load on, without
-// what was read while a load was being placed.
+// series is the creep gauge's track, without what was read while a load was
+// being placed. The baseline is in it: it ties the zero and the temperature.
 func (t *creepTask) series(h *history.History, f *steps.Findings, share []float64, pattern float64) creep.Series {
 	s := creep.Series{Name: h.Rig.Gauges[t.gauge].Name}
 	for _, c := range f.Loads {
@@ -130,7 +130,7 @@ func (t *creepTask) series(h *history.History, f *steps.Findings, share []float6
 	track := f.Tracks[t.gauge]
 	s.ZeroU = track.Baseline.U
 	for _, p := range track.Points {
-		if p.Time <= t.origin || placing(f, p.Time) || !(p.NetU > 0) {
+		if placing(f, p.Time) || !(p.NetU > 0) {
 			continue
 		}
 		at := t.hours(p.Time)

@@ -81,7 +81,8 @@ func creepOf(h *history.History, t *creepTask, step string, a *creep.Analysis) C
 	f := a.Best
 	c.Fit = &CreepFit{RMSmm: f.RMSmm, N: f.N, NEffective: f.NEffective, Lag1: f.Lag1}
 	for _, p := range f.Parameters {
-		c.Fit.AtBound = c.Fit.AtBound || p.AtBound
+		// A Kelvin chain's elements may be 0 without anything being amiss.
+		c.Fit.AtBound = c.Fit.AtBound || p.AtBound && f.Model != creep.KelvinChain
 	}
 	return c
 }

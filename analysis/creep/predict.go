@@ -77,20 +77,24 @@ func (f *Fit) ratio(a float64, ga []float64, b float64, gb []float64) Value {
 }
 
 // Rate returns the law's rate of sag at tH, mm/d, by a central difference
-// over a thousandth of the time since the last change.
+// over a thousandth of the time since the last change. Changes that are not
+// complete before tH do not count: at the instant of an unloading it is the
+// rate just before.
 func (f *Fit) Rate(tH float64) Value {
 	last := math.Inf(-1)
+	var before []Change
 	for _, c := range f.changes {
 		if e := c.AtH + c.RampH; e < tH {
 			last = max(last, e)
+			before = append(before, c)
 		}
 	}
 	h := 1e-3 * (tH - last)
 	if !(h > 0) || math.IsInf(h, 0) {
 		h = 1e-3
 	}
-	a, ga := f.gradient(tH+h, f.changes)
-	b, gb := f.gradient(tH-h, f.changes)
+	a, ga := f.gradient(tH+h, before)
+	b, gb := f.gradient(tH-h, before)
 	for i := range ga {
 		ga[i] = (ga[i] - gb[i]) / (2 * h) * 24
 	}

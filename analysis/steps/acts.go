@@ -133,7 +133,7 @@ func (r *run) acts() {
 // nearestMove returns the cluster nearest to t in which the gauge moved.
 func (r *run) nearestMove(g int, t int64) *cluster {
 	var best *cluster
-	dist := r.near()
+	dist := r.near(t)
 	for i := range r.events {
 		e := &r.events[i]
 		d := max(e.lo-t, t-e.hi, 0)
@@ -196,8 +196,8 @@ func (r *run) weakResponses() {
 // around makes a cluster of the readings on either side of a mark; ok is
 // false where something else happened there.
 func (r *run) around(t int64) (*cluster, bool) {
-	reach := r.near()
-	half := max(10*second, nanos(r.interval()))
+	reach := r.near(t)
+	half := max(10*second, nanos(r.spacing(t)))
 	for i := range r.events {
 		if r.events[i].lo < t+half && r.events[i].hi > t-half {
 			return nil, false

@@ -161,7 +161,7 @@ func (r *run) chooseBaseline() {
 // beside says that a change without a cluster of its own was marked where
 // another one's readings cannot tell the two apart.
 func (r *run) beside(c change) bool {
-	tol := nanos(r.interval())
+	tol := nanos(r.spacing(c.first))
 	for _, j := range r.matched {
 		if j >= 0 && c.last >= r.events[j].lo-tol && c.first <= r.events[j].hi+tol {
 			return true

@@ -32,7 +32,7 @@ type cluster struct {
 // the gauges did there into clusters.
 func (r *run) scan() error {
 	for _, v := range r.hot {
-		raw, err := r.h.Window(v.from-r.pad(), v.to+r.pad())
+		raw, err := r.h.Window(v.from, v.to)
 		if err != nil {
 			return fmt.Errorf("reading back around a jump: %w", err)
 		}
@@ -58,20 +58,25 @@ func (r *run) scanWindow(raw [][]history.Sample) {
 		all = append(all, jumps(g, flat, []int{1, 2, 5, 15, 45}, func(p point) float64 { return g.noise * p.f }, 1)...)
 	}
 	sort.SliceStable(all, func(a, b int) bool { return all[a].lo < all[b].lo })
-	join := max(apart, 2*nanos(r.interval()))
-	if r.interval() > 20 {
-		join = nanos(r.interval())
-	}
 	for i := 0; i < len(all); {
 		c := cluster{lo: all[i].lo, hi: all[i].hi, raw: pts}
 		j := i
-		for j < len(all) && all[j].lo <= c.hi+join {
+		for j < len(all) && all[j].lo <= c.hi+r.join(c.hi) {
 			c.hi = max(c.hi, all[j].hi)
 			j++
 		}
 		r.events = append(r.events, c)
 		i = j
 	}
+}
+
+// join is how soon after one transition another belongs to the same happening.
+func (r *run) join(t int64) int64 {
+	w := nanos(r.spacing(t))
+	if w > apart {
+		return w
+	}
+	return max(apart, 2*w)
 }
 
 // dedupe drops clusters that two overlapping windows both found.
@@ -149,7 +154,7 @@ func (r *run) measure() {
 		for gi := range r.gauges {
 			c.measureGauge(&r.gauges[gi], before, after)
 		}
-		c.gap = seconds(c.hi-c.lo) > 5*r.interval() && c.empty()
+		c.gap = seconds(c.hi-c.lo) > 5*r.spacing(c.lo) && c.empty()
 	}
 }
 

@@ -122,7 +122,7 @@ func knownKind(k Kind) bool {
 
 // ruling returns what a person decided about a cluster, "" for nothing.
 func (r *run) ruling(c *cluster) string {
-	tol := max(120*second, 2*nanos(r.interval()))
+	tol := max(120*second, 2*nanos(r.spacing(c.lo)))
 	for i := range r.rules {
 		u := &r.rules[i]
 		if u.what != "disturbance" || u.at < c.lo-tol || u.at > c.hi+tol {

@@ -258,30 +258,16 @@ func (r *run) findHot() {
 		if m.Kind != "load" && m.Kind != "touch" {
 			continue
 		}
-		hot = append(hot, interval{m.Time - r.near(), m.Time + r.near()})
+		hot = append(hot, interval{m.Time - r.near(m.Time), m.Time + r.near(m.Time)})
 	}
 	for i := range hot {
 		hot[i].from, hot[i].to = max(hot[i].from, r.h.First), min(hot[i].to, r.h.Last)
 	}
 	hot = slices.DeleteFunc(hot, func(v interval) bool { return v.from > v.to })
-	r.hot = merge(hot, r.pad())
-}
-
-// near is how far from a mark single readings are always looked at.
-func (r *run) near() int64 { return max(120*second, 6*nanos(r.interval())) }
-
-// pad is how far beyond a hot stretch readings are taken for comparison.
-func (r *run) pad() int64 { return max(60*second, 30*nanos(r.interval())) }
-
-// interval is the typical spacing of the slowest gauge's readings, s.
-func (r *run) interval() float64 {
-	w := 0.0
-	for i := range r.gauges {
-		if len(r.gauges[i].seq) > 1 {
-			w = max(w, r.gauges[i].interval)
-		}
+	for i := range hot {
+		hot[i].from, hot[i].to = hot[i].from-r.pad(hot[i].from), hot[i].to+r.pad(hot[i].to)
 	}
-	return w
+	r.hot = merge(hot, 0)
 }
 
 // binSigma is the scatter of a bin's median, as a single point's.

@@ -68,7 +68,7 @@ func (r *run) findStuck() {
 		}
 	}
 	for _, s := range r.stuckRuns {
-		tol := max(2*nanos(r.interval()), 2*second)
+		tol := max(2*nanos(r.spacing(s.from)), 2*second)
 		for i := range r.events {
 			e := &r.events[i]
 			if e.hi >= s.from-tol && e.lo <= s.to+tol {

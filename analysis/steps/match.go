@@ -47,7 +47,7 @@ func (r *run) reach(i int) float64 {
 		next = r.changes[i+1].mark()
 	}
 	hold = min(hold, seconds(next-at), seconds(at-prev))
-	return max(120, hold/3, 3*r.interval())
+	return max(120, hold/3, 3*r.spacing(at))
 }
 
 // matchChanges gives each marked change the cluster that answers it. Order is

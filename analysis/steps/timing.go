@@ -140,13 +140,13 @@ func (r *run) shares(c *cluster) []share {
 		j := c.jump[g].MM
 		u := max(gg.noise, floorU(gg.res)) / math.Abs(j)
 		for _, p := range c.raw[g] {
-			if p.t >= c.lo-60*second-12*nanos(gg.interval) && p.t <= c.hi+120*second+12*nanos(gg.interval) {
+			if p.t >= c.lo-60*second-12*nanos(gg.spacing(c.lo)) && p.t <= c.hi+120*second+12*nanos(gg.spacing(c.hi)) {
 				all = append(all, share{p.t, (p.y - base(p.t)) / j, u})
 			}
 		}
 	}
 	sort.SliceStable(all, func(a, b int) bool { return all[a].t < all[b].t })
-	return combine(all, nanos(r.interval()/20))
+	return combine(all, nanos(r.spacing(c.lo)/20))
 }
 
 // combine averages shares taken within tol of one another.
@@ -193,7 +193,7 @@ func levelBefore(pts []point, lo int64, g *gauge) (func(int64) float64, bool) {
 // aftermath is the level behind a change as a function of time: a straight
 // line in the logarithm of the time since, from the settled readings.
 func (r *run) aftermath(s []share, c *cluster, since int64) func(int64) float64 {
-	h := max(r.interval(), 1e-3)
+	h := max(r.spacing(c.hi), 1e-3)
 	var x, y, u []float64
 	for _, v := range s {
 		if v.t > c.hi && len(x) < 60 {

@@ -120,7 +120,7 @@ func (r *run) stepCells(k int) ([][]point, error) {
 func (r *run) edges(k int) []int64 {
 	s := r.out.Steps[k]
 	widest := max((r.h.Last-r.h.First)/mostPoints, second)
-	least := max(nanos(r.interval()), second)
+	least := max(nanos(r.spacing(max(s.Full, s.From))), second)
 	end := s.To
 	if k == len(r.out.Steps)-1 {
 		end++ // the last reading counts
