@@ -8,9 +8,16 @@ import (
 	"gaugelog/ingest/segment"
 )
 
-// writeNew makes a file that must not exist, durable with its name in dir.
+// writeNew makes a file, durable with its name in dir. It appears whole or not
+// at all: a power cut may leave any bytes in a file that was being written.
 func writeNew(fsys segment.FS, dir, name string, text []byte) error {
-	f, err := fsys.Create(name)
+	partial := name + ".partial"
+	if exists(fsys, partial) {
+		if err := fsys.Remove(partial); err != nil {
+			return fmt.Errorf("writing %s: %w", name, err)
+		}
+	}
+	f, err := fsys.Create(partial)
 	if err != nil {
 		return err
 	}
@@ -20,6 +27,9 @@ func writeNew(fsys segment.FS, dir, name string, text []byte) error {
 	}
 	if cerr := f.Close(); err == nil {
 		err = cerr
+	}
+	if err == nil {
+		err = fsys.Rename(partial, name)
 	}
 	if err == nil {
 		err = fsys.SyncDir(dir)

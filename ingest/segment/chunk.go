@@ -65,9 +65,7 @@ func splitBlocks(text []byte, items []item) []item {
 		line := text[from:to]
 		p = to + 1
 		if h, err := parseHeader(line); err == nil {
-			if lost := from - done; lost > 0 && int64(lost) != h.Torn {
-				items = append(items, item{kind: itemLoss, from: done, to: from, why: "no whole block"})
-			}
+			items = passOver(items, from, &h)
 			items = append(items, item{kind: itemHeader, from: from, to: p, h: h})
 			done = p
 			continue
@@ -98,6 +96,35 @@ func splitBlocks(text []byte, items []item) []item {
 		items = append(items, item{kind: itemTail, from: done, to: len(text)})
 	}
 	return items
+}
+
+// passOver takes back what lies in the torn stretch before the header at from:
+// a writer that saw its sync fail may have left a whole block there, which
+// stands again behind the header. Bytes before that stretch that nothing
+// accounts for are a loss. The comment that the header follows always stays.
+func passOver(items []item, from int, h *header) []item {
+	cut := from - int(min(h.Torn, int64(from)))
+	n := len(items)
+	for n > 0 && items[n-1].from >= cut && !items[n-1].is(h.after) {
+		n--
+	}
+	items = items[:n]
+	end := 0
+	if n > 0 {
+		if last := &items[n-1]; last.kind == itemLoss {
+			last.to = min(last.to, cut)
+		}
+		end = items[n-1].to
+	}
+	if end < cut {
+		items = append(items, item{kind: itemLoss, from: end, to: cut, why: "no whole block"})
+	}
+	return items
+}
+
+// is tells whether the item is the comment of that self.
+func (it *item) is(self uint32) bool {
+	return it.kind == itemHeader && it.h.self == self || it.kind == itemBlock && it.c.self == self
 }
 
 // lastCut returns the end (behind the newline) of the last valid comment in

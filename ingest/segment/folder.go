@@ -28,6 +28,8 @@ type segFile struct {
 	// limit is how many bytes of text count, -1 for all: less where a later
 	// segment wrote the end again.
 	limit int64
+	// torn are the stretches of a log that its headers say do not count.
+	torn [][2]int64
 	// index is the frame index of a compressed segment, nil where it has none.
 	index *frameIndex
 	// damage found on opening.
@@ -176,6 +178,11 @@ func (d *Folder) holdsBlock(f *segFile) bool {
 // comments hands the items of an own file to see, in order, until it returns
 // false.
 func (d *Folder) comments(f *segFile, see func(item) bool) error {
+	return d.commentsAt(f, func(it item, _ int64) bool { return see(it) })
+}
+
+// commentsAt does as well, with where in the file the item begins.
+func (d *Folder) commentsAt(f *segFile, see func(it item, at int64) bool) error {
 	file, err := d.fs.Open(f.name)
 	if err != nil {
 		return err
@@ -191,12 +198,13 @@ func (d *Folder) comments(f *segFile, see func(item) bool) error {
 		s.size = info.Size()
 	}
 	for {
+		base := s.off
 		chunk, final, err := s.next(nil)
 		if err != nil {
 			return err
 		}
 		for _, it := range splitBlocks(chunk, nil) {
-			if !see(it) {
+			if !see(it, base+int64(it.from)) {
 				return nil
 			}
 		}

@@ -4,6 +4,8 @@ import (
 	"fmt"
 	"hash/crc32"
 	"io"
+	"io/fs"
+	"os"
 	"path"
 )
 
@@ -13,7 +15,7 @@ import (
 // one lock during Append. An unfinished tail that another process (or an error)
 // left is never parsed nor cut off: the next header says how long it is.
 type Log struct {
-	fs     FS
+	fsys   FS
 	name   string
 	header Header
 
@@ -23,6 +25,8 @@ type Log struct {
 	block int64
 	// last is the header in force at good, nil where there is none.
 	last *header
+	// file is what the last Append saw of the file, to know it again.
+	file fs.FileInfo
 	// failed is where the file may end at most if nobody wrote behind an Append
 	// of ours that failed; 0 where the last one succeeded.
 	failed int64
@@ -47,7 +51,7 @@ func OpenLog(fs FS, name string, h Header) (*Log, error) {
 	if err := h.check(); err != nil {
 		return nil, err
 	}
-	return &Log{fs: fs, name: name, header: h}, nil
+	return &Log{fsys: fs, name: name, header: h}, nil
 }
 
 // Append writes entries and returns when they are on disk, with the state of
@@ -59,12 +63,16 @@ func (l *Log) Append(clock ClockState, entries ...Entry) error {
 	if len(entries) == 0 {
 		return nil
 	}
-	f, err := l.fs.Append(l.name)
+	f, err := l.fsys.Append(l.name)
 	if err != nil {
 		return &WriteError{l.name, "create", l.good, err}
 	}
+	before := *l
 	err = l.append(f, clock, entries)
 	if cerr := f.Close(); err == nil && cerr != nil {
+		// A file may be synced by its closing: then nothing of it counts.
+		after := l.good
+		l.good, l.chain, l.block, l.last, l.failed = before.good, before.chain, before.block, before.last, after
 		err = &WriteError{l.name, "close", l.good, cerr}
 	}
 	return err
@@ -76,6 +84,12 @@ func (l *Log) append(f File, clock ClockState, entries []Entry) error {
 		return &WriteError{l.name, "stat", l.good, err}
 	}
 	size := info.Size()
+	if replaced := l.file != nil && l.file.Sys() != nil && !os.SameFile(l.file, info); replaced || size < l.good {
+		// Somebody put another file there, or cut it. What stands in it now
+		// counts; refusing would end the recording for the sake of its log.
+		l.good, l.chain, l.block, l.last, l.failed = 0, 0, 0, nil, 0
+	}
+	l.file = info
 	if err := l.catchUp(f, size); err != nil {
 		return err
 	}
@@ -133,7 +147,7 @@ func (l *Log) put(f File, size int64, b []byte) error {
 		return &WriteError{l.name, "sync", l.good, err}
 	}
 	if l.good == 0 {
-		if err := l.fs.SyncDir(path.Dir(l.name)); err != nil {
+		if err := l.fsys.SyncDir(path.Dir(l.name)); err != nil {
 			return &WriteError{l.name, "sync-dir", l.good, err}
 		}
 	}
@@ -150,8 +164,8 @@ func (l *Log) catchUp(f File, size int64) error {
 			return nil
 		}
 	}
-	if size < l.good {
-		return fmt.Errorf("%s has become shorter (%d bytes, %d were on disk): was it replaced?", l.name, size, l.good)
+	if size == l.good {
+		return nil // nobody else wrote, as nearly always
 	}
 	s := splitter{r: io.NewSectionReader(f, l.good, size-l.good), size: size - l.good}
 	base := l.good

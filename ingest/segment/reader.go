@@ -269,6 +269,9 @@ func (j *job) decode(names *interner) {
 		return
 	}
 	j.items = splitBlocks(j.text, j.items)
+	for _, t := range j.file.torn {
+		j.items = without(j.items, t[0]-j.base, t[1]-j.base)
+	}
 	for i := range j.items {
 		it := &j.items[i]
 		if it.kind == itemTail && !j.final {
@@ -280,6 +283,26 @@ func (j *job) decode(names *interner) {
 		}
 		it.rows, it.more = len(j.batch.Gauge), len(j.batch.Others)
 	}
+}
+
+// without drops the items that lie in a torn stretch of which the header stands
+// in a later chunk; from and to are in the chunk's text, and may lie outside it.
+func without(items []item, from, to int64) []item {
+	kept := items[:0]
+	for _, it := range items {
+		if a, b := int64(it.from), int64(it.to); a < from || b > to {
+			if it.kind == itemLoss || it.kind == itemTail {
+				if a < from && b > from && b <= to {
+					it.to = int(from)
+				}
+				if a >= from && a < to && b > to {
+					it.from = int(to)
+				}
+			}
+			kept = append(kept, it)
+		}
+	}
+	return kept
 }
 
 // decodeForeign takes a chunk without comments: every whole line counts.

@@ -1,6 +1,7 @@
 package segment
 
 import (
+	"fmt"
 	"io"
 	"iter"
 )
@@ -58,6 +59,18 @@ func (d *Folder) Log(name string) ([]Record, *Report, error) {
 	}
 	if err := d.look(&f); err != nil {
 		return nil, nil, err
+	}
+	if f.own && f.size > chunkSize {
+		// A header that passes over what lies before it may stand in another
+		// chunk than that.
+		if err := d.commentsAt(&f, func(it item, at int64) bool {
+			if it.kind == itemHeader && it.h.Torn > 0 {
+				f.torn = append(f.torn, [2]int64{at - it.h.Torn, at})
+			}
+			return true
+		}); err != nil {
+			return nil, nil, fmt.Errorf("%s: %w", name, err)
+		}
 	}
 	one := &Folder{fs: d.fs, files: []segFile{f}, fixes: d.fixes}
 	r := one.Read(ReadOptions{Workers: 1})

@@ -144,7 +144,8 @@ func (v *Verified) sums(fs FS) {
 	}
 }
 
-// grown tells whether sum is the hash of a log up to one of its comments.
+// grown tells whether sum is the hash of a log up to one of its comments, or up
+// to the unfinished tail before one.
 func grown(fs FS, name, sum string) bool {
 	text, err := readWhole(fs, name)
 	if err != nil {
@@ -155,6 +156,14 @@ func grown(fs FS, name, sum string) bool {
 	for _, it := range splitBlocks(text, nil) {
 		if it.kind != itemBlock && it.kind != itemHeader {
 			continue
+		}
+		if it.kind == itemHeader && it.h.Torn > 0 {
+			// It may have been summed with the unfinished tail as its end.
+			h.Write(text[done : it.from-1])
+			done = it.from - 1
+			if hex.EncodeToString(h.Sum(nil)) == sum {
+				return true
+			}
 		}
 		h.Write(text[done:it.to])
 		done = it.to
