@@ -1,7 +1,8 @@
 // Package wire writes the frames a gauge would send, from the frame's
 // description in a rig file alone.
 //
-// It is the simulator's own: nothing of it is shared with the decoders, and it
+// It knows the five kinds of frame: text, nibbles, binary, modbus and scpi. It
+// is the simulator's own: nothing of it is shared with the decoders, and it
 // is written from the description's meaning, not from how they read it. It
 // promises that what it writes has the form described, that it refuses (when
 // built) a description it cannot write, and that appending a frame allocates
@@ -21,11 +22,13 @@ type Value struct {
 	// Shown is the number in Unit, already rounded to the resolution.
 	Shown float64
 	Unit  string // "mm" or "in"
-	// Status is "" or one of the meanings a frame's statuses may have, such
-	// as battery-low; a frame without a status ignores it.
+	// Status is "" or one of the meanings a frame's status may have, such as
+	// hold, battery-low or high-limit; a frame that cannot say it leaves it.
 	Status string
 	// NoReading is "" or the reason for which the instrument has no number,
-	// such as over-range.
+	// such as over-range. Text and scpi frames then send a text instead of
+	// the number; the others set the status that says it, beside a number
+	// that means nothing.
 	NoReading string
 	// Celsius and Percent are a probe's.
 	Celsius, Percent float64
@@ -40,6 +43,11 @@ type Encoder interface {
 	// Request is what an asked instrument answers to; nil for one that
 	// streams.
 	Request() []byte
+	// SaysUnit tells whether the frame itself says mm or in.
+	SaysUnit() bool
+	// Step is the least step, in the unit, of a number that the frame can
+	// say; 0 where it is finer than any gauge shows.
+	Step(unit string) float64
 }
 
 // Instrument is what an encoder needs to know of the gauge or probe.
@@ -55,11 +63,64 @@ type Instrument struct {
 
 // New builds the encoder for a frame.
 func New(f *config.Frame, i Instrument) (Encoder, error) {
+	if i.InchResolution <= 0 {
+		i.InchResolution = i.Resolution / 25.4
+	}
 	switch f.Kind {
 	case "text", "":
 		return newText(f, i)
+	case "nibbles":
+		return newNibbles(f, i)
+	case "binary":
+		return newFixed(f, i)
+	case "modbus":
+		return newRegisters(f, i)
+	case "scpi":
+		return newSCPI(f, i)
 	}
-	return nil, fmt.Errorf("frame %q: the simulator does not write frames of kind %q yet", f.Name, f.Kind)
+	return nil, fmt.Errorf("frame %q: there are no frames of kind %q; known are text, nibbles, binary, modbus and scpi", f.Name, f.Kind)
+}
+
+// Question is what an instrument that understands lines was asked.
+type Question uint8
+
+// What a line may ask.
+const (
+	NoQuestion Question = iota
+	AskedValue
+	AskedIdentity
+)
+
+// Talker is an Encoder of an instrument that understands lines of text, ended
+// by CR or LF, and has a name.
+type Talker interface {
+	Encoder
+	// Understands tells what a line asks for.
+	Understands(line []byte) Question
+	// AppendIdentity appends the answer to *IDN?.
+	AppendIdentity(dst []byte) []byte
+}
+
+// around gives a frame's first and last bytes.
+func around(f *config.Frame) (start, end string, err error) {
+	if start, err = escapes(f.Start); err != nil {
+		return "", "", fmt.Errorf("frame %q: start: %w", f.Name, err)
+	}
+	if end, err = escapes(f.End); err != nil {
+		return "", "", fmt.Errorf("frame %q: end: %w", f.Name, err)
+	}
+	return start, end, nil
+}
+
+// spoken turns texts and their reasons round: the first text of each reason.
+func spoken(noReadings map[string]string) map[string]string {
+	out := map[string]string{}
+	for _, text := range sortedKeys(noReadings) {
+		if _, has := out[noReadings[text]]; !has {
+			out[noReadings[text]] = text
+		}
+	}
+	return out
 }
 
 // request gives the bytes of a frame's request for a channel.
