@@ -24,6 +24,7 @@ func (r *Rig) Check() []Problem {
 	c.plan()
 	c.records()
 	c.limits()
+	c.alarms()
 	c.problems.sort()
 	return c.problems
 }

@@ -40,6 +40,7 @@ func (r *Rig) fillDefaults() {
 		r.Record.Roll.Size = Size{Quantity{Value: 16e6}}
 	}
 	r.duration(&r.Read.InitialAfter, "read.initial_after", 60)
+	r.fillAlarms()
 }
 
 func setDefault(field *string, value string) {

@@ -18,6 +18,7 @@ type Rig struct {
 	Record   Record     `mapstructure:"record"`
 	Read     Read       `mapstructure:"read"`
 	Limits   Limits     `mapstructure:"limits"`
+	Alarms   Alarms     `mapstructure:"alarms"`
 	Evaluate []string   `mapstructure:"evaluate"`
 	Forecast []Duration `mapstructure:"forecast"`
 
