@@ -128,7 +128,7 @@ func (r *Result) addCreep(h *history.History, f *steps.Findings, ei, s float64, 
 		r.Warnings = append(r.Warnings, Warning{Code: "no-creep", Text: fmt.Sprintf("no creep law: %v", err)})
 		return nil
 	}
-	r.Creep = creepOf(h, t, f.Steps[t.step].Name, a)
+	r.Creep = creepOf(h, t, instrument{h.Rig, f.Chord}, f.Steps[t.step].Name, a)
 	r.Drift = driftOf(h, t, a)
 	for _, n := range a.Notes {
 		r.Warnings = append(r.Warnings, Warning{Code: n.Code, Gauge: r.Creep.Gauge, Text: n.Text})

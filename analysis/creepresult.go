@@ -39,7 +39,7 @@ func valueQOrNil(v *creep.Value, unit string) *Q {
 }
 
 // creepOf renders the creep analysis.
-func creepOf(h *history.History, t *creepTask, step string, a *creep.Analysis) Creep {
+func creepOf(h *history.History, t *creepTask, own instrument, step string, a *creep.Analysis) Creep {
 	c := emptyCreep(h.Rig)
 	c.Gauge, c.Step = h.Rig.Gauges[t.gauge].Name, step
 	if a.Best == nil {
@@ -54,10 +54,12 @@ func creepOf(h *history.History, t *creepTask, step string, a *creep.Analysis) C
 			c.Candidates = append(c.Candidates, Candidate{Model: string(m.Model), AICc: m.AICc, Weight: m.Weight})
 		}
 	}
+	initial := initialOf(a)
 	for _, v := range a.After {
+		sag := valueQ(v.Sag, "mm")
 		c.After = append(c.After, After{
-			AfterS: secondsOf(v.AfterH), Sag: valueQ(v.Sag, "mm"), Modelled: v.Modelled,
-			Relative: valueQOrNil(v.Relative, "1"), Coefficient: valueQOrNil(v.Coefficient, "1"),
+			AfterS: secondsOf(v.AfterH), Sag: *own.widen(&sag, t.gauge), Modelled: v.Modelled,
+			Relative: own.relative(v.Relative, t.gauge, initial), Coefficient: own.coefficient(v.Coefficient, t.gauge, initial),
 		})
 	}
 	for _, v := range a.Equivalent {
@@ -68,15 +70,17 @@ func creepOf(h *history.History, t *creepTask, step string, a *creep.Analysis) C
 		MinimumTime: t.instantOf(a.Acceleration.MinimumH), CautionTime: t.instantOf(a.Acceleration.CautionH),
 		ClearAreaTime: t.instantOf(a.Acceleration.ClearAreaH),
 	}
+	before := beforeUnloading(a)
 	for _, v := range a.Recovery {
-		c.Recovery = append(c.Recovery, Recovery{AfterS: secondsOf(v.AfterH), Recovered: valueQ(v.Share, "1"), Residual: valueQ(v.Residual, "mm")})
+		left := valueQ(v.Residual, "mm")
+		c.Recovery = append(c.Recovery, Recovery{AfterS: secondsOf(v.AfterH), Recovered: *own.share(v.Share, t.gauge, before), Residual: *own.widen(&left, t.gauge)})
 	}
 	c.PermanentSet = valueQOrNil(a.PermanentSet, "mm")
 	for i, v := range a.Forecast {
-		c.Forecast = append(c.Forecast, forecastOf(h.Rig, i, v))
+		c.Forecast = append(c.Forecast, forecastOf(h.Rig, own, t.gauge, i, v))
 	}
-	for _, v := range a.MayStop {
-		c.MayStop = append(c.MayStop, MayStop{MoreS: secondsOf(v.MoreH), ForecastWidth: quantity(v.Width, 0, "mm")})
+	for _, v := range append(a.Shrunk, a.MayStop...) {
+		c.MayStop = append(c.MayStop, MayStop{MoreS: secondsOf(v.MoreH), ForecastAfterS: secondsOf(v.ForecastH), ForecastWidth: quantity(v.Width, 0, "mm")})
 	}
 	f := a.Best
 	c.Fit = &CreepFit{RMSmm: f.RMSmm, N: f.N, NEffective: f.NEffective, Lag1: f.Lag1}
@@ -85,6 +89,57 @@ func creepOf(h *history.History, t *creepTask, step string, a *creep.Analysis) C
 		c.Fit.AtBound = c.Fit.AtBound || p.AtBound && f.Model != creep.KelvinChain
 	}
 	return c
+}
+
+// initialOf is the sag that relative creep divides by, mm; 0 where none was read.
+func initialOf(a *creep.Analysis) float64 {
+	for _, v := range a.After {
+		if v.Relative != nil && v.Relative.Value != 0 {
+			return v.Sag.Value / v.Relative.Value
+		}
+	}
+	return 0
+}
+
+// beforeUnloading is the sag that recovery divides by, mm.
+func beforeUnloading(a *creep.Analysis) float64 {
+	for _, v := range a.Recovery {
+		if left := 1 - v.Share.Value; left != 0 {
+			return v.Residual.Value / left
+		}
+	}
+	return 0
+}
+
+// relative widens a ratio to the initial sag; at the initial sag's own time it
+// is 1 by definition and keeps no uncertainty.
+func (n instrument) relative(v *creep.Value, g int, initial float64) *Q {
+	q := valueQOrNil(v, "1")
+	if q == nil || q.Value == 1 {
+		return q
+	}
+	return n.ratio(q, g, initial)
+}
+
+// coefficient is relative less 1 with the same uncertainty.
+func (n instrument) coefficient(v *creep.Value, g int, initial float64) *Q {
+	q := valueQOrNil(v, "1")
+	if q == nil || q.Value == 0 {
+		return q
+	}
+	q.Value++
+	n.ratio(q, g, initial)
+	q.Value--
+	return q
+}
+
+// share widens a recovered share: 1 less a ratio of sags.
+func (n instrument) share(v creep.Value, g int, before float64) *Q {
+	q := valueQ(v, "1")
+	q.Value = 1 - q.Value
+	n.ratio(&q, g, before)
+	q.Value = 1 - q.Value
+	return &q
 }
 
 // secondsOf turns hours back into the seconds they came from.
@@ -98,14 +153,24 @@ func (t *creepTask) instantOf(h *float64) *string {
 	return &s
 }
 
-func forecastOf(rig *config.Rig, i int, v creep.Forecast) Forecast {
+// forecastOf renders a forecast; its limits take the gauge's own uncertainty
+// in by the same coverage factor.
+func forecastOf(rig *config.Rig, own instrument, gauge, i int, v creep.Forecast) Forecast {
 	f := Forecast{AfterS: secondsOf(v.AfterH), Decades: v.Decades, Label: string(v.Label), Refused: v.Refused, ByModel: []ByModel{}}
 	if i < len(rig.Forecast) {
 		f.After = rig.Forecast[i].Shown
 	}
 	if v.Refused == "" {
 		q := valueQ(v.Sag, "mm")
+		k := 2.0
+		if v.Sag.U > 0 {
+			k = (v.Hi - v.Lo) / (2 * v.Sag.U)
+		}
+		own.widen(&q, gauge)
 		lo, hi := v.Lo, v.Hi
+		if q.U != nil {
+			lo, hi = q.Value-k**q.U, q.Value+k**q.U
+		}
 		f.Sag, f.Lo95, f.Hi95 = &q, &lo, &hi
 	}
 	for _, m := range v.ByModel {

@@ -228,10 +228,13 @@ type ByModel struct {
 	Sag   Q      `json:"sag"`
 }
 
-// MayStop is what more time would buy.
+// MayStop is what more time would buy: the width of the 95 % band of the
+// forecast for ForecastAfterS, MoreS later than the creep step's last reading.
+// A negative MoreS looks back: so wide it was at that time.
 type MayStop struct {
-	MoreS         float64 `json:"more_s"`
-	ForecastWidth Q       `json:"forecast_width"`
+	MoreS          float64 `json:"more_s"`
+	ForecastAfterS float64 `json:"forecast_after_s"`
+	ForecastWidth  Q       `json:"forecast_width"`
 }
 
 // Drift is what moved that was neither load nor creep.

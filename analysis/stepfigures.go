@@ -28,6 +28,7 @@ func sag(v *steps.Value) *Q {
 
 // stepsOf renders the steps that were found, with net figures.
 func stepsOf(rig *config.Rig, f *steps.Findings) []Step {
+	own := instrument{rig, f.Chord}
 	out := make([]Step, 0, len(f.Steps))
 	for _, s := range f.Steps {
 		st := Step{
@@ -39,7 +40,7 @@ func stepsOf(rig *config.Rig, f *steps.Findings) []Step {
 			st.Loads[name] = n
 		}
 		for i, g := range s.Gauges {
-			st.Gauges = append(st.Gauges, stepGauge(&rig.Gauges[i], g.Net))
+			st.Gauges = append(st.Gauges, stepGauge(own, i, g.Net))
 		}
 		out = append(out, st)
 	}
@@ -59,15 +60,16 @@ func startOf(s steps.Step) Start {
 	return st
 }
 
-func stepGauge(g *config.Gauge, f steps.Figures) StepGauge {
+func stepGauge(own instrument, i int, f steps.Figures) StepGauge {
+	g := &own.rig.Gauges[i]
 	sg := StepGauge{
 		Gauge: g.Name, AtMM: g.At.Value,
-		Initial: sag(f.Initial), Increment: sag(f.Increment), Final: sag(f.Final),
+		Initial: own.widen(sag(f.Initial), i), Increment: own.widen(sag(f.Increment), i), Final: own.widen(sag(f.Final), i),
 		SagAt: []SagAt{},
 	}
 	for _, a := range f.SagAt {
 		v := a.Value
-		if q := sag(&v); q != nil {
+		if q := own.widen(sag(&v), i); q != nil {
 			sg.SagAt = append(sg.SagAt, SagAt{AfterS: a.AfterS, Sag: *q})
 		}
 	}

@@ -101,11 +101,44 @@ func addCurves(r *Result, rig *config.Rig, f *steps.Findings, e *stiffness.Estim
 		}
 		r.Series.Curve = append(r.Series.Curve, c)
 		if peak, err := e.Largest(k); err == nil {
-			r.Steps[i].Largest = &Largest{At: *expanded(&peak.At, "mm"), Sag: *expanded(&peak.Sag, "mm")}
+			r.Steps[i].Largest = largestOf(rig, r.Steps[i], peak, c)
 		} else {
 			r.Warnings = append(r.Warnings, Warning{Code: "no-greatest-sag", Text: "step " + step.Name + ": " + err.Error()})
 		}
 	}
+}
+
+// largestOf is the greatest total sag: the fitted curve has the shape, and the
+// gauges between the supports say by how much the older steps' creep has
+// lifted all of it. Nil where no gauge can say.
+func largestOf(rig *config.Rig, s Step, peak *stiffness.Peak, c ElasticCurve) *Largest {
+	var sxy, sxx float64
+	for i, g := range s.Gauges {
+		model, ok := curveAt(c, g.AtMM)
+		if !touches(rig.Gauges[i]) || len(rig.Gauges[i].Bar) == 2 || g.Initial == nil || !ok || math.Abs(model) < 0.2*math.Abs(peak.Sag.Value) {
+			continue
+		}
+		sxy += model * g.Initial.Value
+		sxx += model * model
+	}
+	if sxx == 0 {
+		return nil
+	}
+	f := sxy / sxx
+	sag := peak.Sag
+	sag.Value, sag.U, sag.U95 = f*sag.Value, f*sag.U, f*sag.U95
+	return &Largest{At: *expanded(&peak.At, "mm"), Sag: *expanded(&sag, "mm")}
+}
+
+// curveAt reads a drawn curve at a place.
+func curveAt(c ElasticCurve, at float64) (float64, bool) {
+	for i := 1; i < len(c.AtMM); i++ {
+		if at >= c.AtMM[i-1] && at <= c.AtMM[i] {
+			f := (at - c.AtMM[i-1]) / (c.AtMM[i] - c.AtMM[i-1])
+			return c.SagMM[i-1] + f*(c.SagMM[i]-c.SagMM[i-1]), true
+		}
+	}
+	return 0, false
 }
 
 // addIncrements adds a step's gross increments; a gauge that misses one is no

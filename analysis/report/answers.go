@@ -131,13 +131,37 @@ func (b *builder) answerForecast(add func(q, a, s string)) {
 		add(q, b.short(f.Sag), fmt.Sprintf("%s to %s %s for 95 %%; %s decades beyond the data: %s",
 			fixed(*f.Lo95*factor, d), fixed(*f.Hi95*factor, d), unit, fixed(f.Decades, 2), forecastWords(f.Label)))
 	}
-	if m := b.r.Creep.MayStop; len(m) > 0 {
-		var parts []string
-		for _, s := range m {
-			parts = append(parts, span(s.MoreS)+" more: "+b.short(&s.ForecastWidth))
+	b.answerStop(add)
+}
+
+// answerStop says what the band of the farthest forecast was, is and would be.
+func (b *builder) answerStop(add func(q, a, s string)) {
+	var before, later []string
+	var now, far string
+	for _, s := range b.r.Creep.MayStop {
+		width := b.short(&s.ForecastWidth)
+		far = span(s.ForecastAfterS)
+		switch {
+		case s.MoreS < 0:
+			before = append(before, width+" "+span(-s.MoreS)+" earlier")
+		case s.MoreS == 0:
+			now = width
+		default:
+			later = append(later, width+" after "+span(s.MoreS)+" more")
 		}
-		add("May we stop?", "width of the forecast's 95 % band with "+strings.Join(parts, ", "), "from how the band shrinks with time; the decision is the engineer's")
 	}
+	if now == "" {
+		return
+	}
+	a := "the law's 95 % band for " + far + " is " + now + " wide"
+	if len(later) > 0 {
+		a += "; it would be " + strings.Join(later, ", ")
+	}
+	sure := "the gauge's own uncertainty comes on top; the decision is the engineer's"
+	if len(before) > 0 {
+		sure = "it was " + strings.Join(before, ", ") + "; " + sure
+	}
+	add("May we stop?", a, sure)
 }
 
 func forecastWords(label string) string {

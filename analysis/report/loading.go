@@ -15,7 +15,17 @@ func (b *builder) steps() Section {
 	if len(b.r.Steps) == 0 {
 		return s
 	}
-	s.Blocks = append(s.Blocks, b.stepTable(), b.sagTable())
+	s.Blocks = append(s.Blocks, b.stepTable())
+	for _, t := range []struct {
+		caption, says string
+		of            func(g analysis.StepGauge) *analysis.Q
+	}{
+		{"Initial sag", "", func(g analysis.StepGauge) *analysis.Q { return g.Initial }},
+		{"Increment of initial sag", "The initial sag less the older steps' creep carried forward to that instant.", func(g analysis.StepGauge) *analysis.Q { return g.Increment }},
+		{"Final sag", "At the end of each step.", func(g analysis.StepGauge) *analysis.Q { return g.Final }},
+	} {
+		s.Blocks = append(s.Blocks, b.sagTable(t.caption, t.says, t.of))
+	}
 	if f, ok := b.loadSagFigure(); ok {
 		s.Blocks = append(s.Blocks, f)
 	}
@@ -61,19 +71,33 @@ func (b *builder) loadsOf(st analysis.Step) string {
 	return strings.Join(parts, ", ")
 }
 
-func (b *builder) sagTable() Table {
-	t := Table{Caption: "Sag of each gauge by step", Columns: []Column{
-		{Name: "Step", Text: true}, {Name: "Gauge", Text: true}, {Name: "Initial", Unit: b.u.of("mm")}, {Name: "u", Unit: b.u.of("mm")},
-		{Name: "Increment", Unit: b.u.of("mm")}, {Name: "Final", Unit: b.u.of("mm")}}}
-	for _, st := range b.r.Steps {
-		for _, g := range st.Gauges {
-			if g.Initial == nil && g.Final == nil {
-				continue
-			}
-			t.Rows = append(t.Rows, []string{st.Step, g.Gauge, b.cell(g.Initial), b.cellU(g.Initial), b.cell(g.Increment), b.cell(g.Final)})
+// sagTable is one figure of every gauge (columns) in every loaded step (rows).
+func (b *builder) sagTable(caption, says string, of func(analysis.StepGauge) *analysis.Q) Table {
+	t := Table{Caption: caption + ", " + b.u.of("mm"), Columns: []Column{{Name: "Step", Text: true}}}
+	if len(b.r.Steps) > 0 {
+		for _, g := range b.r.Steps[0].Gauges {
+			t.Columns = append(t.Columns, Column{Name: g.Gauge})
 		}
 	}
-	t.Says = "Increment: initial less the older steps' creep carried forward to that instant. Final: at the end of the step."
+	worst := 0.0
+	for _, st := range b.r.Steps {
+		if st.Response == nil && st.Start.Marked == nil {
+			continue
+		}
+		row := []string{st.Step}
+		for _, g := range st.Gauges {
+			q := of(g)
+			row = append(row, b.cell(q))
+			if q != nil && q.U != nil {
+				worst = max(worst, *q.U*b.factor("mm"))
+			}
+		}
+		t.Rows = append(t.Rows, row)
+	}
+	t.Says = says
+	if worst > 0 {
+		t.Says += " Standard uncertainties are at most " + significant(worst, 2) + " " + b.u.of("mm") + "."
+	}
 	return t
 }
 
