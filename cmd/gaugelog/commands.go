@@ -12,6 +12,7 @@ import (
 func commands() []*cobra.Command {
 	return []*cobra.Command{
 		demoCommand(), newCommand(), checkCommand(), portsCommand(), simulateCommand(),
+		calibrateCommand(),
 		recordCommand(), markCommand(),
 		analyseCommand(), reportCommand(), verifyCommand(),
 	}
