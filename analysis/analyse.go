@@ -123,6 +123,7 @@ func (r *Result) addCreep(h *history.History, f *steps.Findings, ei, s float64, 
 	}
 	opt := creepOptions(h.Rig)
 	opt.Beyond = o.Beyond
+	opt.ForecastH = append(opt.ForecastH, drawnForecasts(h.Rig, t.in.EndH-t.in.FullH)...)
 	a, err := creep.Analyse(t.in, opt)
 	if err != nil {
 		r.Warnings = append(r.Warnings, Warning{Code: "no-creep", Text: fmt.Sprintf("no creep law: %v", err)})

@@ -1,7 +1,9 @@
 package analysis
 
 import (
+	"cmp"
 	"math"
+	"slices"
 
 	"gaugelog/analysis/creep"
 	"gaugelog/analysis/history"
@@ -26,6 +28,23 @@ func creepOptions(rig *config.Rig) creep.Options {
 		o.ForecastH = append(o.ForecastH, t.Value/3600)
 	}
 	return o
+}
+
+// drawnForecasts are times between the data's end and the farthest forecast
+// within two decades, h, so that the plot's line beyond the data is smooth.
+func drawnForecasts(rig *config.Rig, lastH float64) []float64 {
+	far := 0.0
+	for _, t := range rig.Forecast {
+		if h := t.Value / 3600; h <= 100*lastH {
+			far = max(far, h)
+		}
+	}
+	var out []float64
+	const n = 16
+	for i := 1; i < n && far > lastH; i++ {
+		out = append(out, lastH*math.Pow(far/lastH, float64(i)/n))
+	}
+	return out
 }
 
 func valueQ(v creep.Value, unit string) Q { return quantity(v.Value, v.U, unit) }
@@ -76,7 +95,7 @@ func creepOf(h *history.History, t *creepTask, own instrument, step string, a *c
 		c.Recovery = append(c.Recovery, Recovery{AfterS: secondsOf(v.AfterH), Recovered: *own.share(v.Share, t.gauge, before), Residual: *own.widen(&left, t.gauge)})
 	}
 	c.PermanentSet = valueQOrNil(a.PermanentSet, "mm")
-	for i, v := range a.Forecast {
+	for i, v := range a.Forecast[:min(len(a.Forecast), len(h.Rig.Forecast))] {
 		c.Forecast = append(c.Forecast, forecastOf(h.Rig, own, t.gauge, i, v))
 	}
 	for _, v := range append(a.Shrunk, a.MayStop...) {
@@ -222,6 +241,7 @@ func addLaw(r *Result, h *history.History, t *creepTask, a *creep.Analysis) {
 			r.Series.Law = append(r.Series.Law, LawPoint{AfterS: after, SagMM: v, Lo95: lo, Hi95: hi})
 		}
 	}
+	slices.SortFunc(a.Forecast, func(x, y creep.Forecast) int { return cmp.Compare(x.AfterH, y.AfterH) })
 	for _, f := range a.Forecast {
 		if f.Refused == "" && f.AfterH*3600 > last {
 			r.Series.Law = append(r.Series.Law, LawPoint{AfterS: f.AfterH * 3600, SagMM: f.Sag.Value, Lo95: f.Lo, Hi95: f.Hi, Beyond: true})

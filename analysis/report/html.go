@@ -8,6 +8,7 @@ import (
 	"io"
 	"regexp"
 
+	"gonum.org/v1/plot"
 	"gonum.org/v1/plot/vg"
 	"gonum.org/v1/plot/vg/draw"
 	"gonum.org/v1/plot/vg/vgsvg"
@@ -63,6 +64,25 @@ func columnLabel(c Column) string {
 	return c.Name + ", " + c.Unit
 }
 
+// legendWidth is kept free beside a plot that has a legend, so that the legend
+// never lies on the data.
+const legendWidth = 30 * vg.Millimeter
+
+// drawFigure draws a plot with its legend on the right.
+func drawFigure(p *plot.Plot, c draw.Canvas) {
+	legend := p.Legend
+	defer func() { p.Legend = legend }()
+	roomy(p)
+	box := legend.Rectangle(c)
+	if box.Max.X-box.Min.X <= 0 {
+		p.Draw(c)
+		return
+	}
+	p.Legend = plot.NewLegend()
+	p.Draw(draw.Crop(c, 0, -legendWidth, 0, 0))
+	legend.Draw(draw.Crop(c, c.Max.X-c.Min.X-legendWidth+vg.Points(6), 0, 0, -vg.Points(4)))
+}
+
 var (
 	svgHead = regexp.MustCompile(`(?s)^.*?<svg [^>]*viewBox="([^"]*)"[^>]*>`)
 	svgFont = regexp.MustCompile(`font-family:[^;"]*`)
@@ -73,7 +93,7 @@ var (
 func svgOf(f Figure) (template.HTML, error) {
 	w, h := vg.Length(f.Width)*vg.Millimeter, vg.Length(f.Height)*vg.Millimeter
 	c := vgsvg.New(w, h)
-	f.Plot.Draw(draw.New(c))
+	drawFigure(f.Plot, draw.New(c))
 	var buf bytes.Buffer
 	if _, err := c.WriteTo(&buf); err != nil {
 		return "", fmt.Errorf("plot %s: %w", f.ID, err)

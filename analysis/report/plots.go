@@ -12,24 +12,28 @@ import (
 	"gaugelog/analysis"
 )
 
-// loadSagFigure plots total load against initial sag, one line a gauge: the
-// model's values as the line, the readings as points.
+// loadSagFigure plots total load against sag, one line a gauge: the fitted
+// beam as the line, the readings as points. Both are free of the older steps'
+// creep, or a straight beam would seem bent.
 func (b *builder) loadSagFigure() (Figure, bool) {
 	mm, n := b.factor("mm"), b.factor("N")
 	p := newPlot("sag, "+b.u.of("mm"), "total load, "+b.u.of("N"))
+	loads := map[string]float64{}
+	for _, st := range b.r.Steps {
+		loads[st.Step] = total(st) * n
+	}
 	any := false
 	for i, g := range b.spanGauges() {
-		var points, model plotter.XYs
-		model = append(model, plotter.XY{})
-		for _, st := range b.r.Steps {
-			load := total(st) * n
-			for _, sg := range st.Gauges {
-				if sg.Gauge == g && sg.Initial != nil && st.Response != nil {
-					points = append(points, plotter.XY{X: sg.Initial.Value * mm, Y: load})
+		model, points := plotter.XYs{{}}, plotter.XYs{}
+		for _, c := range b.r.Series.Curve {
+			at := b.placeOf(g)
+			for j, x := range c.PointAtMM {
+				if x == at {
+					points = append(points, plotter.XY{X: c.PointMM[j] * mm, Y: loads[c.Step]})
 				}
 			}
-			if v, ok := b.modelAt(st.Step, g); ok {
-				model = append(model, plotter.XY{X: v * mm, Y: load})
+			if v, ok := interpolate(c.AtMM, c.SagMM, at); ok {
+				model = append(model, plotter.XY{X: v * mm, Y: loads[c.Step]})
 			}
 		}
 		if len(points) == 0 {
@@ -39,10 +43,19 @@ func (b *builder) loadSagFigure() (Figure, bool) {
 		addLine(p, model, lineStyle(i), "")
 		addPoints(p, points, glyphStyle(i), g)
 	}
-	p.Legend.Top, p.Legend.Left = false, false
 	return Figure{ID: "load-sag", Width: 170, Height: 95, Plot: p,
-		Caption: fmt.Sprintf("Load against sag, %s after full load of each step. Points: readings; lines: the fitted beam.", span(b.r.Stiffness.InitialAfterS)),
+		Caption: fmt.Sprintf("Load against sag, %s after full load of each step, without the older steps' creep. Points: readings; lines: the fitted beam.", span(b.r.Stiffness.InitialAfterS)),
 		Alt:     "Total load against the sag of each gauge at every step, with the fitted beam as lines."}, any
+}
+
+// placeOf is where a gauge stands along the beam.
+func (b *builder) placeOf(gauge string) float64 {
+	for _, g := range b.r.Series.Gauges {
+		if g.Gauge == gauge {
+			return g.AtMM
+		}
+	}
+	return math.NaN()
 }
 
 // spanGauges are the gauges that see the beam, in order along it.
@@ -62,22 +75,6 @@ func total(st analysis.Step) float64 {
 		sum += st.Loads[k]
 	}
 	return sum
-}
-
-// modelAt reads the fitted curve of a step at a gauge.
-func (b *builder) modelAt(step, gauge string) (float64, bool) {
-	at := math.NaN()
-	for _, g := range b.r.Series.Gauges {
-		if g.Gauge == gauge {
-			at = g.AtMM
-		}
-	}
-	for _, c := range b.r.Series.Curve {
-		if c.Step == step {
-			return interpolate(c.AtMM, c.SagMM, at)
-		}
-	}
-	return 0, false
 }
 
 // interpolate reads y at x on a line through points sorted by x.
@@ -108,7 +105,6 @@ func (b *builder) curveFigure() (Figure, bool) {
 		addPoints(p, points, glyphStyle(i), "")
 	}
 	b.addSupports(p, mm)
-	p.Legend.Top, p.Legend.Left = false, true
 	return Figure{ID: "curve", Width: 170, Height: 85, Plot: p,
 		Caption: "The beam's shape, much exaggerated. Lines: the fitted beam; markers: gauges; triangles on the zero line: supports.",
 		Alt:     "Sag along the beam for each load step with the gauges' readings on the fitted curves."}, len(b.r.Series.Curve) > 0
@@ -141,7 +137,7 @@ func (b *builder) historyFigure() (Figure, bool) {
 		}
 		name := g.Gauge
 		if g.Sees != "beam" && g.Sees != "" {
-			name += " (" + g.Sees + ")"
+			name += ", " + g.Sees
 		}
 		addLine(p, line, lineStyle(i), name)
 	}
@@ -189,9 +185,9 @@ func (b *builder) creepFigure() (Figure, bool) {
 		beyond = append(plotter.XYs{inside[len(inside)-1]}, beyond...)
 	}
 	addBand(p, x, lo, hi)
-	addPoints(p, points, draw.GlyphStyle{Color: ink, Radius: vg.Points(1.1), Shape: draw.CircleGlyph{}}, "readings, "+b.r.Creep.Gauge)
+	addPoints(p, points, draw.GlyphStyle{Color: ink, Radius: vg.Points(1.1), Shape: draw.CircleGlyph{}}, "readings")
 	addLine(p, inside, draw.LineStyle{Color: shades[1], Width: vg.Points(1.4)}, "law")
-	addLine(p, beyond, draw.LineStyle{Color: shades[1], Width: vg.Points(1.4), Dashes: dashes[1]}, "law beyond the data")
+	addLine(p, beyond, draw.LineStyle{Color: shades[1], Width: vg.Points(1.4), Dashes: dashes[1]}, "beyond the data")
 	return Figure{ID: "creep-log", Width: 170, Height: 95, Plot: p,
 		Caption: "Creep against logarithmic time after full load. Shaded: 95 % band of the law; dashed: beyond the data.",
 		Alt:     "Sag of the creep gauge against logarithmic time with the fitted law and its band."}, true

@@ -1,6 +1,7 @@
 package report
 
 import (
+	"fmt"
 	"image/color"
 	"math"
 
@@ -41,14 +42,55 @@ func newPlot(x, y string) *plot.Plot {
 		a.Padding = vg.Points(3)
 	}
 	p.X.Label.Text, p.Y.Label.Text = x, y
+	p.X.Tick.Marker, p.Y.Tick.Marker = niceTicks{}, niceTicks{}
 	p.Legend.TextStyle.Font = sans(8)
-	p.Legend.ThumbnailWidth = vg.Points(22)
-	p.Legend.Top = true
+	p.Legend.TextStyle.Color = ink
+	p.Legend.ThumbnailWidth = vg.Points(20)
+	p.Legend.Padding = vg.Points(3)
+	p.Legend.Top, p.Legend.Left = true, true
 	grid := plotter.NewGrid()
 	grid.Horizontal.Color, grid.Vertical.Color = faint, faint
 	grid.Horizontal.Width, grid.Vertical.Width = vg.Points(0.4), vg.Points(0.4)
 	p.Add(grid)
 	return p
+}
+
+// niceTicks marks about six round values: 1, 2 or 5 times a power of ten.
+type niceTicks struct{}
+
+// Ticks returns the marks between lo and hi.
+func (niceTicks) Ticks(lo, hi float64) []plot.Tick {
+	if !(hi > lo) {
+		return []plot.Tick{{Value: lo, Label: fmt.Sprintf("%.4g", lo)}}
+	}
+	raw := (hi - lo) / 6
+	power := math.Pow(10, math.Floor(math.Log10(raw)))
+	step := 10 * power
+	for _, m := range []float64{1, 2, 5} {
+		if m*power >= raw {
+			step = m * power
+			break
+		}
+	}
+	decimals := max(0, -int(math.Floor(math.Log10(step)+1e-9)))
+	var out []plot.Tick
+	for k := math.Ceil(lo/step - 1e-9); k*step <= hi+1e-9*step; k++ {
+		out = append(out, plot.Tick{Value: k * step, Label: fixed(k*step, decimals)})
+	}
+	return out
+}
+
+// roomy widens the ranges a little, so that no marker is cut by the frame.
+func roomy(p *plot.Plot) {
+	for _, a := range []*plot.Axis{&p.X, &p.Y} {
+		if _, logarithmic := a.Scale.(plot.LogScale); logarithmic {
+			f := math.Pow(a.Max/a.Min, 0.03)
+			a.Min, a.Max = a.Min/f, a.Max*f
+			continue
+		}
+		d := 0.03 * (a.Max - a.Min)
+		a.Min, a.Max = a.Min-d, a.Max+d
+	}
 }
 
 // sagDown turns the axis so that sag grows downwards, as the beam goes.
