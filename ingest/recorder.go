@@ -3,6 +3,7 @@ package ingest
 import (
 	"errors"
 	"fmt"
+	"strings"
 	"sync/atomic"
 	"time"
 
@@ -44,7 +45,8 @@ type Options struct {
 	Amendments int
 	// Run is the id of a new run; empty: a random one. A run that goes on keeps its own.
 	Run string
-	// Program names the program and version in the files' headers; may be empty.
+	// Program names the program and version in the files' headers; may be
+	// empty. What a header cannot carry, such as blanks, becomes a hyphen.
 	Program string
 	// Clock tells whether the wall clock can be believed, and the boot id.
 	Clock Clock
@@ -209,9 +211,19 @@ func (r *Recorder) layChannels() {
 	r.dropped = make([]loss, len(r.channels))
 }
 
+// headerWord makes a text into one word of printable ASCII.
+func headerWord(text string) string {
+	return strings.Map(func(c rune) rune {
+		if c <= ' ' || c >= 0x7f {
+			return '-'
+		}
+		return c
+	}, text)
+}
+
 func (r *Recorder) openStore(found *folder) error {
 	state := r.o.Clock.State()
-	header := segment.Header{Run: found.run, Boot: state.BootID, Rig: found.rigSum, Program: r.o.Program, Clock: r.clockState()}
+	header := segment.Header{Run: found.run, Boot: state.BootID, Rig: found.rigSum, Program: headerWord(r.o.Program), Clock: r.clockState()}
 	r.sealer = newSealer(r.o.FS, r.o.Compress)
 	s := &store{fs: r.o.FS, header: header, channels: r.channels,
 		rollSize: int64(r.o.Rig.Record.Roll.Size.Value), rollAge: int64(r.o.Rig.Record.Roll.Age.Value * 1e9),

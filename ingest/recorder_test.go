@@ -1,6 +1,7 @@
 package ingest
 
 import (
+	"bytes"
 	"errors"
 	"fmt"
 	"io/fs"
@@ -327,5 +328,18 @@ func TestWear(t *testing.T) {
 	t.Logf("%.1f bytes a reading, %.1f MB a day, 8640 syncs a day", each, each*8*86400/1e6)
 	if each > 60 {
 		t.Errorf("%.1f bytes a reading; a line has 49, and its share of the checkpoints should be under 11", each)
+	}
+}
+
+// TestProgramOfAnyName: what names the program must not keep it from recording.
+func TestProgramOfAnyName(t *testing.T) {
+	mem := segmenttest.New()
+	o := testOptions(mem, testRig(1, config.Sampling{All: true}))
+	o.Program = "development build"
+	r := mustOpen(t, o)
+	must(t, r.Close(later(testStart, time.Second)))
+	head, _, _ := bytes.Cut(mem.Bytes("readings/000001.lp"), []byte("\n"))
+	if !bytes.Contains(head, []byte(" program=development-build ")) {
+		t.Errorf("the header says %q", head)
 	}
 }

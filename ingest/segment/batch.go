@@ -9,6 +9,8 @@ package segment
 type Batch struct {
 	// File is the segment the records come from, its name in the run folder.
 	File string
+	// Foreign says that the segment carries none of this format's comments.
+	Foreign bool
 	// Gauge is the number of the gauge in Reader.Gauges.
 	Gauge []uint16
 	// Micro is the indication in millionths of a mm; float64(Micro)/1e6 is the

@@ -60,7 +60,7 @@ func (m *merger) damage(d Damage) { m.report.Damage = append(m.report.Damage, d)
 
 func (m *merger) merge(j *job) {
 	b := &j.batch
-	b.File = j.file.name
+	b.File, b.Foreign = j.file.name, !j.file.own
 	if j.first {
 		m.chain, m.chained, m.hurt, m.boot, m.prev, m.last, m.end, m.sealed = 0, false, false, j.file.header.Boot, nil, 0, nil, false
 		m.report.Damage = append(m.report.Damage, j.file.damage...)

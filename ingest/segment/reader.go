@@ -1,8 +1,6 @@
 package segment
 
 import (
-	"errors"
-	"io"
 	"math"
 	"runtime"
 	"sync"
@@ -95,25 +93,16 @@ func (d *Folder) Read(opts ReadOptions) *Reader {
 // Next returns the next batch that holds a record, io.EOF behind the last.
 // Damage is no error: it is left out and stands in Report.
 func (r *Reader) Next() (*Batch, error) {
-	for {
-		if r.held != nil {
-			r.free <- r.held
-			r.held = nil
-		}
-		if r.closed {
-			return nil, errors.New("the reader is closed")
-		}
-		j, ok := <-r.order
-		if !ok {
-			return nil, io.EOF
-		}
-		<-j.done
-		r.held = j
-		r.merger.merge(j)
-		if j.batch.Len() > 0 {
-			return &j.batch, nil
-		}
+	if r.held != nil {
+		r.free <- r.held
+		r.held = nil
 	}
+	j, err := r.advance()
+	if err != nil {
+		return nil, err
+	}
+	r.held = j
+	return &j.batch, nil
 }
 
 // Gauges names the gauges by their numbers in a Batch, as far as they are known.

@@ -1,0 +1,132 @@
+//go:build campaign && linux
+
+package main
+
+import (
+	"errors"
+	"fmt"
+	"os"
+	"path/filepath"
+	"strings"
+	"sync"
+	"testing"
+	"time"
+
+	"github.com/creack/pty"
+	"golang.org/x/sys/unix"
+	"golang.org/x/term"
+)
+
+// feeder plays streaming gauges on pseudo-terminals. The n-th frame of each
+// gauge shows n thousandths of a millimetre, so that every stored reading says
+// which one it is; a frame the terminal has no room for is sent later, never
+// left out. It outlives the recorders that read from it.
+type feeder struct {
+	gauges []*fedGauge
+	stop   chan struct{}
+	done   sync.WaitGroup
+}
+
+type fedGauge struct {
+	name          string
+	master, slave *os.File
+	next          int
+	pending       []byte
+}
+
+// newFeeder starts gauges that send rate frames a second each.
+func newFeeder(t *testing.T, gauges, rate int) *feeder {
+	t.Helper()
+	f := &feeder{stop: make(chan struct{})}
+	for i := range gauges {
+		master, slave, err := pty.Open()
+		if err != nil {
+			t.Fatal(err)
+		}
+		// The open slave keeps the terminal alive between two recorders.
+		if _, err := term.MakeRaw(int(slave.Fd())); err != nil {
+			t.Fatal(err)
+		}
+		if err := unix.SetNonblock(int(master.Fd()), true); err != nil {
+			t.Fatal(err)
+		}
+		f.gauges = append(f.gauges, &fedGauge{name: fmt.Sprintf("g%d", i), master: master, slave: slave, next: 1})
+	}
+	f.done.Go(func() { f.feed(rate) })
+	t.Cleanup(func() {
+		close(f.stop)
+		f.done.Wait()
+		for _, g := range f.gauges {
+			g.master.Close()
+			g.slave.Close()
+		}
+	})
+	return f
+}
+
+func (f *feeder) feed(rate int) {
+	const every = 10 * time.Millisecond
+	tick := time.NewTicker(every)
+	defer tick.Stop()
+	began, sent := time.Now(), 0
+	for {
+		select {
+		case <-f.stop:
+			return
+		case <-tick.C:
+		}
+		due := int(time.Since(began).Seconds() * float64(rate))
+		for range min(due-sent, rate/10+1) {
+			for _, g := range f.gauges {
+				g.send()
+			}
+		}
+		sent = due
+	}
+}
+
+// send writes the next frame, or what is left of the last one.
+func (g *fedGauge) send() {
+	if len(g.pending) == 0 {
+		g.pending = fmt.Appendf(g.pending, "%+09.3f\r\n", float64(g.next)/1000)
+		g.next++
+	}
+	n, err := unix.Write(int(g.master.Fd()), g.pending)
+	if err != nil && !errors.Is(err, unix.EAGAIN) {
+		return
+	}
+	g.pending = g.pending[max(0, n):]
+}
+
+// ready takes back the exclusive use that a killed recorder left on the ports.
+func (f *feeder) ready(t *testing.T) {
+	t.Helper()
+	for _, g := range f.gauges {
+		if err := unix.IoctlSetInt(int(g.slave.Fd()), unix.TIOCNXCL, 0); err != nil {
+			t.Fatal(err)
+		}
+	}
+}
+
+// write leaves a rig file and the list of its ports in dir.
+func (f *feeder) write(t *testing.T, dir, record string) (rig, ports string) {
+	t.Helper()
+	var r, p strings.Builder
+	fmt.Fprint(&r, "specimen: {name: fed, section: {shape: rectangle, width: 140 mm, depth: 38 mm}, length: 800 mm}\n"+
+		"supports: [{name: left, at: 0 mm}, {name: right, at: 600 mm}]\n"+
+		"loads: [{name: pan, at: 300 mm}]\n"+
+		`frames: [{name: fed, kind: text, end: "\r\n", pattern: '(?P<value>[+-]\d{4}\.\d{3})', unit: mm, line: {baud: 115200, data_bits: 8, parity: none, stop_bits: 1}}]`+
+		"\ngauges:\n")
+	for i, g := range f.gauges {
+		fmt.Fprintf(&r, "  - {name: %s, at: %d mm, port: %s, frame: fed, sense: down, resolution: 0.001 mm}\n", g.name, 10+10*i, g.slave.Name())
+		fmt.Fprintf(&p, "%s %s\n", g.slave.Name(), g.slave.Name())
+	}
+	fmt.Fprintf(&r, "record: %s\n", record)
+	rig, ports = filepath.Join(dir, "rig.yaml"), filepath.Join(dir, "ports.txt")
+	for name, text := range map[string]string{rig: r.String(), ports: p.String()} {
+		if err := os.WriteFile(name, []byte(text), 0o644); err != nil {
+			t.Fatal(err)
+		}
+	}
+	return rig, ports
+}
