@@ -55,6 +55,8 @@ func (s *Sim) instruments(rig *config.Rig, truth *Truth, seed uint64) error {
 			return err
 		}
 		g.gauge = newGaugeTruth(c, t, truth)
+		g.gauge.speak(g.encoder, s.frame(rig, c.Frame).Unit)
+		g.value.Unit = g.gauge.unit
 		s.stands = append(s.stands, c.Stand)
 	}
 	for i := range rig.Probes {
@@ -80,13 +82,39 @@ func (s *Sim) instruments(rig *config.Rig, truth *Truth, seed uint64) error {
 	return nil
 }
 
+// frame finds a frame's description; nil where the rig has none of the name.
+func (s *Sim) frame(rig *config.Rig, name string) *config.Frame {
+	for i := range rig.Frames {
+		if rig.Frames[i].Name == name {
+			return &rig.Frames[i]
+		}
+	}
+	return nil
+}
+
+// speak makes the gauge show what its frames can say: steps no finer than
+// theirs, and their unit where they name none.
+func (d *gaugeTruth) speak(e wire.Encoder, unit string) {
+	coarser := func(resolution *float64, step float64) {
+		// A ratio that is whole but for rounding leaves the resolution as it is.
+		if ratio := *resolution / step; step > 0 && (ratio < 0.5 || math.Abs(ratio-math.Round(ratio)) > 1e-6) {
+			*resolution = step * math.Max(1, math.Round(*resolution/step))
+		}
+	}
+	coarser(&d.resolution, e.Step("mm"))
+	coarser(&d.inches, e.Step("in"))
+	d.bothUnits = e.SaysUnit()
+	if !d.bothUnits && unit != "" {
+		d.unit = unit
+	}
+}
+
 // instrument makes one instrument, with its encoder and its port.
 func (s *Sim) instrument(rig *config.Rig, truth *Truth, seed uint64, name, port, frame string, own *config.Line, what wire.Instrument) (*instrument, error) {
-	i := slices.IndexFunc(rig.Frames, func(f config.Frame) bool { return f.Name == frame })
-	if i < 0 {
+	f := s.frame(rig, frame)
+	if f == nil {
 		return nil, fmt.Errorf("%s: the rig file describes no frame %q; the simulator needs to know what to send", name, frame)
 	}
-	f := &rig.Frames[i]
 	encoder, err := wire.New(f, what)
 	if err != nil {
 		return nil, fmt.Errorf("%s: %w", name, err)
@@ -95,7 +123,7 @@ func (s *Sim) instrument(rig *config.Rig, truth *Truth, seed uint64, name, port,
 	if own != nil {
 		line = *own
 	}
-	g := &instrument{name: name, place: len(s.gauges), encoder: encoder, random: stream(seed, name), clock: 1}
+	g := &instrument{sim: s, name: name, frame: frame, channel: what.Channel, place: len(s.gauges), encoder: encoder, random: stream(seed, name), clock: 1}
 	g.port = s.port(portName(port, name), name, line)
 	g.phase = g.random.Float64()
 	g.jitter = 0.002
@@ -110,7 +138,13 @@ func (s *Sim) instrument(rig *config.Rig, truth *Truth, seed uint64, name, port,
 	if f.Every != nil {
 		g.least = nanoseconds(f.Every.Value)
 	}
-	g.value.Unit = "mm"
+	if f.Timeout != nil {
+		g.timeout = nanoseconds(f.Timeout.Value)
+	}
+	g.button, g.counts.Name, g.value.Unit = f.Button, name, "mm"
+	g.ends = g.encoder.Ends()
+	_, g.calls = g.encoder.(wire.Registers)
+	_, g.talks = g.encoder.(wire.Talker)
 	s.gauges = append(s.gauges, g)
 	return g, nil
 }
@@ -124,7 +158,7 @@ func (s *Sim) port(name, gauge string, line_ config.Line) int {
 		}
 	}
 	s.ports = append(s.ports, Port{Name: name, Gauges: []string{gauge}, Line: line_})
-	s.lines = append(s.lines, line{batch: Batch{Port: name, Index: len(s.lines)}})
+	s.lines = append(s.lines, &line{batch: Batch{Port: name, Index: len(s.lines)}})
 	return len(s.ports) - 1
 }
 

@@ -137,6 +137,9 @@ func (t *Truth) check() error {
 	return errors.Join(errs...)
 }
 
+// statusWords are what a status may say, as in a rig file's frames.
+var statusWords = []string{"hold", "battery-low", "over-range", "under-range", "high-limit", "low-limit", "error"}
+
 func (f Fault) check() error {
 	needs, known := faultNeeds[f.Kind]
 	if !known {
@@ -170,10 +173,15 @@ func (f Fault) check() error {
 			missing = "delay (above 0)"
 		case need == 'i' && f.Limit == nil:
 			missing = "limit"
+		case need == 'w' && !slices.Contains(statusWords, f.Status):
+			missing = "status: " + strings.Join(statusWords, ", ")
 		}
 		if missing != "" {
 			return fmt.Errorf("a %s needs %s", f.Kind, missing)
 		}
+	}
+	if f.Every < 0 || f.Every > 0 && !(f.For > 0) {
+		return fmt.Errorf("every must be above 0 and needs for")
 	}
 	if f.Share != nil && !(*f.Share >= 0 && *f.Share <= 1) {
 		return fmt.Errorf("share lies in 0..1, not %g", *f.Share)

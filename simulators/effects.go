@@ -32,7 +32,8 @@ type FaultTruth struct {
 	From, To int64
 	// Gauges are those it touched.
 	Gauges []string
-	// Frames counts the frames it touched so far (line faults).
+	// Frames counts the frames sent while it was in force on their gauge or,
+	// for faults of a line, those it touched, so far.
 	Frames int
 	// MM is the jump of the apparent sag it made, for a zero pressed; NaN is
 	// never used, 0 where it has not happened yet.
@@ -41,8 +42,8 @@ type FaultTruth struct {
 
 // schedule lays the faults out.
 func (s *Sim) schedule(faults *Faults, seed uint64) error {
-	for i := range s.lines {
-		s.lines[i].random = stream(seed, "line "+s.ports[i].Name)
+	for i, l := range s.lines {
+		l.random = stream(seed, "line "+s.ports[i].Name)
 	}
 	for i, f := range faults.Faults {
 		if err := s.lay(f); err != nil {
@@ -86,8 +87,10 @@ func (s *Sim) lay(f Fault) error {
 		return s.changeLoad(f, at)
 	case SupportMove:
 		return s.moveSupport(f, at)
-	case Garble, DropBytes, Stall, Unplug, Echo, LateReply:
+	case Garble, DropBytes, Stall, Unplug, Echo, LateReply, Noise, Endless:
 		return s.layLine(f, e)
+	case Press:
+		return s.layPress(f, e)
 	}
 	touched := 0
 	for _, g := range s.gauges {
@@ -96,6 +99,9 @@ func (s *Sim) lay(f Fault) error {
 		}
 		if g.probe != nil && f.Kind != BatteryLow && f.Kind != OverRange {
 			continue
+		}
+		if f.Kind == UnitKey && !g.gauge.bothUnits {
+			return fmt.Errorf("the frame of %s does not say its unit: nobody could tell that its key was pressed", g.name)
 		}
 		own := *e
 		own.gauge = g
@@ -181,10 +187,34 @@ func (s *Sim) layLine(f Fault, e *effect) error {
 	return nil
 }
 
+// layPress lays out the presses of a gauge's button.
+func (s *Sim) layPress(f Fault, e *effect) error {
+	i := slices.IndexFunc(s.gauges, func(g *instrument) bool { return g.name == f.Gauge })
+	if i < 0 {
+		return fmt.Errorf("there is no gauge %q", f.Gauge)
+	}
+	g := s.gauges[i]
+	if !g.button {
+		return fmt.Errorf("%s has no button to send with: its frame does not say button: true", f.Gauge)
+	}
+	at, every := e.from, nanoseconds(float64(f.Every))
+	g.presses = append(g.presses, at)
+	for every > 0 && at+every < min(e.to, s.end) {
+		at += every
+		g.presses = append(g.presses, at)
+	}
+	slices.Sort(g.presses)
+	e.to = at + 1
+	g.effects = append(g.effects, e)
+	e.gauge, e.truth.Gauges = g, []string{g.name}
+	return nil
+}
+
 // settle works out which effects on a gauge are in force at an instant.
 func (s *Sim) settle(g *instrument, at int64) {
 	st := gaugeState{unit: g.gauge.unit, low: g.gauge.low, high: g.gauge.high, zero: g.state.zero}
 	g.change = forever
+	g.live = g.live[:0]
 	for _, e := range g.effects {
 		for _, t := range []int64{e.from, e.to} {
 			if t > at {
@@ -195,6 +225,9 @@ func (s *Sim) settle(g *instrument, at int64) {
 			continue
 		}
 		in := at < e.to
+		if in {
+			g.live = append(g.live, e)
+		}
 		switch e.kind {
 		case GaugeKnock, StandKnock:
 			st.shift += e.size
@@ -216,6 +249,10 @@ func (s *Sim) settle(g *instrument, at int64) {
 			st.unit = map[string]string{"mm": "in", "in": "mm"}[st.unit]
 		case Freeze:
 			st.frozen = true
+		case Hold:
+			st.frozen, st.status = true, "hold"
+		case ShowStatus:
+			st.status = e.truth.Fault.Status
 		case EndOfTravel:
 			if g.gauge.offset+g.gauge.gain*g.gauge.preset <= e.limit {
 				st.high = math.Min(st.high, e.limit)
@@ -227,6 +264,9 @@ func (s *Sim) settle(g *instrument, at int64) {
 		case OverRange:
 			st.none = "over-range"
 		}
+	}
+	if !g.encoder.Says(st.status) {
+		st.status = ""
 	}
 	g.state = st
 }

@@ -34,6 +34,11 @@ type Fault struct {
 	Delay Seconds `yaml:"delay"`
 	// Name is the device name a port comes back under; default its own.
 	Name string `yaml:"name"`
+	// Status is the word a gauge's status says: hold, battery-low,
+	// over-range, under-range, high-limit, low-limit or error.
+	Status string `yaml:"status"`
+	// Every repeats a press of the button until For is over.
+	Every Seconds `yaml:"every"`
 }
 
 // The kinds of Fault.
@@ -56,12 +61,18 @@ const (
 	BatteryLow  = "battery-low"   // the frame says so, where it can
 	LateReply   = "late-reply"    // answers come Delay late
 	OverRange   = "over-range"    // the gauge sends its text for no reading
+	Hold        = "hold"          // a gauge keeps its indication and says so
+	ShowStatus  = "status"        // a gauge's status says Status for a time
+	Press       = "press"         // the button of a gauge that waits for it
+	Noise       = "noise"         // bytes of no meaning before the frames
+	Endless     = "endless"       // a stream without terminator instead of frames
 )
 
 // faultNeeds says which keys a kind needs: g gauge, s stand, p a gauge or a
-// port, l load, u support, f for, z size, b by, d delay, i limit.
+// port, l load, u support, f for, z size, b by, d delay, i limit, w status.
 var faultNeeds = map[string]string{
 	Spike: "gfz", GaugeKnock: "gz", StandKnock: "sz", PowerOff: "f", ZeroPressed: "g", UnitKey: "g",
 	Freeze: "gf", EndOfTravel: "gi", LoadChange: "lb", SupportMove: "uz", Garble: "pf", DropBytes: "pf",
 	Stall: "pf", Unplug: "pf", Echo: "pf", BatteryLow: "g", LateReply: "pfd", OverRange: "gf",
+	Hold: "gf", ShowStatus: "gfw", Press: "g", Noise: "pf", Endless: "pf",
 }

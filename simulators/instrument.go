@@ -9,12 +9,17 @@ import (
 
 // instrument is a gauge or a probe at work.
 type instrument struct {
+	sim     *Sim
 	name    string
-	place   int // in the rig, for ties
-	port    int
-	encoder wire.Encoder
-	random  *rand.Rand
-	value   wire.Value
+	frame   string // of the rig file
+	channel string
+	// elsewhere is true where another rig speaks for it (Join).
+	elsewhere bool
+	place     int // in the rig, for ties
+	port      int
+	encoder   wire.Encoder
+	random    *rand.Rand
+	value     wire.Value
 	// showedMM is what the value is in mm (a probe: degree Celsius).
 	showedMM float64
 
@@ -25,13 +30,22 @@ type instrument struct {
 	jitter    float64 // s
 	least     int64   // ns, of a gauge that is asked
 	paces     []pace
-	late      bool // the frame due has been delayed already
+	late      bool  // the frame due has been delayed already
+	overdue   bool  // beyond the time anyone waits for it
+	timeout   int64 // ns that one waits for an answer
+	button    bool
+	calls     bool    // a Modbus slave
+	talks     bool    // understands lines
+	presses   []int64 // still to come, in order
+	ends      int     // bytes of the frame's terminator
 
 	probe *probeTruth
 	gauge gaugeTruth
 
 	effects []*effect
-	change  int64 // when the set of effects in force next changes
+	live    []*effect // in force now
+	change  int64     // when the set of effects in force next changes
+	counts  Counts
 	state   gaugeState
 }
 
@@ -45,6 +59,7 @@ type gaugeTruth struct {
 	resolution, inches float64
 	low, high          float64
 	unit               string
+	bothUnits          bool // its frames say mm or in
 	climate            []climate
 	climateAtStart     float64
 	onBeam             bool
@@ -76,6 +91,9 @@ func (g *instrument) begin(paces []pace) {
 	g.paces = paces
 	g.base = int64(g.phase * float64(g.interval(0)))
 	g.due = g.base + int64(g.jitter*g.random.Float64()*1e9)
+	if g.button {
+		g.due = g.nextPress()
+	}
 	g.change = 0
 	g.state = gaugeState{unit: g.gauge.unit, low: g.gauge.low, high: g.gauge.high}
 }
@@ -94,7 +112,11 @@ func (g *instrument) interval(at int64) int64 {
 // advance sets the next frame's instant. Where the pace changes before it, it
 // starts anew in step with the new pace.
 func (g *instrument) advance() {
-	g.late = false
+	g.late, g.overdue = false, false
+	if g.button {
+		g.due = g.nextPress()
+		return
+	}
 	next := g.base + int64(float64(g.interval(g.base))*g.clock)
 	for _, p := range g.paces {
 		if p.from > g.base && p.from <= next {
@@ -106,6 +128,16 @@ func (g *instrument) advance() {
 	g.due = next + int64(g.jitter*g.random.Float64()*1e9)
 }
 
+// nextPress takes the next press of the button.
+func (g *instrument) nextPress() int64 {
+	if len(g.presses) == 0 {
+		return forever
+	}
+	at := g.presses[0]
+	g.presses = g.presses[1:]
+	return at
+}
+
 // delayed puts a frame off once where replies are late, and says that it did.
 func (g *instrument) delayed(l *line, at int64) bool {
 	if g.late {
@@ -114,7 +146,7 @@ func (g *instrument) delayed(l *line, at int64) bool {
 	for _, e := range l.touch {
 		if e.kind == LateReply && e.on(at, g) {
 			e.truth.Frames++
-			g.late = true
+			g.late, g.overdue = true, g.timeout > 0 && e.delay >= g.timeout
 			g.due += e.delay
 			return true
 		}
@@ -135,11 +167,12 @@ func (s *Sim) show(g *instrument, at int64) {
 		return
 	}
 	noise := g.gauge.noise * g.random.NormFloat64()
+	g.value.Status, g.value.NoReading = g.state.status, g.state.none
 	if g.state.frozen {
 		return
 	}
 	shown := s.indication(g, t, noise)
-	g.value.Status, g.value.NoReading, g.value.Unit = g.state.status, g.state.none, g.state.unit
+	g.value.Unit = g.state.unit
 	if g.state.unit == "in" {
 		g.value.Shown = math.Round(shown/25.4/g.gauge.inches) * g.gauge.inches
 		g.showedMM = g.value.Shown * 25.4

@@ -20,7 +20,20 @@ type Frame struct {
 	// Damaged is true where a line fault touched the frame's bytes, or where
 	// it carries no number.
 	Damaged bool
+	// Doubtful is true where the frame's bytes are whole, but something
+	// beside them is not: noise before it, a frame before it that lost its
+	// end, an answer later than its time-out. A reader may take it, and then
+	// it says MM, or refuse it.
+	Doubtful bool
+	// NoReading is true where the frame is whole and says that there is no
+	// number; it is Damaged too.
+	NoReading bool
+	// Status is what the frame's status says, where the frame can say it.
+	Status string
 }
+
+// Intact tells whether the frame is whole, readable and holds a number.
+func (f *Frame) Intact() bool { return !f.Damaged && !f.Doubtful }
 
 // Batch is what one port sends in one stretch of time. Its slices belong to
 // the Sim and are overwritten by the next call of Next.
@@ -70,6 +83,7 @@ type Event struct {
 	Name string // Plugged
 	Mark *Mark  // MarkDue
 	Boot string // PowerBack: the new boot id, 32 hexadecimal digits
+	Rig  int    // whose event it is, where several rigs run together (Join)
 }
 
 // Mark is an entry as the operator would type it: every load that the step

@@ -3,6 +3,7 @@ package simulators
 import (
 	"fmt"
 	"hash/fnv"
+	"io"
 	"math/rand/v2"
 	"slices"
 	"time"
@@ -28,6 +29,10 @@ type Options struct {
 	// Beyond lets the gauges go on for so long after the plan's end, under
 	// its last loads, as a recording does; real time wants this long.
 	Beyond time.Duration
+	// Frames, if set, gets one JSON line for every frame sent: its gauge,
+	// instant, value in mm and state. What goes wrong in writing is told by
+	// [Sim.WriteTruth].
+	Frames io.Writer
 }
 
 // Port is one simulated serial port.
@@ -42,7 +47,7 @@ type Sim struct {
 	start    Instant
 	asked    bool
 	ports    []Port
-	lines    []line
+	lines    []*line       // one may be shared with another Sim (Join)
 	gauges   []*instrument // in the rig's order, gauges before probes
 	queue    queue
 	events   []dueEvent // sorted by time; what is left
@@ -61,18 +66,7 @@ type Sim struct {
 	turn     int64   // ns an asked gauge takes to answer
 	end      int64
 	stretch  Stretch
-}
-
-// line is what is being sent on a port.
-type line struct {
-	sent   int64
-	batch  Batch
-	frames int    // sent
-	lost   int    // sent while nobody could read
-	down   bool   // unplugged
-	heard  []byte // of a request not yet whole
-	touch  []*effect
-	random *rand.Rand
+	frames   *frameLog // nil: not wanted
 }
 
 // boot is one life of the recorder's computer.
@@ -111,6 +105,9 @@ func New(o Options) (*Sim, error) {
 	var err error
 	if s.timeline, err = newTimeline(o.Rig, o.Truth, s.gravity); err != nil {
 		return nil, err
+	}
+	if o.Frames != nil {
+		s.frames = &frameLog{to: o.Frames, start: s.start.Wall}
 	}
 	s.timeline.extend(o.Beyond.Seconds())
 	s.end = nanoseconds(s.timeline.end)
@@ -173,9 +170,7 @@ func (s *Sim) build(o Options, faults *Faults) error {
 	}
 	for _, g := range s.gauges {
 		g.begin(paces)
-		if !s.asked || !g.askedFor() {
-			s.queue.push(g)
-		}
+		s.enqueue(g)
 	}
 	return nil
 }

@@ -55,7 +55,14 @@ func (s *Sim) Lost(port int) int { return s.lines[port].lost }
 // specimen, one for each step, each sag at the times asked (s after each
 // step's full load; those that lie within it) and each fault. Times are
 // seconds from the start and wall-clock nanoseconds since 1970 UTC.
+//
+// The lines of kind gauge count each instrument's frames ([Counts]); what the
+// recording must hold is all that are intact. An error of [Options.Frames] is
+// returned too.
 func (s *Sim) WriteTruth(w io.Writer, times []float64) error {
+	if s.frames != nil && s.frames.err != nil {
+		return fmt.Errorf("frames log: %w", s.frames.err)
+	}
 	enc := json.NewEncoder(w)
 	modulus, bending, shear := s.Stiffness()
 	type object = map[string]any
@@ -92,6 +99,10 @@ func (s *Sim) WriteTruth(w io.Writer, times []float64) error {
 	for _, f := range s.log {
 		lines = append(lines, object{"kind": "fault", "fault": f.Fault.Kind, "from_s": seconds(f.From), "to_s": seconds(f.To),
 			"from_unix_ns": s.start.Wall + f.From, "gauges": f.Gauges, "frames": f.Frames, "mm": f.size(), "load": f.Fault.Load, "by": f.Fault.By.Shown})
+	}
+	for _, c := range s.Counts() {
+		lines = append(lines, object{"kind": "gauge", "gauge": c.Name, "due": c.Due(), "intact": c.Intact, "doubtful": c.Doubtful,
+			"no_reading": c.NoReading, "damaged": c.Damaged, "silent": c.Silent, "lost": c.Lost})
 	}
 	for i, p := range s.ports {
 		lines = append(lines, object{"kind": "port", "port": p.Name, "gauges": p.Gauges, "bytes": s.lines[i].sent,

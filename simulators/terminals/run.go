@@ -10,7 +10,7 @@ import (
 
 // Live runs a simulation in real time on pseudo-terminals.
 type Live struct {
-	sim  *simulators.Sim
+	sim  simulators.Source
 	bank *Bank
 	// Event, if set before Run, is called for every event of the schedule,
 	// with the path a port came back under. It must not block for long.
@@ -24,7 +24,7 @@ type Live struct {
 
 // NewLive opens a pseudo-terminal for every port of the simulation, which
 // should have been made with Options.Asked. Close must be called.
-func NewLive(sim *simulators.Sim) (*Live, error) {
+func NewLive(sim simulators.Source) (*Live, error) {
 	l := &Live{sim: sim, started: make(chan struct{})}
 	var names []string
 	for _, p := range sim.Ports() {

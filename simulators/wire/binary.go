@@ -5,6 +5,7 @@ import (
 	"encoding/hex"
 	"fmt"
 	"math"
+	"slices"
 	"strings"
 
 	"gaugelog/config"
@@ -102,6 +103,14 @@ func (b *fixed) Step(string) float64 {
 	}
 	return math.Abs(b.scale)
 }
+
+// Says tells whether a flag can say a word.
+func (b *fixed) Says(status string) bool {
+	return slices.ContainsFunc(b.flags, func(f config.Flag) bool { return f.Means == status })
+}
+
+// Ends is 0: the length ends the frame.
+func (b *fixed) Ends() int { return 0 }
 
 // Append writes one frame.
 func (b *fixed) Append(dst []byte, v *Value) ([]byte, bool) {

@@ -112,6 +112,12 @@ func (r *registers) Step(string) float64 {
 	return math.Abs(r.scale)
 }
 
+// Says tells whether a status bit can say a word.
+func (r *registers) Says(status string) bool { return r.status >= 0 && r.bits[status] != 0 }
+
+// Ends is 0: the length ends the answer.
+func (r *registers) Ends() int { return 0 }
+
 // Append writes the answer to Request.
 func (r *registers) Append(dst []byte, v *Value) ([]byte, bool) {
 	var room [mostRegisters]uint16

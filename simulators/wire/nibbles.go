@@ -173,6 +173,18 @@ func (n *nibbles) SaysUnit() bool { return n.unit != nil }
 // Step is the least step of a number in a unit.
 func (n *nibbles) Step(unit string) float64 { return math.Pow10(-n.decimals[unit]) }
 
+// Says tells whether the status nibble can say a word.
+func (n *nibbles) Says(status string) bool {
+	if n.status == nil {
+		return false
+	}
+	_, known := n.status.codes[status]
+	return known
+}
+
+// Ends is how many bytes the terminator has.
+func (n *nibbles) Ends() int { return len(n.end) }
+
 // Append writes one frame.
 func (n *nibbles) Append(dst []byte, v *Value) ([]byte, bool) {
 	var room [64]byte

@@ -83,6 +83,12 @@ func (s *scpi) SaysUnit() bool { return false }
 // Step is 0: the answer has eight significant digits.
 func (s *scpi) Step(string) float64 { return 0 }
 
+// Says is false: the answer is a number alone.
+func (s *scpi) Says(string) bool { return false }
+
+// Ends is how many bytes the terminator has.
+func (s *scpi) Ends() int { return len(s.end) }
+
 // Append writes one answer.
 func (s *scpi) Append(dst []byte, v *Value) ([]byte, bool) {
 	switch said, known := s.none[v.NoReading]; {

@@ -95,6 +95,12 @@ func (t *text) checkPattern(f *config.Frame) error {
 // Request returns the bytes the instrument answers to.
 func (t *text) Request() []byte { return t.request }
 
+// Says tells whether the status group can say a word.
+func (t *text) Says(status string) bool { _, known := t.status[status]; return known }
+
+// Ends is how many bytes the terminator has.
+func (t *text) Ends() int { return len(t.end) }
+
 // Append writes one frame.
 func (t *text) Append(dst []byte, v *Value) ([]byte, bool) {
 	begin := len(dst)

@@ -48,6 +48,11 @@ type Encoder interface {
 	// Step is the least step, in the unit, of a number that the frame can
 	// say; 0 where it is finer than any gauge shows.
 	Step(unit string) float64
+	// Says tells whether the frame's status can say a word.
+	Says(status string) bool
+	// Ends is how many bytes the frame's terminator has; 0 for a frame that
+	// ends by its length or by silence.
+	Ends() int
 }
 
 // Instrument is what an encoder needs to know of the gauge or probe.
