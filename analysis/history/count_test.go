@@ -34,7 +34,7 @@ func TestCountsGiveExactMedians(t *testing.T) {
 			list = append(list, Sample{int64(i) * second, float64(v) / 1e6})
 			x = append(x, float64(v)/1e6)
 		}
-		bins, _ := binSamples(list, float64(quantum)/1e6, []int64{0, int64(n) * second})
+		bins, _ := binSamples(list, float64(quantum)/1e6, &grid{edges: []int64{0, int64(n) * second}})
 		if len(bins) != 1 || bins[0].N != n {
 			t.Fatalf("%d bins", len(bins))
 		}
@@ -58,11 +58,11 @@ func TestCountsGiveExactMedians(t *testing.T) {
 }
 
 func TestReadingsOffTheResolutionAreNoted(t *testing.T) {
-	_, inexact := binSamples([]Sample{{0, 0.001}, {1, 0.0005}}, 0.001, []int64{0, 10})
+	_, inexact := binSamples([]Sample{{0, 0.001}, {1, 0.0005}}, 0.001, &grid{edges: []int64{0, 10}})
 	if !inexact {
 		t.Error("0.0005 mm is no multiple of 0.001 mm")
 	}
-	_, inexact = binSamples([]Sample{{0, 0.0127}, {1, -0.0254}}, 0.0127, []int64{0, 10})
+	_, inexact = binSamples([]Sample{{0, 0.0127}, {1, -0.0254}}, 0.0127, &grid{edges: []int64{0, 10}})
 	if inexact {
 		t.Error("half thousandths of an inch are multiples of 0.0127 mm")
 	}

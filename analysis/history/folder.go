@@ -8,7 +8,6 @@ import (
 	"io"
 	"io/fs"
 	"os"
-	"slices"
 
 	"gaugelog/config"
 	"gaugelog/ingest/segment"
@@ -60,10 +59,7 @@ func Open(fsys segment.FS) (*History, error) {
 	if err := h.readLogs(folder); err != nil {
 		return nil, err
 	}
-	first, last, err := span(fsys, folder)
-	if err != nil {
-		return nil, err
-	}
+	first, last, _ := folder.Span()
 	src := newFolderSource(folder, h.Rig, BinWidth(first, last))
 	if err := src.pass(h); err != nil {
 		return nil, err
@@ -154,60 +150,4 @@ func (h *History) noteReport(r *segment.Report) {
 		h.Notes = append(h.Notes, Note{Code: "quarantined", Text: fmt.Sprintf(
 			"%s: %d lines with absurd times were left out", s.File, s.Lines)})
 	}
-}
-
-// span finds about when the readings begin and end, for the width of the bins
-// only: from the first batch, and from the last segment alone.
-func span(fsys segment.FS, folder *segment.Folder) (first, last int64, err error) {
-	first, _, err = batchSpan(folder, true)
-	if err != nil {
-		return 0, 0, err
-	}
-	tail, err := segment.OpenFolder(lastOnly{fsys})
-	if err != nil {
-		return 0, 0, fmt.Errorf("open the last segment: %w", err)
-	}
-	_, last, err = batchSpan(tail, false)
-	return first, max(first, last), err
-}
-
-func batchSpan(folder *segment.Folder, once bool) (first, last int64, err error) {
-	r := folder.Read(segment.ReadOptions{})
-	defer r.Close()
-	seen := false
-	for {
-		b, err := r.Next()
-		if err == io.EOF {
-			return first, last, nil
-		}
-		if err != nil {
-			return 0, 0, fmt.Errorf("read %s: %w", segment.ReadingsDir, err)
-		}
-		for _, t := range b.Time {
-			if !seen {
-				first, last, seen = t, t, true
-			}
-			first, last = min(first, t), max(last, t)
-		}
-		if once && seen {
-			return first, last, nil
-		}
-	}
-}
-
-// lastOnly shows of the readings only the segment that comes last.
-type lastOnly struct{ segment.FS }
-
-func (l lastOnly) ReadDir(dir string) ([]fs.DirEntry, error) {
-	list, err := l.FS.ReadDir(dir)
-	if err != nil || dir != segment.ReadingsDir || len(list) < 2 {
-		return list, err
-	}
-	slices.SortFunc(list, func(a, b fs.DirEntry) int {
-		if a.Name() < b.Name() {
-			return -1
-		}
-		return 1
-	})
-	return list[len(list)-1:], nil
 }

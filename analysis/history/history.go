@@ -34,6 +34,7 @@ type Bin struct {
 	SD          float64 // standard deviation of its readings, 0 for one
 	Min, Max    float64
 	First, Last float64
+	FirstTime   int64 // instants of First and Last
 	LastTime    int64
 }
 
@@ -92,6 +93,7 @@ type History struct {
 
 	source    Source
 	withdrawn map[string]string // id: why
+	unknown   map[string]int64  // readings of gauges the rig does not name
 	close     func() error
 }
 

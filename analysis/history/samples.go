@@ -52,7 +52,7 @@ func FromSamples(g Given) (*History, error) {
 	m := &memory{samples: g.Samples, ambient: g.Ambient, rig: g.Rig}
 	width := BinWidth(h.First, h.Last)
 	for i := range g.Samples {
-		bins, inexact := binSamples(g.Samples[i], g.Rig.Gauges[i].Resolution.Value, gridEdges(h.First, h.Last, width))
+		bins, inexact := binSamples(g.Samples[i], g.Rig.Gauges[i].Resolution.Value, &grid{width: width})
 		m.bins = append(m.bins, bins)
 		if inexact {
 			h.Notes = append(h.Notes, notMultiple(g.Rig.Gauges[i]))
@@ -66,42 +66,6 @@ func FromSamples(g Given) (*History, error) {
 func notMultiple(g config.Gauge) Note {
 	return Note{Code: "not-a-multiple", Gauge: g.Name, Text: fmt.Sprintf(
 		"indications of gauge %s are no multiples of its resolution of %g mm; medians are exact to a nanometre all the same, but check the resolution in the rig file", g.Name, g.Resolution.Value)}
-}
-
-// widths are the bin widths to choose from, in seconds.
-var widths = []int64{10, 20, 30, 60, 120, 300, 600}
-
-// BinWidth returns the width of the bins of a run, in nanoseconds: the least
-// of a fixed list that gives at most some 6,000 bins, and at most ten minutes.
-func BinWidth(first, last int64) int64 {
-	for _, w := range widths {
-		if (last-first)/(w*second) <= 6000 {
-			return w * second
-		}
-	}
-	return widths[len(widths)-1] * second
-}
-
-const second = int64(1e9)
-
-// gridEdges returns the edges of the equal bins that cover [first, last].
-func gridEdges(first, last, width int64) []int64 {
-	from := first - mod(first, width)
-	var edges []int64
-	for e := from; ; e += width {
-		edges = append(edges, e)
-		if e > last {
-			return edges
-		}
-	}
-}
-
-func mod(a, b int64) int64 {
-	m := a % b
-	if m < 0 {
-		m += b
-	}
-	return m
 }
 
 // memory is a Source of readings held in memory.
@@ -118,16 +82,27 @@ func (m *memory) Window(from, to int64) ([][]Sample, error) {
 	out := make([][]Sample, len(m.samples))
 	for i, list := range m.samples {
 		lo := sort.Search(len(list), func(k int) bool { return list[k].Time >= from })
-		hi := sort.Search(len(list), func(k int) bool { return list[k].Time > to })
-		out[i] = list[lo:hi:hi]
+		hi := max(lo, sort.Search(len(list), func(k int) bool { return list[k].Time > to }))
+		if out[i] = list[lo:hi:hi]; hi-lo > 2*WindowMost {
+			w := newThinner(from, to)
+			for _, s := range out[i] {
+				w.add(s)
+			}
+			out[i] = w.samples()
+		}
 	}
 	return out, nil
 }
 
 func (m *memory) Fine(edges []int64) ([][]Bin, error) {
 	out := make([][]Bin, len(m.samples))
+	if len(edges) < 2 {
+		return out, nil
+	}
 	for i, list := range m.samples {
-		out[i], _ = binSamples(list, m.rig.Gauges[i].Resolution.Value, edges)
+		lo := sort.Search(len(list), func(k int) bool { return list[k].Time >= edges[0] })
+		hi := max(lo, sort.Search(len(list), func(k int) bool { return list[k].Time >= edges[len(edges)-1] }))
+		out[i], _ = binSamples(list[lo:hi], m.rig.Gauges[i].Resolution.Value, &grid{edges: edges})
 	}
 	return out, nil
 }
@@ -139,18 +114,20 @@ func (m *memory) Ambient(probe int) []AmbientSample {
 	return m.ambient[probe]
 }
 
-// binSamples bins one gauge's readings between the edges.
-func binSamples(list []Sample, resolution float64, edges []int64) (bins []Bin, inexact bool) {
-	if len(edges) < 2 {
-		return nil, false
+// binSamples puts one gauge's readings, in order of time, into bins.
+func binSamples(list []Sample, resolution float64, g *grid) (bins []Bin, inexact bool) {
+	c, all := newCounts([]float64{resolution}, g, tolerance), newGather(tolerance)
+	c.begin()
+	for _, s := range list {
+		c.add(0, s.Time, toMicro(s.MM))
 	}
-	f := newFineBins(resolution, edges)
-	lo := sort.Search(len(list), func(k int) bool { return list[k].Time >= edges[0] })
-	for _, s := range list[lo:] {
-		if s.Time >= edges[len(edges)-1] {
-			break
-		}
-		f.add(s.Time, toMicro(s.MM))
+	c.finish()
+	start := 0
+	for i := range c.parts {
+		p := &c.parts[i]
+		all.take(p, c.tallies[start:p.tallies], false, tolerance)
+		all.settle(false)
+		start = p.tallies
 	}
-	return f.close(), f.counter.inexact
+	return all.bins(), all.inexact
 }

@@ -2,43 +2,45 @@ package history
 
 import (
 	"fmt"
-	"io"
-	"math"
+	"slices"
 	"sort"
 
 	"gaugelog/config"
 	"gaugelog/ingest/segment"
 )
 
+// tolerance is by how much a reading may stand behind a younger one before the
+// disorder is told of: a recorder stores what it recalls from memory, after a
+// jump or a late mark, behind what it had stored already.
+const tolerance = 30 * 60 * second
+
+// recallSlack is what a recorder holds in memory beyond the time around a
+// change, with a margin.
+const recallSlack = 10 * 60 * second
+
 // folderSource is a Source over a run folder. It keeps bins only; single
 // readings are read again when asked for.
 type folderSource struct {
-	folder *segment.Folder
-	rig    *config.Rig
-	names  []string // of the gauges, in the rig's order
-	width  int64
-	series []series // by gauge
-	probes []probe
-	other  map[string]int64 // readings of gauges the rig does not name
-}
-
-// series is one gauge in the making.
-type series struct {
-	counter *counter
-	bins    []Bin
-	scratch []tally
-	n       int64
-	first   int64
-	last    int64
-	behind  int64 // readings that came before the one before them
-	open    bool
+	folder      *segment.Folder
+	rig         *config.Rig
+	names       []string // of the gauges, in the rig's order
+	resolutions []float64
+	numbers     map[string]int
+	grid        grid
+	tolerance   int64
+	bins        [][]Bin
+	probes      []probe
 }
 
 func newFolderSource(folder *segment.Folder, rig *config.Rig, width int64) *folderSource {
-	s := &folderSource{folder: folder, rig: rig, width: width, other: map[string]int64{}}
-	for _, g := range rig.Gauges {
+	s := &folderSource{folder: folder, rig: rig, grid: grid{width: width}, numbers: map[string]int{}, tolerance: tolerance}
+	for i, g := range rig.Gauges {
 		s.names = append(s.names, g.Name)
-		s.series = append(s.series, series{counter: newCounter(g.Resolution.Value)})
+		s.resolutions = append(s.resolutions, g.Resolution.Value)
+		s.numbers[g.Name] = i
+	}
+	if around := rig.Record.Sampling.Around; around != nil {
+		s.tolerance = max(s.tolerance, int64(around.Value*1e9)+recallSlack)
 	}
 	s.probes = make([]probe, len(rig.Probes))
 	for i := range s.probes {
@@ -47,53 +49,67 @@ func newFolderSource(folder *segment.Folder, rig *config.Rig, width int64) *fold
 	return s
 }
 
-// pass goes over all readings once.
+// pass goes over all readings once, and over what stood too far behind again.
 func (s *folderSource) pass(h *History) error {
-	r := s.folder.Read(segment.ReadOptions{Gauges: s.names})
-	defer r.Close()
-	var strangers []int64
-	for {
-		b, err := r.Next()
-		if err == io.EOF {
-			break
-		}
-		if err != nil {
-			return fmt.Errorf("read %s: %w", segment.ReadingsDir, err)
-		}
-		for i, g := range b.Gauge {
-			if int(g) < len(s.series) {
-				s.series[g].add(b.Time[i], b.Micro[i], s.width)
-				continue
-			}
-			for len(strangers) <= int(g)-len(s.series) {
-				strangers = append(strangers, 0)
-			}
-			strangers[int(g)-len(s.series)]++
-		}
-		for i := range b.Others {
-			s.take(h, &b.Others[i])
-		}
+	gathers, report, err := s.count(segment.ReadOptions{}, &s.grid, s.tolerance, h.unknownGauges(), func(rec *segment.Record) { s.take(h, rec) })
+	if err != nil {
+		return err
 	}
-	for i, n := range strangers {
-		if n > 0 {
-			s.other[r.Gauges()[len(s.series)+i]] += n
+	h.noteReport(report)
+	h.GaugeReadings = make([]int64, len(gathers))
+	for i, g := range gathers {
+		if g.n == 0 {
+			continue
 		}
+		h.GaugeReadings[i] = g.n
+		if h.Readings == 0 || g.first < h.First {
+			h.First = g.first
+		}
+		if h.Readings == 0 || g.last > h.Last {
+			h.Last = g.last
+		}
+		h.Readings += g.n
+		h.noteGathered(s.rig.Gauges[i], g)
 	}
-	s.finish(h, r.Report())
-	return nil
+	h.noteUnknown()
+	s.bins, err = s.settled(gathers, &s.grid)
+	for i := range s.probes {
+		s.probes[i].finish()
+	}
+	return err
 }
 
-// take handles a line that is no plain indication.
+// noteGathered notes what one gauge's readings were not.
+func (h *History) noteGathered(g config.Gauge, of *gather) {
+	if of.inexact {
+		h.Notes = append(h.Notes, notMultiple(g))
+	}
+	if n := max(of.behind, of.farther); n > 0 {
+		h.Notes = append(h.Notes, Note{Code: "out-of-order", Gauge: g.Name, Text: fmt.Sprintf(
+			"at least %d readings of gauge %s stand out of the order of time; they were put in order", n, g.Name)})
+	}
+}
+
+func (h *History) unknownGauges() map[string]int64 {
+	h.unknown = map[string]int64{}
+	return h.unknown
+}
+
+func (h *History) noteUnknown() {
+	var names []string
+	for n := range h.unknown {
+		names = append(names, n)
+	}
+	sort.Strings(names)
+	for _, n := range names {
+		h.Notes = append(h.Notes, Note{Code: "unknown-gauge", Gauge: n, Text: fmt.Sprintf(
+			"the readings hold %d of a gauge %q that the rig file does not name; they were left out", h.unknown[n], n)})
+	}
+}
+
+// take handles a line that is no indication.
 func (s *folderSource) take(h *History, rec *segment.Record) {
 	switch rec.Kind {
-	case segment.Indication:
-		for g, name := range s.names {
-			if name == rec.Name {
-				s.series[g].add(rec.Time, toMicro(rec.MM), s.width)
-				return
-			}
-		}
-		s.other[rec.Name]++
 	case segment.Ambient:
 		for i := range s.rig.Probes {
 			if s.rig.Probes[i].Name == rec.Name {
@@ -107,118 +123,114 @@ func (s *folderSource) take(h *History, rec *segment.Record) {
 	}
 }
 
-// finish closes the bins and fills in what the History says of the run.
-func (s *folderSource) finish(h *History, report *segment.Report) {
-	h.noteReport(report)
-	h.GaugeReadings = make([]int64, len(s.series))
-	for g := range s.series {
-		v := &s.series[g]
-		v.finish()
-		h.GaugeReadings[g] = v.n
-		if v.n > 0 {
-			if h.Readings == 0 || v.first < h.First {
-				h.First = v.first
+// count puts the readings that the options choose into the bins of a grid, by
+// gauge. Readings of gauges that the rig does not name are counted in strangers,
+// lines that are no indications are handed to others in their order; both may
+// be nil. Bins stay open for readings that stand tolerance behind younger ones.
+func (s *folderSource) count(opts segment.ReadOptions, g *grid, tolerance int64, strangers map[string]int64, others func(*segment.Record)) ([]*gather, *segment.Report, error) {
+	opts.Gauges = s.names
+	r := s.folder.Read(opts)
+	defer r.Close()
+	gathers := make([]*gather, len(s.names))
+	for i := range gathers {
+		gathers[i] = newGather(tolerance + g.width)
+	}
+	work := func(b *segment.Batch, c **counts) {
+		if *c == nil {
+			*c = newCounts(s.resolutions, g, tolerance)
+		}
+		(*c).begin()
+		(*c).rows(b.Gauge, b.Micro, b.Time)
+		for i := range b.Others {
+			if rec := &b.Others[i]; rec.Kind == segment.Indication {
+				if n, ok := s.numbers[rec.Name]; ok {
+					(*c).add(n, rec.Time, toMicro(rec.MM))
+				}
 			}
-			if h.Readings == 0 || v.last > h.Last {
-				h.Last = v.last
+		}
+		(*c).finish()
+	}
+	collect := func(b *segment.Batch, c **counts) error {
+		start := 0
+		for i := range (*c).parts {
+			p := &(*c).parts[i]
+			gathers[p.gauge].take(p, (*c).tallies[start:p.tallies], b.Foreign, tolerance)
+			start = p.tallies
+		}
+		for _, g := range gathers {
+			g.settle(false)
+		}
+		for i, n := range (*c).strangers {
+			if n > 0 && strangers != nil {
+				strangers[r.Gauges()[len(s.names)+i]] += n
 			}
-			h.Readings += v.n
 		}
-		if v.counter.inexact {
-			h.Notes = append(h.Notes, notMultiple(s.rig.Gauges[g]))
+		for i := range b.Others {
+			rec := &b.Others[i]
+			if rec.Kind != segment.Indication {
+				if others != nil {
+					others(rec)
+				}
+			} else if _, known := s.numbers[rec.Name]; !known && strangers != nil {
+				strangers[rec.Name]++
+			}
 		}
-		if v.behind > 0 {
-			h.Notes = append(h.Notes, Note{Code: "out-of-order", Gauge: s.names[g], Text: fmt.Sprintf(
-				"%d readings of gauge %s stand out of the order of time; they were put in order", v.behind, s.names[g])})
+		return nil
+	}
+	if err := segment.Fold(r, work, collect); err != nil {
+		return nil, nil, fmt.Errorf("read %s: %w", segment.ReadingsDir, err)
+	}
+	return gathers, r.Report(), nil
+}
+
+// settled closes all bins, by gauge. Bins of which readings came after they
+// were closed are counted again, in a pass of their own that holds them all
+// open.
+func (s *folderSource) settled(gathers []*gather, g *grid) ([][]Bin, error) {
+	out := make([][]Bin, len(gathers))
+	again := grid{width: g.width, edges: g.edges, only: make([]map[int64]bool, len(gathers))}
+	var from, to int64
+	found := false
+	for i, v := range gathers {
+		out[i] = v.bins()
+		again.only[i] = v.late
+		for start := range v.late {
+			_, end, _ := g.bin(i, start)
+			if !found {
+				from, to, found = start, end, true
+			}
+			from, to = min(from, start), max(to, end)
 		}
-		v.counter, v.scratch = nil, nil
 	}
-	var names []string
-	for n := range s.other {
-		names = append(names, n)
+	if !found {
+		return out, nil
 	}
-	sort.Strings(names)
-	for _, n := range names {
-		h.Notes = append(h.Notes, Note{Code: "unknown-gauge", Gauge: n, Text: fmt.Sprintf(
-			"the readings hold %d of a gauge %q that the rig file does not name; they were left out", s.other[n], n)})
+	const never = int64(1) << 62
+	more, _, err := s.count(between(from, to-1), &again, never, nil, nil)
+	if err != nil {
+		return nil, err
 	}
-	for i := range s.probes {
-		s.probes[i].finish()
-	}
-}
-
-// add takes one reading.
-func (v *series) add(t, value, width int64) {
-	c := v.counter
-	if !v.open || t >= c.to || t < c.from {
-		v.roll(t, width)
-	}
-	if t < c.lastTime && c.n > 0 {
-		v.behind++
-	}
-	c.add(t, value)
-}
-
-// roll closes the open bin and opens the one that holds t.
-func (v *series) roll(t, width int64) {
-	v.flush()
-	from := t - mod(t, width)
-	v.counter.start(from, from+width)
-	if !v.open {
-		v.first, v.last, v.open = t, t, true
-	}
-	if t < v.last {
-		v.behind++
-	}
-	v.first = min(v.first, t)
-}
-
-func (v *series) flush() {
-	b, ok := v.counter.finish(&v.scratch)
-	if !ok {
-		return
-	}
-	v.n += int64(b.N)
-	v.last = max(v.last, b.LastTime)
-	v.bins = append(v.bins, b)
-}
-
-// finish closes the last bin, and merges bins that readings out of order have
-// made several of.
-func (v *series) finish() {
-	v.flush()
-	if v.behind == 0 {
-		return
-	}
-	sort.SliceStable(v.bins, func(i, j int) bool { return v.bins[i].From < v.bins[j].From })
-	out := v.bins[:0]
-	for _, b := range v.bins {
-		if n := len(out); n > 0 && out[n-1].From == b.From {
-			out[n-1] = mergeBins(out[n-1], b)
-			continue
+	for i, v := range more {
+		if len(v.late) > 0 {
+			panic("history: a bin was closed too early") // nothing is older than the horizon
 		}
-		out = append(out, b)
+		if b := v.bins(); len(b) > 0 {
+			out[i] = replace(out[i], b)
+		}
 	}
-	v.bins = out
+	return out, nil
 }
 
-// mergeBins joins two bins of the same stretch; medians are averaged by number.
-func mergeBins(a, b Bin) Bin {
-	n := a.N + b.N
-	f := float64(b.N) / float64(n)
-	a.Time += int64(float64(b.Time-a.Time) * f)
-	a.Median += (b.Median - a.Median) * f
-	a.MAD += (b.MAD - a.MAD) * f
-	a.SD += (b.SD - a.SD) * f
-	a.Min, a.Max = min(a.Min, b.Min), max(a.Max, b.Max)
-	if b.LastTime > a.LastTime {
-		a.Last, a.LastTime = b.Last, b.LastTime
+// between are the options that choose [from, to]; the reader takes 0, 0 for
+// everything.
+func between(from, to int64) segment.ReadOptions {
+	if from == 0 && to == 0 {
+		to = 1
 	}
-	a.N = n
-	return a
+	return segment.ReadOptions{From: from, To: to}
 }
 
-func (s *folderSource) Bins(gauge int) []Bin { return s.series[gauge].bins }
+func (s *folderSource) Bins(gauge int) []Bin { return s.bins[gauge] }
 
 func (s *folderSource) Ambient(i int) []AmbientSample {
 	if i >= len(s.probes) {
@@ -227,75 +239,14 @@ func (s *folderSource) Ambient(i int) []AmbientSample {
 	return s.probes[i].out
 }
 
-// each calls f with every reading in [from, to].
-func (s *folderSource) each(from, to int64, f func(gauge int, t, value int64)) error {
-	if from == 0 && to == 0 {
-		to = 1 // the reader takes 0, 0 for everything
-	}
-	r := s.folder.Read(segment.ReadOptions{Gauges: s.names, From: from, To: to})
-	defer r.Close()
-	for {
-		b, err := r.Next()
-		if err == io.EOF {
-			return nil
-		}
-		if err != nil {
-			return fmt.Errorf("read %s: %w", segment.ReadingsDir, err)
-		}
-		o := 0
-		others := func(upTo int) {
-			for ; o < len(b.Others) && b.OtherAt[o] <= upTo; o++ {
-				if rec := &b.Others[o]; rec.Kind == segment.Indication {
-					for g, name := range s.names {
-						if name == rec.Name {
-							f(g, rec.Time, toMicro(rec.MM))
-						}
-					}
-				}
-			}
-		}
-		for i, g := range b.Gauge {
-			if len(b.Others) > 0 {
-				others(i)
-			}
-			if int(g) < len(s.names) {
-				f(int(g), b.Time[i], b.Micro[i])
-			}
-		}
-		others(math.MaxInt)
-	}
-}
-
-func (s *folderSource) Window(from, to int64) ([][]Sample, error) {
-	out := make([][]Sample, len(s.names))
-	err := s.each(from, to, func(g int, t, v int64) { out[g] = append(out[g], Sample{t, mm(v)}) })
-	if err != nil {
-		return nil, err
-	}
-	for g := range out {
-		less := func(i, j int) bool { return out[g][i].Time < out[g][j].Time }
-		if !sort.SliceIsSorted(out[g], less) {
-			sort.SliceStable(out[g], less)
-		}
-	}
-	return out, nil
-}
-
 func (s *folderSource) Fine(edges []int64) ([][]Bin, error) {
-	out := make([][]Bin, len(s.names))
 	if len(edges) < 2 {
-		return out, nil
+		return make([][]Bin, len(s.names)), nil
 	}
-	fine := make([]*fineBins, len(s.names))
-	for g := range fine {
-		fine[g] = newFineBins(s.rig.Gauges[g].Resolution.Value, edges)
-	}
-	err := s.each(edges[0], edges[len(edges)-1]-1, func(g int, t, v int64) { fine[g].add(t, v) })
+	g := &grid{edges: slices.Clone(edges)}
+	gathers, _, err := s.count(between(edges[0], edges[len(edges)-1]-1), g, s.tolerance, nil, nil)
 	if err != nil {
 		return nil, err
 	}
-	for g := range fine {
-		out[g] = fine[g].close()
-	}
-	return out, nil
+	return s.settled(gathers, g)
 }
