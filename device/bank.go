@@ -184,9 +184,15 @@ func (b *Bank) Tried() <-chan struct{} { return b.tried }
 // readings in them were handed to the Sink. It panics on a port no rig names.
 func (b *Bank) Consumed(port string) int64 { return b.pump(port).consumed.n.Load() }
 
-// WaitConsumed waits until Consumed(port) is at least n.
+// WaitConsumed waits until Consumed(port) is at least n. With Conducted, n
+// must be all that was sent: the line then counts as quiet, so that a frame
+// which ends by the gap behind it has been handed over too.
 func (b *Bank) WaitConsumed(ctx context.Context, port string, n int64) error {
-	return b.pump(port).consumed.wait(ctx, n)
+	p := b.pump(port)
+	if err := p.consumed.wait(ctx, n); err != nil || !p.o.Conducted {
+		return err
+	}
+	return p.gaps.settle(ctx, b.done)
 }
 
 // Ask asks one gauge or probe of a rig now and waits until its answer was

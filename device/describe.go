@@ -1,7 +1,6 @@
 package device
 
 import (
-	"bytes"
 	"encoding/hex"
 	"fmt"
 	"math"
@@ -58,25 +57,6 @@ func FrameOptions(f config.Frame, channel string) (frame.Options, error) {
 		}
 	}
 	return o, describeKind(&o, f, channel)
-}
-
-// describeKind fills in the part of the options that only one kind has.
-func describeKind(o *frame.Options, f config.Frame, channel string) error {
-	switch o.Kind {
-	case frame.Text:
-		return nil
-	}
-	return fmt.Errorf("frame %s: kind %q has no decoder", f.Name, f.Kind)
-}
-
-// requestFor returns the bytes that ask the instrument on the given channel,
-// empty where it sends unasked.
-func requestFor(f config.Frame, channel string) ([]byte, error) {
-	request, err := unescape(f.Request)
-	if err != nil {
-		return nil, fmt.Errorf("request: %w", err)
-	}
-	return bytes.ReplaceAll(request, []byte("{channel}"), []byte(channel)), nil
 }
 
 func unitOf(name string) (frame.Unit, error) {

@@ -125,6 +125,9 @@ func (p *portPlan) add(t target, spec config.Frame, channel string, silent *conf
 	if err != nil {
 		return err
 	}
+	if t.probe != "" && spec.Kind != string(frame.Text) {
+		return fmt.Errorf("a %s frame carries an indication: a probe's temperature and humidity are groups of a text frame", spec.Kind)
+	}
 	if t.gauge != "" && spec.Kind == string(frame.Text) && !strings.Contains(spec.Pattern, "<value>") {
 		return fmt.Errorf("pattern %q has no group value: write (?P<value>...)", spec.Pattern)
 	}
@@ -192,9 +195,12 @@ func (p *portPlan) slotsOf() ([]*slot, error) {
 		if err != nil {
 			return nil, err
 		}
-		s := &slot{decoder: d, senders: []*instrument{in}, gaps: o.Kind != frame.Text}
+		s := &slot{decoder: d, senders: []*instrument{in}, gaps: o.Kind != frame.Text && o.Kind != frame.SCPIReply}
 		if in.asked() {
 			s.asked = in
+		}
+		if s.identity, err = identityCheckOf(in.spec); err != nil {
+			return nil, err
 		}
 		slots = append(slots, s)
 	}

@@ -13,6 +13,7 @@ type poll struct {
 	now   ask         // the open question; its done is nil for a timed one
 	last  *instrument // asked last: its late answers are still recognised
 	until time.Time   // end of the pause, or of the wait for the answer
+	began time.Time   // when the open question was sent
 	dirty bool        // the last question stayed open: a late answer may come
 
 	lastTick, lastBytes, armed time.Time
@@ -86,6 +87,9 @@ func (l *poll) tick(p *pump, now time.Time, w *writer) error {
 	default:
 		p.echo.giveUp(p)
 		if l.state == pollWaiting {
+			p.quiet() // what came of an answer by now is all of it
+		}
+		if l.state == pollWaiting {
 			l.dirty = true
 			l.end(ErrQuiet)
 		}
@@ -123,7 +127,7 @@ func (l *poll) pause(p *pump) time.Duration {
 	switch {
 	case p.o.Conducted:
 		return 0
-	case l.dirty && len(p.plan.instruments) > 1 && l.last != nil:
+	case l.dirty && len(p.plan.instruments) > 1 && l.last != nil && !toldApart(l.last, l.now.in):
 		return l.last.timeout
 	case l.dirty || len(p.plan.instruments) > 1:
 		return p.o.TurnAround
@@ -134,19 +138,23 @@ func (l *poll) pause(p *pump) time.Duration {
 // send asks: what came before is thrown away.
 func (l *poll) send(p *pump, now time.Time, w *writer) {
 	in := l.now.in
+	request := in.request
 	for _, s := range p.slots {
 		if s.asked != nil {
-			s.decoder.Reset(p.received)
+			s.reset(p.received)
+		}
+		if s.asked == in && s.unidentified() {
+			request = s.identity.request
 		}
 	}
-	l.dirty, l.last = false, in
+	l.dirty, l.last, l.began = false, in, now
 	l.state, l.until = pollWriting, now.Add(max(in.timeout, time.Second))
-	p.echo.expect(in.request)
+	p.echo.expect(request)
 	select {
 	case <-w.wrote: // of a question whose answer was faster than this news
 	default:
 	}
-	w.requests <- in.request
+	w.requests <- request
 }
 
 // written starts the wait for the answer.
@@ -273,7 +281,7 @@ func (e *echo) strip(p *pump, b []byte) []byte {
 		p.echoes.Add(1)
 		p.received += int64(e.n)
 		for _, s := range p.slots {
-			s.decoder.Reset(p.received)
+			s.reset(p.received)
 		}
 		return b[n:]
 	case n < len(b):

@@ -21,6 +21,9 @@ type slot struct {
 	asked   *instrument // nil: they send unasked
 	gaps    bool        // an idle gap ends a frame
 	emit    func(*frame.Frame)
+	// identity is asked for before the first question after each opening;
+	// nil: it is not.
+	identity *identityCheck
 }
 
 // pump owns one port: it opens it, reads it, asks on it and opens it again,
@@ -33,6 +36,7 @@ type pump struct {
 	live  liveStamper // nil in virtual time
 	slots []*slot
 	asks  chan ask
+	gaps  gaps
 
 	received int64 // bytes since first opened
 	arrived  arrivals
@@ -63,9 +67,13 @@ func newPump(o *Options, plan *portPlan) (*pump, error) {
 		return nil, err
 	}
 	p := &pump{o: o, plan: plan, slots: slots, asks: make(chan ask), log: o.Logger.With("port", plan.name)}
+	p.gaps = gapsOf(plan, slots)
 	p.live, _ = o.Stamper.(liveStamper)
 	for _, s := range slots {
 		s.emit = func(f *frame.Frame) { p.take(s, f) }
+		if s.identity != nil {
+			s.identity.emit = func(f *frame.Frame) { p.identify(s, f) }
+		}
 	}
 	return p, nil
 }
@@ -112,6 +120,8 @@ func (p *pump) rest(ctx context.Context, d time.Duration) {
 			return
 		case a := <-p.asks:
 			a.done <- ErrUnplugged
+		case done := <-p.gaps.settles:
+			close(done)
 		case <-ctx.Done():
 			return
 		}

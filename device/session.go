@@ -102,6 +102,9 @@ func (p *pump) session(ctx context.Context, port Port, tried func()) error {
 		case a := <-p.asks:
 			p.poll.queue = append(p.poll.queue, a)
 			p.poll.next(p, time.Now(), w)
+		case done := <-p.gaps.settles:
+			p.quiet()
+			close(done)
 		case err := <-w.wrote:
 			if err != nil {
 				return fmt.Errorf("asking on the port: %w", err)
@@ -119,8 +122,12 @@ func (p *pump) begin() {
 	now := time.Now()
 	p.lastGood = now
 	for _, s := range p.slots {
-		s.decoder.Reset(p.received)
+		s.reset(p.received)
+		if s.identity != nil {
+			s.identity.known = false
+		}
 	}
+	p.gaps.begin()
 	p.echo = echo{}
 	p.poll.begin(p, now)
 }
@@ -134,7 +141,7 @@ func (p *pump) arm(timer *time.Timer) {
 		}
 		for _, s := range p.slots {
 			if s.gaps && s.decoder.Pending() > 0 {
-				if gap := p.poll.lastBytes.Add(idleGap); gap.Before(due) {
+				if gap := p.poll.lastBytes.Add(p.gaps.idle); gap.Before(due) {
 					due = gap
 				}
 			}
@@ -149,19 +156,11 @@ func (p *pump) arm(timer *time.Timer) {
 	}
 }
 
-// idleGap ends an unfinished frame of the kinds without terminator. It is
-// longer than the 16 ms for which a USB bridge may hold bytes back.
-const idleGap = 50 * time.Millisecond
-
 // tick does what is due at now.
 func (p *pump) tick(now time.Time, w *writer) error {
 	p.poll.armed = time.Time{}
-	if !p.o.Conducted && now.Sub(p.poll.lastBytes) >= idleGap {
-		for _, s := range p.slots {
-			if s.gaps && s.decoder.Pending() > 0 {
-				s.decoder.Quiet(s.emit)
-			}
-		}
+	if !p.o.Conducted && now.Sub(p.poll.lastBytes) >= p.gaps.idle {
+		p.quiet()
 	}
 	if err := p.poll.tick(p, now, w); err != nil {
 		return err
@@ -217,7 +216,11 @@ func (p *pump) bytes(b []byte) {
 		p.poll.lastBytes = time.Now()
 	}
 	rest := p.echo.strip(p, b)
-	p.feed(rest)
+	if p.o.Conducted && p.gaps.any {
+		p.feedBetweenGaps(rest)
+	} else {
+		p.feed(rest)
+	}
 	p.consumed.add(len(b))
 }
 
@@ -227,14 +230,14 @@ func (p *pump) feed(b []byte) {
 	one := p.listening()
 	if one != nil {
 		p.received += int64(len(b))
-		one.decoder.Feed(b, one.emit)
+		one.feed(b)
 		return
 	}
 	for i := range b {
 		p.received++
 		for _, s := range p.slots {
 			if s.asked == nil || s.asked == p.poll.last {
-				s.decoder.Feed(b[i:i+1], s.emit)
+				s.feed(b[i : i+1])
 			}
 		}
 	}

@@ -12,7 +12,11 @@ import (
 func (p *pump) take(s *slot, f *frame.Frame) {
 	at := p.at(f.Offset)
 	if f.Rejected != frame.None {
-		p.refuse(s, f, at, f.Rejected.String())
+		why := f.Rejected.String()
+		if f.Exception != 0 {
+			why += ": " + frame.ExceptionText(f.Exception)
+		}
+		p.refuse(s, f, at, why)
 		return
 	}
 	in := s.sender(f.Channel)
@@ -37,8 +41,8 @@ func (p *pump) take(s *slot, f *frame.Frame) {
 
 // sender finds the instrument a frame on this decoder came from.
 func (s *slot) sender(channel []byte) *instrument {
-	if channel == nil && len(s.senders) == 1 {
-		return s.senders[0]
+	if len(s.senders) == 1 && (channel == nil || s.senders[0].spec.Kind == string(frame.ModbusReply)) {
+		return s.senders[0] // a modbus decoder has compared the address itself
 	}
 	for _, in := range s.senders {
 		if in.channel == string(channel) {

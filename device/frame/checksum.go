@@ -10,7 +10,9 @@ type Checksum struct {
 	// the frame without its terminator. nil means: from the first byte; for
 	// text frames up to the sum group, for others up to the sum itself.
 	From, To *int
-	// At is where the sum stands in a frame that is not text.
+	// At is where the sum stands in a frame that is not text, negative from
+	// the end. nil means: behind the nibbles, which then do not count it, or
+	// last in a binary frame.
 	At *int
 	// Binary: the sum is sent as raw bytes; else as hex digits.
 	Binary bool

@@ -2,6 +2,7 @@ package frame
 
 import (
 	"math"
+	"math/bits"
 	"strconv"
 )
 
@@ -110,6 +111,35 @@ func trimBlanks(b []byte) []byte {
 		b = b[:len(b)-1]
 	}
 	return b
+}
+
+// Times returns d times s, exactly. It reports false where the product has
+// more than 18 digits or leaves the range of Scale.
+func (d Decimal) Times(s Decimal) (Decimal, bool) {
+	hi, lo := bits.Mul64(magnitude(d.Digits), magnitude(s.Digits))
+	const limit = 1_000_000_000_000_000_000
+	p := Decimal{Digits: int64(lo), Scale: d.Scale + s.Scale}
+	if hi != 0 || lo >= limit || p.Scale > maxScale || p.Scale < -maxScale {
+		return Decimal{}, false
+	}
+	if (d.Digits < 0) != (s.Digits < 0) {
+		p.Digits = -p.Digits
+	}
+	return p, true
+}
+
+func magnitude(n int64) uint64 {
+	if n < 0 {
+		return -uint64(n)
+	}
+	return uint64(n)
+}
+
+// fromFloat returns the shortest decimal that rounds to f as a float of so
+// many bits; false for what is none or beyond the range of a Decimal. scratch
+// is memory to write in.
+func fromFloat(f float64, size int, scratch []byte) (Decimal, bool) {
+	return ParseDecimal(strconv.AppendFloat(scratch[:0], f, 'e', -1, size))
 }
 
 // Float64 returns the float64 nearest to d.

@@ -50,6 +50,9 @@ const (
 	BadAddress
 	// Refused: the instrument answered that it refuses the request.
 	Refused
+	// NotFollowed: bytes that would be a frame, but neither the next frame nor
+	// an idle gap stood behind them.
+	NotFollowed
 )
 
 var reasonTexts = [...]string{
@@ -65,6 +68,7 @@ var reasonTexts = [...]string{
 	UnknownStatus: "unknown status",
 	BadAddress:    "answer from another address",
 	Refused:       "the instrument refused the request",
+	NotFollowed:   "neither a frame nor a pause stands behind it",
 }
 
 // String returns the reason in words, "" for None.
@@ -96,6 +100,9 @@ type Frame struct {
 	Size   int
 	// Rejected is None for a frame that counts.
 	Rejected Reason
+	// Exception is the code with which a modbus instrument refused the
+	// request, where Rejected is Refused; else 0.
+	Exception byte
 	// NoReading says why a whole frame carries no number ("over-range"); ""
 	// where it carries one.
 	NoReading string
@@ -115,6 +122,23 @@ type Frame struct {
 	Raw []byte
 }
 
+// settle gives the frame its verdict: a rejected one carries no value, and one
+// whose status says that the number shown is none is a non-reading.
+func (f *Frame) settle(why Reason) {
+	f.Rejected = why
+	if why != None {
+		f.HasValue, f.NoReading, f.Status = false, "", ""
+		return
+	}
+	switch f.Status {
+	case "over-range", "under-range", "error":
+		if f.NoReading == "" {
+			f.NoReading = f.Status
+		}
+		f.HasValue = false
+	}
+}
+
 // Decoder finds the frames of one kind in a stream of bytes. It is not safe
 // for concurrent use.
 type Decoder interface {
@@ -123,9 +147,12 @@ type Decoder interface {
 	// valid until emit returns; emit must not call the decoder.
 	Feed(p []byte, emit func(*Frame))
 	// Quiet tells that nothing followed for longer than bytes of one frame
-	// lie apart: an unfinished frame is rejected. Kinds that end by their
-	// terminator keep waiting.
+	// lie apart: a whole frame that waited for that counts, an unfinished one
+	// is rejected. Kinds that end by their terminator keep waiting.
 	Quiet(emit func(*Frame))
+	// Whole reports that what is pending is one whole frame, which waits only
+	// for Quiet or for the next frame to count.
+	Whole() bool
 	// Reset forgets what is unfinished; the next byte fed stands at offset.
 	Reset(offset int64)
 	// Pending is the number of bytes of the unfinished frame.

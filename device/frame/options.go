@@ -121,6 +121,14 @@ func New(o Options) (Decoder, error) {
 	switch o.Kind {
 	case Text:
 		return newText(o)
+	case Nibbles:
+		return newNibbles(o)
+	case Binary:
+		return newBinary(o)
+	case ModbusReply:
+		return newModbus(o)
+	case SCPIReply:
+		return newSCPI(o)
 	}
 	return nil, fmt.Errorf("unknown kind of frame %q", o.Kind)
 }

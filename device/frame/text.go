@@ -23,6 +23,11 @@ type text struct {
 	first    int64  // offset of buf[0]
 	skipping bool   // over-long: waiting for the terminator
 	frame    Frame
+
+	// What the kinds that only borrow the framing replace: the number in the
+	// value group, and all that stands between Start and End.
+	number func([]byte) (d Decimal, noReading string, ok bool)
+	body   func(f *Frame) Reason
 }
 
 func newText(o Options) (*text, error) {
@@ -36,7 +41,7 @@ func newText(o Options) (*text, error) {
 	if m.match(nil) {
 		return nil, fmt.Errorf("pattern %q matches the empty text: every stray terminator would count as a frame", o.Pattern)
 	}
-	t := &text{o: o, m: m, buf: make([]byte, 0, o.Longest)}
+	t := &text{o: o, m: m, buf: make([]byte, 0, o.Longest), number: plainNumber}
 	if t.sumBytes, err = o.Checksum.size(); err != nil {
 		return nil, err
 	}
@@ -76,6 +81,14 @@ func (t *text) Pending() int { return len(t.buf) }
 // Quiet does nothing: a text frame ends by its terminator, and a slow sender
 // may pause inside one.
 func (t *text) Quiet(func(*Frame)) {}
+
+// Whole is never true: with its terminator a text frame is dealt with.
+func (t *text) Whole() bool { return false }
+
+func plainNumber(b []byte) (Decimal, string, bool) {
+	d, ok := ParseDecimal(b)
+	return d, "", ok
+}
 
 func (t *text) Feed(p []byte, emit func(*Frame)) {
 	last := t.o.End[len(t.o.End)-1]
@@ -162,10 +175,7 @@ func (t *text) begin(size int) *Frame {
 func (t *text) finish(emit func(*Frame)) {
 	f := t.begin(len(t.buf))
 	f.Raw = t.buf[:len(t.buf)-len(t.o.End)]
-	f.Rejected = t.parse(f)
-	if f.Rejected != None {
-		f.HasValue, f.NoReading = false, ""
-	}
+	f.settle(t.parse(f))
 	emit(f)
 	t.drop(len(t.buf))
 }
@@ -175,8 +185,11 @@ func (t *text) parse(f *Frame) Reason {
 	if !bytes.HasPrefix(f.Raw, t.o.Start) {
 		return NoMatch
 	}
+	if t.body != nil {
+		return t.body(f)
+	}
 	body := f.Raw[len(t.o.Start):]
-	if why, ok := t.o.NoReadings[string(trimBlanks(body))]; ok {
+	if why, ok := t.o.NoReadings[string(t.words(body))]; ok {
 		f.NoReading = why
 		return None
 	}
@@ -201,14 +214,27 @@ func (t *text) parse(f *Frame) Reason {
 	return t.parseValue(f, t.group(body, t.value), t.group(body, t.unit))
 }
 
+// words is the body without the blanks around it; in a scpi answer a carriage
+// return is one.
+func (t *text) words(body []byte) []byte {
+	body = trimBlanks(body)
+	if t.o.Kind == SCPIReply {
+		body = trimBlanks(bytes.TrimSuffix(body, []byte{'\r'}))
+	}
+	return body
+}
+
 func (t *text) parseValue(f *Frame, value, unit []byte) Reason {
 	if why, ok := t.o.NoReadings[string(trimBlanks(value))]; ok {
 		f.NoReading = why
 		return None
 	}
 	var ok bool
-	if f.Value, ok = ParseDecimal(value); !ok {
+	if f.Value, f.NoReading, ok = t.number(value); !ok {
 		return BadNumber
+	}
+	if f.NoReading != "" {
+		return None
 	}
 	f.HasValue = true
 	if f.Unit, ok = t.unitOf(trimBlanks(unit)); !ok {
