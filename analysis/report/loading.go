@@ -95,8 +95,11 @@ func (b *builder) sagTable(caption, says string, of func(analysis.StepGauge) *an
 		t.Rows = append(t.Rows, row)
 	}
 	t.Says = says
+	if worst > 0 && says != "" {
+		t.Says += " "
+	}
 	if worst > 0 {
-		t.Says += " Standard uncertainties are at most " + significant(worst, 2) + " " + b.u.of("mm") + "."
+		t.Says += "Standard uncertainties are at most " + significant(worst, 2) + " " + b.u.of("mm") + "."
 	}
 	return t
 }

@@ -2,6 +2,7 @@ package steps
 
 import (
 	"math"
+	"slices"
 	"sort"
 )
 
@@ -145,8 +146,26 @@ func (r *run) shares(c *cluster) []share {
 			}
 		}
 	}
+	before, behind := r.neighbours(c)
+	all = slices.DeleteFunc(all, func(s share) bool { return s.t <= before || s.t >= behind })
 	sort.SliceStable(all, func(a, b int) bool { return all[a].t < all[b].t })
 	return combine(all, nanos(r.spacing(c.lo)/20))
+}
+
+// neighbours are the end of the happening before a cluster and the beginning
+// of the one behind: readings beyond them belong to something else.
+func (r *run) neighbours(c *cluster) (before, behind int64) {
+	before, behind = math.MinInt64, math.MaxInt64
+	for i := range r.events {
+		e := &r.events[i]
+		if e.hi <= c.lo {
+			before = max(before, e.hi)
+		}
+		if e.lo >= c.hi {
+			behind = min(behind, e.lo+1)
+		}
+	}
+	return before, behind
 }
 
 // combine averages shares taken within tol of one another.
@@ -222,7 +241,9 @@ func (r *run) ringing(c *cluster, s []share, done int, after func(int64) float64
 		most = max(most, math.Abs(c.jump[g].MM))
 	}
 	last := done
-	for i := done; i < len(s) && s[i].t < s[done].t+60*second; i++ {
+	// Once it has been quiet for a while, what comes later is something else.
+	quiet := max(5*second, nanos(10*r.spacing(c.hi)))
+	for i := done; i < len(s) && s[i].t < s[last].t+quiet; i++ {
 		if d := math.Abs(s[i].z - after(s[i].t)); d > max(4*s[i].u, settled) {
 			last, swing = i, max(swing, d*most)
 		}
