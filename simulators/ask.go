@@ -187,9 +187,10 @@ func (l *line) answerSlave(asked []*instrument, call wire.Call, at int64) {
 		})
 	}
 	l.harm(g, at, begin, &p)
+	p.length = len(l.batch.Bytes) - begin - p.lead
 	for _, i := range whole {
-		asked[i].sim.note(l, asked[i], at, int64(p.lead), p)
+		asked[i].sim.note(l, asked[i], at, p)
 	}
 	g.overdue = false
-	l.sent += int64(len(l.batch.Bytes) - begin)
+	l.sent += int64(p.lead + p.length)
 }

@@ -4,8 +4,6 @@ import (
 	"errors"
 	"fmt"
 	"slices"
-
-	"gaugelog/config"
 )
 
 // Source is what sends bytes on ports: a [Sim], or several in a [Joint].
@@ -223,13 +221,4 @@ func (j *Joint) Counts() []Counts {
 		}
 	}
 	return out
-}
-
-// Rig is one rig with its truth and what goes wrong with it.
-type Rig struct {
-	// Text is the rig file, with comments.
-	Text   []byte
-	Rig    *config.Rig
-	Truth  *Truth
-	Faults *Faults
 }

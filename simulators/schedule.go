@@ -10,6 +10,9 @@ type Frame struct {
 	// Offset is the place of the frame's first byte, counted in bytes sent on
 	// this port since the simulation began.
 	Offset int64
+	// Lead is how many bytes of echo and noise came with it, before Offset;
+	// Length how many bytes the frame has, as it was sent.
+	Lead, Length int
 	// At is the instant of the first byte.
 	At Instant
 	// Name is the gauge or probe that sent it.

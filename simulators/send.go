@@ -91,13 +91,15 @@ func (s *Sim) send(g *instrument, at int64, asked []byte) {
 		l.batch.Bytes = out
 	}
 	l.harm(g, at, begin, &p)
-	s.note(l, g, at, int64(p.lead), p)
-	l.sent += int64(len(l.batch.Bytes) - begin)
+	p.length = len(l.batch.Bytes) - begin - p.lead
+	s.note(l, g, at, p)
+	l.sent += int64(p.lead + p.length)
 }
 
 // passage is what befell a frame on its line.
 type passage struct {
 	lead     int  // bytes before it, of echo and noise
+	length   int  // bytes of it
 	instead  bool // something else was sent in its place
 	damaged  bool
 	doubtful bool
@@ -208,10 +210,10 @@ func (l *line) spoil(e *effect, g *instrument, from int) {
 }
 
 // note enters a frame in the batch and in the counts.
-func (s *Sim) note(l *line, g *instrument, at, lead int64, p passage) {
+func (s *Sim) note(l *line, g *instrument, at int64, p passage) {
 	none := g.value.NoReading != ""
 	l.batch.Frames = append(l.batch.Frames, Frame{
-		Offset: l.sent + lead, At: s.Instant(at), Name: g.name, MM: g.showedMM, Damaged: p.damaged || none,
+		Offset: l.sent + int64(p.lead), Lead: p.lead, Length: p.length, At: s.Instant(at), Name: g.name, MM: g.showedMM, Damaged: p.damaged || none,
 		Doubtful: p.doubtful, NoReading: none && !p.damaged, Status: g.value.Status,
 	})
 	f := &l.batch.Frames[len(l.batch.Frames)-1]

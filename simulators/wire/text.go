@@ -105,12 +105,14 @@ func (t *text) Ends() int { return len(t.end) }
 func (t *text) Append(dst []byte, v *Value) ([]byte, bool) {
 	begin := len(dst)
 	dst = append(dst, t.start...)
+	status := v.Status
 	if v.NoReading != "" {
-		said, known := t.none[v.NoReading]
-		if !known {
+		if said, known := t.none[v.NoReading]; known {
+			return append(append(dst, said...), t.end...), true
+		}
+		if status = v.NoReading; !t.Says(status) {
 			return dst[:begin], false
 		}
-		return append(append(dst, said...), t.end...), true
 	}
 	sumAt := -1
 	for i := range t.parts {
@@ -134,7 +136,7 @@ func (t *text) Append(dst []byte, v *Value) ([]byte, bool) {
 			said, known := p.units[v.Unit]
 			dst, ok = append(dst, said...), known
 		case statusPart:
-			said, known := t.status[v.Status]
+			said, known := t.status[status]
 			if !known {
 				said = t.status[""]
 			}

@@ -26,9 +26,9 @@ type Value struct {
 	// hold, battery-low or high-limit; a frame that cannot say it leaves it.
 	Status string
 	// NoReading is "" or the reason for which the instrument has no number,
-	// such as over-range. Text and scpi frames then send a text instead of
-	// the number; the others set the status that says it, beside a number
-	// that means nothing.
+	// such as over-range. Text and scpi frames then send the text that says
+	// so instead of the number; without such a text, and in frames of the
+	// other kinds, the status says it beside a number that means nothing.
 	NoReading string
 	// Celsius and Percent are a probe's.
 	Celsius, Percent float64
