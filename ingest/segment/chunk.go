@@ -37,12 +37,16 @@ func nextComment(text []byte, p int) (from, to int, ok bool) {
 	if p >= len(text) {
 		return 0, 0, false
 	}
-	if text[p] != '#' {
-		i := bytes.Index(text[p:], []byte("\n#"))
+	for {
+		i := bytes.IndexByte(text[p:], '#')
 		if i < 0 {
 			return 0, 0, false
 		}
-		p += i + 1
+		p += i
+		if p == 0 || text[p-1] == '\n' {
+			break
+		}
+		p++
 	}
 	end := bytes.IndexByte(text[p:], '\n')
 	if end < 0 {
