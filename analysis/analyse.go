@@ -2,6 +2,7 @@ package analysis
 
 import (
 	"fmt"
+	"path/filepath"
 
 	"gaugelog/analysis/creep"
 	"gaugelog/analysis/history"
@@ -15,6 +16,9 @@ type Options struct {
 	Program string
 	// Beyond allows forecasts more than two decades of time beyond the data.
 	Beyond bool
+	// Rules is a folder of rule files of the user's own; "": none. Analyse
+	// takes the run's own RulesFolder where it is not set.
+	Rules string
 }
 
 // Analyse reads a run folder back and says everything about it. Its error is
@@ -25,12 +29,19 @@ func Analyse(dir string, o Options) (*Result, error) {
 	if err != nil {
 		return nil, err
 	}
+	if o.Rules == "" {
+		o.Rules = filepath.Join(dir, RulesFolder)
+	}
 	return Evaluate(h, o)
 }
 
 // Evaluate works out the result of a run that was read back.
 func Evaluate(h *history.History, o Options) (*Result, error) {
 	g, _, err := stiffness.GravityOf(h.Rig.Gravity)
+	if err != nil {
+		return nil, err
+	}
+	rules, err := evaluatorOf(h.Rig, o.Rules)
 	if err != nil {
 		return nil, err
 	}
@@ -56,7 +67,10 @@ func Evaluate(h *history.History, o Options) (*Result, error) {
 	if e := r.addStiffness(h, f, g.Value); e != nil {
 		ei, s = e.Bending.Value, shearOf(e, s)
 	}
-	if err := r.addCreep(h, f, ei, s, o); err != nil {
+	if err := r.addCreep(h, f, ei, s, rules, o); err != nil {
+		return nil, err
+	}
+	if err := r.addEvaluations(h, f, rules, ei, s, g.Value, g.U); err != nil {
 		return nil, err
 	}
 	return r, nil
@@ -111,7 +125,7 @@ func (r *Result) addStiffness(h *history.History, f *steps.Findings, gravity flo
 }
 
 // addCreep fits the laws; where that cannot be, a warning says why.
-func (r *Result) addCreep(h *history.History, f *steps.Findings, ei, s float64, o Options) error {
+func (r *Result) addCreep(h *history.History, f *steps.Findings, ei, s float64, rules *evaluator, o Options) error {
 	shares, err := influence(h.Rig, ei, s, true)
 	if err != nil {
 		return err
@@ -123,6 +137,7 @@ func (r *Result) addCreep(h *history.History, f *steps.Findings, ei, s float64, 
 	}
 	opt := creepOptions(h.Rig)
 	opt.Beyond = o.Beyond
+	opt.TimesH = rules.times(opt.TimesH, h.Rig, t)
 	opt.ForecastH = append(opt.ForecastH, drawnForecasts(h.Rig, t.in.EndH-t.in.FullH)...)
 	a, err := creep.Analyse(t.in, opt)
 	if err != nil {

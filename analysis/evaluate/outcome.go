@@ -89,9 +89,8 @@ func (r *Rule) outcome(c *Clause, f *Facts, each string) Outcome {
 		return o
 	}
 	o.Measured = figured(e, measured, c.Unit)
-	remarks := []string{doubt(e)}
 	if c.Part == Figure {
-		o.Why = r.why(determined(r), c.Text, remarks[0], basis(c, weakest))
+		o.Why = r.why(determined(r), c.Text, doubt(e), basis(c, weakest))
 		return o
 	}
 	holds, words, err := c.judge(e, measured)
@@ -100,12 +99,11 @@ func (r *Rule) outcome(c *Clause, f *Facts, each string) Outcome {
 		o.Why = r.why("cannot evaluate: "+err.Error(), c.Text, basis(c, weakest))
 		return o
 	case weakest == MemoryLow:
-		would := map[bool]string{true: "hold", false: "not hold"}[holds]
-		remarks = append(remarks, "not decided: a number of it is remembered with low confidence; as remembered it would "+would)
+		words = "not decided, for a number of it is remembered with low confidence; as remembered it " + words
 	default:
 		o.Pass = &holds
 	}
-	o.Why = r.why(append(append([]string{words, c.Text}, remarks...), basis(c, weakest))...)
+	o.Why = r.why(words, c.Text, doubt(e), basis(c, weakest))
 	return o
 }
 
