@@ -20,6 +20,7 @@ type Live struct {
 	began   time.Time
 	ctx     context.Context
 	started chan struct{}
+	replies sync.WaitGroup // answers that are still to be sent
 }
 
 // NewLive opens a pseudo-terminal for every port of the simulation, which
@@ -41,12 +42,18 @@ func NewLive(sim simulators.Source) (*Live, error) {
 // Terminals lists the ports' names and paths.
 func (l *Live) Terminals() []Terminal { return l.bank.Terminals() }
 
-// Close closes the terminals. Run must have returned.
-func (l *Live) Close() error { return l.bank.Close() }
+// Close closes the terminals and waits for what is still to be answered. Run
+// must have returned.
+func (l *Live) Close() error {
+	err := l.bank.Close()
+	l.replies.Wait()
+	return err
+}
 
 // Run streams until the context ends (nil) or the simulation does (nil). It
-// must be called once. Requests are answered from then on. In real time the
-// recorder's power cuts are silences of all lines.
+// must be called once. Requests are answered from then on; an answer that is
+// late does not keep others on its port waiting. In real time the recorder's
+// power cuts are silences of all lines.
 func (l *Live) Run(ctx context.Context) error {
 	l.mu.Lock()
 	l.began, l.ctx = time.Now(), ctx
@@ -116,15 +123,22 @@ func (l *Live) answer(port int, heard []byte) {
 		return // not running yet: a gauge that is not switched on
 	}
 	l.mu.Lock()
-	batch := l.sim.Ask(port, heard, int64(time.Since(l.began)))
-	reply, ctx := append([]byte(nil), batch.Bytes...), l.ctx
-	l.mu.Unlock()
-	if len(reply) == 0 {
+	defer l.mu.Unlock()
+	if l.ctx.Err() != nil {
 		return
 	}
-	select {
-	case <-ctx.Done():
-	case <-time.After(time.Duration(batch.Delay)):
-		_ = l.bank.Write(port, reply, 100*time.Millisecond)
+	batch := l.sim.Ask(port, heard, int64(time.Since(l.began)))
+	if len(batch.Bytes) == 0 {
+		return
 	}
+	reply, wait := append([]byte(nil), batch.Bytes...), time.Duration(batch.Delay)
+	l.replies.Go(func() {
+		timer := time.NewTimer(wait)
+		defer timer.Stop()
+		select {
+		case <-l.ctx.Done():
+		case <-timer.C:
+			_ = l.bank.Write(port, reply, 100*time.Millisecond)
+		}
+	})
 }

@@ -32,7 +32,7 @@ type Terminal struct{ Name, Path string }
 type Heard func(port int, b []byte)
 
 // Bank is a set of open pseudo-terminals. Its methods may be called from
-// several goroutines, but for Write, Unplug and Plug of one port.
+// several goroutines, but for Unplug and Plug of one port.
 type Bank struct {
 	heard Heard
 	names []string
@@ -43,6 +43,8 @@ type Bank struct {
 type terminal struct {
 	path   string
 	master *os.File
+	// writing keeps one write whole among others.
+	writing sync.Mutex
 	// open tells whether somebody has the other side open.
 	open atomic.Bool
 	stop chan struct{}
@@ -147,6 +149,8 @@ func (b *Bank) Write(port int, p []byte, patience time.Duration) error {
 	if t == nil {
 		return fmt.Errorf("%s: %w", b.names[port], ErrUnplugged)
 	}
+	t.writing.Lock()
+	defer t.writing.Unlock()
 	if patience > 0 {
 		// A terminal that knows no deadline waits without one.
 		_ = t.master.SetWriteDeadline(time.Now().Add(patience))
