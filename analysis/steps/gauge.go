@@ -137,15 +137,20 @@ func (g *gauge) scatter() (noise, interval float64) {
 
 // trimmedSigma estimates a standard deviation from absolute deviations: the
 // mean of their lower nine tenths over what it is for normal ones, 0.6573
-// (from the normal density). Unlike a median it does not stick at a count.
+// (from the normal density). Unlike a median it does not stick at a count. Of
+// few deviations a single load change is more than a tenth: then the lower
+// three quarters are taken, whose mean is 0.5149.
 func trimmedSigma(abs []float64) float64 {
 	s := slices.Clone(abs)
 	slices.Sort(s)
-	s = s[:len(s)*9/10]
-	if len(s) == 0 {
+	n, mean := len(s)*9/10, 0.6573
+	if len(s) < 300 {
+		n, mean = len(s)*3/4, 0.5149
+	}
+	if n == 0 {
 		return 0
 	}
-	return total(s) / float64(len(s)) / 0.6573
+	return total(s[:n]) / float64(n) / mean
 }
 
 // pointU is the standard uncertainty of a point from scatter and resolution.
