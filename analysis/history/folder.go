@@ -65,7 +65,11 @@ func Open(fsys segment.FS) (*History, error) {
 		return nil, err
 	}
 	h.source = src
-	h.Gaps = findGaps(h)
+	if o := folder.Origin(); o.Own && !o.Given {
+		h.Gaps = recordedGaps(h, folder.Starts())
+	} else {
+		h.Gaps = neighbourGaps(h)
+	}
 	h.closeMarks()
 	return h, nil
 }

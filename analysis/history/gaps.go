@@ -4,22 +4,21 @@ import (
 	"slices"
 )
 
-// findGaps returns the intervals in which a gauge left no reading though its
-// neighbours' spacing says it should have: one five times as long as the
-// median spacing of the bins around it. A gap that all gauges share is one
-// entry without a gauge.
-func findGaps(h *History) []Gap {
+// neighbourGaps returns the intervals in which a gauge left no reading though
+// its neighbours' spacing says it should have, for readings of which nothing but
+// the instants is known.
+func neighbourGaps(h *History) []Gap {
 	var per [][]Gap
 	for g := range h.Rig.Gauges {
-		per = append(per, gaugeGaps(h.Rig.Gauges[g].Name, h.Bins(g), h.First, h.Last))
+		per = append(per, wideIntervals(h.Rig.Gauges[g].Name, h.Bins(g), func(from, to int64) bool { return true }))
 	}
 	return joinGaps(per, h.GaugeReadings)
 }
 
-// gaugeGaps looks for gaps from bins alone: within a bin the mean spacing is
-// known, and between bins the last instant of one and the first of the next.
-func gaugeGaps(name string, bins []Bin, first, last int64) []Gap {
-	var gaps []Gap
+// wideIntervals looks, between successive bins of one gauge, for intervals five
+// times as long as the median spacing of the bins around them, longer than a
+// bin, and such as too says.
+func wideIntervals(name string, bins []Bin, too func(from, to int64) bool) []Gap {
 	if len(bins) < 4 {
 		return nil
 	}
@@ -30,27 +29,20 @@ func gaugeGaps(name string, bins []Bin, first, last int64) []Gap {
 		}
 	}
 	spacing[0] = spacing[1]
+	var gaps []Gap
+	var around [9]int64
 	for i := 1; i < len(bins); i++ {
-		lo, hi := max(0, i-4), min(len(bins), i+5)
-		around := slices.Clone(spacing[lo:hi])
-		slices.Sort(around)
-		typical := max(around[len(around)/2], 1)
-		from := bins[i-1].LastTime
-		to := firstTime(bins[i], typical)
-		if to-from > 5*typical && to-from > (bins[i].To-bins[i].From) {
+		from, to := bins[i-1].LastTime, bins[i].FirstTime
+		if to-from <= bins[i].To-bins[i].From {
+			continue
+		}
+		near := around[:copy(around[:], spacing[max(0, i-4):min(len(bins), i+5)])]
+		slices.Sort(near)
+		if to-from > 5*max(near[len(near)/2], 1) && too(from, to) {
 			gaps = append(gaps, Gap{Gauge: name, From: from, To: to, Why: "no reading"})
 		}
 	}
 	return gaps
-}
-
-// firstTime estimates a bin's first instant: its readings are evenly spaced
-// about their mean as near as a bin can tell.
-func firstTime(b Bin, typical int64) int64 {
-	if b.N == 1 {
-		return b.Time
-	}
-	return max(b.From, b.Time-(b.LastTime-b.Time))
 }
 
 // joinGaps turns gaps that all gauges with readings share into one.

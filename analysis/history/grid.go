@@ -30,7 +30,7 @@ func (g *grid) bin(gauge int, t int64) (from, to int64, ok bool) {
 }
 
 // widths are the bin widths to choose from, in seconds.
-var widths = []int64{10, 20, 30, 60, 120, 300, 600}
+var widths = []int64{1, 2, 5, 10, 20, 30, 60, 120, 300, 600}
 
 // BinWidth returns the width of the bins of a run, in nanoseconds: the least
 // of a fixed list that gives at most some 6,000 bins, and at most ten minutes.

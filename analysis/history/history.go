@@ -7,15 +7,21 @@
 //
 // An indication is a multiple of its gauge's resolution, so a bin is a table
 // of counts and its median is exact however many readings it holds. Where
-// readings are no multiples of the stated resolution the gauge falls back to
-// counts of a nanometre (the finest the format writes), which is as exact and
-// only takes more memory; the note "not-a-multiple" says so. Readings of a
-// gauge that stand in no order of time give bins that are merged afterwards,
-// whose medians are then approximate; the note "out-of-order" says so.
+// readings are no multiples of the stated resolution the gauge falls back to a
+// list of values in nanometres (the finest the format writes), which is as exact
+// and only takes more time and memory; the note "not-a-multiple" says so.
+//
+// Readings may stand in any order. Those that a recorder recalled from memory
+// stand up to half an hour (or the rig's time around a change and ten minutes)
+// behind younger ones by design and go into bins that are still open; bins that
+// still older readings belong to are counted again, in a pass of their own. The
+// note "out-of-order" tells of the latter, and of any disorder in segments that
+// gaugelog did not write.
 package history
 
 import (
 	"gaugelog/config"
+	"gaugelog/ingest/segment"
 )
 
 // Sample is one indication: nanoseconds since 1970 UTC (re-timed) and mm.
@@ -64,10 +70,17 @@ type Event struct {
 	Kind, Gauge string
 	Time        int64
 	Detail      string
+	// From is when it began, for what has a length; 0 where it has none. Time
+	// is its end.
+	From int64
+	N    int64 // how often it happened; 0 where nothing says
 }
 
 // Gap is an interval in which a gauge (or, Gauge empty, all of them) left no
-// reading though it should have.
+// reading though it should have. In a run that gaugelog recorded that is where
+// the recording says so, and where readings lie several times farther apart than
+// the rig's sampling lets them; elsewhere an interval five times longer than its
+// neighbours'. Why says it in words.
 type Gap struct {
 	Gauge    string
 	From, To int64
@@ -94,6 +107,7 @@ type History struct {
 	source    Source
 	withdrawn map[string]string // id: why
 	unknown   map[string]int64  // readings of gauges the rig does not name
+	damage    []segment.Damage  // of the segments
 	close     func() error
 }
 
@@ -110,7 +124,8 @@ type Source interface {
 	// ten minutes each; bins without a reading are left out. The caller must
 	// not change them.
 	Bins(gauge int) []Bin
-	// Window returns every reading of every gauge in [from, to].
+	// Window returns the readings of every gauge in [from, to], thinned beyond
+	// WindowMost of one gauge.
 	Window(from, to int64) ([][]Sample, error)
 	// Fine returns, for every gauge, the bins between successive edges (which
 	// must rise); bins without a reading are left out.
@@ -123,14 +138,17 @@ type Source interface {
 // ones left out. The slice is shared: do not change it.
 func (h *History) Bins(gauge int) []Bin { return h.source.Bins(gauge) }
 
-// Window returns every reading of every gauge in [from, to], by gauge.
+// Window returns the readings in [from, to], by gauge, in order of time: every
+// one, or where a gauge has more than twice WindowMost the first of each of
+// WindowMost equal parts. Each is a reading as recorded. Where all are to count
+// use Fine.
 func (h *History) Window(from, to int64) ([][]Sample, error) { return h.source.Window(from, to) }
 
 // Fine returns, by gauge, the bins between successive edges, empty ones left
 // out. The edges must rise.
 func (h *History) Fine(edges []int64) ([][]Bin, error) { return h.source.Fine(edges) }
 
-// Raw returns every reading of one gauge in [from, to].
+// Raw returns the readings of one gauge in [from, to], as Window does.
 func (h *History) Raw(gauge int, from, to int64) ([]Sample, error) {
 	all, err := h.source.Window(from, to)
 	if err != nil {

@@ -72,13 +72,27 @@ func (h *History) addEvent(r *segment.Record) {
 	if r.Kind != segment.Event || r.Point == nil {
 		return
 	}
-	h.Events = append(h.Events, Event{Kind: r.Name, Gauge: r.Point.Tag("gauge"), Time: r.Time, Detail: text(r.Point, "detail")})
+	e := Event{Kind: r.Name, Gauge: r.Point.Tag("gauge"), Time: r.Time, Detail: text(r.Point, "detail"),
+		From: whole(r.Point, "from"), N: whole(r.Point, "n")}
+	// The beginning was stamped by the same clock, unless a recorder before
+	// this one saw it.
+	if e.From != 0 && (e.Kind != "gap" || e.Gauge != "") {
+		e.From += r.Time - r.Raw
+	}
+	h.Events = append(h.Events, e)
 }
 
 func text(p *segment.Point, key string) string {
 	v, _ := p.Value(key)
 	s, _ := v.(string)
 	return s
+}
+
+// whole is an integer field, 0 where there is none.
+func whole(p *segment.Point, key string) int64 {
+	v, _ := p.Value(key)
+	n, _ := v.(int64)
+	return n
 }
 
 func number(p *segment.Point, key string) (float64, bool) {

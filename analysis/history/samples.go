@@ -59,7 +59,7 @@ func FromSamples(g Given) (*History, error) {
 		}
 	}
 	h.source = m
-	h.Gaps = findGaps(h)
+	h.Gaps = neighbourGaps(h)
 	return h, nil
 }
 

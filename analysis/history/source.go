@@ -56,6 +56,7 @@ func (s *folderSource) pass(h *History) error {
 		return err
 	}
 	h.noteReport(report)
+	h.damage = report.Damage
 	h.GaugeReadings = make([]int64, len(gathers))
 	for i, g := range gathers {
 		if g.n == 0 {

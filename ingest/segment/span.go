@@ -71,12 +71,8 @@ func (d *Folder) Span() (first, last int64, ok bool) {
 				}
 			}
 		case ends < 2:
-			// The last may hold nothing yet.
-			if c, found := d.lastCheckpoint(f); found && c.lines > 0 {
-				note(d.put(f, c.clock, c.first), d.put(f, c.clock, c.last))
-				ends++
-			} else if f.headed && f.header.Clock.Wall > 0 {
-				note(d.put(f, f.header.Clock, f.header.Clock.Wall), d.put(f, f.header.Clock, f.header.Clock.Wall))
+			if d.endSpan(f, note) {
+				ends++ // the last may hold nothing yet
 			}
 		}
 	}
@@ -96,6 +92,33 @@ func (d *Folder) Span() (first, last int64, ok bool) {
 		}
 	}
 	return first, last, ok
+}
+
+// endSpan tells of the end of an own segment; false where it holds no block.
+func (d *Folder) endSpan(f *segFile, note func(first, last int64)) bool {
+	c, found := d.lastCheckpoint(f)
+	if !found {
+		return false
+	}
+	if c.lines == 0 && !c.clock.Given {
+		// As behind a closed segment: nothing is younger than its clock.
+		wall := d.put(f, c.clock, c.clock.Wall)
+		note(wall, wall)
+		return true
+	}
+	found = c.lines > 0
+	if found {
+		note(d.put(f, c.clock, c.first), d.put(f, c.clock, c.last))
+		return true
+	}
+	_ = d.comments(f, func(it item) bool {
+		if it.kind == itemBlock && it.c.lines > 0 {
+			note(it.c.first, it.c.last)
+			found = true
+		}
+		return true
+	})
+	return found
 }
 
 // put re-times a stamp by its clock state alone, which does for a scale.
