@@ -108,6 +108,9 @@ func place(plans *[]*portPlan, rig *config.Rig, t target, port, frameName, chann
 
 // add joins the target to the instrument on its channel, or makes a new one.
 func (p *portPlan) add(t target, spec config.Frame, channel string, silent *config.Duration) error {
+	if t.probe != "" && spec.Kind != string(frame.Text) {
+		return fmt.Errorf("a %s frame carries an indication: a probe's temperature and humidity are groups of a text frame", spec.Kind)
+	}
 	spec.Name = "" // two rigs may call one description by different names
 	for _, in := range p.instruments {
 		if in.channel != channel || !reflect.DeepEqual(in.spec, spec) {
@@ -124,9 +127,6 @@ func (p *portPlan) add(t target, spec config.Frame, channel string, silent *conf
 	request, err := requestFor(spec, channel)
 	if err != nil {
 		return err
-	}
-	if t.probe != "" && spec.Kind != string(frame.Text) {
-		return fmt.Errorf("a %s frame carries an indication: a probe's temperature and humidity are groups of a text frame", spec.Kind)
 	}
 	if t.gauge != "" && spec.Kind == string(frame.Text) && !strings.Contains(spec.Pattern, "<value>") {
 		return fmt.Errorf("pattern %q has no group value: write (?P<value>...)", spec.Pattern)
