@@ -288,3 +288,53 @@ func BenchmarkLogAppend(b *testing.B) {
 		}
 	}
 }
+
+// growing appends to a file behind the back of a reader that has measured it.
+type growing struct {
+	segment.FS
+	opens int
+	grow  func(opens int)
+}
+
+func (g *growing) Open(name string) (segment.File, error) {
+	g.opens++
+	g.grow(g.opens)
+	return g.FS.Open(name)
+}
+
+// A log may grow between the moments at which a reader measures it and reads
+// it: it gives the entries of one of the two moments.
+func TestReadingALogThatGrows(t *testing.T) {
+	full := segmenttest.New()
+	l := openEvents(t, full)
+	var ends []int
+	for n := range 40 {
+		if err := l.Append(synced(nth(n).time), note(n, strings.Repeat("y", 3000))); err != nil {
+			t.Fatal(err)
+		}
+		ends = append(ends, len(full.Bytes(segment.EventsFile)))
+	}
+	text := full.Bytes(segment.EventsFile)
+	for _, first := range []int{1, 50, ends[0] - 1, ends[0], ends[0] + 10, ends[5]} {
+		for _, later := range []int{first + 1, ends[0] + 1, ends[7], ends[30] + 7, len(text)} {
+			for at := 1; at <= 4; at++ {
+				mem := segmenttest.New()
+				mem.Put(segment.EventsFile, text[:first])
+				g := &growing{FS: mem, grow: func(opens int) {
+					if opens == at {
+						mem.Put(segment.EventsFile, text[:max(first, later)])
+					}
+				}}
+				got, report := notes(t, g)
+				if len(report.Damage) > 0 {
+					t.Fatalf("%d bytes, then %d: %v", first, later, report.Damage)
+				}
+				for i, n := range got {
+					if n != int64(i) {
+						t.Fatalf("%d bytes, then %d: entries %v", first, later, got)
+					}
+				}
+			}
+		}
+	}
+}

@@ -17,7 +17,8 @@ type splitter struct {
 	off     int64 // of the next chunk in the text
 	eof     bool
 	err     error
-	// size is the length of the text where it is known: no more is set aside.
+	// size is the length of the text where it is known: no more is set aside
+	// while the text is not longer than that.
 	size int64
 }
 
@@ -53,9 +54,10 @@ func (s *splitter) next(buf []byte) (chunk []byte, final bool, err error) {
 }
 
 func (s *splitter) fill(buf []byte, target int) []byte {
-	if s.size > 0 {
-		// One byte more, so that the end is seen.
-		target = min(target, int(s.size-s.off)+1)
+	// One byte more than there is, so that the end is seen. A file that another
+	// process appends to may have grown since it was measured.
+	if rest := s.size - s.off + 1; s.size > 0 && rest > int64(len(buf)) {
+		target = int(min(int64(target), rest))
 	}
 	if cap(buf) < target {
 		grown := make([]byte, len(buf), target)
