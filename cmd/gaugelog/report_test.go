@@ -1,0 +1,98 @@
+package main
+
+import (
+	"bytes"
+	"os"
+	"path/filepath"
+	"regexp"
+	"runtime"
+	"strings"
+	"testing"
+)
+
+// The analysis is a pure function of the folder: the same bytes come out
+// whatever the number of cores.
+func TestAnalysisIsPure(t *testing.T) {
+	dir := demoRun(t)
+	var first []byte
+	for _, cores := range []int{1, 4} {
+		before := runtime.GOMAXPROCS(cores)
+		var out, errOut bytes.Buffer
+		code := run([]string{"analyse", dir, "--json"}, strings.NewReader(""), &out, &errOut)
+		runtime.GOMAXPROCS(before)
+		if code != Done {
+			t.Fatalf("analyse ended with %d: %s", code, &errOut)
+		}
+		if first == nil {
+			first = out.Bytes()
+			continue
+		}
+		if !bytes.Equal(first, out.Bytes()) {
+			t.Error("the result depends on the number of cores")
+		}
+	}
+}
+
+var fetched = regexp.MustCompile(`(?i)(src|href)\s*=|url\(|@import|<script|<link|<iframe`)
+
+// The report is one self-contained file that says every section, and saying
+// it again gives the same bytes.
+func TestReportPage(t *testing.T) {
+	dir := demoRun(t)
+	page, err := os.ReadFile(filepath.Join(dir, "report", "report.html"))
+	if err != nil {
+		t.Fatal(err)
+	}
+	if m := fetched.Find(page); m != nil {
+		t.Errorf("the report fetches or runs something: %q", m)
+	}
+	for _, want := range []string{
+		"In short", "How stiff is it?", "How far did it sag?", "Load steps", "The curve along the beam",
+		"Uncertainty budget of E", "Creep", "After unloading", "What was corrected and what was left out",
+		"Suspended loads can hurt and kill", "software alarm is no safety device", "licensed engineer decide",
+		"gauge-knock", "Traceability", "@media print", `name="viewport"`,
+	} {
+		if !bytes.Contains(page, []byte(want)) {
+			t.Errorf("the report does not say %q", want)
+		}
+	}
+	if n := bytes.Count(page, []byte("<svg")); n < 6 {
+		t.Errorf("the report has %d plots, it should have 6 or more", n)
+	}
+	if bytes.Contains(page, []byte("NaN")) || bytes.Contains(page, []byte("Inf")) {
+		t.Error("the report prints a number that is none")
+	}
+	var out, errOut bytes.Buffer
+	if code := run([]string{"report", dir}, strings.NewReader(""), &out, &errOut); code != Done {
+		t.Fatalf("report ended with %d: %s", code, &errOut)
+	}
+	again, err := os.ReadFile(filepath.Join(dir, "report", "report.html"))
+	if err != nil {
+		t.Fatal(err)
+	}
+	if !bytes.Equal(page, again) {
+		t.Error("the same run gave another report")
+	}
+}
+
+// Both systems of units are whole: no millimetre is left in a report in
+// inches, but where the rig file is quoted as typed.
+func TestReportInUSUnits(t *testing.T) {
+	into := filepath.Join(t.TempDir(), "us.html")
+	var out, errOut bytes.Buffer
+	if code := run([]string{"report", demoRun(t), "--units", "us", "--output", into}, strings.NewReader(""), &out, &errOut); code != Done {
+		t.Fatalf("report ended with %d: %s", code, &errOut)
+	}
+	page, err := os.ReadFile(into)
+	if err != nil {
+		t.Fatal(err)
+	}
+	for _, want := range []string{"psi", "lbf", ", in<", "lb-in2"} {
+		if !bytes.Contains(page, []byte(want)) {
+			t.Errorf("no %q in a report in US units", want)
+		}
+	}
+	if bytes.Contains(page, []byte(", mm<")) || bytes.Contains(page, []byte("MPa")) {
+		t.Error("a table of the US report is in SI units")
+	}
+}
