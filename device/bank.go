@@ -28,6 +28,9 @@ type Options struct {
 	// Conducted hands the time to a conductor: gauges are asked by Ask alone,
 	// and no port is reopened for silence.
 	Conducted bool
+	// Patience is how long an answer may take in real time under a conductor,
+	// whose machine may be busy with other things; default the frame's time-out.
+	Patience time.Duration
 	// Backoff paces the attempts to reopen a lost port.
 	Backoff Backoff
 	// DeafAfter is the silence after which an open port is reopened, where no

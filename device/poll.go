@@ -15,6 +15,8 @@ type poll struct {
 	until time.Time   // end of the pause, or of the wait for the answer
 	began time.Time   // when the open question was sent
 	dirty bool        // the last question stayed open: a late answer may come
+	// patience is the least time an answer is waited for (Options.Patience).
+	patience time.Duration
 
 	lastTick, lastBytes, armed time.Time
 }
@@ -32,7 +34,7 @@ const (
 const longestPause = 30 * time.Second
 
 func (l *poll) begin(p *pump, now time.Time) {
-	*l = poll{queue: l.queue[:0], lastTick: now}
+	*l = poll{queue: l.queue[:0], lastTick: now, patience: p.o.Patience}
 	for _, in := range p.plan.instruments {
 		in.due, in.misses = now, 0
 	}
@@ -148,7 +150,7 @@ func (l *poll) send(p *pump, now time.Time, w *writer) {
 		}
 	}
 	l.dirty, l.last, l.began = false, in, now
-	l.state, l.until = pollWriting, now.Add(max(in.timeout, time.Second))
+	l.state, l.until = pollWriting, now.Add(max(in.timeout, time.Second, l.patience))
 	p.echo.expect(request)
 	select {
 	case <-w.wrote: // of a question whose answer was faster than this news
@@ -160,7 +162,7 @@ func (l *poll) send(p *pump, now time.Time, w *writer) {
 // written starts the wait for the answer.
 func (l *poll) written(now time.Time) {
 	if l.state == pollWriting {
-		l.state, l.until = pollWaiting, now.Add(l.now.in.timeout)
+		l.state, l.until = pollWaiting, now.Add(max(l.now.in.timeout, l.patience))
 	}
 }
 

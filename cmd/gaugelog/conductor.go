@@ -65,6 +65,10 @@ type simLine struct {
 // pseudo-terminal takes about 20 kB with nobody reading.
 const longestStretch = 4096
 
+// patience is how long an answer may take in real time: virtual time stands
+// still meanwhile, and the machine may be busy.
+const patience = 30 * time.Second
+
 // conduct records the whole simulation into the run folder.
 func (c *conductor) conduct(ctx context.Context) (err error) {
 	if err := c.openLines(); err != nil {
@@ -336,7 +340,7 @@ func (c *conductor) powerUp(ctx context.Context, at device.Instant, boot string)
 		return err
 	}
 	bank, err := device.Open(device.Options{
-		Rigs: []*config.Rig{c.rig}, Opener: c, Stamper: c, Sink: c, Conducted: true,
+		Rigs: []*config.Rig{c.rig}, Opener: c, Stamper: c, Sink: c, Conducted: true, Patience: patience,
 		Logger: slog.New(slog.DiscardHandler),
 	})
 	if err != nil {
