@@ -178,7 +178,9 @@ func (l *line) answerSlave(asked []*instrument, call wire.Call, at int64) {
 		return
 	}
 	begin := len(l.batch.Bytes)
-	p := l.lead(g, at, call.Raw)
+	p := passage{doubtful: l.spoilt || g.overdue}
+	l.spoilt = false
+	l.lead(g, at, call.Raw, &p)
 	var whole []int
 	if !p.instead {
 		l.batch.Bytes, whole = wire.AppendAnswer(l.batch.Bytes, call, parts, func(i int) *wire.Value {

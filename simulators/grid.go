@@ -99,9 +99,9 @@ func newCurve(g *grid, value []float64) curve {
 // at interpolates by a cubic between two nodes.
 func (c curve) at(g *grid, piece int, t float64) float64 {
 	p := &g.pieces[piece]
-	u := math.Log1p(math.Max(0, t-p.from)/gridScale) / p.h
+	u := math.Log1p(max(0, t-p.from)/gridScale) / p.h
 	i := min(int(u), p.steps-1)
-	u = math.Min(1, u-float64(i))
+	u = min(1, u-float64(i))
 	i += p.first
 	a, b, sa, sb := c.value[i], c.value[i+1], c.slope[i], c.slope[i+1]
 	d := b - a

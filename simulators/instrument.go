@@ -162,7 +162,7 @@ func (s *Sim) show(g *instrument, at int64) {
 	t := float64(at) / 1e9
 	if g.probe != nil {
 		g.value.Celsius = g.probe.temperature.at(t) + g.probe.noiseTemperature*g.random.NormFloat64()
-		g.value.Percent = math.Min(100, math.Max(0, g.probe.humidity.at(t)+g.probe.noiseHumidity*g.random.NormFloat64()))
+		g.value.Percent = min(100, max(0, g.probe.humidity.at(t)+g.probe.noiseHumidity*g.random.NormFloat64()))
 		g.value.Status, g.value.NoReading, g.showedMM = g.state.status, g.state.none, g.value.Celsius
 		return
 	}
@@ -198,7 +198,7 @@ func (s *Sim) indication(g *instrument, t, noise float64) float64 {
 		moved += 1000
 	}
 	raw := d.offset + d.gain*(d.preset+d.sense*moved) + noise
-	return math.Min(g.state.high, math.Max(g.state.low, raw)) + g.state.zero
+	return min(g.state.high, max(g.state.low, raw)) + g.state.zero
 }
 
 // ringing is the beam's swinging after the last change of load.

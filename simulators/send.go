@@ -80,7 +80,11 @@ func (s *Sim) send(g *instrument, at int64, asked []byte) {
 		return
 	}
 	begin := len(l.batch.Bytes)
-	p := l.lead(g, at, asked)
+	p := passage{doubtful: l.spoilt || g.overdue}
+	l.spoilt = false
+	if len(l.touch) > 0 {
+		l.lead(g, at, asked, &p)
+	}
 	if !p.instead {
 		out, ok := g.encoder.Append(l.batch.Bytes, &g.value)
 		if !ok {
@@ -90,7 +94,9 @@ func (s *Sim) send(g *instrument, at int64, asked []byte) {
 		}
 		l.batch.Bytes = out
 	}
-	l.harm(g, at, begin, &p)
+	if len(l.touch) > 0 {
+		l.harm(g, at, begin, &p)
+	}
 	p.length = len(l.batch.Bytes) - begin - p.lead
 	s.note(l, g, at, p)
 	l.sent += int64(p.lead + p.length)
@@ -124,12 +130,7 @@ func (s *Sim) unheard(l *line, g *instrument, at int64) bool {
 }
 
 // lead puts on the line what comes before a frame, or in its place.
-func (l *line) lead(g *instrument, at int64, asked []byte) (p passage) {
-	p.doubtful = l.spoilt || g.overdue
-	l.spoilt = false
-	if len(l.touch) == 0 {
-		return p
-	}
+func (l *line) lead(g *instrument, at int64, asked []byte, p *passage) {
 	begin := len(l.batch.Bytes)
 	for _, e := range l.touch {
 		if !e.on(at, g) {
@@ -160,7 +161,6 @@ func (l *line) lead(g *instrument, at int64, asked []byte) (p passage) {
 			l.batch.Bytes = append(l.batch.Bytes, byte('0'+l.random.IntN(10)))
 		}
 	}
-	return p
 }
 
 const (

@@ -47,7 +47,7 @@ func newNumber(group *regexp.Regexp, decimals int, signed bool) (number, error) 
 }
 
 // fits tries the way on small numbers of either sign.
-func (n number) fits(group *regexp.Regexp, signed bool) bool {
+func (n *number) fits(group *regexp.Regexp, signed bool) bool {
 	for _, v := range []float64{0, 1.234567, 7.5, -3.25, -0.000244140625} {
 		if v < 0 && !signed {
 			continue
@@ -62,7 +62,7 @@ func (n number) fits(group *regexp.Regexp, signed bool) bool {
 
 // widest is the most digits before the point that the group takes; 0 where it
 // takes twelve and more.
-func (n number) widest(group *regexp.Regexp) int {
+func (n *number) widest(group *regexp.Regexp) int {
 	for digits := n.whole; digits < 12; digits++ {
 		if text, _ := n.append(nil, math.Pow10(digits)); !group.Match(text) {
 			return digits
@@ -71,16 +71,31 @@ func (n number) widest(group *regexp.Regexp) int {
 	return 0
 }
 
+// pairs are the numbers 00 to 99.
+var pairs = func() (out [200]byte) {
+	for i := range 100 {
+		out[2*i], out[2*i+1] = byte('0'+i/10), byte('0'+i%10)
+	}
+	return out
+}()
+
 // append writes v; false where it has too many digits.
-func (n number) append(dst []byte, v float64) ([]byte, bool) {
+func (n *number) append(dst []byte, v float64) ([]byte, bool) {
 	scaled := math.Round(math.Abs(v) * n.scale)
 	if !(scaled < 1e15) {
 		return dst, false
 	}
 	var digits [20]byte
 	at := len(digits)
+	// Two digits at a time: half the divisions.
 	rest := uint64(scaled)
-	for i := 0; rest > 0 || i <= n.decimals; i++ {
+	for rest >= 100 {
+		two := rest % 100 * 2
+		rest /= 100
+		at -= 2
+		digits[at], digits[at+1] = pairs[two], pairs[two+1]
+	}
+	for rest > 0 || len(digits)-at <= n.decimals {
 		at--
 		digits[at] = byte('0' + rest%10)
 		rest /= 10
