@@ -11,5 +11,19 @@
 // return, refused frame and non-reading is itself handed over as a Reading;
 // and that after Close every goroutine and descriptor it owned is gone.
 //
+// How each key of a [config.Frame] is read stands in frame/FRAMES.md; what
+// the keys leave open is settled so:
+//
+//   - a modbus question reads from the lower of register and status up to the
+//     higher, in one go; the address is the frame's, else the gauge's channel;
+//   - a scpi query is closed by end, a line feed where that is empty; identity
+//     is asked with *IDN? once an opening, before the first query, and is
+//     found anywhere in the answer;
+//   - a scale is taken digit for digit as the rig file shows it;
+//   - a checksum's form is hex for text and hex-coded nibbles, else binary; it
+//     stands behind the nibbles where no at says otherwise;
+//   - over-range, under-range and error, as a status, make a non-reading; of
+//     several flags set, the gravest is carried.
+//
 // It imports config, and nothing of ingest or analysis.
 package device

@@ -114,8 +114,13 @@ func trimBlanks(b []byte) []byte {
 }
 
 // Times returns d times s, exactly. It reports false where the product has
-// more than 18 digits or leaves the range of Scale.
+// more than 18 digits or leaves the range of Scale. Zeros at the end of s add
+// no digits to the product: 1.50 times 1000 is 1500, not 1500.00.
 func (d Decimal) Times(s Decimal) (Decimal, bool) {
+	for s.Digits != 0 && s.Digits%10 == 0 {
+		s.Digits /= 10
+		s.Scale--
+	}
 	hi, lo := bits.Mul64(magnitude(d.Digits), magnitude(s.Digits))
 	const limit = 1_000_000_000_000_000_000
 	p := Decimal{Digits: int64(lo), Scale: d.Scale + s.Scale}

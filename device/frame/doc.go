@@ -12,7 +12,17 @@
 //   - a decimal that was sent is kept as sent, digit for digit ([Decimal]),
 //     and converted to millimetres exactly, rounding once;
 //   - memory is bounded by the longest frame, whatever arrives;
-//   - decoding a text frame allocates nothing.
+//   - decoding a frame of any kind allocates nothing.
 //
-// It imports nothing else of gaugelog.
+// A text frame (and a SCPI answer, and hex characters with a terminator) ends
+// by its terminator. The other kinds are found by their length: a frame of
+// which a crc16 holds counts at once; one with a weaker sum or none counts
+// when the next one's sync or an idle gap ([Decoder.Quiet]) stands behind it;
+// where there is no sync either, only between gaps, or, with a sum, in front
+// of another whole frame.
+//
+// FRAMES.md beside this file says, for whoever has only an instrument's
+// manual, how each key of a description is meant, with a worked example of
+// each kind and the share of line faults that each guard lets through. It
+// imports nothing else of gaugelog.
 package frame
