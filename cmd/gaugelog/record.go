@@ -22,6 +22,7 @@ import (
 type recordFlags struct {
 	into, lasts, ports string
 	quiet              bool
+	page               pageFlags
 }
 
 func recordCommand() *cobra.Command {
@@ -51,6 +52,7 @@ Suspended loads hurt people: a recording is no safety device.`,
 	c.Flags().StringVar(&f.lasts, "for", "", "end after this time, such as 24h (default: run until ended)")
 	c.Flags().StringVar(&f.ports, "ports", "", "file of \"name path\" lines that say where the rig's ports are, as `simulate` prints them")
 	c.Flags().BoolVar(&f.quiet, "quiet", false, "log warnings and errors only")
+	f.page.add(c.Flags())
 	return c
 }
 
@@ -60,6 +62,8 @@ type recording struct {
 	dirs []*ingest.Dir
 	recs []*ingest.Recorder
 	runs []string
+	// start is the instant before the first recorder was opened.
+	start device.Instant
 }
 
 func runRecord(cmd *cobra.Command, rigFiles []string, f recordFlags) (err error) {
@@ -77,7 +81,7 @@ func runRecord(cmd *cobra.Command, rigFiles []string, f recordFlags) (err error)
 	if err != nil {
 		return err
 	}
-	r := &recording{}
+	r := &recording{start: ingest.SystemClock{}.Now()}
 	defer func() { err = errors.Join(err, r.close()) }()
 	if err := r.open(rigFiles, f.into); err != nil {
 		return err
@@ -87,7 +91,12 @@ func runRecord(cmd *cobra.Command, rigFiles []string, f recordFlags) (err error)
 		level = slog.LevelWarn
 	}
 	logger := slog.New(slog.NewTextHandler(cmd.ErrOrStderr(), &slog.HandlerOptions{Level: level}))
-	return r.run(ctx, cmd, opener, logger)
+	beside, err := r.openBeside(f.page, logger, cmd.ErrOrStderr())
+	if err != nil {
+		return err
+	}
+	defer func() { err = errors.Join(err, beside.close()) }()
+	return r.run(ctx, cmd, opener, logger, beside)
 }
 
 // open loads the rigs and opens a recorder for each.
@@ -158,8 +167,8 @@ func refused(run string, err error) error {
 
 // run records until the context ends, then closes ports before recorders, so
 // that nothing that was read is lost.
-func (r *recording) run(ctx context.Context, cmd *cobra.Command, opener device.Opener, logger *slog.Logger) error {
-	sink := &lateSink{}
+func (r *recording) run(ctx context.Context, cmd *cobra.Command, opener device.Opener, logger *slog.Logger, beside *beside) error {
+	sink := &lateSink{beside: beside}
 	bank, err := device.Open(device.Options{Rigs: r.rigs, Opener: opener, Sink: sink, Logger: logger})
 	if err != nil {
 		return wrong(err, mendOf(err))
@@ -181,9 +190,11 @@ func (r *recording) run(ctx context.Context, cmd *cobra.Command, opener device.O
 	defer stop()
 	recorded := make(chan error, 1)
 	go func() { recorded <- runner.Run(recording) }()
+	beside.start(ctx, runner, bank)
 	bankErr := bank.Run(ctx)
 	stop()
-	return errors.Join(bankErr, <-recorded)
+	recordErr := <-recorded
+	return errors.Join(bankErr, recordErr, beside.wait())
 }
 
 // close lets go of what run did not take over.
@@ -199,7 +210,16 @@ func (r *recording) close() error {
 }
 
 // lateSink is a runner that is set after the bank was planned and before it runs.
-type lateSink struct{ *ingest.Runner }
+type lateSink struct {
+	*ingest.Runner
+	beside *beside
+}
+
+// Take hands a reading to the recorder first, then to what stands beside it.
+func (s *lateSink) Take(d device.Reading) {
+	s.Runner.Take(d)
+	s.beside.take(d)
+}
 
 // openerOf opens the machine's ports, or those a list of "name path" names.
 func openerOf(file string) (device.Opener, error) {

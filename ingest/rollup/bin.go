@@ -110,3 +110,9 @@ func floor(t, width int64) int64 {
 }
 
 func modulo(a, n int64) int64 { return (a%n + n) % n }
+
+// Join sums up two bins; the number is that of the first.
+func Join(a, b Bin) Bin {
+	a.merge(&b)
+	return a
+}

@@ -163,13 +163,17 @@ func (b *Book) mergeSince(s *Series, bins []Bin) {
 }
 
 // ReplaceSince puts another book's Since bins in the place of b's, where both
-// have the same origin.
+// have the same origin, and adds what b holds of the time after that book.
 func (b *Book) ReplaceSince(o *Book) {
 	if b.Origin != o.Origin || len(b.Series) != len(o.Series) {
 		return
 	}
 	for i := range b.Series {
-		b.Series[i].Since = slices.Clone(o.Series[i].Since)
+		s := &b.Series[i]
+		s.Since = slices.Clone(o.Series[i].Since)
+		for _, bin := range s.Recent.since(o.Until + 1) {
+			b.addSince(s, bin)
+		}
 	}
 }
 

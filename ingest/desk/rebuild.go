@@ -1,0 +1,328 @@
+package desk
+
+import (
+	"context"
+	"errors"
+	"io"
+	"io/fs"
+	"math"
+	"slices"
+	"time"
+
+	"gaugelog/ingest/rollup"
+	"gaugelog/ingest/segment"
+)
+
+// bookFile keeps the bins over a restart. It can be made again from the
+// readings, so it stands among the outputs.
+const (
+	reportDir  = "report"
+	bookFile   = "report/live-bins.gob.zst"
+	bookFresh  = "report/live-bins.partial"
+	storeEvery = time.Hour
+)
+
+// Figures of the baseline that the page counts sag from: what the gauges
+// showed before the first load, and far enough before it for a late mark.
+const (
+	baselineFrom = 10 * time.Minute
+	baselineTo   = 2 * time.Minute
+)
+
+// baseline is what the gauges showed before the first load.
+type baseline struct {
+	before int64 // the first load's mark, ns; 0: none was entered
+	values []float64
+	known  []bool
+	asked  bool // it was looked for in the folder
+	reread bool // it, or the readings since the last load, must be read
+	busy   bool
+}
+
+// bookResult is what a pass over the folder brought.
+type bookResult struct {
+	whole *rollup.Book // everything before the start; nil from a later pass
+	since *rollup.Book // what came since its origin
+	base  baseline
+	err   error
+}
+
+// rebuild brings back what was recorded before this process began: the stored
+// book, and from the folder what is newer than it.
+func (d *Desk) rebuild(ctx context.Context) {
+	names := seriesNames(d.o.Rig)
+	book := d.loadBook(names)
+	if book == nil {
+		book = rollup.NewBook(names...)
+	}
+	err := d.readFolder(ctx, book, book.Until+1, d.o.Start.Wall-1)
+	select {
+	case d.books <- bookResult{whole: book, err: err}:
+	case <-ctx.Done():
+	}
+}
+
+// loadBook reads the stored book; nil where there is none that fits.
+func (d *Desk) loadBook(names []string) *rollup.Book {
+	f, err := d.o.FS.Open(bookFile)
+	if err != nil {
+		return nil
+	}
+	defer f.Close()
+	info, err := f.Stat()
+	if err != nil {
+		return nil
+	}
+	status := d.o.Status()
+	if status == nil {
+		return nil
+	}
+	book, err := rollup.Load(io.NewSectionReader(f, 0, info.Size()), status.Run, names)
+	if err != nil || book.Until >= d.o.Start.Wall {
+		return nil
+	}
+	return book
+}
+
+// readFolder adds the folder's readings between two instants, both inclusive.
+func (d *Desk) readFolder(ctx context.Context, book *rollup.Book, from, to int64) error {
+	if to < from {
+		return nil
+	}
+	folder, err := segment.OpenFolder(d.o.FS)
+	if err != nil {
+		return err
+	}
+	// One worker: the recording beside it goes first.
+	r := folder.Read(segment.ReadOptions{Workers: 1, From: from, To: to, Gauges: book.Names()[:len(d.o.Rig.Gauges)]})
+	defer r.Close()
+	for ctx.Err() == nil {
+		b, err := r.Next()
+		if errors.Is(err, io.EOF) {
+			return nil
+		}
+		if err != nil {
+			return err
+		}
+		for i, g := range b.Gauge {
+			if int(g) < len(d.o.Rig.Gauges) {
+				book.Add(int(g), b.Time[i], float64(b.Micro[i])/1e6)
+			}
+		}
+		for i := range b.Others {
+			d.addRecord(book, &b.Others[i])
+		}
+	}
+	return ctx.Err()
+}
+
+func (d *Desk) addRecord(book *rollup.Book, r *segment.Record) {
+	switch r.Kind {
+	case segment.Indication:
+		if i, ok := d.channels["gauge "+r.Name]; ok {
+			book.Add(i, r.Time, r.MM)
+		}
+	case segment.Ambient:
+		i, ok := d.channels["probe "+r.Name]
+		if !ok || r.Point == nil {
+			return
+		}
+		for k, field := range []string{"celsius", "humidity_percent"} {
+			if v, ok := r.Point.Value(field); ok {
+				if f, ok := v.(float64); ok {
+					book.Add(i+k, r.Time, f)
+				}
+			}
+		}
+	}
+}
+
+// merge takes what a pass over the folder brought.
+func (d *Desk) merge(ctx context.Context, r bookResult) {
+	if r.err != nil && ctx.Err() == nil {
+		d.o.Log.Warn("what was recorded earlier cannot be shown whole", "error", r.err)
+	}
+	if r.whole != nil {
+		d.rebuilding = false
+		d.adopt(r.whole.Origin)
+		d.setLoads()
+		// Its Since bins count from another load where one was marked meanwhile.
+		d.baseline.reread = d.baseline.reread || d.book.Origin != 0 && r.whole.Origin != d.book.Origin
+		if err := d.book.Merge(r.whole); err != nil {
+			d.o.Log.Error("the stored bins do not fit", "error", err)
+		}
+	} else {
+		d.baseline.busy = false
+		if r.since != nil {
+			d.book.ReplaceSince(r.since)
+		}
+		if r.base.asked && r.base.before == d.baseline.before {
+			d.baseline.values, d.baseline.known, d.baseline.asked = r.base.values, r.base.known, true
+		}
+	}
+	d.curves = nil
+	d.readAgain(ctx)
+}
+
+// readAgain starts a pass over the folder where one is due.
+func (d *Desk) readAgain(ctx context.Context) {
+	if !d.baseline.reread || d.baseline.busy || d.rebuilding {
+		return
+	}
+	d.baseline.reread, d.baseline.busy = false, true
+	origin, before := d.book.Origin, d.baseline.before
+	d.background.Go(func() { d.reread(ctx, origin, before) })
+}
+
+// reread brings the readings since an origin, and the baseline before the
+// first load, from the folder.
+func (d *Desk) reread(ctx context.Context, origin, before int64) {
+	out := bookResult{base: baseline{before: before, asked: true}}
+	now := time.Now().UnixNano()
+	if origin != 0 {
+		out.since = rollup.NewBook(seriesNames(d.o.Rig)...)
+		out.since.SetOrigin(origin)
+		out.err = d.readFolder(ctx, out.since, origin, now)
+	}
+	var err error
+	out.base.values, out.base.known, err = d.readBaseline(ctx, before, now)
+	out.err = errors.Join(out.err, err)
+	select {
+	case d.books <- out:
+	case <-ctx.Done():
+	}
+}
+
+// readBaseline takes the mean indication of each gauge in the minutes before
+// the first load; where there is none, its first reading of the run.
+func (d *Desk) readBaseline(ctx context.Context, before, now int64) ([]float64, []bool, error) {
+	n := len(d.o.Rig.Gauges)
+	values, known := make([]float64, n), make([]bool, n)
+	if before != 0 {
+		book := rollup.NewBook(seriesNames(d.o.Rig)...)
+		if err := d.readFolder(ctx, book, before-int64(baselineFrom), before-int64(baselineTo)); err != nil {
+			return values, known, err
+		}
+		for i := range n {
+			values[i], known[i] = meanOf(book.Series[i].Whole.Bins)
+		}
+	}
+	return values, known, nil
+}
+
+func meanOf(bins []rollup.Bin) (float64, bool) {
+	sum, n := 0.0, int64(0)
+	for i := range bins {
+		sum, n = sum+bins[i].Sum, n+bins[i].N
+	}
+	if n == 0 {
+		return math.NaN(), false
+	}
+	return sum / float64(n), true
+}
+
+// baselineOf is what gauge i showed before the first load, or the first that
+// is known of it; false where nothing is.
+func (d *Desk) baselineOf(i int) (float64, bool) {
+	if i < len(d.baseline.known) && d.baseline.known[i] {
+		return d.baseline.values[i], true
+	}
+	bins := d.book.Series[i].Whole.Bins
+	if k := slices.IndexFunc(bins, func(b rollup.Bin) bool { return b.N > 0 }); k >= 0 {
+		return bins[k].Mean(), true
+	}
+	return 0, false
+}
+
+// pendingBook waits until the readings in it are on disk.
+type pendingBook struct {
+	taken time.Time
+	bytes []byte
+}
+
+// storeNow stores the bins once an hour, when a sync has completed that began
+// after they were taken: after a power cut they hold nothing that was lost.
+func (d *Desk) storeNow(now time.Time) {
+	if d.stored.IsZero() {
+		d.stored = now
+	}
+	if d.rebuilding {
+		return
+	}
+	if p := d.pending; p != nil {
+		if s := d.o.Status(); s != nil && now.Add(-s.SyncAge).After(p.taken) {
+			d.pending = nil
+			d.write(p.bytes)
+		}
+		return
+	}
+	if now.Sub(d.stored) >= storeEvery {
+		d.stored = now
+		if b := d.encode(); b != nil {
+			d.pending = &pendingBook{now, b}
+		}
+	}
+}
+
+// end stores the bins when the recording has ended.
+func (d *Desk) end() {
+	for {
+		select {
+		case s := <-d.feed:
+			d.add(s)
+			continue
+		default:
+		}
+		break
+	}
+	if s := d.o.Status(); !d.rebuilding && s != nil && s.Closed && s.Fault == "" {
+		if b := d.encode(); b != nil {
+			d.write(b)
+		}
+	}
+	d.publish(time.Now())
+}
+
+func (d *Desk) encode() []byte {
+	s := d.o.Status()
+	if s == nil {
+		return nil
+	}
+	var b buffer
+	if err := d.book.Save(&b, s.Run); err != nil {
+		d.o.Log.Error("the bins cannot be stored", "error", err)
+		return nil
+	}
+	return b
+}
+
+type buffer []byte
+
+func (b *buffer) Write(p []byte) (int, error) {
+	*b = append(*b, p...)
+	return len(p), nil
+}
+
+// write replaces the stored book in one step.
+func (d *Desk) write(b []byte) {
+	err := func() error {
+		if err := d.o.FS.MkdirAll(reportDir); err != nil {
+			return err
+		}
+		if err := d.o.FS.Remove(bookFresh); err != nil && !errors.Is(err, fs.ErrNotExist) {
+			return err
+		}
+		f, err := d.o.FS.Create(bookFresh)
+		if err != nil {
+			return err
+		}
+		_, err = f.Write(b)
+		if err := errors.Join(err, f.Close()); err != nil {
+			return err
+		}
+		return d.o.FS.Rename(bookFresh, bookFile)
+	}()
+	if err != nil {
+		d.o.Log.Warn("the bins were not stored", "error", err)
+	}
+}

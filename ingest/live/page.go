@@ -1,0 +1,127 @@
+package live
+
+import (
+	"bytes"
+	"html/template"
+	"net/http"
+	"regexp"
+	"sync"
+
+	"gaugelog/ingest/desk"
+)
+
+// sections are the parts of a page that change, in their order on it.
+var sections = []string{"banner", "alive", "knocked", "travel", "yesterday", "speed", "load", "gauges", "plots", "outlook", "room", "alarms", "machine", "steps", "marks"}
+
+// page renders one run. What it rendered from a snapshot is kept while that is
+// the latest, so that any number of people cost what one costs.
+type page struct {
+	desk *desk.Desk
+	once *onceOnly
+
+	mu     sync.Mutex
+	from   *desk.Snapshot
+	parts  [2]map[string]template.HTML // for strangers, and for who has the token
+	drawn  *desk.Curves
+	marked int
+	plots  template.HTML
+}
+
+func newPage(d *desk.Desk) *page { return &page{desk: d, once: newOnceOnly()} }
+
+func (p *page) path() string { return "/r/" + p.desk.Name() + "/" }
+
+// view is what the whole page is rendered from.
+type view struct {
+	Title, Specimen, Path string
+	Parts                 map[string]template.HTML
+	Known                 bool
+	Done                  string
+	Forms                 formView
+}
+
+// show renders the whole page.
+func (s *Server) show(w http.ResponseWriter, r *http.Request, p *page) {
+	known := s.guard.known(r)
+	parts, err := p.render(known)
+	if err != nil {
+		s.o.Log.Error("the page could not be rendered", "error", err)
+		http.Error(w, "the page could not be rendered; see the log", http.StatusInternalServerError)
+		return
+	}
+	rig := p.desk.Rig()
+	s.render(w, http.StatusOK, "page", view{
+		Title: titleOf(p.desk), Specimen: rig.Specimen.Name, Path: p.path(), Parts: parts, Known: known,
+		Done: doneText(r.URL.Query().Get("done")), Forms: formsOf(p.desk, p.desk.Snapshot()),
+	})
+}
+
+func titleOf(d *desk.Desk) string {
+	if t := d.Rig().Title; t != "" {
+		return t
+	}
+	return d.Rig().Specimen.Name
+}
+
+var markID = regexp.MustCompile(`^m[0-9]{1,9}$`)
+
+// doneText words what was just entered; an id that is none says nothing.
+func doneText(id string) string {
+	switch {
+	case id == "withdrawn":
+		return "The mark is withdrawn. It stays in the file, with the reason, and does not count."
+	case id == "seen":
+		return "The alarm is noted as seen."
+	case markID.MatchString(id):
+		return "Entered as mark " + id + ", and on disk."
+	}
+	return ""
+}
+
+// render gives all sections of the latest snapshot.
+func (p *page) render(known bool) (map[string]template.HTML, error) {
+	s := p.desk.Snapshot()
+	p.mu.Lock()
+	defer p.mu.Unlock()
+	if p.from != s {
+		p.from, p.parts = s, [2]map[string]template.HTML{}
+	}
+	if p.drawn != s.Curves || p.marked != len(s.Marks) || p.plots == "" {
+		p.drawn, p.marked, p.plots = s.Curves, len(s.Marks), plotsOf(p.desk, s)
+	}
+	i := 0
+	if known {
+		i = 1
+	}
+	if p.parts[i] != nil {
+		return p.parts[i], nil
+	}
+	v := words(p.desk, s)
+	v.Known, v.Plots, v.Path = known, p.plots, p.path()
+	parts := map[string]template.HTML{}
+	for _, id := range sections {
+		var b bytes.Buffer
+		if err := templates.ExecuteTemplate(&b, id, v); err != nil {
+			return nil, err
+		}
+		parts[id] = template.HTML(b.String()) // made by a template of ours just now
+	}
+	p.parts[i] = parts
+	return parts, nil
+}
+
+// changes gives the sections that differ from those sent last, and notes them.
+func (p *page) changes(last map[string]string, known bool) []update {
+	parts, err := p.render(known)
+	if err != nil {
+		return nil
+	}
+	out := []update{}
+	for _, id := range sections {
+		if html := string(parts[id]); last[id] != html {
+			last[id] = html
+			out = append(out, update{id, html})
+		}
+	}
+	return out
+}
