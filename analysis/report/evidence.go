@@ -69,8 +69,13 @@ func (b *builder) evaluations() Section {
 	t := Table{Caption: "Clauses", Columns: []Column{{Name: "Rule", Text: true}, {Name: "Clause", Text: true}, {Name: "Holds", Text: true}, {Name: "Measured", Text: true}, {Name: "Required", Text: true}, {Name: "Why", Text: true}}}
 	for _, e := range b.r.Evaluations {
 		holds := "cannot evaluate"
-		if e.Pass != nil {
+		switch {
+		case e.Pass != nil:
 			holds = map[bool]string{true: "yes", false: "NO"}[*e.Pass]
+		case e.Measured != nil && e.Required == "":
+			holds = "a figure"
+		case e.Measured != nil:
+			holds = "not decided"
 		}
 		measured := "–"
 		if e.Measured != nil {

@@ -212,7 +212,7 @@ func joined(in []point) point {
 	}
 	p.t = in[0].t + nanos(sum/float64(p.n))
 	p.y, p.raw, p.mad = Median(y), Median(raw), Median(mad)
-	p.from, p.to = in[0].from, in[len(in)-1].to
+	p.from, p.to, p.f = in[0].from, in[len(in)-1].to, in[0].f
 	return p
 }
 

@@ -74,7 +74,7 @@ func analyseRun(dir string, beyond bool) (*analysis.Result, *config.Rig, error) 
 	if err != nil {
 		return nil, nil, wrongInput(err)
 	}
-	r, err := analysis.Evaluate(h, analysis.Options{Program: version(), Beyond: beyond})
+	r, err := analysis.Evaluate(h, analysis.Options{Program: version(), Beyond: beyond, Rules: filepath.Join(dir, analysis.RulesFolder)})
 	if err != nil {
 		return nil, nil, wrongInput(err)
 	}
