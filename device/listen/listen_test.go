@@ -1,0 +1,143 @@
+package listen_test
+
+import (
+	"context"
+	"errors"
+	"strings"
+	"testing"
+	"testing/synctest"
+	"time"
+
+	"gaugelog/config"
+	"gaugelog/device"
+	"gaugelog/device/devicetest"
+	"gaugelog/device/guess"
+	"gaugelog/device/listen"
+)
+
+var line = config.Line{Baud: 9600, DataBits: 8, Parity: "none", StopBits: "1"}
+
+// A streaming instrument is heard at the first setting, and nothing is sent.
+func TestStreaming(t *testing.T) {
+	synctest.Test(t, func(t *testing.T) {
+		opener := &devicetest.Opener{}
+		wire := opener.Plug("p")
+		ctx, stop := context.WithCancel(t.Context())
+		done := make(chan bool)
+		go func() {
+			defer close(done)
+			for ctx.Err() == nil {
+				wire.Send([]byte("+001.234\r\n"))
+				time.Sleep(250 * time.Millisecond)
+			}
+		}()
+		var said []string
+		p, all, err := listen.Options{Opener: opener, Port: "p", Say: func(s string) { said = append(said, s) }}.Guess(ctx)
+		stop()
+		<-done
+		if err != nil || len(p) == 0 || p[0].Frame.Kind != "text" || len(all) != 1 {
+			t.Fatalf("%v %+v, %d captures", err, p, len(all))
+		}
+		if len(said) != 1 || !strings.Contains(said[0], "9600 baud, 8N1") {
+			t.Errorf("said %q", said)
+		}
+		select {
+		case b := <-wire.Asked():
+			t.Errorf("it was sent %q", b)
+		default:
+		}
+	})
+}
+
+// One that answers only READ? is found, and each request is announced before
+// it is sent.
+func TestAsked(t *testing.T) {
+	synctest.Test(t, func(t *testing.T) {
+		opener := &devicetest.Opener{}
+		wire := opener.Plug("p")
+		ctx, stop := context.WithCancel(t.Context())
+		done := make(chan bool)
+		said := map[string]bool{}
+		go func() {
+			defer close(done)
+			for {
+				select {
+				case b := <-wire.Asked():
+					if !said[string(b)] {
+						t.Errorf("%q was sent before it was announced", b)
+					}
+					if string(b) == "READ?\n" {
+						time.Sleep(50 * time.Millisecond)
+						wire.Send([]byte("+1.2345E+00\n"))
+					}
+				case <-ctx.Done():
+					return
+				}
+			}
+		}()
+		o := listen.Options{Opener: opener, Port: "p", Line: line, Fixed: true, Say: func(s string) {
+			for _, r := range guess.UsualRequests() {
+				if strings.Contains(s, r.Words+" (") {
+					said[string(r.Bytes)] = true
+				}
+			}
+		}}
+		p, _, err := o.Guess(ctx)
+		stop()
+		<-done
+		if err != nil || len(p) == 0 || p[0].Frame.Kind != "scpi" || p[0].Frame.SCPI.Query != "READ?" {
+			t.Fatalf("%v %+v", err, p)
+		}
+	})
+}
+
+// Silence gives no proposal, and no error.
+func TestSilence(t *testing.T) {
+	synctest.Test(t, func(t *testing.T) {
+		opener := &devicetest.Opener{}
+		wire := opener.Plug("p")
+		ctx, stop := context.WithCancel(t.Context())
+		done := make(chan bool)
+		go func() {
+			defer close(done)
+			for {
+				select {
+				case <-wire.Asked():
+				case <-ctx.Done():
+					return
+				}
+			}
+		}()
+		p, _, err := listen.Options{Opener: opener, Port: "p", Line: line, Fixed: true}.Guess(ctx)
+		stop()
+		<-done
+		if err != nil || len(p) != 0 {
+			t.Fatalf("%v %+v", err, p)
+		}
+	})
+}
+
+// A cable pulled out ends it with what was heard.
+func TestUnplugged(t *testing.T) {
+	synctest.Test(t, func(t *testing.T) {
+		opener := &devicetest.Opener{}
+		wire := opener.Plug("p")
+		done := make(chan bool)
+		go func() {
+			defer close(done)
+			time.Sleep(time.Second)
+			wire.Send([]byte("+001.234\r\n"))
+			time.Sleep(time.Second)
+			opener.Unplug("p")
+		}()
+		var heard int
+		c, err := listen.Options{Opener: opener, Port: "p", Line: line, Heard: func(guess.Chunk) { heard++ }}.For(t.Context(), time.Minute)
+		<-done
+		if !errors.Is(err, device.ErrUnplugged) || string(c.Bytes()) != "+001.234\r\n" || heard == 0 {
+			t.Fatalf("%v %q", err, c.Bytes())
+		}
+		if at := c.Chunks[0].At; at < time.Second || at > 1300*time.Millisecond {
+			t.Errorf("arrived at %s, sent after 1 s", at)
+		}
+	})
+}
