@@ -185,7 +185,7 @@ func TestLostEnd(t *testing.T) {
 	}
 }
 
-// TestLateOnBus: an answer after its time-out is doubtful; unplugged frames
+// TestLateAndLost: an answer after its time-out is doubtful; unplugged frames
 // are lost and not sent.
 func TestLateAndLost(t *testing.T) {
 	s := kinds(t, `{kind: late-reply, gauge: one, at: 50 s, for: 20 s, delay: 300 ms}, {kind: late-reply, gauge: two, at: 50 s, for: 20 s, delay: 100 ms},
