@@ -129,18 +129,65 @@ func (t *creepTask) series(h *history.History, f *steps.Findings, share []float6
 	}
 	track := f.Tracks[t.gauge]
 	s.ZeroU = track.Baseline.U
+	b := creepBin{floor: h.Rig.Gauges[t.gauge].Resolution.Value / math.Sqrt(12), into: &s}
 	for _, p := range track.Points {
-		if placing(f, p.Time) || !(p.NetU > 0) {
+		if placing(f, p.Time) || !(p.NetU > 0) || math.IsNaN(p.Net) {
 			continue
 		}
-		at := t.hours(p.Time)
-		if n := len(s.TimeH); n > 0 && at <= s.TimeH[n-1] || math.IsNaN(p.Net) {
-			continue
-		}
-		s.TimeH, s.SagMM = append(s.TimeH, at), append(s.SagMM, p.Net)
-		s.U, s.N = append(s.U, p.NetU), append(s.N, p.N)
+		b.add(t.hours(p.Time), t.hours(changeBefore(f, p.Time)), p)
 	}
+	b.close()
 	return s
+}
+
+// changeBefore is the full load of the last change before an instant; the
+// first change where it lies before all of them.
+func changeBefore(f *steps.Findings, at int64) int64 {
+	last := f.Loads[0].Full
+	for _, c := range f.Loads {
+		if c.Full <= at {
+			last = c.Full
+		}
+	}
+	return last
+}
+
+// creepBin gathers a track's points into bins equally spaced in the logarithm
+// of the time since the last change of load, and nowhere wider than an hour,
+// so that the day's temperature is not averaged away.
+type creepBin struct {
+	floor float64 // no average of indications is better than this, mm
+	into  *creep.Series
+	cell  [3]int64
+	// Sums of weights, of weighted times and sags, of points' readings.
+	w, t, y float64
+	n       int
+}
+
+// binsPerDecade is the practice's figure for creep fits.
+const binsPerDecade = 20
+
+func (b *creepBin) add(atH, changeH float64, p steps.Point) {
+	since := math.Abs(atH-changeH) * 3600
+	cell := [3]int64{int64(math.Floor(changeH * 3600)), int64(math.Floor(binsPerDecade * math.Log10(max(since, 1)))), int64(math.Floor(atH))}
+	if cell != b.cell {
+		b.close()
+		b.cell = cell
+	}
+	w := 1 / (p.NetU * p.NetU)
+	b.w, b.t, b.y, b.n = b.w+w, b.t+w*atH, b.y+w*p.Net, b.n+p.N
+}
+
+// close hands the open bin over. Times rise: a bin that does not is left out.
+func (b *creepBin) close() {
+	if b.w > 0 {
+		at := b.t / b.w
+		if n := len(b.into.TimeH); n == 0 || at > b.into.TimeH[n-1] {
+			b.into.TimeH, b.into.SagMM = append(b.into.TimeH, at), append(b.into.SagMM, b.y/b.w)
+			b.into.U, b.into.N = append(b.into.U, max(1/math.Sqrt(b.w), b.floor)), append(b.into.N, b.n)
+		}
+	}
+	b.w, b.t, b.y, b.n = 0, 0, 0, 0
 }
 
 // placing reports whether a load was being placed or its swing dying out.
