@@ -12,9 +12,9 @@ import (
 func commands() []*cobra.Command {
 	return []*cobra.Command{
 		demoCommand(), newCommand(), checkCommand(), portsCommand(), simulateCommand(),
-		listenCommand(), calibrateCommand(),
+		listenCommand(), nudgeCommand(), calibrateCommand(),
 		recordCommand(), markCommand(),
-		analyseCommand(), reportCommand(), verifyCommand(),
+		analyseCommand(), reportCommand(), verifyCommand(), exportCommand(),
 	}
 }
 
