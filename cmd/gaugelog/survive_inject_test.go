@@ -76,6 +76,29 @@ func (s *traced) goesOn(d time.Duration) {
 	}
 }
 
+// begins waits until the recorder records. It says false where the fault met it
+// while it laid out the run: then it must have ended and said what was wrong.
+func (s *traced) begins() bool {
+	s.t.Helper()
+	for began := time.Now(); time.Since(began) < 30*time.Second; time.Sleep(5 * time.Millisecond) {
+		if strings.Contains(s.process.out.String(), "recording") {
+			return true
+		}
+		select {
+		case <-s.process.ended:
+			if text := s.process.err.String(); !strings.Contains(text, "gaugelog: ") || s.process.result == nil {
+				s.t.Fatalf("it ended with %v before it recorded:\n%s", s.process.result, text)
+			}
+			s.goesOn(300 * time.Millisecond)
+			s.t.Logf("a recording does not begin on a disk that fails; %d readings on the next try", s.onceEach(0, 20))
+			return false
+		default:
+		}
+	}
+	s.t.Fatalf("it neither records nor ends:\n%s", s.process.err.String())
+	return false
+}
+
 // injected counts the calls that met the fault.
 func (s *traced) injected() int {
 	text, err := os.ReadFile(s.log)
@@ -175,11 +198,13 @@ func TestSurviveFailingCalls(t *testing.T) {
 	needTool(t, "strace")
 	program := buildProgram(t)
 	for _, fault := range []string{"fdatasync:error=EIO", "write:error=ENOSPC", "write:error=EROFS"} {
-		for n := 2; n <= 14; n += *surviveEach {
+		for n := 1; n <= 16; n += *surviveEach {
 			t.Run(fmt.Sprintf("%s at %d", fault, n), func(t *testing.T) {
 				t.Parallel()
 				s := trace(t, program, quick, fmt.Sprintf("%s:when=%d", fault, n))
-				s.process.says(t, "recording", 30*time.Second)
+				if !s.begins() {
+					return
+				}
 				time.Sleep(2500 * time.Millisecond)
 				err := s.process.end(t, syscall.SIGTERM)
 				hit := s.injected()
@@ -212,7 +237,9 @@ func TestSurviveADiskThatStaysBroken(t *testing.T) {
 			t.Run(fmt.Sprintf("%s from %d on", fault, n), func(t *testing.T) {
 				t.Parallel()
 				s := trace(t, program, quick, fmt.Sprintf("%s:when=%d+", fault, n))
-				s.process.says(t, "recording", 30*time.Second)
+				if !s.begins() {
+					return
+				}
 				time.Sleep(2500 * time.Millisecond)
 				if err := s.process.end(t, syscall.SIGTERM); err == nil || !strings.Contains(s.process.err.String(), "could not be saved") {
 					t.Errorf("ending says %v\n%s", err, s.process.err.String())

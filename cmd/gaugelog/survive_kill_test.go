@@ -3,6 +3,7 @@
 package main
 
 import (
+	"bytes"
 	"flag"
 	"fmt"
 	"math/rand/v2"
@@ -117,7 +118,10 @@ func (k *killer) life() {
 		first = numbers[len(numbers)-1] + 1
 	}
 	p := k.record()
-	deadline := time.Now().Add(time.Duration(k.rng.IntN(900)) * time.Millisecond)
+	if k.rng.IntN(4) > 0 {
+		k.waitForReadings(p, first)
+	}
+	deadline := time.Now().Add(time.Duration(k.rng.IntN(500)) * time.Millisecond)
 	var marking sync.WaitGroup
 	if k.rng.IntN(3) == 0 {
 		marking.Go(func() { k.mark() })
@@ -135,6 +139,26 @@ func (k *killer) life() {
 	marking.Wait()
 	left := decodeReadings(k.t, k.run, first)
 	k.check(acked, left)
+}
+
+// waitForReadings waits until the first checkpoint of this life covers readings,
+// so that most kills meet a recording and only the others its beginning.
+func (k *killer) waitForReadings(p *process, first int) {
+	name := filepath.Join(k.run, filepath.FromSlash(segment.SegmentName(segment.ReadingsDir, first)))
+	for began := time.Now(); time.Since(began) < 20*time.Second; time.Sleep(10 * time.Millisecond) {
+		select {
+		case <-p.ended:
+			return
+		default:
+		}
+		if text, err := os.ReadFile(name); err == nil && bytes.Contains(text, []byte("\nindication,")) {
+			return
+		}
+		if _, err := os.Stat(name + ".zst"); err == nil {
+			return
+		}
+	}
+	k.t.Errorf("%s: no reading within 20 s", k.run)
 }
 
 // begun says whether there is a run folder yet; a kill may come before that.
