@@ -27,15 +27,15 @@ type tally struct {
 
 // part is what one stretch of the folder holds of one bin.
 type part struct {
-	gauge            int
-	from, to         int64
-	n                int64
-	sum              wide // of the instants, from its From
-	first, last      int64
-	firstMM, lastMM  int64 // millionths of a mm
-	tallies          int   // where its tallies end
-	behind, farther  int64 // readings behind a younger one of the stretch, and by more than the tolerance
-	inexact, foreign bool
+	gauge           int
+	from, to        int64
+	n               int64
+	sum             wide // of the instants, from its From
+	first, last     int64
+	firstMM, lastMM int64 // millionths of a mm
+	tallies         int   // where its tallies end
+	behind, farther int64 // readings behind a younger one of the stretch, and by more than the tolerance
+	inexact         bool
 }
 
 // wide is an unsigned sum of 128 bits: nanoseconds over a long bin do not fit
