@@ -12,7 +12,7 @@ import (
 func commands() []*cobra.Command {
 	return []*cobra.Command{
 		demoCommand(), newCommand(), checkCommand(), portsCommand(), simulateCommand(),
-		listenCommand(), nudgeCommand(), calibrateCommand(),
+		listenCommand(), nudgeCommand(), sectionCommand(), calibrateCommand(),
 		recordCommand(), markCommand(),
 		analyseCommand(), reportCommand(), verifyCommand(), exportCommand(),
 	}
