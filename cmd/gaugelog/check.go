@@ -105,22 +105,31 @@ func outside(rig *config.Rig, p *stiffness.Prediction) error {
 }
 
 func printChecked(w io.Writer, rig *config.Rig, problems []config.Problem, c checked) error {
-	fmt.Fprintf(w, "%s: %d gauges, %d supports, %d loads, %d planned steps\n", c.Rig, len(rig.Gauges), len(rig.Supports), len(rig.Loads), len(rig.Plan))
+	fmt.Fprintf(w, "%s: %s, %s, %s, %s\n", c.Rig, count(len(rig.Gauges), "gauge"), count(len(rig.Supports), "support"),
+		count(len(rig.Loads), "load"), count(len(rig.Plan), "planned step"))
 	if c.Prediction == nil {
 		fmt.Fprintf(w, "\nNothing is foretold: %s\n", c.NotForetold)
-		return nil
-	}
-	printSteps(w, rig, c.Prediction)
-	printGauges(w, c.Prediction)
-	printReach(w, c.Prediction)
-	for _, warning := range c.Prediction.Warnings {
-		fmt.Fprintf(w, "warning: %s\n", warning.Text)
+	} else {
+		printSteps(w, rig, c.Prediction)
+		printGauges(w, c.Prediction)
+		printReach(w, c.Prediction)
+		for _, warning := range c.Prediction.Warnings {
+			fmt.Fprintf(w, "warning: %s\n", warning.Text)
+		}
 	}
 	fmt.Fprintf(w, "\nCautions\n")
 	for _, text := range report.Cautions {
 		fmt.Fprintf(w, "  - %s\n", text)
 	}
 	return nil
+}
+
+// count prints a number with its noun.
+func count(n int, noun string) string {
+	if n != 1 {
+		noun += "s"
+	}
+	return fmt.Sprintf("%d %s", n, noun)
 }
 
 func printSteps(w io.Writer, rig *config.Rig, p *stiffness.Prediction) {

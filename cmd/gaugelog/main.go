@@ -11,9 +11,11 @@ package main
 
 import (
 	"context"
+	"errors"
 	"io"
 	"os"
 	"os/signal"
+	"strings"
 	"syscall"
 	_ "time/tzdata" // the rig's time zone, on machines without a database
 
@@ -34,7 +36,7 @@ func run(args []string, in io.Reader, out, errOut io.Writer) Code {
 	root.SetOut(out)
 	root.SetErr(errOut)
 	if err := root.ExecuteContext(ctx); err != nil {
-		return printError(errOut, err)
+		return printError(errOut, unknownCommand(err))
 	}
 	return Done
 }
@@ -66,7 +68,36 @@ Exit codes: 0 done; 1 the work failed; 2 the rig file or the input is wrong;
 		&cobra.Group{ID: "after", Title: "From readings to report:"},
 	)
 	for _, c := range commands() {
+		plainArgs(c)
 		root.AddCommand(c)
 	}
 	return root
+}
+
+// plainArgs turns the library's complaint about the number of arguments into
+// one that says how the command is used.
+func plainArgs(c *cobra.Command) {
+	check := c.Args
+	if check == nil {
+		return
+	}
+	c.Args = func(cmd *cobra.Command, args []string) error {
+		err := check(cmd, args)
+		var own *failure
+		if err == nil || errors.As(err, &own) {
+			return err
+		}
+		return wrongf("use it so: "+cmd.UseLine()+"; more: "+cmd.CommandPath()+" --help",
+			"%s was given %d arguments and cannot do with them", cmd.Name(), len(args))
+	}
+}
+
+// unknownCommand gives the library's error for a word that is no command its
+// mend and exit code.
+func unknownCommand(err error) error {
+	if strings.HasPrefix(err.Error(), "unknown command") {
+		what, _, _ := strings.Cut(err.Error(), "\n")
+		return wrongf("gaugelog --help lists the commands", "%s", what)
+	}
+	return err
 }
