@@ -48,7 +48,7 @@ func (d *Desk) silentFacts(s *ingest.Status) []alarm.Fact {
 		f := alarm.Fact{Cause: "silent", Subject: l.Name, Wish: alarm.Over}
 		switch {
 		case l.Silent && l.Seen:
-			f.Wish, f.Text = alarm.Raise, "nothing has come from it for "+Span(l.Age)
+			f.Wish, f.Text = alarm.Raise, "nothing has come from it since "+d.Local(time.Unix(0, l.Wall)).Format("2 Jan 15:04:05")
 		case l.Silent, !l.Seen && !d.onButton(l) && time.Duration(s.At.Boot-d.o.Start.Boot) > quietAtStart:
 			f.Wish, f.Text = alarm.Raise, "nothing has come from it since the recording began"
 		}
@@ -283,7 +283,7 @@ func (d *Desk) analysisFacts(now time.Time) []alarm.Fact {
 		}
 		text := words + " at " + d.Local(time.Unix(0, b.From)).Format("2 Jan 15:04")
 		if b.Size != nil {
-			text += fmt.Sprintf(", %+.3f mm", *b.Size)
+			text += ", " + Signed(*b.Size, 0.001) + " mm"
 		}
 		if b.Load != nil {
 			text += fmt.Sprintf(", about %+.3g N", *b.Load)

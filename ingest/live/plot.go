@@ -189,7 +189,7 @@ func thin(bins []rollup.Bin) []rollup.Bin {
 // timeTicks puts ticks at round local times.
 func timeTicks(d *desk.Desk, x0, x1 float64) ([]tick, string) {
 	span := x1 - x0
-	steps := []float64{1, 5, 15, 60, 300, 900, 3600, 3 * 3600, 6 * 3600, 86400, 2 * 86400, 7 * 86400, 14 * 86400, 30 * 86400, 91 * 86400, 182 * 86400, 365 * 86400}
+	steps := []float64{1, 5, 15, 60, 300, 900, 3600, 3 * 3600, 6 * 3600, 86400, 2 * 86400, 3 * 86400, 5 * 86400, 7 * 86400, 14 * 86400, 30 * 86400, 91 * 86400, 182 * 86400, 365 * 86400}
 	step := steps[len(steps)-1]
 	for _, k := range steps {
 		if span/k <= 4 {

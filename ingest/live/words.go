@@ -291,12 +291,24 @@ func (w speaker) lead() *desk.Gauge {
 	return best
 }
 
+// net is the corrected sag of a gauge, with its age, where there is one.
+func (w speaker) net(gauge string) string {
+	if o := w.s.Outlook; o != nil {
+		for _, s := range o.Sag {
+			if s.Gauge == gauge {
+				return "; " + desk.Fixed(s.MM, 0.001) + " mm corrected, at " + w.day(time.Unix(0, o.At))
+			}
+		}
+	}
+	return ""
+}
+
 func (w speaker) yesterday() answer {
 	g := w.lead()
 	if g == nil {
 		return answer{unknown, "Nothing to compare yet", nil}
 	}
-	now := fmt.Sprintf("Sag now %s mm at %s, uncorrected.", desk.Fixed(*g.Sag, g.Resolution), g.Name)
+	now := fmt.Sprintf("Sag now %s mm at %s, uncorrected", desk.Fixed(*g.Sag, g.Resolution), g.Name) + w.net(g.Name) + "."
 	if w.s.Loads.First.IsZero() {
 		now = fmt.Sprintf("No load is entered yet. %s shows %s mm.", g.Name, desk.Fixed(g.MM, g.Resolution))
 	}
@@ -325,13 +337,16 @@ func (w speaker) yesterday() answer {
 
 // hours words one of the intervals that are compared.
 func hours(d time.Duration) string {
-	if d == time.Hour {
+	switch d {
+	case 24 * time.Hour:
+		return "24 h"
+	case time.Hour:
 		return "hour"
 	}
 	return desk.Span(d)
 }
 
-// fallingApart is how many counts of the resolution two changes must differ by
+// differCounts is how many counts of the resolution two changes must differ by
 // to be called different.
 const differCounts = 2
 
