@@ -179,6 +179,10 @@ func (r *Recorder) noteLosses() {
 	}
 }
 
+// lastTries is how often flushSync tries: memory holds the only copy, and there
+// is no later. Each attempt writes to a file of its own.
+const lastTries = 3
+
 // flushSync puts everything on disk before it returns. A live recorder's
 // writer must not be running.
 func (r *Recorder) flushSync() error {
@@ -187,12 +191,16 @@ func (r *Recorder) flushSync() error {
 		if !r.filling.empty() {
 			r.cut()
 		}
-		for len(r.waiting) > 0 {
+		for tries := 0; len(r.waiting) > 0; {
 			b := r.waiting[0]
 			err := r.store.commit(b)
 			r.inFlight, r.sentAt, r.lastCommit = b, r.now, r.now
 			r.settle(outcome{batch: b, err: err, moved: r.store.takeMoved(), refused: r.store.takeRefused()})
-			if err != nil {
+			if err == nil {
+				tries = 0
+				continue
+			}
+			if tries++; tries == lastTries {
 				return fmt.Errorf("%s: %w", faultText(err), err)
 			}
 		}

@@ -9,6 +9,7 @@ import (
 	"path/filepath"
 	"strings"
 	"sync"
+	"sync/atomic"
 	"testing"
 	"time"
 
@@ -30,7 +31,7 @@ type feeder struct {
 type fedGauge struct {
 	name          string
 	master, slave *os.File
-	next          int
+	next          atomic.Int64
 	pending       []byte
 }
 
@@ -50,7 +51,7 @@ func newFeeder(t *testing.T, gauges, rate int) *feeder {
 		if err := unix.SetNonblock(int(master.Fd()), true); err != nil {
 			t.Fatal(err)
 		}
-		f.gauges = append(f.gauges, &fedGauge{name: fmt.Sprintf("g%d", i), master: master, slave: slave, next: 1})
+		f.gauges = append(f.gauges, &fedGauge{name: fmt.Sprintf("g%d", i), master: master, slave: slave})
 	}
 	f.done.Go(func() { f.feed(rate) })
 	t.Cleanup(func() {
@@ -88,14 +89,22 @@ func (f *feeder) feed(rate int) {
 // send writes the next frame, or what is left of the last one.
 func (g *fedGauge) send() {
 	if len(g.pending) == 0 {
-		g.pending = fmt.Appendf(g.pending, "%+09.3f\r\n", float64(g.next)/1000)
-		g.next++
+		g.pending = fmt.Appendf(g.pending, "%+09.3f\r\n", float64(g.next.Add(1))/1000)
 	}
 	n, err := unix.Write(int(g.master.Fd()), g.pending)
 	if err != nil && !errors.Is(err, unix.EAGAIN) {
 		return
 	}
 	g.pending = g.pending[max(0, n):]
+}
+
+// sent is the number of the last frame of each gauge.
+func (f *feeder) sent() map[string]int {
+	out := map[string]int{}
+	for _, g := range f.gauges {
+		out[g.name] = int(g.next.Load())
+	}
+	return out
 }
 
 // ready takes back the exclusive use that a killed recorder left on the ports.
