@@ -281,9 +281,11 @@ func count(n int64) string {
 	return b.String()
 }
 
+// lastMark is the mark entered last that counts; nil where there is none.
 func (w speaker) lastMark() *ingest.Mark {
 	for i := len(w.s.Marks) - 1; i >= 0; i-- {
-		if m := &w.s.Marks[i]; m.Withdraw == "" {
+		m := &w.s.Marks[i]
+		if _, gone := w.s.Withdrawn[m.ID]; m.Withdraw == "" && (m.ID == "" || !gone) {
 			return m
 		}
 	}
