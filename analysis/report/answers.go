@@ -13,6 +13,7 @@ import (
 type builder struct {
 	r    *analysis.Result
 	rig  *config.Rig
+	o    Options
 	u    units
 	zone *time.Location
 }

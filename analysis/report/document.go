@@ -1,6 +1,9 @@
 package report
 
 import (
+	"io/fs"
+	"time"
+
 	"gonum.org/v1/plot"
 
 	"gaugelog/analysis"
@@ -11,7 +14,10 @@ import (
 type Document struct {
 	// Title is the rig's title; Subtitle says what was tested and when.
 	Title, Subtitle string
-	Sections        []Section
+	// Last is the instant of the last reading: the only date a writer may put
+	// into a file, so that the same run gives the same bytes. Zero: unknown.
+	Last     time.Time
+	Sections []Section
 }
 
 // Section is a numbered part of the report. Lead is its first sentence: what
@@ -21,7 +27,7 @@ type Section struct {
 	Blocks          []Block
 }
 
-// Block is a Paragraph, List, Table or Figure.
+// Block is a Paragraph, List, Table, Figure or Picture.
 type Block interface{ block() }
 
 // Paragraph is running text.
@@ -54,12 +60,26 @@ type Figure struct {
 	// Width and Height are in millimetres on paper.
 	Width, Height float64
 	Plot          *plot.Plot
+	// Below is a second plot under the first over the same axis, or nil; its
+	// Height is within that of the figure.
+	Below *plot.Plot
+}
+
+// Picture is a photograph as it was handed in.
+type Picture struct {
+	Caption, Alt string
+	// Type is its media type, image/jpeg or image/png; Width and Height are in
+	// pixels.
+	Type          string
+	Data          []byte
+	Width, Height int
 }
 
 func (Paragraph) block() {}
 func (List) block()      {}
 func (Table) block()     {}
 func (Figure) block()    {}
+func (Picture) block()   {}
 
 // Options chooses how a result is shown.
 type Options struct {
@@ -68,13 +88,41 @@ type Options struct {
 	Rig *config.Rig
 	// Units is "si" (default) or "us"; the two are never mixed in a table.
 	Units string
+	// Marks are the run's marks in the order in which they were entered.
+	Marks []Mark
+	// Amendments are what was learned after the start.
+	Amendments []config.Amendment
+	// Events are what happened to the recording, in order of time.
+	Events []Event
+	// Files is the run folder, from which the marks' photographs are read; nil
+	// leaves them out and says so.
+	Files fs.FS
+}
+
+// Mark is one entry of an operator, withdrawn ones among them.
+type Mark struct {
+	ID   string
+	Time time.Time
+	// What says it in words; By names who entered it, "" where nobody did.
+	What, By string
+	// Withdrawn says why the mark does not count; "" where it does.
+	Withdrawn string
+	// Photo is the path of its picture within the run folder, or "".
+	Photo string
+}
+
+// Event is something that happened to the recording.
+type Event struct {
+	Time                time.Time
+	Kind, Gauge, Detail string
 }
 
 // Build makes the document of a result. The order answers a client's
 // questions first, then shows how each answer came about.
 func Build(r *analysis.Result, o Options) *Document {
-	b := &builder{r: r, rig: o.Rig, u: unitsOf(o.Units), zone: zoneOf(o.Rig)}
+	b := &builder{r: r, rig: o.Rig, o: o, u: unitsOf(o.Units), zone: zoneOf(o.Rig)}
 	d := &Document{Title: b.title(), Subtitle: b.subtitle()}
+	d.Last, _ = time.Parse(time.RFC3339Nano, r.Run.Last)
 	for _, make := range []func() Section{
 		b.answers, b.jobCard, b.steps, b.shape, b.stiffness, b.creep, b.recovery,
 		b.surroundings, b.corrections, b.evaluations, b.trace, b.cautions,

@@ -3,6 +3,7 @@ package report
 import (
 	"bytes"
 	_ "embed"
+	"encoding/base64"
 	"fmt"
 	"html/template"
 	"io"
@@ -23,6 +24,7 @@ var style string
 var pageTemplate = template.Must(template.New("report").Funcs(template.FuncMap{
 	"kind":  kindOf,
 	"svg":   svgOf,
+	"src":   dataURI,
 	"label": columnLabel,
 	"add":   func(a, b int) int { return a + b },
 }).Parse(page))
@@ -53,6 +55,8 @@ func kindOf(b Block) string {
 		return "table"
 	case Figure:
 		return "figure"
+	case Picture:
+		return "picture"
 	}
 	panic(fmt.Sprintf("report: unknown block %T", b))
 }
@@ -68,11 +72,40 @@ func columnLabel(c Column) string {
 // never lies on the data.
 const legendWidth = 30 * vg.Millimeter
 
-// drawFigure draws a plot with its legend on the right.
-func drawFigure(p *plot.Plot, c draw.Canvas) {
+// drawFigure draws a figure's plots with their legends on the right, the
+// second under the first with the frames' sides in line.
+func drawFigure(f Figure, c draw.Canvas) {
+	if f.Below == nil {
+		drawPlot(f.Plot, c)
+		return
+	}
+	h := c.Max.Y - c.Min.Y
+	upper, lower := draw.Crop(c, 0, 0, h*0.45, 0), draw.Crop(c, 0, 0, 0, -h*0.57)
+	defer roomy(f.Plot)()
+	defer roomy(f.Below)()
+	side := draw.Crop(upper, 0, -legendWidth, 0, 0)
+	side2 := draw.Crop(lower, 0, -legendWidth, 0, 0)
+	left := max(f.Plot.DataCanvas(side).Min.X, f.Below.DataCanvas(side2).Min.X)
+	drawAligned(f.Plot, upper, left)
+	drawAligned(f.Below, lower, left)
+}
+
+// drawAligned draws a plot whose frame begins at left.
+func drawAligned(p *plot.Plot, c draw.Canvas, left vg.Length) {
 	legend := p.Legend
 	defer func() { p.Legend = legend }()
-	roomy(p)
+	p.Legend = plot.NewLegend()
+	part := draw.Crop(c, 0, -legendWidth, 0, 0)
+	part = draw.Crop(part, left-p.DataCanvas(part).Min.X, 0, 0, 0)
+	p.Draw(part)
+	legend.Draw(draw.Crop(c, c.Max.X-c.Min.X-legendWidth+vg.Points(6), 0, 0, -vg.Points(4)))
+}
+
+// drawPlot draws a plot with its legend on the right.
+func drawPlot(p *plot.Plot, c draw.Canvas) {
+	legend := p.Legend
+	defer func() { p.Legend = legend }()
+	defer roomy(p)()
 	box := legend.Rectangle(c)
 	if box.Max.X-box.Min.X <= 0 {
 		p.Draw(c)
@@ -93,7 +126,7 @@ var (
 func svgOf(f Figure) (template.HTML, error) {
 	w, h := vg.Length(f.Width)*vg.Millimeter, vg.Length(f.Height)*vg.Millimeter
 	c := vgsvg.New(w, h)
-	drawFigure(f.Plot, draw.New(c))
+	drawFigure(f, draw.New(c))
 	var buf bytes.Buffer
 	if _, err := c.WriteTo(&buf); err != nil {
 		return "", fmt.Errorf("plot %s: %w", f.ID, err)
@@ -107,4 +140,9 @@ func svgOf(f Figure) (template.HTML, error) {
 	open := fmt.Sprintf(`<svg xmlns="http://www.w3.org/2000/svg" role="img" aria-label="%s" viewBox="%s">`,
 		template.HTMLEscapeString(f.Alt), head[1])
 	return template.HTML(open + string(body)), nil
+}
+
+// dataURI is a photograph as the page holds it.
+func dataURI(p Picture) template.URL {
+	return template.URL("data:" + p.Type + ";base64," + base64.StdEncoding.EncodeToString(p.Data))
 }

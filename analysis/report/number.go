@@ -36,7 +36,11 @@ func fixed(v float64, decimals int) string {
 	return grouped(s)
 }
 
-// grouped puts a thin space between thousands of five digits and more, as ISO
+// thousands stands between groups of three digits: a no-break space, which
+// every font has and no line is broken at.
+const thousands = "\u00a0"
+
+// grouped puts a space between thousands of five digits and more, as ISO
 // 80000-1 has it, before the decimal point only.
 func grouped(s string) string {
 	whole, frac, dot := strings.Cut(s, ".")
@@ -48,7 +52,7 @@ func grouped(s string) string {
 		var b strings.Builder
 		for i, c := range whole {
 			if i > 0 && (len(whole)-i)%3 == 0 {
-				b.WriteRune(' ')
+				b.WriteString(thousands)
 			}
 			b.WriteRune(c)
 		}

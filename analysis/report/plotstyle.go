@@ -80,8 +80,10 @@ func (niceTicks) Ticks(lo, hi float64) []plot.Tick {
 	return out
 }
 
-// roomy widens the ranges a little, so that no marker is cut by the frame.
-func roomy(p *plot.Plot) {
+// roomy widens the ranges a little, so that no marker is cut by the frame; the
+// function it returns puts them back, so that a plot may be drawn again.
+func roomy(p *plot.Plot) func() {
+	x, y := [2]float64{p.X.Min, p.X.Max}, [2]float64{p.Y.Min, p.Y.Max}
 	for _, a := range []*plot.Axis{&p.X, &p.Y} {
 		if _, logarithmic := a.Scale.(plot.LogScale); logarithmic {
 			f := math.Pow(a.Max/a.Min, 0.03)
@@ -91,6 +93,7 @@ func roomy(p *plot.Plot) {
 		d := 0.03 * (a.Max - a.Min)
 		a.Min, a.Max = a.Min-d, a.Max+d
 	}
+	return func() { p.X.Min, p.X.Max, p.Y.Min, p.Y.Max = x[0], x[1], y[0], y[1] }
 }
 
 // sagDown turns the axis so that sag grows downwards, as the beam goes.

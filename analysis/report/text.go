@@ -7,8 +7,8 @@ import (
 	"text/tabwriter"
 )
 
-// Text writes the document for a terminal: the same sections and tables,
-// figures by their captions only left out.
+// Text writes the document for a terminal: the same sections and tables, with
+// plots and photographs by their captions.
 func Text(w io.Writer, d *Document) error {
 	var b strings.Builder
 	fmt.Fprintf(&b, "%s\n%s\n", d.Title, d.Subtitle)
@@ -36,6 +36,10 @@ func textBlock(b *strings.Builder, block Block) {
 		}
 	case Table:
 		textTable(b, v)
+	case Figure:
+		fmt.Fprintf(b, "\n  [plot] %s\n", v.Caption)
+	case Picture:
+		fmt.Fprintf(b, "\n  [photograph] %s\n", v.Caption)
 	}
 }
 

@@ -34,14 +34,15 @@ analysed up to its last completed sync.`,
 			if units != "si" && units != "us" {
 				return wrongf("give --units si or --units us", "units %q are not known", units)
 			}
-			r, rig, err := analyseRun(args[0], beyond)
+			r, opt, err := readRun(args[0], beyond)
 			if err != nil {
 				return err
 			}
+			opt.Units = units
 			if asJSON {
 				err = printJSON(cmd.OutOrStdout(), r)
 			} else {
-				err = report.Text(cmd.OutOrStdout(), report.Build(r, report.Options{Rig: rig, Units: units}))
+				err = report.Text(cmd.OutOrStdout(), report.Build(r, opt))
 			}
 			return errors.Join(err, held(r))
 		},
@@ -70,6 +71,15 @@ func needRun(dir string) error {
 
 // analyseRun reads and evaluates a run folder, and returns the rig as amended.
 func analyseRun(dir string, beyond bool) (*analysis.Result, *config.Rig, error) {
+	h, r, err := evaluateRun(dir, beyond)
+	if err != nil {
+		return nil, nil, err
+	}
+	return r, h.Rig, nil
+}
+
+// evaluateRun reads and evaluates a run folder.
+func evaluateRun(dir string, beyond bool) (*history.History, *analysis.Result, error) {
 	h, err := history.Load(dir)
 	if err != nil {
 		return nil, nil, wrongInput(err)
@@ -78,7 +88,7 @@ func analyseRun(dir string, beyond bool) (*analysis.Result, *config.Rig, error) 
 	if err != nil {
 		return nil, nil, wrongInput(err)
 	}
-	return r, h.Rig, nil
+	return h, r, nil
 }
 
 // wrongInput marks an error of what was handed in, unless it says itself what

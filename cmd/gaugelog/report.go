@@ -2,22 +2,32 @@ package main
 
 import (
 	"bytes"
+	"cmp"
 	"errors"
 	"fmt"
 	"io"
 	"os"
 	"path/filepath"
+	"slices"
+	"strings"
+	"time"
 
 	"github.com/spf13/cobra"
 
+	"gaugelog/analysis"
+	"gaugelog/analysis/history"
 	"gaugelog/analysis/report"
+	"gaugelog/ingest"
 )
+
+// reportFormats are what --format takes.
+var reportFormats = []string{"html", "pdf", "md", "json", "csv"}
 
 // reportOptions is what writeReport needs beside the run.
 type reportOptions struct {
-	format, output, units string
-	beyond                bool
-	progress              io.Writer
+	format, output, units, paper string
+	beyond                       bool
+	progress                     io.Writer
 }
 
 func reportCommand() *cobra.Command {
@@ -26,10 +36,16 @@ func reportCommand() *cobra.Command {
 		Use:     "report RUN",
 		GroupID: "after",
 		Short:   "Writes the report of a run",
-		Long: `Writes the report of a run as one self-contained page with tables, plots and
-cautions, to RUN/report/report.html unless --output names another place. What
-lies in RUN/report/ can always be made again and is replaced.`,
-		Example: "  gaugelog report runs/first --output slat.html",
+		Long: `Writes the report of a run with tables, plots and cautions, to
+RUN/report/report.html (or .pdf and so on) unless --output names another place.
+What lies in RUN/report/ can always be made again and is replaced.
+
+  html   one self-contained page, for screens of any size and for print
+  pdf    for print, on A4 or Letter
+  md     Markdown, plots by their captions
+  json   the result as ` + "`analyse --json`" + ` prints it
+  csv    the tables, one block each, for spreadsheets`,
+		Example: "  gaugelog report runs/first --format pdf --paper letter\n  gaugelog report runs/first --output slat.html",
 		Args:    oneRun,
 		RunE: func(cmd *cobra.Command, args []string) error {
 			page, err := writeReport(args[0], o)
@@ -39,7 +55,8 @@ lies in RUN/report/ can always be made again and is replaced.`,
 			return err
 		},
 	}
-	c.Flags().StringVar(&o.format, "format", "html", "html")
+	c.Flags().StringVar(&o.format, "format", "html", "html, pdf, md, json or csv")
+	c.Flags().StringVar(&o.paper, "paper", "a4", "paper of a pdf: a4 or letter")
 	c.Flags().StringVar(&o.output, "output", "", "file to write (default RUN/report/report.html)")
 	c.Flags().StringVar(&o.units, "units", "si", "units of the report: si or us")
 	c.Flags().BoolVar(&o.beyond, "beyond", false, "forecast more than two decades of time beyond the data")
@@ -49,26 +66,33 @@ lies in RUN/report/ can always be made again and is replaced.`,
 // writeReport analyses a run and writes its report; it returns where. A file
 // named by output is not overwritten.
 func writeReport(run string, o reportOptions) (string, error) {
-	if o.format != "html" {
-		return "", wrongf("give --format html", "format %q is not known", o.format)
+	if !slices.Contains(reportFormats, o.format) {
+		return "", wrongf("give --format "+strings.Join(reportFormats, ", "), "format %q is not known", o.format)
 	}
-	if o.units == "" {
-		o.units = "si"
-	}
+	o.units, o.paper = cmp.Or(o.units, "si"), cmp.Or(o.paper, "a4")
 	if o.units != "si" && o.units != "us" {
 		return "", wrongf("give --units si or --units us", "units %q are not known", o.units)
 	}
-	r, rig, err := analyseRun(run, o.beyond)
+	if !slices.Contains(report.Papers, o.paper) {
+		return "", wrongf("give --paper a4 or --paper letter", "paper %q is not known", o.paper)
+	}
+	r, opt, err := readRun(run, o.beyond)
 	if err != nil {
 		return "", err
 	}
+	opt.Units = o.units
 	var page bytes.Buffer
-	if err := report.HTML(&page, report.Build(r, report.Options{Rig: rig, Units: o.units})); err != nil {
+	if o.format == "json" {
+		err = printJSON(&page, r)
+	} else {
+		err = report.Write(&page, report.Build(r, opt), o.format, o.paper)
+	}
+	if err != nil {
 		return "", err
 	}
 	path := o.output
 	if path == "" {
-		path = filepath.Join(run, "report", "report.html")
+		path = filepath.Join(run, "report", "report."+o.format)
 		if err := os.MkdirAll(filepath.Dir(path), 0o755); err != nil {
 			return "", err
 		}
@@ -79,6 +103,49 @@ func writeReport(run string, o reportOptions) (string, error) {
 		return "", err
 	}
 	return path, held(r)
+}
+
+// readRun analyses a run and gathers what its report shows beside the result.
+func readRun(run string, beyond bool) (*analysis.Result, report.Options, error) {
+	var o report.Options
+	h, r, err := evaluateRun(run, beyond)
+	if err != nil {
+		return nil, o, err
+	}
+	o.Rig, o.Amendments, o.Files = h.Rig, h.Amendments, os.DirFS(run)
+	o.Events = eventsOf(h)
+	o.Marks, err = marksOf(run)
+	return r, o, err
+}
+
+func eventsOf(h *history.History) []report.Event {
+	var out []report.Event
+	for _, e := range h.Events {
+		out = append(out, report.Event{Time: time.Unix(0, e.Time), Kind: e.Kind, Gauge: e.Gauge, Detail: e.Detail})
+	}
+	return out
+}
+
+// marksOf lists a run's marks, withdrawn ones among them.
+func marksOf(run string) ([]report.Mark, error) {
+	dir, err := ingest.OpenDir(run, ingest.DirOptions{})
+	if err != nil {
+		return nil, err
+	}
+	defer dir.Close()
+	marks, err := ingest.ListMarks(dir.FS())
+	if err != nil {
+		return nil, wrongInput(err)
+	}
+	gone := ingest.Withdrawn(marks)
+	var out []report.Mark
+	for _, m := range marks {
+		if m.Withdraw != "" {
+			continue
+		}
+		out = append(out, report.Mark{ID: m.ID, Time: time.Unix(0, m.Time), What: markWords(m), By: m.By, Withdrawn: gone[m.ID], Photo: m.Photo})
+	}
+	return out, nil
 }
 
 // replaceFile writes a file whole or not at all.
