@@ -54,7 +54,6 @@ type source struct {
 	still  time.Duration // since when it stays within the size of last
 	began  time.Duration
 	ended  time.Duration
-	beside map[string]float64
 }
 
 // New returns a watcher that knows no source yet.
