@@ -14,7 +14,7 @@ func commands() []*cobra.Command {
 		demoCommand(), newCommand(), checkCommand(), portsCommand(), simulateCommand(),
 		listenCommand(), nudgeCommand(), sectionCommand(), calibrateCommand(),
 		recordCommand(), markCommand(),
-		analyseCommand(), reportCommand(), compareCommand(), verifyCommand(), exportCommand(),
+		analyseCommand(), reportCommand(), compareCommand(), verifyCommand(), exportCommand(), importCommand(),
 	}
 }
 
