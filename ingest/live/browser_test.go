@@ -211,8 +211,8 @@ func press(selector string) step {
 func TestInABrowser(t *testing.T) {
 	for _, s := range []screen{phone, laptop} {
 		t.Run(s.name, func(t *testing.T) {
-			w := serve(t, desktest.New(t, desktest.Options{Past: 12 * 24 * time.Hour, Every: 5 * time.Minute, Outlook: outlookOf}), false)
 			ctx := browser(t)
+			w := serve(t, desktest.New(t, desktest.Options{Past: 12 * 24 * time.Hour, Every: 2 * time.Minute, Outlook: outlookOf}), false)
 			run := func(steps ...step) {
 				t.Helper()
 				within, stop := context.WithTimeout(ctx, 60*time.Second)

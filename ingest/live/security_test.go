@@ -59,6 +59,7 @@ func bearer(r *http.Request) { r.Header.Set("Authorization", "Bearer "+testToken
 const home = "/r/slat-3/"
 
 func TestHostsThatAreNotOurs(t *testing.T) {
+	t.Parallel()
 	w := serve(t, desktest.New(t, desktest.Options{}), false)
 	for _, c := range []struct {
 		host string
@@ -89,6 +90,7 @@ func (s served) marks(t *testing.T) int {
 }
 
 func TestPostsFromElsewhere(t *testing.T) {
+	t.Parallel()
 	w := serve(t, desktest.New(t, desktest.Options{}), false)
 	for name, change := range map[string]func(*http.Request){
 		"foreign origin": func(r *http.Request) { bearer(r); r.Header.Set("Origin", "https://evil.example") },
@@ -121,6 +123,7 @@ func TestPostsFromElsewhere(t *testing.T) {
 }
 
 func TestLookingChangesNothing(t *testing.T) {
+	t.Parallel()
 	w := serve(t, desktest.New(t, desktest.Options{}), false)
 	for _, path := range []string{home + "mark?" + note().Encode(), home + "ask?" + note().Encode(), home + "seen?alarm=1", "/enter?token=" + testToken, "/leave"} {
 		a, _ := w.visit(t, "GET", path, nil, bearer)
@@ -140,6 +143,7 @@ func TestLookingChangesNothing(t *testing.T) {
 }
 
 func TestTheTokenOpensTheDoor(t *testing.T) {
+	t.Parallel()
 	w := serve(t, desktest.New(t, desktest.Options{}), true)
 	for _, path := range []string{"/", home, home + "stream"} {
 		if a, body := w.visit(t, "GET", path, nil, nil); a.StatusCode != http.StatusUnauthorized || strings.Contains(body, "larch") {
@@ -195,6 +199,7 @@ func TestOnlyLoopbackUnlessAsked(t *testing.T) {
 }
 
 func TestPathsThatLeadElsewhere(t *testing.T) {
+	t.Parallel()
 	w := serve(t, desktest.New(t, desktest.Options{}), false)
 	for _, path := range []string{"/../../etc/passwd", "/r/..%2f..%2fetc/", "/r/%2e%2e/%2e%2e/etc/passwd", "/page.html", "/page.css/../../server.go", "/r/other/", "/r/slat-3/../../rig.yaml", "/r/slat-3/rig.yaml", "/.recorder.lock"} {
 		c, err := net.Dial("tcp", strings.TrimSuffix(strings.TrimPrefix(w.URL(), "http://"), "/"))
@@ -211,6 +216,7 @@ func TestPathsThatLeadElsewhere(t *testing.T) {
 }
 
 func TestWhatTheBrowserMayDo(t *testing.T) {
+	t.Parallel()
 	w := serve(t, desktest.New(t, desktest.Options{}), false)
 	for _, path := range []string{home, "/page.js", "/page.css", "/nothing", "/r/other/"} {
 		a, body := w.visit(t, "GET", path, nil, nil)
@@ -237,6 +243,7 @@ func TestWhatTheBrowserMayDo(t *testing.T) {
 
 // A gauge, a rig file and a visitor may say anything; it is shown as text.
 func TestHostileTexts(t *testing.T) {
+	t.Parallel()
 	const evil = `<script>alert(1)</script>"><img src=x onerror=alert(2)>'&`
 	world := desktest.New(t, desktest.Options{Title: evil, Outlook: func(*desktest.World) *desk.Outlook {
 		return &desk.Outlook{At: time.Now().UnixNano(), Gauge: evil, Stage: evil, Rate: new(float64),
@@ -272,6 +279,7 @@ func TestHostileTexts(t *testing.T) {
 }
 
 func TestFormsThatAreTooLarge(t *testing.T) {
+	t.Parallel()
 	w := serve(t, desktest.New(t, desktest.Options{}), false)
 	form := url.Values{"kind": {"note"}, "note": {strings.Repeat("x", largestBody+1)}}
 	if a, _ := w.visit(t, "POST", home+"ask", form, bearer); a.StatusCode != http.StatusBadRequest {
@@ -281,6 +289,7 @@ func TestFormsThatAreTooLarge(t *testing.T) {
 
 // A client that sends its head a letter at a time is cut off.
 func TestSlowHeads(t *testing.T) {
+	t.Parallel()
 	w := serve(t, desktest.New(t, desktest.Options{}), false)
 	if w.http.ReadHeaderTimeout > 10*time.Second || w.http.ReadTimeout == 0 || w.http.WriteTimeout == 0 || w.http.IdleTimeout == 0 || w.http.MaxHeaderBytes > 64<<10 {
 		t.Fatal("a time-out or a bound is missing")
@@ -368,6 +377,7 @@ func descriptors(t *testing.T) int {
 
 // A stream ends with the server, and its reader with the client.
 func TestStreamsEnd(t *testing.T) {
+	t.Parallel()
 	world := desktest.New(t, desktest.Options{})
 	s, err := Listen(Options{Desks: []*desk.Desk{world.Desk}, Address: "127.0.0.1:0", Token: testToken})
 	if err != nil {

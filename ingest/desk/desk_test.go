@@ -1,0 +1,296 @@
+package desk_test
+
+import (
+	"math"
+	"os"
+	"path/filepath"
+	"strings"
+	"sync"
+	"testing"
+	"time"
+
+	"go.uber.org/goleak"
+
+	"gaugelog/config"
+	"gaugelog/ingest"
+	"gaugelog/ingest/alarm"
+	"gaugelog/ingest/desk"
+	"gaugelog/ingest/desk/desktest"
+	"gaugelog/ingest/segment"
+)
+
+func TestMain(m *testing.M) { goleak.VerifyTestMain(m) }
+
+// until waits for a look that fits.
+func until(t *testing.T, w *desktest.World, what string, fits func(*desk.Snapshot) bool) *desk.Snapshot {
+	t.Helper()
+	for deadline := time.Now().Add(12 * time.Second); ; time.Sleep(50 * time.Millisecond) {
+		s := w.Desk.Snapshot()
+		if fits(s) {
+			return s
+		}
+		if time.Now().After(deadline) {
+			t.Fatalf("never: %s", what)
+		}
+	}
+}
+
+func gauge(s *desk.Snapshot, name string) *desk.Gauge {
+	for i := range s.Gauges {
+		if s.Gauges[i].Name == name {
+			return &s.Gauges[i]
+		}
+	}
+	return nil
+}
+
+func raised(s *desk.Snapshot, cause string) bool {
+	for _, a := range s.Alarms {
+		if a.Cause == cause {
+			return true
+		}
+	}
+	return false
+}
+
+// After a restart the page knows yesterday, the baseline, the load and the
+// travel from what is on disk.
+func TestWhatIsKnownAfterARestart(t *testing.T) {
+	t.Parallel()
+	w := desktest.New(t, desktest.Options{Past: 6 * 24 * time.Hour, Every: 2 * time.Minute})
+	s := until(t, w, "yesterday and the baseline are known", func(s *desk.Snapshot) bool {
+		g := gauge(s, "mid")
+		return g != nil && g.Day != nil && g.Sag != nil && *g.Sag > 1 && !s.Rebuilding && len(s.Curves.Series[0].Since) > 20
+	})
+	age := time.Since(w.Loaded).Seconds()
+	want := 3.2 * (1 + 0.11*math.Log10(1+age/20))
+	if g := gauge(s, "mid"); math.Abs(*g.Sag-want) > 0.02 {
+		t.Errorf("the sag at mid is %.3f mm, want %.3f", *g.Sag, want)
+	}
+	if g := gauge(s, "quarter"); math.Abs(*g.Sag-0.69*want) > 0.02 {
+		t.Errorf("the sag at quarter, whose sense is up, is %.3f mm, want %.3f", *g.Sag, 0.69*want)
+	}
+	day := want - 3.2*(1+0.11*math.Log10(1+(age-86400)/20))
+	if g := gauge(s, "mid"); math.Abs(*g.Day-day) > 0.004 {
+		t.Errorf("in a day %.4f mm, want %.4f", *g.Day, day)
+	}
+	if g := gauge(s, "mid"); g.TravelLeft == nil || math.Abs(*g.TravelLeft-(12.7-g.MM)) > 1e-9 {
+		t.Errorf("travel left %v of %g", g.TravelLeft, g.MM)
+	}
+	if g := gauge(s, "quarter"); g.TravelLeft == nil || math.Abs(*g.TravelLeft-g.MM) > 1e-9 {
+		t.Errorf("travel left of a gauge whose sense is up: %v of %g", g.TravelLeft, g.MM)
+	}
+	if l := s.Loads; l.Step != "l1" || l.Planned != 1 || len(l.Now) != 1 || !l.Since.Equal(w.Loaded) || !l.First.Equal(w.Loaded) {
+		t.Errorf("the loads are %+v", l)
+	}
+}
+
+// The bins survive a restart in a file that can be made again; with it gone or
+// damaged the readings are read instead.
+func TestBinsOverARestart(t *testing.T) {
+	t.Parallel()
+	w := desktest.New(t, desktest.Options{Past: 24 * time.Hour})
+	until(t, w, "the past is read", func(s *desk.Snapshot) bool { return !s.Rebuilding && len(s.Curves.Series[0].Whole) > 50 })
+	w.Stop()
+	file := filepath.Join(w.Run, "report", "live-bins.gob.zst")
+	if _, err := os.Stat(file); err != nil {
+		t.Fatal(err)
+	}
+	count := func() int64 {
+		t.Helper()
+		dir, err := ingest.OpenDir(w.Run, ingest.DirOptions{})
+		if err != nil {
+			t.Fatal(err)
+		}
+		defer dir.Close()
+		status := &ingest.Status{Run: "run-3"}
+		d, err := desk.New(desk.Options{Name: "x", Rig: w.Rig, FS: dir.FS(), Start: ingest.SystemClock{}.Now(),
+			Status: func() *ingest.Status { return status }, Happen: func(ingest.Happening) bool { return true }})
+		if err != nil {
+			t.Fatal(err)
+		}
+		ctx, stop := contextOf(t)
+		var running sync.WaitGroup
+		running.Go(func() { d.Run(ctx) })
+		defer func() { stop(); running.Wait() }()
+		for deadline := time.Now().Add(10 * time.Second); ; time.Sleep(20 * time.Millisecond) {
+			if s := d.Snapshot(); !s.Rebuilding && s.At.After(time.Now().Add(-3*time.Second)) && len(s.Curves.Series[0].Whole) > 0 {
+				n := int64(0)
+				for _, b := range s.Curves.Series[0].Whole {
+					n += b.N
+				}
+				return n
+			}
+			if time.Now().After(deadline) {
+				t.Fatal("the bins never came back")
+			}
+		}
+	}
+	kept := count()
+	if err := os.WriteFile(file, []byte("garbage"), 0o644); err != nil {
+		t.Fatal(err)
+	}
+	damaged := count()
+	if err := os.Remove(file); err != nil {
+		t.Fatal(err)
+	}
+	if read := count(); kept != read || damaged != read || read < 1440 {
+		t.Errorf("%d readings from the stored bins, %d with a damaged file, %d without", kept, damaged, read)
+	}
+}
+
+// Alarms reach the page's look, the run's events and the messengers.
+func TestAlarmsFromARecording(t *testing.T) {
+	t.Parallel()
+	told := &teller{}
+	outbox := alarm.NewOutbox(discard, told)
+	ctx, stop := contextOf(t)
+	var running sync.WaitGroup
+	running.Go(func() { outbox.Run(ctx) })
+	defer func() { stop(); running.Wait() }()
+	w := desktest.New(t, desktest.Options{Past: 2 * time.Hour, Outbox: outbox, Outlook: func(*desktest.World) *desk.Outlook {
+		size := -0.012
+		return &desk.Outlook{At: time.Now().UnixNano(), ClearArea: time.Now().UnixNano(), Caution: time.Now().UnixNano(), Disturbances: []desk.Disturbance{
+			{Kind: "gauge-knock", Gauges: []string{"mid"}, From: time.Now().Add(-time.Hour).UnixNano(), Size: &size},
+			{Kind: "load-change", From: time.Now().Add(-2 * time.Hour).UnixNano()},
+			{Kind: "bench-knock", From: time.Now().Add(-48 * time.Hour).UnixNano()},
+		}}
+	}})
+	s := until(t, w, "the analysis's alarms", func(s *desk.Snapshot) bool {
+		return raised(s, "clear-area") && raised(s, "caution") && raised(s, "knock") && raised(s, "load-changed")
+	})
+	if len(s.Alarms) != 4 || s.Alarms[0].Cause != "clear-area" || s.Alarms[0].Level != alarm.Danger {
+		t.Errorf("the alarms are %+v", s.Alarms)
+	}
+	if raised(s, "clock") {
+		t.Error("an alarm that is off was raised")
+	}
+	w.Hush("seat", true)
+	w.Move("mid", 6) // beyond the limits of sag and of travel
+	s = until(t, w, "silent, sag and travel", func(s *desk.Snapshot) bool {
+		return raised(s, "silent") && raised(s, "sag")
+	})
+	if !raised(s, "clear-area") || s.Alarms[0].Level != alarm.Danger {
+		t.Errorf("the gravest stands not first: %+v", s.Alarms)
+	}
+	var id int
+	for _, a := range s.Alarms {
+		if a.Cause == "silent" {
+			id = a.ID
+		}
+	}
+	if err := w.Desk.See(t.Context(), id, "mo"); err != nil {
+		t.Fatal(err)
+	}
+	if err := w.Desk.See(t.Context(), 12345, "mo"); err == nil {
+		t.Error("an alarm that is not there was seen")
+	}
+	w.Stop()
+	kinds := events(t, w)
+	for _, want := range []string{"alarm-raised clear-area", "alarm-raised knock mid", "alarm-raised silent seat", "alarm-raised sag", "alarm-seen silent seat"} {
+		if !kinds[want] {
+			t.Errorf("events.lp lacks %q; it has %v", want, kinds)
+		}
+	}
+	if text := told.text(); !strings.Contains(text, "DANGER") || !strings.Contains(text, "do not go near to check") || !strings.Contains(text, alarm.Safety) {
+		t.Errorf("told was %q", text)
+	}
+}
+
+// events lists "kind cause gauge" of events.lp.
+func events(t *testing.T, w *desktest.World) map[string]bool {
+	t.Helper()
+	root, err := os.OpenRoot(w.Run)
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer root.Close()
+	folder, err := segment.OpenFolder(segment.OSFS(root, segment.OSOptions{}))
+	if err != nil {
+		t.Fatal(err)
+	}
+	records, _, err := folder.Log(segment.EventsFile)
+	if err != nil {
+		t.Fatal(err)
+	}
+	out := map[string]bool{}
+	for _, r := range records {
+		if r.Point == nil {
+			continue
+		}
+		detail, _ := r.Point.Value("detail")
+		cause, _, _ := strings.Cut(detail.(string), ":")
+		out[strings.TrimSpace(r.Name+" "+cause+" "+r.Point.Tag("gauge"))] = true
+	}
+	return out
+}
+
+// A panic in the analysis ends neither the desk nor the recording.
+func TestAnalysisThatPanics(t *testing.T) {
+	t.Parallel()
+	w := desktest.New(t, desktest.Options{Outlook: func(*desktest.World) *desk.Outlook { panic("boom") }})
+	s := until(t, w, "the failure is shown", func(s *desk.Snapshot) bool { return s.OutlookError != "" })
+	if !strings.Contains(s.OutlookError, "boom") {
+		t.Errorf("the error is %q", s.OutlookError)
+	}
+	at := s.Status.Stored
+	until(t, w, "the recording goes on", func(s *desk.Snapshot) bool { return s.Status.Stored > at })
+}
+
+// A mark from the page is on disk, changes the load, and the log-time bins
+// begin anew; a withdrawal takes all that back.
+func TestMarksFromTheDesk(t *testing.T) {
+	t.Parallel()
+	w := desktest.New(t, desktest.Options{Past: 2 * time.Hour})
+	kg := 0.0
+	id, err := w.Desk.Mark(t.Context(), ingest.Mark{Step: "bare", Loads: []ingest.LoadValue{{Name: "pan", Kilogram: &kg, Shown: "0 kg"}}})
+	if err != nil || id != "m2" {
+		t.Fatal(id, err)
+	}
+	if l := w.Desk.Snapshot().Loads; l.Step != "bare" || l.Newton != 0 || l.Planned != 2 {
+		t.Errorf("after the mark the loads are %+v", l)
+	}
+	if _, err := w.Desk.Mark(t.Context(), ingest.Mark{Withdraw: "m2", Why: "not yet"}); err != nil {
+		t.Fatal(err)
+	}
+	if l := w.Desk.Snapshot().Loads; l.Step != "l1" || !l.Since.Equal(w.Loaded) {
+		t.Errorf("after the withdrawal the loads are %+v", l)
+	}
+	if _, err := w.Desk.Mark(t.Context(), ingest.Mark{Withdraw: "m9", Why: "x"}); err == nil {
+		t.Error("a mark that is not there was withdrawn")
+	}
+	until(t, w, "the bins since the load are whole again", func(s *desk.Snapshot) bool { return len(s.Curves.Series[0].Since) > 20 })
+}
+
+// Nobody waits for a desk that does not run.
+func TestTakeNeverWaits(t *testing.T) {
+	t.Parallel()
+	dir, err := ingest.OpenDir(t.TempDir(), ingest.DirOptions{Create: true})
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer dir.Close()
+	rig, err := config.Parse("rig.yaml", []byte(strings.Replace(desktest.RigText, "%TITLE%", "x", 1)))
+	if err != nil {
+		t.Fatal(err)
+	}
+	d, err := desk.New(desk.Options{Name: "x", Rig: rig, FS: dir.FS(), Status: func() *ingest.Status { return nil }})
+	if err != nil {
+		t.Fatal(err)
+	}
+	done := make(chan struct{})
+	go func() {
+		for range 100_000 {
+			d.Take(reading)
+		}
+		close(done)
+	}()
+	select {
+	case <-done:
+	case <-time.After(10 * time.Second):
+		t.Fatal("Take waits")
+	}
+	if s := d.Snapshot(); s == nil || s.Status == nil {
+		t.Error("there is no look before Run")
+	}
+}
