@@ -83,10 +83,12 @@ func (g *gather) find(p *part) *pending {
 	if found {
 		return g.open[at]
 	}
-	b := &pending{}
+	var b *pending
 	if k := len(g.spare); k > 0 {
 		b, g.spare = g.spare[k-1], g.spare[:k-1]
 		b.p.n = 0
+	} else {
+		b = &pending{}
 	}
 	g.open = slices.Insert(g.open, at, b)
 	return b

@@ -11,12 +11,12 @@ import (
 	"gaugelog/ingest/segment/segmenttest"
 )
 
-// generated is a run of 60,000 readings in three segments, as files in memory
+// generated is a run of 30,000 readings in three segments, as files in memory
 // and as the readings themselves.
 func generated(t *testing.T, packed bool) (*segmenttest.FS, [][]Sample) {
 	t.Helper()
 	fs := segmenttest.New()
-	run := historytest.Run{Gauges: 2, Readings: 60_000, Duration: 30 * time.Hour, Steps: 2, Roll: 1_100_000, Compress: packed}
+	run := historytest.Run{Gauges: 2, Readings: 30_000, Duration: 30 * time.Hour, Steps: 2, Roll: 550_000, Compress: packed}
 	if err := run.Write(fs); err != nil {
 		t.Fatal(err)
 	}
@@ -28,7 +28,7 @@ func generated(t *testing.T, packed bool) (*segmenttest.FS, [][]Sample) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	if h.Readings != 60_000 || len(all[0]) != 30_000 || len(h.Damaged) > 0 || len(h.Gaps) > 0 {
+	if h.Readings != 30_000 || len(all[0]) != 15_000 || len(h.Damaged) > 0 || len(h.Gaps) > 0 {
 		t.Fatalf("%d readings, damage %v, gaps %v", h.Readings, h.Damaged, h.Gaps)
 	}
 	same(t, h, all)
@@ -54,7 +54,7 @@ func TestDamagedFrame(t *testing.T) {
 	left := make([][]Sample, len(all))
 	for g := range all {
 		left[g] = slices.DeleteFunc(slices.Clone(all[g]), func(s Sample) bool { return s.Time >= d.First && s.Time <= d.Last })
-		if n := len(left[g]); n == len(all[g]) || n < 15_000 {
+		if n := len(left[g]); n == len(all[g]) || n < 7_500 {
 			t.Fatalf("%d of %d readings left", n, len(all[g]))
 		}
 	}
@@ -88,7 +88,7 @@ func TestTornTail(t *testing.T) {
 	for g := range all {
 		left[g] = all[g][:h.GaugeReadings[g]]
 	}
-	if whole := 60_000 - int64(strings.Count(string(text[end:]), "\n")); h.Readings > whole || h.Readings < 50_000 {
+	if whole := 30_000 - int64(strings.Count(string(text[end:]), "\n")); h.Readings > whole || h.Readings < 25_000 {
 		t.Errorf("%d readings, %d lines are whole", h.Readings, whole)
 	}
 	same(t, h, left)
