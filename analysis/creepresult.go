@@ -241,10 +241,25 @@ func addLaw(r *Result, h *history.History, t *creepTask, a *creep.Analysis) {
 			r.Series.Law = append(r.Series.Law, LawPoint{AfterS: after, SagMM: v, Lo95: lo, Hi95: hi})
 		}
 	}
+	addCreepPoints(r, t, a.Best)
 	slices.SortFunc(a.Forecast, func(x, y creep.Forecast) int { return cmp.Compare(x.AfterH, y.AfterH) })
 	for _, f := range a.Forecast {
 		if f.Refused == "" && f.AfterH*3600 > last {
 			r.Series.Law = append(r.Series.Law, LawPoint{AfterS: f.AfterH * 3600, SagMM: f.Sag.Value, Lo95: f.Lo, Hi95: f.Hi, Beyond: true})
+		}
+	}
+}
+
+// addCreepPoints keeps the bins of the creep step, every k-th of very many.
+func addCreepPoints(r *Result, t *creepTask, best *creep.Fit) {
+	if len(best.TimeH) == 0 || len(best.CompensatedMM) == 0 || len(best.ResidualMM) == 0 {
+		return
+	}
+	hours, sag, rest := best.TimeH[0], best.CompensatedMM[0], best.ResidualMM[0]
+	stride := max((len(hours)+mostPoints-1)/mostPoints, 1)
+	for i := 0; i < min(len(hours), len(sag), len(rest)); i += stride {
+		if at := hours[i]; at > t.in.FullH && at <= t.in.EndH && !math.IsNaN(sag[i]+rest[i]) {
+			r.Series.Creep = append(r.Series.Creep, CreepPoint{AfterS: (at - t.in.FullH) * 3600, CompensatedMM: sag[i], ResidualMM: rest[i]})
 		}
 	}
 }

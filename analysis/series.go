@@ -7,6 +7,8 @@ type Series struct {
 	Ambient []ProbeSeries  `json:"ambient"`
 	Curve   []ElasticCurve `json:"curve"`
 	Law     []LawPoint     `json:"law"`
+	// Creep are the points within the creep step that the law was fitted to.
+	Creep []CreepPoint `json:"creep"`
 	// CreepFullS is the instant of full load of the creep step and CreepEndS
 	// its end, in the same seconds; both 0 where there is no creep step.
 	CreepFullS float64 `json:"creep_full_s"`
@@ -53,4 +55,13 @@ type LawPoint struct {
 	Lo95   float64 `json:"lo95"`
 	Hi95   float64 `json:"hi95"`
 	Beyond bool    `json:"beyond,omitempty"`
+}
+
+// CreepPoint is one bin of the creep gauge, seconds after full load of the
+// creep step: its sag without what is neither load nor creep (surroundings,
+// offsets, drift), and what the fit leaves over.
+type CreepPoint struct {
+	AfterS        float64 `json:"after_s"`
+	CompensatedMM float64 `json:"compensated_mm"`
+	ResidualMM    float64 `json:"residual_mm"`
 }

@@ -13,7 +13,7 @@ const mostPoints = 900
 // seriesOf thins the tracks for the plots. The tracks are dense where the
 // beam moves and sparse where it creeps, so every k-th point keeps that.
 func seriesOf(h *history.History, f *steps.Findings) Series {
-	s := Series{Gauges: []GaugeSeries{}, Ambient: []ProbeSeries{}, Curve: []ElasticCurve{}, Law: []LawPoint{}}
+	s := Series{Gauges: []GaugeSeries{}, Ambient: []ProbeSeries{}, Curve: []ElasticCurve{}, Law: []LawPoint{}, Creep: []CreepPoint{}}
 	for _, t := range f.Tracks {
 		g := &h.Rig.Gauges[t.Gauge]
 		gs := GaugeSeries{Gauge: g.Name, Sees: g.Sees, AtMM: g.At.Value, TimeS: []float64{}, SagMM: []float64{}, RawMM: []float64{}}
