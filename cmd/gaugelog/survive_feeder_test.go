@@ -38,22 +38,10 @@ type fedGauge struct {
 // newFeeder starts gauges that send rate frames a second each.
 func newFeeder(t *testing.T, gauges, rate int) *feeder {
 	t.Helper()
-	f := &feeder{stop: make(chan struct{})}
-	for i := range gauges {
-		master, slave, err := pty.Open()
-		if err != nil {
-			t.Fatal(err)
-		}
-		// The open slave keeps the terminal alive between two recorders.
-		if _, err := term.MakeRaw(int(slave.Fd())); err != nil {
-			t.Fatal(err)
-		}
-		if err := unix.SetNonblock(int(master.Fd()), true); err != nil {
-			t.Fatal(err)
-		}
-		f.gauges = append(f.gauges, &fedGauge{name: fmt.Sprintf("g%d", i), master: master, slave: slave})
+	f, err := openFeeder(gauges, rate, 0)
+	if err != nil {
+		t.Fatal(err)
 	}
-	f.done.Go(func() { f.feed(rate) })
 	t.Cleanup(func() {
 		close(f.stop)
 		f.done.Wait()
@@ -63,6 +51,29 @@ func newFeeder(t *testing.T, gauges, rate int) *feeder {
 		}
 	})
 	return f
+}
+
+// openFeeder starts gauges whose first frame has the number behind base.
+func openFeeder(gauges, rate int, base int64) (*feeder, error) {
+	f := &feeder{stop: make(chan struct{})}
+	for i := range gauges {
+		master, slave, err := pty.Open()
+		if err != nil {
+			return nil, err
+		}
+		// The open slave keeps the terminal alive between two recorders.
+		if _, err := term.MakeRaw(int(slave.Fd())); err != nil {
+			return nil, err
+		}
+		if err := unix.SetNonblock(int(master.Fd()), true); err != nil {
+			return nil, err
+		}
+		g := &fedGauge{name: fmt.Sprintf("g%d", i), master: master, slave: slave}
+		g.next.Store(base)
+		f.gauges = append(f.gauges, g)
+	}
+	f.done.Go(func() { f.feed(rate) })
+	return f, nil
 }
 
 func (f *feeder) feed(rate int) {
@@ -120,6 +131,14 @@ func (f *feeder) ready(t *testing.T) {
 // write leaves a rig file and the list of its ports in dir.
 func (f *feeder) write(t *testing.T, dir, record string) (rig, ports string) {
 	t.Helper()
+	rig, ports, err := f.lay(dir, record)
+	if err != nil {
+		t.Fatal(err)
+	}
+	return rig, ports
+}
+
+func (f *feeder) lay(dir, record string) (rig, ports string, err error) {
 	var r, p strings.Builder
 	fmt.Fprint(&r, "specimen: {name: fed, section: {shape: rectangle, width: 140 mm, depth: 38 mm}, length: 800 mm}\n"+
 		"supports: [{name: left, at: 0 mm}, {name: right, at: 600 mm}]\n"+
@@ -134,8 +153,8 @@ func (f *feeder) write(t *testing.T, dir, record string) (rig, ports string) {
 	rig, ports = filepath.Join(dir, "rig.yaml"), filepath.Join(dir, "ports.txt")
 	for name, text := range map[string]string{rig: r.String(), ports: p.String()} {
 		if err := os.WriteFile(name, []byte(text), 0o644); err != nil {
-			t.Fatal(err)
+			return "", "", err
 		}
 	}
-	return rig, ports
+	return rig, ports, nil
 }
