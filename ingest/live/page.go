@@ -111,16 +111,16 @@ func (p *page) render(known bool) (map[string]template.HTML, error) {
 }
 
 // changes gives the sections that differ from those sent last, and notes them.
-func (p *page) changes(last map[string]string, known bool) []update {
+func (p *page) changes(last map[string]string, known bool) []change {
 	parts, err := p.render(known)
 	if err != nil {
 		return nil
 	}
-	out := []update{}
+	out := []change{}
 	for _, id := range sections {
 		if html := string(parts[id]); last[id] != html {
 			last[id] = html
-			out = append(out, update{id, html})
+			out = append(out, change{id, html})
 		}
 	}
 	return out

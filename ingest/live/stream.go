@@ -14,8 +14,8 @@ const (
 	streamWrite = 5 * time.Second
 )
 
-// update is one section's new contents.
-type update struct {
+// change is one section's new contents.
+type change struct {
 	ID   string `json:"id"`
 	HTML string `json:"html"`
 }

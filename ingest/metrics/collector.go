@@ -16,10 +16,10 @@ func describe(name, help string, labels ...string) *prometheus.Desc {
 }
 
 var (
-	gaugeAge      = describe("gauge_reading_age_seconds", "Age of the last reading of a gauge or probe.", "gauge")
-	gaugeShows    = describe("gauge_indication_meters", "Last indication of a gauge, as recorded and uncorrected.", "gauge")
-	gaugeSilent   = describe("gauge_silent", "1 where a gauge or probe has said nothing for longer than it may.", "gauge")
-	gaugeTravel   = describe("gauge_travel_left_meters", "How far a gauge can still follow the beam downwards.", "gauge")
+	gaugeAge      = describe("instrument_reading_age_seconds", "Age of the last reading of a gauge or probe.", "gauge")
+	gaugeShows    = describe("instrument_indication_meters", "Last indication of a gauge, as recorded and uncorrected.", "gauge")
+	gaugeSilent   = describe("instrument_silent", "1 where a gauge or probe has said nothing for longer than it may.", "gauge")
+	gaugeTravel   = describe("instrument_travel_left_meters", "How far a gauge can still follow the beam downwards.", "gauge")
 	probeCelsius  = describe("probe_temperature_celsius", "Last temperature of a probe.", "probe")
 	probeHumidity = describe("probe_humidity_ratio", "Last relative humidity of a probe, 0 to 1.", "probe")
 	portOpen      = describe("port_open", "1 while a port is open.", "port")
