@@ -83,7 +83,7 @@ func (r *recording) openBeside(f pageFlags, logger *slog.Logger, out io.Writer) 
 	}
 	server, err := livepage.Listen(livepage.Options{
 		Desks: b.desks, Address: f.address, Open: f.open, Token: token, Log: logger,
-		Metrics: metrics.Handler(b.desks...),
+		Metrics: metrics.Handler(r.syncs, b.desks...),
 	})
 	if err != nil {
 		if errors.Is(err, livepage.ErrNotLoopback) {

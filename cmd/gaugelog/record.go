@@ -16,6 +16,7 @@ import (
 	"gaugelog/config"
 	"gaugelog/device"
 	"gaugelog/ingest"
+	"gaugelog/ingest/metrics"
 )
 
 // recordFlags are the flags of `record`.
@@ -64,6 +65,8 @@ type recording struct {
 	runs []string
 	// start is the instant before the first recorder was opened.
 	start device.Instant
+	// syncs measures how long the disk takes.
+	syncs *metrics.Syncs
 }
 
 func runRecord(cmd *cobra.Command, rigFiles []string, f recordFlags) (err error) {
@@ -81,7 +84,7 @@ func runRecord(cmd *cobra.Command, rigFiles []string, f recordFlags) (err error)
 	if err != nil {
 		return err
 	}
-	r := &recording{start: ingest.SystemClock{}.Now()}
+	r := &recording{start: ingest.SystemClock{}.Now(), syncs: metrics.NewSyncs()}
 	defer func() { err = errors.Join(err, r.close()) }()
 	if err := r.open(rigFiles, f.into); err != nil {
 		return err
@@ -138,7 +141,7 @@ func (r *recording) openOne(rig *config.Rig, text []byte, run string) error {
 	}
 	r.dirs = append(r.dirs, dir)
 	rec, err := ingest.Open(ingest.Options{
-		FS: dir.FS(), Lock: dir.Lock(fmt.Sprintf("gaugelog record, process %d", os.Getpid())),
+		FS: r.syncs.Over(dir.FS(), rig.Specimen.Name), Lock: dir.Lock(fmt.Sprintf("gaugelog record, process %d", os.Getpid())),
 		Rig: rig, RigBytes: text, Amendments: len(amendments), Program: version(),
 		Clock: ingest.SystemClock{}, Start: ingest.SystemClock{}.Now(), Live: true, Compress: true,
 		DiskFree: dir.DiskFree, LeastFree: leastFree,

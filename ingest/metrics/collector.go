@@ -133,9 +133,13 @@ func truth(b bool) float64 {
 	return 0
 }
 
-// Handler answers scrapes with the desks' metrics and the process's own.
-func Handler(desks ...*desk.Desk) http.Handler {
+// Handler answers scrapes with the desks' metrics and the process's own;
+// syncs may be nil.
+func Handler(syncs *Syncs, desks ...*desk.Desk) http.Handler {
 	r := prometheus.NewRegistry()
+	if syncs != nil {
+		r.MustRegister(syncs.durations)
+	}
 	r.MustRegister(NewCollector(desks...), collectors.NewGoCollector(), collectors.NewProcessCollector(collectors.ProcessCollectorOpts{}))
 	return promhttp.HandlerFor(r, promhttp.HandlerOpts{MaxRequestsInFlight: 2, Timeout: 5 * time.Second})
 }

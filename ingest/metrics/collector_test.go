@@ -3,6 +3,7 @@ package metrics_test
 import (
 	"io"
 	"net/http/httptest"
+	"os"
 	"regexp"
 	"strings"
 	"testing"
@@ -13,13 +14,14 @@ import (
 
 	"gaugelog/ingest/desk/desktest"
 	"gaugelog/ingest/metrics"
+	"gaugelog/ingest/segment"
 )
 
 func TestMain(m *testing.M) { goleak.VerifyTestMain(m) }
 
 func TestScrape(t *testing.T) {
 	w := desktest.New(t, desktest.Options{})
-	handler := metrics.Handler(w.Desk)
+	handler := metrics.Handler(nil, w.Desk)
 	var text string
 	want := []string{
 		`gaugelog_instrument_reading_age_seconds{gauge="mid",rig="slat-3"} \d`,
@@ -80,5 +82,27 @@ func TestNamesFollowTheConventions(t *testing.T) {
 	}
 	for _, p := range problems {
 		t.Errorf("%s: %s", p.Metric, p.Text)
+	}
+}
+
+func TestSyncsAreMeasured(t *testing.T) {
+	root, err := os.OpenRoot(t.TempDir())
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer root.Close()
+	syncs := metrics.NewSyncs()
+	fsys := syncs.Over(segment.OSFS(root, segment.OSOptions{}), "slat-3")
+	w, err := segment.NewWriter(fsys, segment.ReadingsDir, 1, segment.WriterOptions{Header: segment.Header{Run: "r", Boot: "b", Rig: strings.Repeat("0", 64)}})
+	if err != nil {
+		t.Fatal(err)
+	}
+	if err := w.Close(segment.ClockState{}); err != nil {
+		t.Fatal(err)
+	}
+	r := httptest.NewRecorder()
+	metrics.Handler(syncs).ServeHTTP(r, httptest.NewRequest("GET", "/metrics", nil))
+	if !regexp.MustCompile(`gaugelog_sync_duration_seconds_count\{rig="slat-3"\} [1-9]`).MatchString(r.Body.String()) {
+		t.Errorf("no sync was measured:\n%s", r.Body.String())
 	}
 }
