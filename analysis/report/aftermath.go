@@ -2,6 +2,7 @@ package report
 
 import (
 	"fmt"
+	"math"
 
 	"gaugelog/analysis"
 )
@@ -11,10 +12,11 @@ func (b *builder) creep() Section {
 	c := b.r.Creep
 	s := Section{ID: "creep", Title: "Creep"}
 	if c.Gauge == "" {
+		s.Blocks = append(s.Blocks, Paragraph{"No creep was worked out: " + b.whyMissing("creep") + "."})
 		return s
 	}
 	s.Lead = fmt.Sprintf("Gauge %s in step %s; the sag %s after full load is the reference of every ratio.", c.Gauge, c.Step, span(c.InitialAfterS))
-	for _, make := range []func() (Figure, bool){b.creepFigure, b.historyFigure, b.residualFigure} {
+	for _, make := range []func() (Figure, bool){b.creepFigure, b.complianceFigure, b.rateFigure} {
 		if f, ok := make(); ok {
 			s.Blocks = append(s.Blocks, f)
 		}
@@ -22,8 +24,13 @@ func (b *builder) creep() Section {
 	if len(c.After) > 0 {
 		s.Blocks = append(s.Blocks, b.afterTable())
 	}
-	if c.Model != "" {
-		s.Blocks = append(s.Blocks, b.lawTable())
+	if c.Model == "" {
+		s.Blocks = append(s.Blocks, Paragraph{"No law was fitted: " + b.whyMissing("creep") + "."})
+		return s
+	}
+	s.Blocks = append(s.Blocks, b.lawTable())
+	if f, ok := b.residualFigure(); ok {
+		s.Blocks = append(s.Blocks, f)
 	}
 	if f := c.Fit; f != nil {
 		s.Blocks = append(s.Blocks, Paragraph{fmt.Sprintf(
@@ -33,6 +40,9 @@ func (b *builder) creep() Section {
 	if len(c.Forecast) > 0 {
 		s.Blocks = append(s.Blocks, b.forecastTable())
 	}
+	if len(c.Candidates) > 0 {
+		s.Blocks = append(s.Blocks, b.modelTable())
+	}
 	return s
 }
 
@@ -41,7 +51,8 @@ func (b *builder) factor(unit string) float64 { f, _ := b.u.convert(unit); retur
 func (b *builder) afterTable() Table {
 	t := Table{Caption: "Sag and creep at the asked times", Columns: []Column{
 		{Name: "After full load", Text: true}, {Name: "Sag", Unit: b.u.of("mm")}, {Name: "u", Unit: b.u.of("mm")},
-		{Name: "Relative creep"}, {Name: "Creep coefficient"}, {Name: "Single-load equivalent"}, {Name: "Source", Text: true}}}
+		{Name: "Relative creep"}, {Name: "Creep coefficient"}, {Name: "Single-load equivalent"}, {Name: "Rate", Unit: b.u.of("mm/d")},
+		{Name: "Air", Unit: b.temperatureUnit()}, {Name: "Humidity", Unit: "%"}, {Name: "Source", Text: true}}}
 	for _, a := range b.r.Creep.After {
 		from := "readings"
 		if a.Modelled {
@@ -53,9 +64,9 @@ func (b *builder) afterTable() Table {
 				equivalent = &b.r.Creep.Equivalent[i].Relative
 			}
 		}
-		t.Rows = append(t.Rows, []string{span(a.AfterS), b.cell(&a.Sag), b.cellU(&a.Sag), b.cell(a.Relative), b.cell(a.Coefficient), b.cell(equivalent), from})
+		t.Rows = append(t.Rows, []string{span(a.AfterS), b.cell(&a.Sag), b.cellU(&a.Sag), b.cell(a.Relative), b.cell(a.Coefficient), b.cell(equivalent), b.rateAt(a.AfterS), b.celsiusAt(a.AfterS), b.humidityAt(a.AfterS), from})
 	}
-	t.Says = "Relative creep: sag over initial sag of the same step; coefficient: that less 1; single-load equivalent: what one load placed alone would show, from the law."
+	t.Says = "Relative creep: sag over initial sag of the same step; coefficient: that less 1; single-load equivalent: what one load placed alone would show, from the law; rate: the law's slope. Air: the first probe that reads it."
 	return t
 }
 
@@ -71,9 +82,6 @@ func (b *builder) lawTable() Table {
 	}
 	if c.Stage != "" {
 		t.Rows = append(t.Rows, []string{"stage", b.stageWords()})
-	}
-	for _, m := range c.Candidates {
-		t.Rows = append(t.Rows, []string{"candidate " + m.Model, fmt.Sprintf("AICc %s, weight %s", fixed(m.AICc, 1), fixed(m.Weight, 3))})
 	}
 	t.Says = "Sag of the creep gauge per newton of total load in the creep step's pattern, t in hours, over the whole load history by superposition."
 	return t
@@ -99,7 +107,7 @@ func (b *builder) forecastTable() Table {
 	mm := b.u.of("mm")
 	t := Table{Caption: "Forecast", Columns: []Column{
 		{Name: "After full load", Text: true}, {Name: "Sag", Unit: mm}, {Name: "Lower 95 %", Unit: mm}, {Name: "Upper 95 %", Unit: mm},
-		{Name: "Decades beyond the data"}, {Name: "Standing", Text: true}, {Name: "By law", Unit: mm, Text: true}}}
+		{Name: "Decades beyond the data"}, {Name: "Standing", Text: true}}}
 	f := b.factor("mm")
 	for _, p := range b.r.Creep.Forecast {
 		lo, hi, standing := "–", "–", forecastWords(p.Label)
@@ -110,12 +118,46 @@ func (b *builder) forecastTable() Table {
 		if p.Refused != "" {
 			standing = p.Refused
 		}
-		by := ""
-		for _, m := range p.ByModel {
-			by += m.Model + " " + b.cell(&m.Sag) + "  "
-		}
-		t.Rows = append(t.Rows, []string{span(p.AfterS), b.cell(p.Sag), lo, hi, fixed(p.Decades, 2), standing, by})
+		t.Rows = append(t.Rows, []string{span(p.AfterS), b.cell(p.Sag), lo, hi, fixed(p.Decades, 2), standing})
 	}
+	t.Says = "The limits hold the law's and the gauge's uncertainty; a law that does not fit this material beyond the data is not in them."
+	return t
+}
+
+// modelTable holds the laws against each other, with what each would forecast.
+func (b *builder) modelTable() Table {
+	c := b.r.Creep
+	t := Table{Caption: "The laws compared", Columns: []Column{
+		{Name: "Law", Text: true}, {Name: "Sag per load", Text: true}, {Name: "AICc less the best"}, {Name: "Weight"}}}
+	var shown []analysis.Forecast
+	for _, f := range c.Forecast {
+		if len(f.ByModel) > 0 {
+			shown = append(shown, f)
+			t.Columns = append(t.Columns, Column{Name: "Sag at " + span(f.AfterS), Unit: b.u.of("mm")})
+		}
+	}
+	best := math.Inf(1)
+	for _, m := range c.Candidates {
+		best = min(best, m.AICc)
+	}
+	for _, m := range c.Candidates {
+		name := m.Model
+		if name == c.Model {
+			name += " (chosen)"
+		}
+		row := []string{name, lawWords(m.Model), fixed(m.AICc-best, 1), fixed(m.Weight, 3)}
+		for _, f := range shown {
+			cell := "–"
+			for _, v := range f.ByModel {
+				if v.Model == m.Model {
+					cell = b.cell(&v.Sag)
+				}
+			}
+			row = append(row, cell)
+		}
+		t.Rows = append(t.Rows, row)
+	}
+	t.Says = "AICc: the corrected Akaike criterion; the weight is what the readings alone say for a law among these. Where laws that fit alike forecast apart, no forecast is safe."
 	return t
 }
 
@@ -124,6 +166,7 @@ func (b *builder) recovery() Section {
 	s := Section{ID: "recovery", Title: "Recovery"}
 	c := b.r.Creep
 	if len(c.Recovery) == 0 {
+		s.Blocks = append(s.Blocks, Paragraph{"No recovery was worked out: no unloading with readings at the asked times was found."})
 		return s
 	}
 	t := Table{Caption: "After unloading", Columns: []Column{
@@ -144,6 +187,11 @@ func (b *builder) surroundings() Section {
 	s := Section{ID: "surroundings", Title: "Surroundings, drift and supports"}
 	if f, ok := b.ambientFigure(); ok {
 		s.Blocks = append(s.Blocks, f)
+	} else {
+		s.Blocks = append(s.Blocks, Paragraph{"Neither temperature nor humidity was recorded; their part in the sag is not known."})
+	}
+	if f, ok := b.overlayFigure(); ok {
+		s.Blocks = append(s.Blocks, f)
 	}
 	t := Table{Caption: "Answers to the surroundings and drift", Columns: []Column{{Name: "Gauge", Text: true}, {Name: "What", Text: true}, {Name: "Value", Text: true}, {Name: "Lag", Text: true}}}
 	for _, d := range b.r.Drift.Temperature {
@@ -156,6 +204,7 @@ func (b *builder) surroundings() Section {
 		t.Rows = append(t.Rows, []string{d.Gauge, "own drift", b.with(&d.Rate), ""})
 	}
 	if len(t.Rows) > 0 {
+		t.Says = "Fitted with the law; where u is as large as the value, nothing was seen."
 		s.Blocks = append(s.Blocks, t)
 	}
 	sup := Table{Caption: "Settlement of the supports", Columns: []Column{{Name: "Support", Text: true}, {Name: "Settlement", Text: true}}}

@@ -41,7 +41,13 @@ func (b *builder) answers() Section {
 	b.answerCreep(add)
 	b.answerForecast(add)
 	b.answerTrouble(add)
-	return Section{ID: "answers", Title: "In short", Blocks: []Block{t}}
+	b.answerRules(add)
+	s := Section{ID: "answers", Title: "In short", Blocks: []Block{t, List{Grave: true, Items: []string{
+		Cautions[0] + " All cautions stand at the end.", Cautions[len(Cautions)-1]}}}}
+	if f, ok := b.historyFigure(); ok {
+		s.Blocks = append(s.Blocks, f)
+	}
+	return s
 }
 
 func (b *builder) answerStiff(add func(q, a, s string)) {
@@ -73,6 +79,7 @@ func (b *builder) shearWords() string {
 func (b *builder) answerSag(add func(q, a, s string)) {
 	c := b.r.Creep
 	if len(c.After) == 0 {
+		add("How far did it sag?", "not measured", b.whyMissing("creep"))
 		return
 	}
 	var a []string
@@ -122,7 +129,7 @@ func (b *builder) stageWords() string {
 
 func (b *builder) answerForecast(add func(q, a, s string)) {
 	for _, f := range b.r.Creep.Forecast {
-		q := "How far after " + span(f.AfterS) + "?"
+		q := "How far after " + strings.ReplaceAll(span(f.AfterS), " ", "\u00a0") + "?"
 		if f.Sag == nil || f.Lo95 == nil || f.Hi95 == nil {
 			add(q, "no figure", f.Refused)
 			continue
@@ -196,15 +203,44 @@ func (b *builder) answerTrouble(add func(q, a, s string)) {
 	add("Was it disturbed?", strings.Join(kinds, ", "), "each is listed with how it was treated")
 }
 
+// answerRules counts the clauses that were decided.
+func (b *builder) answerRules(add func(q, a, s string)) {
+	if len(b.r.Evaluations) == 0 {
+		return
+	}
+	held, decided := 0, 0
+	var failed []string
+	for _, e := range b.r.Evaluations {
+		if e.Pass == nil {
+			continue
+		}
+		decided++
+		if *e.Pass {
+			held++
+		} else {
+			failed = append(failed, e.Rule+": "+e.Clause)
+		}
+	}
+	a := fmt.Sprintf("%d of %d decided clauses hold", held, decided)
+	switch {
+	case decided == 0:
+		a = "no clause could be decided"
+	case len(failed) > 0:
+		a = "NO: " + strings.Join(failed, ", ")
+	}
+	sure := "informative; the standard's text, its edition and a licensed engineer decide"
+	if open := len(b.r.Evaluations) - decided; open > 0 {
+		sure += fmt.Sprintf("; %d more are figures or could not be decided", open)
+	}
+	add("Does it hold the rules asked for?", a, sure)
+}
+
 // whyMissing finds the warning that explains a missing figure.
 func (b *builder) whyMissing(code string) string {
 	for _, w := range b.r.Warnings {
 		if strings.Contains(w.Code, code) {
 			return w.Text
 		}
-	}
-	if len(b.r.Warnings) > 0 {
-		return b.r.Warnings[0].Text
 	}
 	return "the readings do not allow it"
 }

@@ -125,7 +125,7 @@ func Build(r *analysis.Result, o Options) *Document {
 	d.Last, _ = time.Parse(time.RFC3339Nano, r.Run.Last)
 	for _, make := range []func() Section{
 		b.answers, b.jobCard, b.steps, b.shape, b.stiffness, b.creep, b.recovery,
-		b.surroundings, b.corrections, b.evaluations, b.trace, b.cautions,
+		b.surroundings, b.corrections, b.entries, b.photographs, b.evaluations, b.trace, b.cautions,
 	} {
 		if s := make(); len(s.Blocks) > 0 {
 			d.Sections = append(d.Sections, s)

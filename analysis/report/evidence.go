@@ -1,7 +1,11 @@
 package report
 
 import (
+	"bytes"
 	"cmp"
+	"crypto/sha256"
+	"fmt"
+	"io/fs"
 	"maps"
 	"slices"
 	"strings"
@@ -16,7 +20,7 @@ func (b *builder) corrections() Section {
 	if len(b.r.Disturbances) > 0 {
 		t := Table{Caption: "Disturbances", Columns: []Column{
 			{Name: "Kind", Text: true}, {Name: "Gauges", Text: true}, {Name: "From", Text: true}, {Name: "To", Text: true},
-			{Name: "Size", Text: true}, {Name: "Treated", Text: true}}}
+			{Name: "Size", Text: true}, {Name: "Treated", Text: true}, {Name: "Evidence", Text: true}}}
 		for _, d := range b.r.Disturbances {
 			to, size := "", ""
 			if d.To != nil {
@@ -32,18 +36,12 @@ func (b *builder) corrections() Section {
 			if len(d.Candidates) > 0 {
 				kind += ": " + strings.Join(d.Candidates, " or ")
 			}
-			t.Rows = append(t.Rows, []string{kind, strings.Join(d.Gauges, ", "), b.local(d.From), to, size, d.Treated})
+			t.Rows = append(t.Rows, []string{kind, strings.Join(d.Gauges, ", "), b.local(d.From), to, size, d.Treated, d.Evidence})
 		}
+		t.Says = "Size is the disturbance's own effect on the apparent sag."
 		s.Blocks = append(s.Blocks, t)
 	} else {
 		s.Blocks = append(s.Blocks, Paragraph{"No disturbance was found."})
-	}
-	if len(b.r.Decisions) > 0 {
-		t := Table{Caption: "Overruled by a person", Columns: []Column{{Name: "What", Text: true}, {Name: "Value", Text: true}, {Name: "Why", Text: true}, {Name: "By", Text: true}}}
-		for _, d := range b.r.Decisions {
-			t.Rows = append(t.Rows, []string{d.Path, d.Value, d.Why, d.By})
-		}
-		s.Blocks = append(s.Blocks, t)
 	}
 	if len(b.r.Warnings) > 0 {
 		var l List
@@ -56,34 +54,6 @@ func (b *builder) corrections() Section {
 		}
 		s.Blocks = append(s.Blocks, Paragraph{"Warnings:"}, l)
 	}
-	return s
-}
-
-// evaluations holds the run against the rules asked for.
-func (b *builder) evaluations() Section {
-	s := Section{ID: "evaluations", Title: "Evaluations",
-		Lead: "Informative. The standard's text, its edition and a licensed engineer decide."}
-	if len(b.r.Evaluations) == 0 {
-		return s
-	}
-	t := Table{Caption: "Clauses", Columns: []Column{{Name: "Rule", Text: true}, {Name: "Clause", Text: true}, {Name: "Holds", Text: true}, {Name: "Measured", Text: true}, {Name: "Required", Text: true}, {Name: "Why", Text: true}}}
-	for _, e := range b.r.Evaluations {
-		holds := "cannot evaluate"
-		switch {
-		case e.Pass != nil:
-			holds = map[bool]string{true: "yes", false: "NO"}[*e.Pass]
-		case e.Measured != nil && e.Required == "":
-			holds = "a figure"
-		case e.Measured != nil:
-			holds = "not decided"
-		}
-		measured := "–"
-		if e.Measured != nil {
-			measured = b.short(e.Measured)
-		}
-		t.Rows = append(t.Rows, []string{e.Rule, e.Clause, holds, measured, e.Required, e.Why})
-	}
-	s.Blocks = append(s.Blocks, t)
 	return s
 }
 
@@ -100,10 +70,45 @@ func (b *builder) trace() Section {
 		{"Indications", grouped(whole(run.Readings))},
 		{"Amendments applied", whole(int64(run.Amendments))},
 		{"Damaged blocks left out", whole(int64(run.DamagedBlocks))},
+		{"Clock", b.clockWords()},
 		{"Raw data", "unchanged; check with: gaugelog verify, or sha256sum -c SHA256SUMS in the run folder"},
+	}
+	if sum, n := b.checksums(); n > 0 {
+		t.Rows = append(t.Rows, []string{"SHA-256 of SHA256SUMS, which lists " + fmt.Sprint(n) + " files", sum})
 	}
 	sign := Table{Caption: "Signed", Columns: []Column{{Name: "Name", Text: true}, {Name: "Date", Text: true}, {Name: "Signature", Text: true}}, Rows: [][]string{{" ", " ", " "}}}
 	return Section{ID: "trace", Title: "Where the numbers come from", Blocks: []Block{t, sign}}
+}
+
+// clockWords says what is on record of the clock.
+func (b *builder) clockWords() string {
+	var said []string
+	for _, w := range b.r.Warnings {
+		if strings.HasPrefix(w.Code, "clock") {
+			said = append(said, w.Text)
+		}
+	}
+	for _, e := range b.o.Events {
+		if e.Kind == "clock-stepped" {
+			said = append(said, "stepped at "+b.localTime(e.Time)+" "+e.Detail)
+		}
+	}
+	if len(said) == 0 {
+		return "the recording machine's; no step and no unset clock on record"
+	}
+	return strings.Join(said, "; ")
+}
+
+// checksums is the hash of the run's list of hashes and how many it holds.
+func (b *builder) checksums() (string, int) {
+	if b.o.Files == nil {
+		return "", 0
+	}
+	list, err := fs.ReadFile(b.o.Files, "SHA256SUMS")
+	if err != nil {
+		return "", 0
+	}
+	return fmt.Sprintf("%x", sha256.Sum256(list)), bytes.Count(list, []byte("\n"))
 }
 
 // Cautions are the warnings about suspended loads that stand in every report

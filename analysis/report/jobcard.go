@@ -1,8 +1,10 @@
 package report
 
 import (
+	"cmp"
 	"fmt"
 	"strings"
+	"time"
 
 	"gaugelog/config"
 )
@@ -11,9 +13,13 @@ import (
 func (b *builder) jobCard() Section {
 	s := Section{ID: "job", Title: "What was tested"}
 	if b.rig == nil {
+		s.Blocks = append(s.Blocks, Paragraph{"The rig file is not at hand; the result names only what was measured."})
 		return s
 	}
 	s.Blocks = append(s.Blocks, b.specimenTable(), b.placesTable(), b.gaugeTable())
+	if l := b.calibrations(); len(l) > 0 {
+		s.Blocks = append(s.Blocks, List{Grave: true, Items: l})
+	}
 	return s
 }
 
@@ -107,7 +113,48 @@ func (b *builder) gaugeTable() Table {
 				due = c.Due
 			}
 		}
-		t.Rows = append(t.Rows, []string{g.Name, shown(g.At), g.Sees, shown(g.Resolution), g.SerialNumber, date, due})
+		t.Rows = append(t.Rows, []string{g.Name, shown(g.At), g.Sees, shown(g.Resolution), cmp.Or(g.SerialNumber, "not stated"), date, due})
 	}
+	t.Says = "Resolution is the gauge's smallest step. Calibration dates are the rig file's, held against the last reading."
 	return t
+}
+
+// nearDue is how long before its end a calibration is told of.
+const nearDue = 30 * 24 * time.Hour
+
+// calibrations tells which calibrations had run out by the last reading, and
+// which were about to; never by the clock, so that a report stays the same.
+func (b *builder) calibrations() []string {
+	last, err := time.Parse(time.RFC3339Nano, b.r.Run.Last)
+	if err != nil {
+		return nil
+	}
+	first, err := time.Parse(time.RFC3339Nano, b.r.Run.First)
+	if err != nil {
+		first = last
+	}
+	var out, without []string
+	for _, g := range b.rig.Gauges {
+		if g.Calibration == nil {
+			without = append(without, g.Name)
+			continue
+		}
+		due, err := time.ParseInLocation(time.DateOnly, g.Calibration.Due, b.zone)
+		if err != nil {
+			continue
+		}
+		end := due.AddDate(0, 0, 1) // the day it is due still counts
+		switch {
+		case !first.Before(end):
+			out = append(out, fmt.Sprintf("The calibration of gauge %s had run out on %s, before the first reading.", g.Name, g.Calibration.Due))
+		case !last.Before(end):
+			out = append(out, fmt.Sprintf("The calibration of gauge %s ran out on %s, during the test.", g.Name, g.Calibration.Due))
+		case end.Sub(last) <= nearDue:
+			out = append(out, fmt.Sprintf("The calibration of gauge %s is due on %s, %d days after the last reading.", g.Name, g.Calibration.Due, int(end.Sub(last).Hours()/24)))
+		}
+	}
+	if len(without) > 0 {
+		out = append(out, "No calibration is stated for "+strings.Join(without, ", ")+": their readings are taken as they are.")
+	}
+	return out
 }

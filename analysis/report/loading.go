@@ -1,7 +1,9 @@
 package report
 
 import (
+	"cmp"
 	"fmt"
+	"slices"
 	"sort"
 	"strings"
 
@@ -13,6 +15,8 @@ func (b *builder) steps() Section {
 	s := Section{ID: "steps", Title: "Load steps",
 		Lead: "Sags are net of support movement and count from full load; the initial sag is read " + span(b.r.Stiffness.InitialAfterS) + " after it and always holds some creep."}
 	if len(b.r.Steps) == 0 {
+		s.Lead = ""
+		s.Blocks = append(s.Blocks, Paragraph{"No load step was found: " + b.whyMissing("step") + "."})
 		return s
 	}
 	s.Blocks = append(s.Blocks, b.stepTable())
@@ -20,11 +24,13 @@ func (b *builder) steps() Section {
 		caption, says string
 		of            func(g analysis.StepGauge) *analysis.Q
 	}{
-		{"Initial sag", "", func(g analysis.StepGauge) *analysis.Q { return g.Initial }},
+		{"Initial sag", "Total sag at the initial-sag time of each step.", func(g analysis.StepGauge) *analysis.Q { return g.Initial }},
 		{"Increment of initial sag", "The initial sag less the older steps' creep carried forward to that instant.", func(g analysis.StepGauge) *analysis.Q { return g.Increment }},
 		{"Final sag", "At the end of each step.", func(g analysis.StepGauge) *analysis.Q { return g.Final }},
 	} {
-		s.Blocks = append(s.Blocks, b.sagTable(t.caption, t.says, t.of))
+		for _, part := range b.sagTables(t.caption, t.says, t.of) {
+			s.Blocks = append(s.Blocks, part)
+		}
 	}
 	if f, ok := b.loadSagFigure(); ok {
 		s.Blocks = append(s.Blocks, f)
@@ -71,13 +77,29 @@ func (b *builder) loadsOf(st analysis.Step) string {
 	return strings.Join(parts, ", ")
 }
 
-// sagTable is one figure of every gauge (columns) in every loaded step (rows).
-func (b *builder) sagTable(caption, says string, of func(analysis.StepGauge) *analysis.Q) Table {
-	t := Table{Caption: caption + ", " + b.u.of("mm"), Columns: []Column{{Name: "Step", Text: true}}}
-	if len(b.r.Steps) > 0 {
-		for _, g := range b.r.Steps[0].Gauges {
-			t.Columns = append(t.Columns, Column{Name: g.Gauge})
+// mostGauges is how many gauges stand side by side in a table.
+const mostGauges = 8
+
+// sagTables are one figure of every gauge (columns) in every loaded step
+// (rows), in several tables where there are many gauges.
+func (b *builder) sagTables(caption, says string, of func(analysis.StepGauge) *analysis.Q) []Table {
+	names := b.r.Steps[0].Gauges
+	var out []Table
+	for from := 0; from < len(names); from += mostGauges {
+		to := min(from+mostGauges, len(names))
+		name := caption + ", " + b.u.of("mm")
+		if len(names) > mostGauges {
+			name += fmt.Sprintf(" (gauges %d to %d)", from+1, to)
 		}
+		out = append(out, b.sagTable(name, says, from, to, of))
+	}
+	return out
+}
+
+func (b *builder) sagTable(caption, says string, from, to int, of func(analysis.StepGauge) *analysis.Q) Table {
+	t := Table{Caption: caption, Columns: []Column{{Name: "Step", Text: true}}}
+	for _, g := range b.r.Steps[0].Gauges[from:to] {
+		t.Columns = append(t.Columns, Column{Name: g.Gauge})
 	}
 	worst := 0.0
 	for _, st := range b.r.Steps {
@@ -85,8 +107,11 @@ func (b *builder) sagTable(caption, says string, of func(analysis.StepGauge) *an
 			continue
 		}
 		row := []string{st.Step}
-		for _, g := range st.Gauges {
-			q := of(g)
+		for j := from; j < to; j++ {
+			var q *analysis.Q
+			if j < len(st.Gauges) {
+				q = of(st.Gauges[j])
+			}
 			row = append(row, b.cell(q))
 			if q != nil && q.U != nil {
 				worst = max(worst, *q.U*b.factor("mm"))
@@ -95,11 +120,8 @@ func (b *builder) sagTable(caption, says string, of func(analysis.StepGauge) *an
 		t.Rows = append(t.Rows, row)
 	}
 	t.Says = says
-	if worst > 0 && says != "" {
-		t.Says += " "
-	}
 	if worst > 0 {
-		t.Says += "Standard uncertainties are at most " + significant(worst, 2) + " " + b.u.of("mm") + "."
+		t.Says = strings.TrimSpace(says + " Standard uncertainties are at most " + significant(worst, 2) + " " + b.u.of("mm") + ".")
 	}
 	return t
 }
@@ -121,6 +143,9 @@ func (b *builder) shape() Section {
 	if len(t.Rows) > 0 {
 		t.Says = "From the fitted curve, at the initial-sag time."
 		s.Blocks = append(s.Blocks, t)
+	}
+	if len(s.Blocks) == 0 {
+		s.Blocks = append(s.Blocks, Paragraph{"No curve was fitted: " + b.whyMissing("modulus") + "."})
 	}
 	return s
 }
@@ -150,8 +175,11 @@ func (b *builder) stiffness() Section {
 		add("Global modulus at "+g.Gauge, g.GlobalModulus)
 	}
 	if len(t.Rows) == 0 {
+		s.Lead = ""
+		s.Blocks = append(s.Blocks, Paragraph{"No stiffness was worked out: " + b.whyMissing("modulus") + "."})
 		return s
 	}
+	t.Says = "Intervals are U = k u for 95 % (JCGM 100). E divides EI by the second moment of area measured; the apparent modulus leaves shear in."
 	s.Blocks = append(s.Blocks, t)
 	if f := st.Fit; f != nil {
 		text := fmt.Sprintf("Fit: chi-square %s with %d degrees of freedom (p = %s); condition number %s.",
@@ -164,6 +192,7 @@ func (b *builder) stiffness() Section {
 		}
 		s.Blocks = append(s.Blocks, Paragraph{text})
 	}
+	s.Blocks = append(s.Blocks, b.fitTables()...)
 	if len(st.Budget) > 0 {
 		s.Blocks = append(s.Blocks, b.budgetTable())
 	}
@@ -179,4 +208,51 @@ func (b *builder) budgetTable() Table {
 	}
 	t.Says = "By the GUM (JCGM 100): the share is each input's part of the variance of E."
 	return t
+}
+
+// fitTables show what the fitted beam leaves over, by step and gauge.
+func (b *builder) fitTables() []Block {
+	rest := b.r.Stiffness.Residuals
+	if len(rest) == 0 {
+		return nil
+	}
+	micro, unit := b.small()
+	var gauges, steps []string
+	cell := map[[2]string]string{}
+	for _, v := range rest {
+		if !slices.Contains(gauges, v.Gauge) {
+			gauges = append(gauges, v.Gauge)
+		}
+		if !slices.Contains(steps, v.Step) {
+			steps = append(steps, v.Step)
+		}
+		d := max(0, decimalsFor(v.U*micro))
+		cell[[2]string{v.Step, v.Gauge}] = fixed(v.MM*micro, d)
+	}
+	var out []Block
+	for from := 0; from < len(gauges); from += mostGauges {
+		part := gauges[from:min(from+mostGauges, len(gauges))]
+		t := Table{Caption: "Reading less fitted beam, " + unit, Columns: []Column{{Name: "Step", Text: true}}}
+		for _, g := range part {
+			t.Columns = append(t.Columns, Column{Name: g})
+		}
+		for _, st := range steps {
+			row := []string{st}
+			for _, g := range part {
+				row = append(row, cmp.Or(cell[[2]string{st, g}], "–"))
+			}
+			t.Rows = append(t.Rows, row)
+		}
+		t.Says = "Of the increments of initial sag, support movement and plunger forces in the model: what one gauge leaves over in every step is its own fault, what all leave over in one step is the load's."
+		out = append(out, t)
+	}
+	return out
+}
+
+// small is the factor from mm to the unit of small deviations, and its name.
+func (b *builder) small() (float64, string) {
+	if b.u.of("mm") == "in" {
+		return 1e3 * b.factor("mm"), "mil"
+	}
+	return 1000, "µm"
 }

@@ -288,7 +288,15 @@ func (s *sheet) picture(p Picture) {
 	s.ensure(h + 1 + float64(len(caption))*lineHeight(smallSize))
 	o := fpdf.ImageOptions{ImageType: strings.TrimPrefix(p.Type, "image/")}
 	name := fmt.Sprintf("photo-%d-%d", s.f.PageNo(), int(s.y*100))
-	s.f.RegisterImageOptionsReader(name, o, bytes.NewReader(p.Data))
+	data := p.Data
+	if o.ImageType == "png" {
+		plain, err := plainPNG(data)
+		if err != nil {
+			panic(fmt.Sprintf("report: a picture that was read before cannot be read: %v", err))
+		}
+		data = plain
+	}
+	s.f.RegisterImageOptionsReader(name, o, bytes.NewReader(data))
 	s.f.ImageOptions(name, sideMargin, s.y, w, h, false, o, 0, "")
 	s.y += h + 1
 	s.style("", smallSize, soft)

@@ -89,7 +89,6 @@ func (c *pdfCanvas) pen() {
 	r, g, b := int(v.R), int(v.G), int(v.B)
 	c.f.SetDrawColor(r, g, b)
 	c.f.SetFillColor(r, g, b)
-	c.f.SetTextColor(r, g, b)
 	c.f.SetAlpha(float64(v.A)/0xff, "Normal")
 	k := c.scale()
 	c.f.SetLineWidth(float64(c.state.width) * k)
@@ -170,7 +169,8 @@ func (c *pdfCanvas) FillString(face font.Face, p vg.Point, s string) {
 	if face.Font.Size <= 0 || s == "" {
 		return
 	}
-	c.pen()
+	v := color.NRGBAModel.Convert(c.state.color).(color.NRGBA)
+	c.f.SetTextColor(int(v.R), int(v.G), int(v.B))
 	x, y := c.at(p)
 	c.f.SetFont(pdfFont, "", float64(face.Font.Size)*c.scale()/mmPerPoint)
 	// The page's y grows downwards, fpdf's angles anticlockwise.

@@ -17,6 +17,7 @@ type laidTable struct {
 const (
 	columnGap = 3.2 // mm between columns
 	rowPad    = 0.9 // mm above and below a row's text
+	signRow   = 11  // mm of an empty row, for a signature
 )
 
 // layTable fits a table into the page's width: the columns get what their
@@ -26,8 +27,10 @@ func (s *sheet) layTable(t Table, answers bool) *laidTable {
 	l := &laidTable{t: t, size: tableSize}
 	if answers {
 		l.size, l.bold = 9, 2
+		room := s.width - 2*columnGap
+		l.widths = []float64{0.22 * room, 0.33 * room, 0.45 * room}
 	}
-	for ; ; l.size -= 0.4 {
+	for ; !answers; l.size -= 0.4 {
 		if s.fit(l) || l.size < 6.2 {
 			break
 		}
@@ -97,10 +100,23 @@ func shareWidth(least, most []float64, room float64) []float64 {
 		for j := range out {
 			out[j] = most[j] + (room-sumMost)/float64(len(out))
 		}
-	case sumLeast <= room:
-		k := (room - sumLeast) / (sumMost - sumLeast)
-		for j := range out {
-			out[j] = least[j] + k*(most[j]-least[j])
+	case sumLeast <= room: // short columns first get all, the rest share alike
+		copy(out, least)
+		for left := room - sumLeast; left > 1e-6; {
+			open := 0
+			for j := range out {
+				if out[j] < most[j]-1e-9 {
+					open++
+				}
+			}
+			part := left / float64(max(open, 1))
+			for j := range out {
+				add := min(part, most[j]-out[j])
+				out[j], left = out[j]+add, left-add
+			}
+			if open == 0 {
+				break
+			}
 		}
 	default: // not even words fit: columns below an even share keep their words
 		share := room / float64(len(out))
@@ -136,7 +152,12 @@ func (l *laidTable) height(cells [][]string) float64 {
 	for _, c := range cells {
 		n = max(n, len(c))
 	}
-	return float64(n)*lineHeight(l.size) + 2*rowPad
+	for _, c := range cells {
+		if len(c) > 1 || strings.TrimSpace(c[0]) != "" {
+			return float64(n)*lineHeight(l.size) + 2*rowPad
+		}
+	}
+	return signRow
 }
 
 func (l *laidTable) top() float64 {

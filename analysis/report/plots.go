@@ -43,7 +43,7 @@ func (b *builder) loadSagFigure() (Figure, bool) {
 		addLine(p, model, lineStyle(i), "")
 		addPoints(p, points, glyphStyle(i), g)
 	}
-	return Figure{ID: "load-sag", Width: 170, Height: 95, Plot: p,
+	return Figure{ID: "load-sag", Width: 170, Height: 85, Plot: p,
 		Caption: fmt.Sprintf("Load against sag, %s after full load of each step, without the older steps' creep. Points: readings; lines: the fitted beam.", span(b.r.Stiffness.InitialAfterS)),
 		Alt:     "Total load against the sag of each gauge at every step, with the fitted beam as lines."}, any
 }
@@ -105,8 +105,9 @@ func (b *builder) curveFigure() (Figure, bool) {
 		addPoints(p, points, glyphStyle(i), "")
 	}
 	b.addSupports(p, mm)
-	return Figure{ID: "curve", Width: 170, Height: 85, Plot: p,
-		Caption: "The beam's shape, much exaggerated. Lines: the fitted beam; markers: gauges; triangles on the zero line: supports.",
+	b.addGreatest(p, mm)
+	return Figure{ID: "curve", Width: 170, Height: 78, Plot: p,
+		Caption: "The beam's shape, much exaggerated. Lines: the fitted beam; markers: gauges; triangles on the zero line: supports; crosses: where it sags most.",
 		Alt:     "Sag along the beam for each load step with the gauges' readings on the fitted curves."}, len(b.r.Series.Curve) > 0
 }
 
@@ -119,6 +120,21 @@ func (b *builder) addSupports(p *plot.Plot, mm float64) {
 		at = append(at, plotter.XY{X: s.At.Value * mm, Y: 0})
 	}
 	addPoints(p, at, draw.GlyphStyle{Color: ink, Radius: vg.Points(4), Shape: draw.PyramidGlyph{}}, "")
+}
+
+// addGreatest marks where the fitted curve sags most in each step.
+func (b *builder) addGreatest(p *plot.Plot, mm float64) {
+	var at plotter.XYs
+	for _, st := range b.r.Steps {
+		for _, c := range b.r.Series.Curve {
+			if l := st.Largest; l != nil && c.Step == st.Step {
+				if y, ok := interpolate(c.AtMM, c.SagMM, l.At.Value); ok {
+					at = append(at, plotter.XY{X: l.At.Value * mm, Y: y * mm})
+				}
+			}
+		}
+	}
+	addPoints(p, at, draw.GlyphStyle{Color: ink, Radius: vg.Points(4), Shape: draw.PlusGlyph{}}, "")
 }
 
 // historyFigure plots every gauge's sag over the whole run.
@@ -141,7 +157,7 @@ func (b *builder) historyFigure() (Figure, bool) {
 		}
 		addLine(p, line, lineStyle(i), name)
 	}
-	return Figure{ID: "history", Width: 170, Height: 95, Plot: p,
+	return Figure{ID: "history", Width: 170, Height: 74, Plot: p,
 		Caption: "Sag of every gauge over the whole run, net of support movement and of disturbances' offsets.",
 		Alt:     "Sag of all gauges against time over the whole run."}, len(b.r.Series.Gauges) > 0
 }
@@ -188,7 +204,7 @@ func (b *builder) creepFigure() (Figure, bool) {
 	addPoints(p, points, draw.GlyphStyle{Color: ink, Radius: vg.Points(1.1), Shape: draw.CircleGlyph{}}, "readings")
 	addLine(p, inside, draw.LineStyle{Color: shades[1], Width: vg.Points(1.4)}, "law")
 	addLine(p, beyond, draw.LineStyle{Color: shades[1], Width: vg.Points(1.4), Dashes: dashes[1]}, "beyond the data")
-	return Figure{ID: "creep-log", Width: 170, Height: 95, Plot: p,
+	return Figure{ID: "creep-log", Width: 170, Height: 82, Plot: p,
 		Caption: "Creep against logarithmic time after full load. Shaded: 95 % band of the law; dashed: beyond the data.",
 		Alt:     "Sag of the creep gauge against logarithmic time with the fitted law and its band."}, true
 }
@@ -213,42 +229,37 @@ func (b *builder) creepPoints(mm float64) plotter.XYs {
 
 // residualFigure plots readings less law over logarithmic time.
 func (b *builder) residualFigure() (Figure, bool) {
-	micro, unit := 1000.0, "µm"
-	if b.u.of("mm") == "in" {
-		micro, unit = 1e3*b.factor("mm"), "mil"
-	}
-	var lx, ly []float64
-	for _, l := range b.r.Series.Law {
-		if l.AfterS > 0 {
-			lx, ly = append(lx, math.Log(l.AfterS)), append(ly, l.SagMM)
-		}
-	}
+	micro, unit := b.small()
 	p := newPlot("time after full load (logarithmic)", "reading less law, "+unit)
 	p.X.Scale, p.X.Tick.Marker = plot.LogScale{}, timeTicks{}
 	var pts plotter.XYs
-	for _, q := range b.creepPoints(1) {
-		if v, ok := interpolate(lx, ly, math.Log(q.X)); ok {
-			pts = append(pts, plotter.XY{X: q.X, Y: (q.Y - v) * micro})
+	for _, c := range b.r.Series.Creep {
+		if c.AfterS > 0 {
+			pts = append(pts, plotter.XY{X: c.AfterS, Y: c.ResidualMM * micro})
 		}
 	}
 	if len(pts) < 2 {
 		return Figure{}, false
 	}
 	addPoints(p, pts, draw.GlyphStyle{Color: shades[0], Radius: vg.Points(1.2), Shape: draw.CircleGlyph{}}, "")
-	return Figure{ID: "residuals", Width: 170, Height: 60, Plot: p,
-		Caption: "What the law leaves over: a pattern here is something the law does not know, such as the day's temperature.",
+	return Figure{ID: "residuals", Width: 170, Height: 52, Plot: p,
+		Caption: "What the law leaves over, temperature and offsets taken out: scatter without a pattern says that the law fits; a bend or a wave is something it does not know.",
 		Alt:     "Residuals of the creep law against logarithmic time."}, true
 }
 
 // ambientFigure plots temperature and humidity over the run.
 func (b *builder) ambientFigure() (Figure, bool) {
-	p := newPlot("time from the first reading, d", "temperature, °C · humidity, %")
+	p := newPlot("time from the first reading, d", "temperature, "+b.temperatureUnit()+" · humidity, %")
 	any := false
 	for i, a := range b.r.Series.Ambient {
 		for k, v := range [][]float64{a.Celsius, a.HumidityPercent} {
 			var line plotter.XYs
 			for j := range v {
-				line = append(line, plotter.XY{X: a.TimeS[j] / 86400, Y: v[j]})
+				y := v[j]
+				if k == 0 {
+					y = b.temperature(y)
+				}
+				line = append(line, plotter.XY{X: a.TimeS[j] / 86400, Y: y})
 			}
 			any = any || len(line) > 1
 			addLine(p, line, lineStyle(2*i+k), a.Probe+[]string{" temperature", " humidity"}[k])

@@ -78,7 +78,26 @@ func (b *builder) local(instant string) string {
 	if err != nil {
 		return instant
 	}
+	return b.localTime(t)
+}
+
+func (b *builder) localTime(t time.Time) string {
 	return t.In(b.zone).Format("2006-01-02 15:04:05 -07:00")
+}
+
+// temperatureUnit is the report's own; temperature converts to it.
+func (b *builder) temperatureUnit() string {
+	if b.u.of("mm") == "in" {
+		return "°F"
+	}
+	return "°C"
+}
+
+func (b *builder) temperature(celsius float64) float64 {
+	if b.u.of("mm") == "in" {
+		return celsius*1.8 + 32
+	}
+	return celsius
 }
 
 // span prints seconds as people say them: 60 s, 1 h, 7 d, 10 a.
