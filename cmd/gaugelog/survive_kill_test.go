@@ -25,9 +25,9 @@ var (
 
 // killCount sums up what a campaign met.
 type killCount struct {
-	mu                                    sync.Mutex
-	kills, recording, tails, packed       int
-	readings, acked, marks, cutMarks, all int
+	mu                               sync.Mutex
+	kills, recording, tails, packed  int
+	readings, acked, marks, cutMarks int
 }
 
 func (c *killCount) add(f func()) {
