@@ -13,7 +13,7 @@ func commands() []*cobra.Command {
 	return []*cobra.Command{
 		demoCommand(), newCommand(), checkCommand(), portsCommand(), simulateCommand(),
 		listenCommand(), nudgeCommand(), sectionCommand(), calibrateCommand(),
-		recordCommand(), markCommand(),
+		recordCommand(), markCommand(), forwardCommand(),
 		analyseCommand(), reportCommand(), compareCommand(), verifyCommand(), exportCommand(), importCommand(),
 	}
 }

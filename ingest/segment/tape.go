@@ -2,6 +2,7 @@ package segment
 
 import (
 	"bytes"
+	"errors"
 	"fmt"
 	"io"
 	"math"
@@ -24,6 +25,10 @@ type Tape struct {
 	names *interner
 	done  bool
 }
+
+// ErrNoPlace says that a file cannot be read on from an offset: what was read
+// once is not there any more. Begin it anew.
+var ErrNoPlace = errors.New("the file does not hold what was read of it before")
 
 // Stretch is what one call of Tape.Next gives: whole blocks.
 type Stretch struct {
@@ -60,7 +65,9 @@ func plainName(name string) string { return strings.TrimSuffix(name, ".zst") }
 
 // Tape opens a segment (by a name that Names gives) or a log (MarksFile,
 // EventsFile) at an offset that was 0 or the To of a Stretch. A missing file is
-// an error that is fs.ErrNotExist. The caller must call Close.
+// an error that is fs.ErrNotExist; an offset that lies behind no comment of the
+// file any more (its end was lost, or was written again elsewhere) is
+// ErrNoPlace. The caller must call Close.
 func (d *Folder) Tape(name string, offset int64) (*Tape, error) {
 	f := &segFile{name: name, limit: -1}
 	if name == MarksFile || name == EventsFile {
@@ -116,19 +123,21 @@ func (t *Tape) seek(f *segFile, offset int64) error {
 		return err
 	}
 	before := make([]byte, lead)
-	if n, err := io.ReadFull(text, before); err == io.EOF || err == io.ErrUnexpectedEOF {
-		// Less is there than was read once: its end was written again elsewhere.
-		t.done, before = true, before[:n]
+	if _, err := io.ReadFull(text, before); err == io.EOF || err == io.ErrUnexpectedEOF {
+		return ErrNoPlace
 	} else if err != nil {
 		return err
 	}
 	t.m.boot = f.header.Boot
-	if line, ok := bytes.CutSuffix(before, []byte{'\n'}); ok && f.own {
+	if offset > 0 && f.own {
+		line, _ := bytes.CutSuffix(before, []byte{'\n'})
 		line = line[bytes.LastIndexByte(line, '\n')+1:]
 		if c, ok := parseCheckpoint(line); ok {
 			t.m.prev, t.m.chain, t.m.chained = &c.clock, c.self, true
 		} else if h, err := parseHeader(line); err == nil {
 			t.m.boot, t.m.prev, t.m.chain, t.m.chained = h.Boot, &h.Clock, h.self, true
+		} else {
+			return ErrNoPlace
 		}
 	}
 	t.base = offset
@@ -215,6 +224,9 @@ func (t *Tape) unset() (n int64) {
 
 // Gauges names the gauges by their numbers in a Batch.
 func (t *Tape) Gauges() []string { return t.m.names }
+
+// Sync makes what was read durable, which its writer may not yet have done.
+func (t *Tape) Sync() error { return t.file.Sync() }
 
 // Close lets go of the file.
 func (t *Tape) Close() error {

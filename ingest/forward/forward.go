@@ -1,0 +1,346 @@
+package forward
+
+import (
+	"bytes"
+	"context"
+	"crypto/sha256"
+	"encoding/hex"
+	"errors"
+	"fmt"
+	"io"
+	"io/fs"
+	"net/http"
+	"os"
+	"path/filepath"
+	"time"
+
+	"github.com/cenkalti/backoff/v5"
+	"github.com/gofrs/flock"
+	"github.com/klauspost/compress/gzip"
+
+	"gaugelog/ingest/segment"
+)
+
+// StateDir is the folder in a run that holds what forwarding remembers.
+const StateDir = "forward"
+
+// Notice tells of something on the way. All fields empty: a body was taken.
+type Notice struct {
+	// Words are what the server said, or what failed; Wait is how long
+	// forwarding waits before it tries again.
+	Words string
+	Wait  time.Duration
+	// Held says that a person must do something: the server refuses access, or
+	// is none of this kind.
+	Held bool
+	// Refused is a line that was set aside.
+	Refused string
+	// Again says why something is sent again.
+	Again string
+}
+
+// Options is what forwarding a run needs.
+type Options struct {
+	FS segment.FS
+	// State is the folder that holds the cursor and the refused lines.
+	State  string
+	Target *Target
+	// Rig and Run are the tags added to each line; Run "" is the run's id.
+	Rig, Run string
+	Program  string
+	// Lines and Bytes bound one body; 0: 5000 lines, 1 MB before packing.
+	Lines, Bytes int
+	// Hold is the least wait where access is refused; 0: 1 min.
+	Hold time.Duration
+	// Poll is how often a run being recorded is looked at; 0: 1 s.
+	Poll time.Duration
+	// Tell hears of what happens; may be nil. It must not wait.
+	Tell func(Notice)
+	// Wait waits for a time or the context; nil: really.
+	Wait func(context.Context, time.Duration) error
+	// Client sends; nil: one that follows no redirect, with a limit of 60 s.
+	Client *http.Client
+}
+
+// Count is what was done so far.
+type Count struct {
+	// Sent counts lines that the server took (again ones too), Refused those
+	// set aside, Held those kept back for their clock, Retries the waits.
+	Sent, Refused, Held, Retries int64
+}
+
+// Forwarder sends one run to one server. Not safe for use by several goroutines.
+type Forwarder struct {
+	o        Options
+	client   *http.Client
+	state    *os.Root
+	lock     *flock.Flock
+	name     string // of the cursor
+	cursor   *cursor
+	liner    *liner
+	pause    *backoff.ExponentialBackOff
+	zip      *gzip.Writer
+	packed   bytes.Buffer
+	lines    []byte
+	bytes    int // bound of one body; less once the server said 413
+	refusals int // in a row
+	count    Count
+}
+
+// Open takes up where an earlier forwarding of the run to this server ended.
+// The caller must call Close.
+func Open(o Options) (*Forwarder, error) {
+	if o.Lines <= 0 {
+		o.Lines = 5000
+	}
+	if o.Bytes <= 0 {
+		o.Bytes = 1 << 20
+	}
+	if o.Hold <= 0 {
+		o.Hold = time.Minute
+	}
+	if o.Poll <= 0 {
+		o.Poll = time.Second
+	}
+	if o.Wait == nil {
+		o.Wait = sleep
+	}
+	f := &Forwarder{o: o, client: o.Client, bytes: o.Bytes, zip: newZip(), pause: backoff.NewExponentialBackOff()}
+	if f.client == nil {
+		f.client = newClient()
+	}
+	f.pause.InitialInterval, f.pause.MaxInterval = time.Second, 5*time.Minute
+	f.pause.Multiplier, f.pause.RandomizationFactor = 2, 0.5
+	d, err := segment.OpenFolder(o.FS)
+	if err != nil {
+		return nil, err
+	}
+	id := d.RunID()
+	if f.o.Run == "" {
+		f.o.Run = id
+	}
+	f.liner = newLiner(f.o.Run, o.Rig)
+	sum := sha256.Sum256([]byte(o.Target.URL.Scheme + o.Target.URL.Host + o.Target.URL.Path + o.Target.URL.RawQuery))
+	f.name = "to-" + hex.EncodeToString(sum[:6])
+	if err := f.openState(id); err != nil {
+		return nil, errors.Join(err, f.Close())
+	}
+	return f, nil
+}
+
+// openState takes the lock and reads the cursor.
+func (f *Forwarder) openState(run string) error {
+	if err := os.MkdirAll(f.o.State, 0o755); err != nil {
+		return err
+	}
+	var err error
+	if f.state, err = os.OpenRoot(f.o.State); err != nil {
+		return err
+	}
+	f.lock = flock.New(filepath.Join(f.o.State, f.name+".lock"), flock.SetPermissions(0o644))
+	got, err := f.lock.TryLock()
+	if err != nil {
+		return err
+	}
+	if !got {
+		return errors.New("this run is being forwarded to that server already")
+	}
+	c, again, err := loadCursor(f.state, f.name, run)
+	if err != nil {
+		return err
+	}
+	if f.cursor = c; again != "" {
+		f.tell(Notice{Again: again})
+	}
+	return nil
+}
+
+// Close lets go of the state.
+func (f *Forwarder) Close() error {
+	var errs []error
+	if f.lock != nil {
+		errs = append(errs, f.lock.Close())
+	}
+	if f.state != nil {
+		errs = append(errs, f.state.Close())
+	}
+	f.client.CloseIdleConnections()
+	return errors.Join(errs...)
+}
+
+// Count tells what was done so far.
+func (f *Forwarder) Count() Count { return f.count }
+
+func (f *Forwarder) tell(n Notice) {
+	if f.o.Tell != nil {
+		f.o.Tell(n)
+	}
+}
+
+// Run sends what is in the folder, and with follow goes on until the context
+// ends. The end of the context is its error; else it fails only where the
+// folder or the state cannot be read or written.
+func (f *Forwarder) Run(ctx context.Context, follow bool) error {
+	seen := ""
+	for {
+		now, err := f.signature()
+		if err != nil {
+			return err
+		}
+		if now != seen || !follow {
+			if err := f.pass(ctx); err != nil {
+				return err
+			}
+			seen = now
+		}
+		if !follow {
+			return nil
+		}
+		if err := f.o.Wait(ctx, f.o.Poll); err != nil {
+			return err
+		}
+	}
+}
+
+// signature changes when the folder does.
+func (f *Forwarder) signature() (string, error) {
+	entries, err := f.o.FS.ReadDir(segment.ReadingsDir)
+	if err != nil && !errors.Is(err, fs.ErrNotExist) {
+		return "", err
+	}
+	sign := fmt.Sprint(len(entries))
+	if n := len(entries); n > 0 {
+		if info, err := entries[n-1].Info(); err == nil {
+			sign += fmt.Sprint(" ", entries[n-1].Name(), info.Size())
+		}
+	}
+	for _, name := range []string{segment.MarksFile, segment.EventsFile} {
+		if file, err := f.o.FS.Open(name); err == nil {
+			if info, err := file.Stat(); err == nil {
+				sign += fmt.Sprint(" ", info.Size())
+			}
+			file.Close()
+		}
+	}
+	return sign, nil
+}
+
+// pass sends what is new: the logs first, for they are small and say what the
+// readings mean, then what was held back and is no more, then the readings.
+func (f *Forwarder) pass(ctx context.Context) error {
+	d, err := segment.OpenFolder(f.o.FS)
+	if err != nil {
+		return err
+	}
+	for _, name := range []string{segment.MarksFile, segment.EventsFile} {
+		if err := f.file(ctx, d, name); err != nil && !errors.Is(err, fs.ErrNotExist) {
+			return err
+		}
+	}
+	if err := f.held(ctx, d); err != nil {
+		return err
+	}
+	for _, name := range d.Names() {
+		if err := f.file(ctx, d, name); err != nil {
+			return err
+		}
+	}
+	return nil
+}
+
+// file sends the rest of one file.
+func (f *Forwarder) file(ctx context.Context, d *segment.Folder, name string) error {
+	t, err := d.Tape(name, f.cursor.Offsets[name])
+	if errors.Is(err, segment.ErrNoPlace) {
+		f.tell(Notice{Again: name + ": " + err.Error() + ": it is sent again"})
+		f.cursor.Offsets[name] = 0
+		t, err = d.Tape(name, 0)
+	}
+	if err != nil {
+		return err
+	}
+	defer t.Close()
+	for {
+		s, err := t.Next()
+		if err == io.EOF {
+			return nil
+		}
+		if err != nil {
+			return err
+		}
+		from := f.cursor.Offsets[name]
+		if s.Unset > 0 {
+			f.count.Held += s.Unset
+			f.cursor.hold(stretch{name, from, s.To})
+		} else if err := f.stretch(ctx, s, t.Gauges()); err != nil {
+			return err
+		}
+		f.cursor.Offsets[name] = s.To
+		if err := syncRead(t); err != nil {
+			return err
+		}
+		if err := f.cursor.save(f.state, f.name); err != nil {
+			return err
+		}
+	}
+}
+
+// stretch sends one stretch of a file.
+func (f *Forwarder) stretch(ctx context.Context, s segment.Stretch, gauges []string) (err error) {
+	f.lines, err = f.liner.batch(f.lines[:0], s.Batch, gauges, func(err error) error {
+		return f.setAside([]byte("\n"), "a record of "+s.File+" cannot be sent: "+err.Error())
+	})
+	if err != nil {
+		return err
+	}
+	return f.send(ctx, f.lines)
+}
+
+// held sends what was held back where its clock is known now.
+func (f *Forwarder) held(ctx context.Context, d *segment.Folder) error {
+	for i := 0; i < len(f.cursor.Held); {
+		h := &f.cursor.Held[i]
+		done, err := f.heldOne(ctx, d, h)
+		if err != nil {
+			return err
+		}
+		if !done {
+			i++
+			continue
+		}
+		f.cursor.Held = append(f.cursor.Held[:i], f.cursor.Held[i+1:]...)
+		if err := f.cursor.save(f.state, f.name); err != nil {
+			return err
+		}
+	}
+	return nil
+}
+
+// heldOne sends as much of a held stretch as can be; true when all is sent.
+func (f *Forwarder) heldOne(ctx context.Context, d *segment.Folder, h *stretch) (bool, error) {
+	t, err := d.Tape(h.File, h.From)
+	if errors.Is(err, segment.ErrNoPlace) {
+		return true, nil // it was written again elsewhere, and is held from there
+	}
+	if err != nil {
+		return false, err
+	}
+	defer t.Close()
+	for h.From < h.To {
+		s, err := t.Next()
+		if err == io.EOF {
+			return true, nil
+		}
+		if err != nil || s.Unset > 0 {
+			return false, err
+		}
+		if err := f.stretch(ctx, s, t.Gauges()); err != nil {
+			return false, err
+		}
+		h.From = s.To
+		if err := f.cursor.save(f.state, f.name); err != nil {
+			return false, err
+		}
+	}
+	return true, nil
+}

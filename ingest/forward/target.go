@@ -1,0 +1,76 @@
+package forward
+
+import (
+	"errors"
+	"fmt"
+	"net"
+	"net/url"
+	"strings"
+)
+
+// Target is where and as whom to write.
+type Target struct {
+	// URL is the write address whole, with precision=ns.
+	URL *url.URL
+	// auth is the value of the Authorization header, "" for none.
+	auth string
+}
+
+// ParseTarget reads a write address, such as http://host:8086/write?db=lab or
+// https://host/api/v2/write?org=lab&bucket=sag. token may be empty; at a
+// version 1 address it may be "user:password". A token is refused over plain
+// http to a host outside private networks, unless plain allows it.
+func ParseTarget(address, token string, plain bool) (*Target, error) {
+	u, err := url.Parse(address)
+	if err != nil || u.Host == "" || u.Scheme != "http" && u.Scheme != "https" {
+		return nil, errors.New("the address is no http or https URL")
+	}
+	if u.User != nil {
+		return nil, errors.New("the address holds a user or password, which logs would show: put user:password into a token file")
+	}
+	q := u.Query()
+	for _, key := range []string{"p", "u", "token"} {
+		if q.Has(key) {
+			return nil, fmt.Errorf("the address holds %s=, which logs would show: put it into a token file", key)
+		}
+	}
+	v2 := strings.HasSuffix(u.Path, "/api/v2/write")
+	switch {
+	case v2 && !q.Has("bucket"):
+		return nil, errors.New("a version 2 address names its bucket: /api/v2/write?org=ORG&bucket=BUCKET")
+	case !v2 && !strings.HasSuffix(u.Path, "/write"):
+		return nil, fmt.Errorf("path %q is none to write to: /write?db=NAME or /api/v2/write?org=ORG&bucket=BUCKET", u.Path)
+	}
+	q.Set("precision", "ns")
+	u.RawQuery = q.Encode()
+	t := &Target{URL: u}
+	switch token = strings.TrimSpace(token); {
+	case token == "":
+		return t, nil
+	case strings.ContainsAny(token, "\r\n"):
+		return nil, errors.New("the token has more than one line")
+	case u.Scheme == "http" && !plain && !private(u.Hostname()):
+		return nil, errors.New("a token would go over plain http to a host outside private networks: use https")
+	case v2:
+		t.auth = "Token " + token
+	case strings.Contains(token, ":"):
+		t.auth = "Basic " + basic(token)
+	default:
+		t.auth = "Bearer " + token
+	}
+	return t, nil
+}
+
+// private tells whether a host is this machine or on a private network by its
+// very name.
+func private(host string) bool {
+	if host == "localhost" || !strings.Contains(host, ".") && !strings.Contains(host, ":") ||
+		strings.HasSuffix(host, ".local") || strings.HasSuffix(host, ".internal") {
+		return true
+	}
+	ip := net.ParseIP(host)
+	return ip != nil && (ip.IsLoopback() || ip.IsPrivate() || ip.IsLinkLocalUnicast())
+}
+
+// String is the address without the token: fit to be shown.
+func (t *Target) String() string { return t.URL.Redacted() }
