@@ -189,13 +189,14 @@ func (b *Bank) Consumed(port string) int64 { return b.pump(port).consumed.n.Load
 
 // WaitConsumed waits until Consumed(port) is at least n. With Conducted, n
 // must be all that was sent: the line then counts as quiet, so that a frame
-// which ends by the gap behind it has been handed over too.
+// which ends by the gap behind it has been handed over too, and a question
+// that is still open ends with ErrQuiet.
 func (b *Bank) WaitConsumed(ctx context.Context, port string, n int64) error {
 	p := b.pump(port)
 	if err := p.consumed.wait(ctx, n); err != nil || !p.o.Conducted {
 		return err
 	}
-	return p.gaps.settle(ctx, b.done)
+	return p.gaps.settle(ctx, b.done, p.asking.Load() > 0)
 }
 
 // Ask asks one gauge or probe of a rig now and waits until its answer was

@@ -38,9 +38,10 @@ func gapsOf(plan *portPlan, slots []*slot) gaps {
 func (g *gaps) begin() { g.since, g.at = -1, 0 }
 
 // settle tells the pump that the line is quiet now, and waits until it has
-// dealt with that; done is closed when no pump runs any more.
-func (g *gaps) settle(ctx context.Context, done <-chan struct{}) error {
-	if !g.any {
+// dealt with that; done is closed when no pump runs any more. asking tells
+// that a question may be open.
+func (g *gaps) settle(ctx context.Context, done <-chan struct{}, asking bool) error {
+	if !g.any && !asking {
 		return nil
 	}
 	dealt := make(chan struct{})

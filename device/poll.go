@@ -100,6 +100,22 @@ func (l *poll) tick(p *pump, now time.Time, w *writer) error {
 	return nil
 }
 
+// silence gives back what was held as an echo, when the line is quiet by the
+// conductor's word while a question is open.
+func (l *poll) silence(p *pump) {
+	if l.state == pollWaiting || l.state == pollWriting {
+		p.echo.giveUp(p)
+	}
+}
+
+// close ends a question that the whole of what was sent has not answered.
+func (l *poll) close() {
+	if l.state == pollWaiting || l.state == pollWriting {
+		l.dirty = true
+		l.end(ErrQuiet)
+	}
+}
+
 // next begins the next question if none is open and one is due.
 func (l *poll) next(p *pump, now time.Time, w *writer) {
 	if l.state != pollIdle {

@@ -52,7 +52,7 @@ type pump struct {
 	open, answering                  atomic.Bool
 	frames, refused, echoes, reopens atomic.Int64
 	lastWall, lastBoot               atomic.Int64
-	stuck                            atomic.Int64
+	stuck, asking                    atomic.Int64 // asking: how many wait in ask
 }
 
 // ask is a request of the conductor; done takes one result and has room for it.
@@ -174,6 +174,8 @@ func (p *pump) at(offset int64) Instant {
 
 // ask hands a request of the conductor to the pump and waits for the result.
 func (p *pump) ask(ctx context.Context, in *instrument) error {
+	p.asking.Add(1)
+	defer p.asking.Add(-1)
 	a := ask{in, make(chan error, 1)}
 	select {
 	case p.asks <- a:

@@ -103,7 +103,10 @@ func (p *pump) session(ctx context.Context, port Port, tried func()) error {
 			p.poll.queue = append(p.poll.queue, a)
 			p.poll.next(p, time.Now(), w)
 		case done := <-p.gaps.settles:
+			p.poll.silence(p)
 			p.quiet()
+			p.poll.close()
+			p.poll.next(p, time.Now(), w)
 			close(done)
 		case err := <-w.wrote:
 			if err != nil {

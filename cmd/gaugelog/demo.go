@@ -57,8 +57,8 @@ func runDemo(cmd *cobra.Command, into string, seed uint64) error {
 	defer dir.Close()
 	bar := newProgress(cmd.ErrOrStderr(), "recording eight days of readings", sim.End())
 	c := &conductor{
-		sim: sim, rig: demo.Rig, rigText: demo.RigText, dir: dir,
-		runID: fmt.Sprintf("demo-%d", seed), progress: bar.at,
+		source: sim, computer: sim, progress: bar.at,
+		runs: []*conductedRun{{rig: demo.Rig, rigText: demo.RigText, dir: dir, runID: fmt.Sprintf("demo-%d", seed)}},
 	}
 	began := time.Now()
 	if err := c.conduct(cmd.Context()); err != nil {
