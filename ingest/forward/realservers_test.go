@@ -156,7 +156,7 @@ func TestInfluxDB(t *testing.T) {
 func TestVictoriaMetrics(t *testing.T) {
 	path, dir, addr := program(t, "victoria-metrics"), t.TempDir(), freePort(t)
 	p := &process{t: t, ping: "http://" + addr + "/health", make: func() *exec.Cmd {
-		return exec.Command(path, "-storageDataPath="+dir, "-httpListenAddr="+addr, "-retentionPeriod=100y", "-inmemoryDataFlushInterval=1s")
+		return exec.Command(path, "-storageDataPath="+dir, "-httpListenAddr="+addr, "-retentionPeriod=100y")
 	}}
 	p.start()
 	defer func() { p.kill() }()
