@@ -50,6 +50,7 @@ type Options struct {
 // Desk knows the present of one run.
 type Desk struct {
 	o        Options
+	zone     *time.Location
 	channels map[string]int // gauges, then probes
 	feed     chan sample
 	missed   atomic.Int64
@@ -89,7 +90,7 @@ const feedLength = 8192
 // New makes a desk. Run sets it going; Take and Snapshot work before that.
 func New(o Options) (*Desk, error) {
 	d := &Desk{
-		o: o, channels: map[string]int{}, feed: make(chan sample, feedLength),
+		o: o, zone: zoneOf(o.Rig.Timezone), channels: map[string]int{}, feed: make(chan sample, feedLength),
 		outlooks: make(chan outlookResult), books: make(chan bookResult), asked: make(chan func()),
 		engine: alarm.NewEngine(o.Rig.Alarms.Wants),
 		still:  make([]stillness, len(o.Rig.Gauges)),

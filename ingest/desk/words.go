@@ -11,12 +11,15 @@ import (
 )
 
 // Local is an instant in the rig's time zone.
-func (d *Desk) Local(t time.Time) time.Time {
-	zone, err := time.LoadLocation(d.o.Rig.Timezone)
+func (d *Desk) Local(t time.Time) time.Time { return t.In(d.zone) }
+
+// zoneOf finds the rig's time zone; the rig file's check refused unknown ones.
+func zoneOf(name string) *time.Location {
+	zone, err := time.LoadLocation(name)
 	if err != nil {
-		zone = time.UTC
+		return time.UTC
 	}
-	return t.In(zone)
+	return zone
 }
 
 // Span words a length of time for people: two units at most.
