@@ -101,44 +101,58 @@ func addCurves(r *Result, rig *config.Rig, f *steps.Findings, e *stiffness.Estim
 		}
 		r.Series.Curve = append(r.Series.Curve, c)
 		if peak, err := e.Largest(k); err == nil {
-			r.Steps[i].Largest = largestOf(rig, r.Steps[i], peak, c)
+			r.Steps[i].Largest = largestOf(rig, r.Steps[i], peak, func(at []float64) ([]float64, error) { return e.Curve(k, at) })
 		} else {
 			r.Warnings = append(r.Warnings, Warning{Code: "no-greatest-sag", Text: "step " + step.Name + ": " + err.Error()})
 		}
 	}
 }
 
-// largestOf is the greatest total sag: the fitted curve has the shape, and the
-// gauges between the supports say by how much the older steps' creep has
-// lifted all of it. Nil where no gauge can say.
-func largestOf(rig *config.Rig, s Step, peak *stiffness.Peak, c ElasticCurve) *Largest {
+// largestOf is the greatest total net sag: the fitted curve has the shape, and
+// the gauges on the beam say by how much the older steps' creep has lifted all
+// of it. Its uncertainty takes in the best gauge's own. Nil where no gauge can
+// say, or the curve cannot be read there.
+func largestOf(rig *config.Rig, s Step, peak *stiffness.Peak, curve func(places []float64) ([]float64, error)) *Largest {
 	var sxy, sxx float64
+	best := math.Inf(1)
 	for i, g := range s.Gauges {
-		model, ok := curveAt(c, g.AtMM)
-		if !touches(rig.Gauges[i]) || len(rig.Gauges[i].Bar) == 2 || g.Initial == nil || !ok || math.Abs(model) < 0.2*math.Abs(peak.Sag.Value) {
+		if !touches(rig.Gauges[i]) || len(rig.Gauges[i].Bar) == 2 || g.Initial == nil || g.Initial.U == nil {
+			continue
+		}
+		model, err := netCurve(rig, curve, g.AtMM)
+		if err != nil || math.Abs(model) < 0.2*math.Abs(peak.Sag.Value) {
 			continue
 		}
 		sxy += model * g.Initial.Value
 		sxx += model * model
+		best = min(best, *g.Initial.U)
 	}
 	if sxx == 0 {
 		return nil
 	}
 	f := sxy / sxx
 	sag := peak.Sag
-	sag.Value, sag.U, sag.U95 = f*sag.Value, f*sag.U, f*sag.U95
+	sag.Value, sag.U = f*sag.Value, math.Hypot(f*sag.U, best)
+	sag.U95 = sag.K * sag.U
 	return &Largest{At: *expanded(&peak.At, "mm"), Sag: *expanded(&sag, "mm")}
 }
 
-// curveAt reads a drawn curve at a place.
-func curveAt(c ElasticCurve, at float64) (float64, bool) {
-	for i := 1; i < len(c.AtMM); i++ {
-		if at >= c.AtMM[i-1] && at <= c.AtMM[i] {
-			f := (at - c.AtMM[i-1]) / (c.AtMM[i] - c.AtMM[i-1])
-			return c.SagMM[i-1] + f*(c.SagMM[i]-c.SagMM[i-1]), true
+// netCurve is the fitted curve at a place less the straight line through it at
+// two supports; on any other layout the curve itself.
+func netCurve(rig *config.Rig, curve func([]float64) ([]float64, error), at float64) (float64, error) {
+	if len(rig.Supports) != 2 || rig.Supports[0].At.Value == rig.Supports[1].At.Value {
+		v, err := curve([]float64{at})
+		if err != nil {
+			return 0, err
 		}
+		return v[0], nil
 	}
-	return 0, false
+	a, b := rig.Supports[0].At.Value, rig.Supports[1].At.Value
+	v, err := curve([]float64{at, a, b})
+	if err != nil {
+		return 0, err
+	}
+	return v[0] - ((b-at)*v[1]+(at-a)*v[2])/(b-a), nil
 }
 
 // addIncrements adds a step's gross increments; a gauge that misses one is no
