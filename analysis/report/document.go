@@ -131,5 +131,6 @@ func Build(r *analysis.Result, o Options) *Document {
 			d.Sections = append(d.Sections, s)
 		}
 	}
+	d.clean()
 	return d
 }

@@ -312,15 +312,11 @@ var glyphs = sync.OnceValue(func() *sfnt.Font {
 	return f
 })
 
-// printable puts a hollow box for what the embedded font cannot show, as a
-// browser would, and blanks for control characters.
+// printable puts a hollow box for what the embedded font cannot show.
 func printable(s string) string {
 	var buf sfnt.Buffer
 	return strings.Map(func(r rune) rune {
-		switch {
-		case r < ' ' || r == 0x7f:
-			return ' '
-		case r < 0x7f:
+		if r < 0x7f {
 			return r
 		}
 		if i, err := glyphs().GlyphIndex(&buf, r); err != nil || i == 0 || r > 0xffff {

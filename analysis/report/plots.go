@@ -157,7 +157,7 @@ func (b *builder) historyFigure() (Figure, bool) {
 		}
 		addLine(p, line, lineStyle(i), name)
 	}
-	return Figure{ID: "history", Width: 170, Height: 74, Plot: p,
+	return Figure{ID: "history", Width: 170, Height: 66, Plot: p,
 		Caption: "Sag of every gauge over the whole run, net of support movement and of disturbances' offsets.",
 		Alt:     "Sag of all gauges against time over the whole run."}, len(b.r.Series.Gauges) > 0
 }
