@@ -86,6 +86,7 @@ func (w speaker) gauges() []gaugeRow {
 		r.Sag, r.Day = signed(g.Sag, g.Resolution), signed(g.Day, g.Resolution)
 		if g.TravelLeft != nil {
 			r.Left = fmt.Sprintf("%s (%.0f %%)", desk.Fixed(*g.TravelLeft, g.Resolution), 100**g.TravelShare)
+			r.Until = "not in sight"
 		}
 		if !g.RunsOut.IsZero() {
 			r.Until = w.date(g.RunsOut)
