@@ -14,44 +14,75 @@ import (
 )
 
 func simulateCommand() *cobra.Command {
-	var truthFile, faultFile string
-	var seed uint64
+	var f simulateFlags
 	c := &cobra.Command{
-		Use:     "simulate RIG",
+		Use:     "simulate RIG...",
 		GroupID: "prepare",
-		Short:   "Puts a rig's gauges on pseudo-terminals, in real time",
+		Short:   "Puts the gauges of rigs on pseudo-terminals, in real time",
 		Long: `Opens a pseudo-terminal for every port of a rig file and lets simulated gauges
 speak on them, in real time, until it is ended. It prints "name path" for each
 port once all are open; "gaugelog record RIG --ports FILE" takes such a list.
 The plan is followed by a simulated operator, who says on standard error what
-was just done, so that you can mark it.
+was just done, so that you can mark it. Several rigs may share ports and probes;
+--truth and --faults are then given once for each rig, in the rigs' order.
 
 What the specimen really is comes from --truth, never from what the rig file
 expects. Without it a plain specimen of the rig's material stands in, without creep.`,
 		Example: "  gaugelog simulate rig.yaml --truth truth.yaml > ports.txt",
-		Args:    cobra.ExactArgs(1),
-		RunE: func(cmd *cobra.Command, args []string) error {
-			rig, err := config.LoadRig(args[0])
-			if err != nil {
-				return err
-			}
-			o := simulators.Options{Rig: rig, Seed: seed, Asked: true, Beyond: 10 * 365 * 24 * time.Hour,
-				Start: simulators.Instant{Wall: time.Now().UnixNano(), Boot: 1}}
-			if o.Truth, err = truthOf(rig, truthFile); err != nil {
-				return wrong(err, "")
-			}
-			if faultFile != "" {
-				if o.Faults, err = simulators.LoadFaults(faultFile); err != nil {
-					return wrong(err, "")
-				}
-			}
-			return runSimulation(cmd, o)
-		},
+		Args:    cobra.MinimumNArgs(1),
+		RunE:    func(cmd *cobra.Command, args []string) error { return runSimulation(cmd, args, f) },
 	}
-	c.Flags().StringVar(&truthFile, "truth", "", "file that says what the specimen and the gauges really are")
-	c.Flags().StringVar(&faultFile, "faults", "", "file that says what goes wrong, and when")
-	c.Flags().Uint64Var(&seed, "seed", 1, "seed of noise and faults")
+	c.Flags().StringArrayVar(&f.truths, "truth", nil, "file that says what the specimen and the gauges really are")
+	c.Flags().StringArrayVar(&f.faults, "faults", nil, "file that says what goes wrong, and when")
+	c.Flags().Uint64Var(&f.seed, "seed", 1, "seed of noise and faults")
 	return c
+}
+
+// simulateFlags are the flags of `simulate`.
+type simulateFlags struct {
+	truths, faults []string // one a rig, or none
+	seed           uint64
+}
+
+// source builds the simulation of the rigs, and names their specimens.
+func (f *simulateFlags) source(rigFiles []string) (*simulators.Joint, []string, error) {
+	for flag, files := range map[string][]string{"truth": f.truths, "faults": f.faults} {
+		if n := len(files); n > 0 && n != len(rigFiles) {
+			return nil, nil, wrongf("give --"+flag+" once for each rig, in the rigs' order, or not at all", "--%s was given %d times for %d rigs", flag, n, len(rigFiles))
+		}
+	}
+	start := simulators.Instant{Wall: time.Now().UnixNano(), Boot: 1}
+	var sims []*simulators.Sim
+	var names []string
+	for i, file := range rigFiles {
+		rig, err := config.LoadRig(file)
+		if err != nil {
+			return nil, nil, err
+		}
+		o := simulators.Options{Rig: rig, Seed: f.seed + uint64(i), Asked: true, Beyond: 10 * 365 * 24 * time.Hour, Start: start}
+		truth := ""
+		if len(f.truths) > 0 {
+			truth = f.truths[i]
+		}
+		if o.Truth, err = truthOf(rig, truth); err != nil {
+			return nil, nil, wrong(err, "")
+		}
+		if len(f.faults) > 0 {
+			if o.Faults, err = simulators.LoadFaults(f.faults[i]); err != nil {
+				return nil, nil, wrong(err, "")
+			}
+		}
+		sim, err := simulators.New(o)
+		if err != nil {
+			return nil, nil, wrong(err, "")
+		}
+		sims, names = append(sims, sim), append(names, rig.Specimen.Name)
+	}
+	joint, err := simulators.Join(sims...)
+	if err != nil {
+		return nil, nil, wrong(err, "")
+	}
+	return joint, names, nil
 }
 
 // plainTruth is a specimen for who gives none: mid-range moduli of common
@@ -71,10 +102,10 @@ func truthOf(rig *config.Rig, file string) (*simulators.Truth, error) {
 	return simulators.ParseTruth("the plain truth", []byte(plainTruth(rig.Specimen.Material)))
 }
 
-func runSimulation(cmd *cobra.Command, o simulators.Options) (err error) {
-	sim, err := simulators.New(o)
+func runSimulation(cmd *cobra.Command, rigFiles []string, f simulateFlags) (err error) {
+	sim, names, err := f.source(rigFiles)
 	if err != nil {
-		return wrong(err, "")
+		return err
 	}
 	live, err := terminals.NewLive(sim)
 	if err != nil {
@@ -84,12 +115,18 @@ func runSimulation(cmd *cobra.Command, o simulators.Options) (err error) {
 	for _, t := range live.Terminals() {
 		fmt.Fprintf(cmd.OutOrStdout(), "%s %s\n", t.Name, t.Path)
 	}
-	live.Event = func(e simulators.Event, path string) { tellEvent(cmd.ErrOrStderr(), e, path) }
+	live.Event = func(e simulators.Event, path string) {
+		run := "RUN"
+		if len(names) > 1 {
+			run = "RUN/" + names[e.Rig]
+		}
+		tellEvent(cmd.ErrOrStderr(), e, run, path)
+	}
 	return live.Run(cmd.Context())
 }
 
 // tellEvent says what the simulated operator did, or what went wrong.
-func tellEvent(w io.Writer, e simulators.Event, path string) {
+func tellEvent(w io.Writer, e simulators.Event, run, path string) {
 	now := time.Now().Format("15:04:05")
 	switch e.Kind {
 	case simulators.MarkDue:
@@ -97,7 +134,7 @@ func tellEvent(w io.Writer, e simulators.Event, path string) {
 		for _, l := range e.Mark.Loads {
 			fmt.Fprintf(w, " %s is now %s", l.Name, l.Shown)
 		}
-		fmt.Fprintf(w, "; mark it: gaugelog mark RUN --step %s\n", e.Mark.Step)
+		fmt.Fprintf(w, "; mark it: gaugelog mark %s --step %s\n", run, e.Mark.Step)
 	case simulators.Plugged:
 		fmt.Fprintf(w, "%s plugged: %s is now %s\n", now, e.Port, path)
 	default:
