@@ -103,9 +103,6 @@ func notesOf(h *history.History) []Warning {
 		}
 		out = append(out, w)
 	}
-	for _, d := range h.Damaged {
-		out = append(out, Warning{Code: "damaged-block", Text: d})
-	}
 	return out
 }
 

@@ -59,6 +59,7 @@ func Open(fsys segment.FS) (*History, error) {
 	if err := h.readLogs(folder); err != nil {
 		return nil, err
 	}
+	h.noteWholeness(folder)
 	first, last, _ := folder.Span()
 	src := newFolderSource(folder, h.Rig, BinWidth(first, last))
 	if err := src.pass(h); err != nil {
@@ -72,6 +73,21 @@ func Open(fsys segment.FS) (*History, error) {
 	}
 	h.closeMarks()
 	return h, nil
+}
+
+// noteWholeness tells of segments that are gone and of a rig file that is not
+// the one recorded with.
+func (h *History) noteWholeness(folder *segment.Folder) {
+	for _, name := range folder.Missing() {
+		text := name + " is missing: its readings are gone; `gaugelog verify` tells more"
+		h.Damaged = append(h.Damaged, text)
+		h.Notes = append(h.Notes, Note{Code: "segment-missing", Text: text})
+	}
+	if name, edited := folder.RigEdited(h.RigSHA256); edited {
+		text := "rig.yaml was edited since " + name + " was recorded: what is learned later belongs into amendments.yaml"
+		h.Damaged = append(h.Damaged, text)
+		h.Notes = append(h.Notes, Note{Code: "rig-edited", Text: text})
+	}
 }
 
 // readRig reads rig.yaml and puts the constant amendments in.

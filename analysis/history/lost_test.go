@@ -93,3 +93,25 @@ func TestTornTail(t *testing.T) {
 	}
 	same(t, h, left)
 }
+
+// A segment that is gone and a rig file that was edited are told of: nothing
+// else in the folder would show them.
+func TestMissingSegmentAndEditedRig(t *testing.T) {
+	fs := segmenttest.New()
+	run := historytest.Run{Gauges: 2, Readings: 30_000, Duration: 30 * time.Hour, Steps: 2, Roll: 10_000}
+	if err := run.Write(fs); err != nil {
+		t.Fatal(err)
+	}
+	if err := fs.Remove(segment.SegmentName(segment.ReadingsDir, 2)); err != nil {
+		t.Fatal(err)
+	}
+	rig := fs.Bytes(segment.RigFile)
+	fs.Put(segment.RigFile, append(rig, "# a word more\n"...))
+	h, err := Open(fs)
+	if err != nil {
+		t.Fatal(err)
+	}
+	if notes(h, "segment-missing") != 1 || notes(h, "rig-edited") != 1 || len(h.Damaged) != 2 {
+		t.Errorf("notes %v, damaged %q", h.Notes, h.Damaged)
+	}
+}

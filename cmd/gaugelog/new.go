@@ -47,6 +47,6 @@ for. Change it to your specimen, supports, gauges and loads, then let
 		},
 	}
 	c.Flags().StringVar(&output, "output", "", "file to write (default: standard output)")
-	c.Flags().StringVar(&o.Port, "port", "", "port of the gauge, as `gaugelog ports` names it")
+	c.Flags().StringVar(&o.Port, "port", "", "port of the gauge, as gaugelog ports names it")
 	return c
 }

@@ -51,7 +51,7 @@ Suspended loads hurt people: a recording is no safety device.`,
 	}
 	c.Flags().StringVar(&f.into, "into", "", "run folder; with several rigs a folder each under it")
 	c.Flags().StringVar(&f.lasts, "for", "", "end after this time, such as 24h (default: run until ended)")
-	c.Flags().StringVar(&f.ports, "ports", "", "file of \"name path\" lines that say where the rig's ports are, as `simulate` prints them")
+	c.Flags().StringVar(&f.ports, "ports", "", "file of \"name path\" lines that say where the rig's ports are, as gaugelog simulate prints them")
 	c.Flags().BoolVar(&f.quiet, "quiet", false, "log warnings and errors only")
 	f.page.add(c.Flags())
 	return c

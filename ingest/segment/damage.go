@@ -30,15 +30,23 @@ func (d Damage) String() string {
 	if d.Block > 0 {
 		s += fmt.Sprintf(": block %d", d.Block)
 	}
-	s += fmt.Sprintf(": bytes %d to %d: %s", d.Offset, d.Offset+d.Length, d.Why)
+	if d.Length > 0 {
+		s += fmt.Sprintf(": bytes %d to %d", d.Offset, d.Offset+d.Length)
+	}
+	s += ": " + d.Why
 	switch {
 	case d.Lines > 0:
 		s += fmt.Sprintf("; %d lines left out", d.Lines)
 	case d.Lines < 0:
 		s += "; an unknown number of lines left out"
 	}
-	if d.First != 0 || d.Last != 0 {
+	switch {
+	case d.First != 0 && d.Last != 0:
 		s += fmt.Sprintf(" between %s and %s", instant(d.First), instant(d.Last))
+	case d.First != 0:
+		s += fmt.Sprintf(" from %s to the end of the file", instant(d.First))
+	case d.Last != 0:
+		s += fmt.Sprintf(" from the beginning of the file to %s", instant(d.Last))
 	}
 	return s
 }
@@ -50,6 +58,11 @@ type Tail struct {
 	Offset, Length int64
 }
 
+// String says it in one line.
+func (t Tail) String() string {
+	return fmt.Sprintf("%s: %d bytes behind the last checkpoint at %d", t.File, t.Length, t.Offset)
+}
+
 // Span is a stretch of readings of which something is to be told.
 type Span struct {
 	File        string
@@ -57,6 +70,11 @@ type Span struct {
 	First, Last int64 // ns since 1970 UTC as written
 	// Shift is what was added to the stamps, in ns (re-timed spans only).
 	Shift int64
+}
+
+// String says it in one line.
+func (s Span) String() string {
+	return fmt.Sprintf("%s: %d lines between %s and %s", s.File, s.Lines, instant(s.First), instant(s.Last))
 }
 
 // Report is what a pass over a run folder found beside its readings.

@@ -103,12 +103,16 @@ func (v *Verified) rig(d *Folder) {
 		return
 	}
 	v.count(d.fs, RigFile)
-	for i := range d.files {
-		f := &d.files[i]
-		if f.headed && len(f.header.Rig) == 2*sha256.Size && f.header.Rig != sum {
-			v.Damage = append(v.Damage, Damage{File: RigFile,
-				Why: fmt.Sprintf("its SHA-256 is %s, but %s was recorded with %s", sum, f.name, f.header.Rig)})
-			return
+	if name, edited := d.RigEdited(sum); edited {
+		v.Damage = append(v.Damage, Damage{File: RigFile,
+			Why: fmt.Sprintf("its SHA-256 is %s, but %s was recorded with another: it was edited since", sum, name)})
+	}
+	summed, err := ReadSums(d.fs)
+	for _, name := range d.Missing() {
+		_, plain := summed[name]
+		_, packed := summed[name+".zst"]
+		if err != nil || !plain && !packed { // those in SHA256SUMS are told of there
+			v.Damage = append(v.Damage, Damage{File: name, Lines: -1, Why: "its number is left out between its neighbours: it is missing"})
 		}
 	}
 }

@@ -4,6 +4,8 @@
 package historytest
 
 import (
+	"crypto/sha256"
+	"encoding/hex"
 	"fmt"
 	"io"
 	"math"
@@ -109,8 +111,9 @@ func clockAt(t int64) segment.ClockState {
 	return segment.ClockState{Boot: t - Start + 1_000_000_000, Wall: t, Synced: true}
 }
 
-func header(t int64) segment.Header {
-	return segment.Header{Run: "run-1", Boot: "boot-1", Rig: strings.Repeat("00", 32), Program: "historytest", Clock: clockAt(t)}
+func (w *writing) header(t int64) segment.Header {
+	sum := sha256.Sum256([]byte(w.Rig()))
+	return segment.Header{Run: "run-1", Boot: "boot-1", Rig: hex.EncodeToString(sum[:]), Program: "historytest", Clock: clockAt(t)}
 }
 
 func (w *writing) rig() error {
@@ -126,7 +129,7 @@ func (w *writing) rig() error {
 }
 
 func (w *writing) marks() error {
-	log, err := segment.OpenLog(w.fs, segment.MarksFile, header(Start))
+	log, err := segment.OpenLog(w.fs, segment.MarksFile, w.header(Start))
 	if err != nil {
 		return err
 	}
@@ -186,7 +189,7 @@ func (w *writing) ready(t int64) error {
 	}
 	w.number++
 	var err error
-	w.w, err = segment.NewWriter(w.fs, segment.ReadingsDir, w.number, segment.WriterOptions{Header: header(t)})
+	w.w, err = segment.NewWriter(w.fs, segment.ReadingsDir, w.number, segment.WriterOptions{Header: w.header(t)})
 	return err
 }
 
