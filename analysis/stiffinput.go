@@ -9,7 +9,8 @@ import (
 
 // stiffnessInput hands the increments of every answered step to the
 // stiffness fit. Seat gauges count, reference gauges do not; a gauge without
-// an increment in a step is left out of that step.
+// an increment in a step is left out of that step, and so are all of a step
+// of which nobody knows by how much it changed the load.
 func stiffnessInput(h *history.History, f *steps.Findings, gravity float64) stiffness.Input {
 	in := stiffness.Input{Rig: h.Rig, InitialAfterS: h.Rig.Read.InitialAfter.Value}
 	for i, s := range f.Steps {
@@ -19,7 +20,7 @@ func stiffnessInput(h *history.History, f *steps.Findings, gravity float64) stif
 			continue
 		}
 		obs := stiffness.StepObs{Name: s.Name, Loads: loads}
-		if s.Response != nil && *s.Response && !s.Unmarked {
+		if s.Response != nil && *s.Response && s.DeltaKnown {
 			obs.Gauges = increments(h.Rig, s)
 		}
 		in.Steps = append(in.Steps, obs)

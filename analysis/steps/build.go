@@ -62,14 +62,14 @@ func (r *run) ruleStep(name string, t *timing) {
 	}
 }
 
+// fillSteps makes the steps of the parts, with what hangs in each.
 func (r *run) fillSteps() {
-	n := len(r.h.Rig.Loads)
-	state := append([]float64(nil), r.before.newton...)
+	hung := newHanging(r.before.newton)
 	kg := cloneMap(r.before.kilogram)
 	unnamed := 0
 	for k, p := range r.parts {
-		s := Step{From: r.h.First, To: r.h.Last, Gauges: make([]GaugeFigures, len(r.gauges))}
-		delta := make([]float64, n)
+		s := Step{From: r.h.First, To: r.h.Last, DeltaKnown: true, Gauges: make([]GaugeFigures, len(r.gauges))}
+		var delta []float64
 		switch {
 		case k == 0:
 			s.Name = r.planName(0)
@@ -79,24 +79,26 @@ func (r *run) fillSteps() {
 		case p.un != nil:
 			unnamed++
 			s.Name = fmt.Sprintf("unmarked-%d", unnamed)
-			s.Unmarked = true
+			s.Unmarked, s.DeltaKnown = true, false
 			s.Response = truth(true)
-			if j := p.un.fit.p.load; j >= 0 && p.un.newton != nil {
-				delta[j] = p.un.newton.MM
-				state[j] += delta[j]
-				delete(kg, r.h.Rig.Loads[j].Name)
+			delta = hung.disturb(p.un)
+			for j, l := range r.h.Rig.Loads {
+				if !hung.known[j] {
+					delete(kg, l.Name)
+				}
 			}
 			r.warn("unmarked-step", -1, p.at.start, fmt.Sprintf("the load changed and nobody marked it: confirm what happened, and mark it with --when (%s)", s.Name))
 		default:
 			c := r.changes[p.change]
 			s.Name, s.Marked = c.name, c.first
-			for j := range state {
-				if c.set[j] {
-					delta[j] = c.newton[j] - state[j]
-					state[j] = c.newton[j]
+			delta, s.DeltaKnown = hung.set(c)
+			for j, l := range r.h.Rig.Loads {
+				if v, ok := c.kilogram[l.Name]; ok && hung.known[j] {
+					kg[l.Name] = v
+				} else {
+					delete(kg, l.Name)
 				}
 			}
-			kg = cloneMap(c.kilogram)
 			s.Response = truth(p.event != nil)
 			if p.event == nil && r.beside(c) {
 				s.Response = nil
@@ -104,23 +106,33 @@ func (r *run) fillSteps() {
 			r.ruleResponse(&s)
 		}
 		if k > 0 {
-			s.From, s.Full = max(p.at.start, r.out.Steps[k-1].From), max(p.at.full, r.out.Steps[k-1].From)
-			r.out.Steps[k-1].To = s.From
-			s.RampS, s.RingingS, s.RingingMM = p.at.ramp, p.at.ringing, p.at.swingMM
-			if p.event != nil {
-				s.Found, s.StartU = p.at.start, p.at.u
-				if s.Marked != 0 {
-					s.OffsetS = seconds(s.Marked - s.Found)
-				}
-			}
-			r.out.Loads = append(r.out.Loads, LoadChange{Step: k, Full: s.Full, RampS: s.RampS, Delta: delta})
+			r.openStep(k, &s, delta)
 		}
-		s.Loads, s.Kilogram = map[string]float64{}, cloneMap(kg)
+		s.Kilogram, s.LoadsKnown = cloneMap(kg), hung.allKnown()
+		s.Loads = map[string]float64{}
 		for j, l := range r.h.Rig.Loads {
-			s.Loads[l.Name] = state[j]
+			if hung.known[j] || hung.estimated[j] {
+				s.Loads[l.Name] = hung.newton[j]
+			}
 		}
 		r.out.Steps = append(r.out.Steps, s)
 	}
+}
+
+// openStep sets the instants of a step from its part, ends the former step
+// there and lists the change of load.
+func (r *run) openStep(k int, s *Step, delta []float64) {
+	p, former := r.parts[k], &r.out.Steps[k-1]
+	s.From, s.Full = max(p.at.start, former.From), max(p.at.full, former.From)
+	former.To = s.From
+	s.RampS, s.RingingS, s.RingingMM = p.at.ramp, p.at.ringing, p.at.swingMM
+	if p.event != nil {
+		s.Found, s.StartU = p.at.start, p.at.u
+		if s.Marked != 0 {
+			s.OffsetS = seconds(s.Marked - s.Found)
+		}
+	}
+	r.out.Loads = append(r.out.Loads, LoadChange{Step: k, Full: s.Full, RampS: s.RampS, Delta: delta})
 }
 
 func truth(b bool) *bool { return &b }
@@ -135,17 +147,23 @@ func (r *run) ruleResponse(s *Step) {
 }
 
 // chooseBaseline picks the step with the least load before the first rise,
-// the last such where several are alike.
+// the last such where several are alike. A step that the gauges answered and
+// that is no proven decrease is a rise, for all anybody knows; a step whose
+// loads nobody knows is never the baseline.
 func (r *run) chooseBaseline() {
 	best, least := 0, math.Inf(1)
 	former := math.Inf(-1)
 	for k, s := range r.out.Steps {
 		sum := 0.0
-		for _, v := range s.Loads {
-			sum += v
+		for _, l := range r.h.Rig.Loads {
+			sum += s.Loads[l.Name]
 		}
-		if k > 0 && sum > former+1e-9 {
-			break
+		if k > 0 {
+			fell := s.DeltaKnown && sum < former-1e-9
+			answered := s.Response != nil && *s.Response
+			if !s.LoadsKnown || sum > former+1e-9 || answered && !fell {
+				break
+			}
 		}
 		if sum <= least {
 			best, least = k, sum

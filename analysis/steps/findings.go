@@ -47,8 +47,9 @@ type GaugeFigures struct{ Gross, Net Figures }
 type Step struct {
 	Name     string
 	From, To int64 // found (or marked) start; the next step's start or the last reading
-	// Loads is the force on the beam by load of the rig, N; Kilogram the masses
-	// set where masses were given (without tare, lever or gravity).
+	// Loads is the force on the beam by load of the rig, N, without the loads of
+	// which nothing is known after an unmarked change; Kilogram the masses set
+	// where masses were given (without tare, lever or gravity).
 	Loads    map[string]float64
 	Kilogram map[string]float64
 	// Marked, Found and Full are the mark's instant, the first movement and
@@ -64,7 +65,13 @@ type Step struct {
 	RampS, RingingS, RingingMM float64
 	// Unmarked is true of a step that no mark announced.
 	Unmarked bool
-	Gauges   []GaugeFigures // by gauge of the rig; the zero step has Final only
+	// LoadsKnown says that Loads holds nothing but marked values: false from an
+	// unmarked change until every load it moved has been marked again.
+	// DeltaKnown says the same of what the step changed: false of an unmarked
+	// step and of the next change of its load. Only a step with DeltaKnown tells
+	// of stiffness.
+	LoadsKnown, DeltaKnown bool
+	Gauges                 []GaugeFigures // by gauge of the rig; the zero step has Final only
 }
 
 // LoadChange is one change of load, for the creep fit.

@@ -12,6 +12,31 @@ type pattern struct {
 	v       []float64
 	learned bool // seen in this run, so known better than foretold
 	newton  float64
+	// shares is what part of the change each load took (rig's order), adding up
+	// to 1; nil for the one load, or where nobody can tell.
+	shares []float64
+}
+
+// moves says that the cause may have changed load j.
+func (p *pattern) moves(j int) bool {
+	switch {
+	case p.shares != nil:
+		return p.shares[j] != 0
+	case p.load >= 0:
+		return p.load == j
+	}
+	return true
+}
+
+// share is the part of the change that load j took.
+func (p *pattern) share(j int) float64 {
+	switch {
+	case p.shares != nil:
+		return p.shares[j]
+	case p.load == j:
+		return 1
+	}
+	return 0
 }
 
 // patterns lists the causes that move several gauges in known proportions.
@@ -54,6 +79,12 @@ func (r *run) learned() []pattern {
 		}
 		if moved != 1 {
 			p.load, p.which = -1, c.name
+			if p.newton != 0 {
+				p.shares = make([]float64, len(c.delta))
+				for j, d := range c.delta {
+					p.shares[j] = d / p.newton
+				}
+			}
 		}
 		if p.newton == 0 {
 			continue
