@@ -13,7 +13,7 @@ func commands() []*cobra.Command {
 	return []*cobra.Command{
 		demoCommand(), newCommand(), checkCommand(), portsCommand(), simulateCommand(),
 		listenCommand(), nudgeCommand(), sectionCommand(), calibrateCommand(),
-		recordCommand(), markCommand(), forwardCommand(),
+		recordCommand(), markCommand(), forwardCommand(), rigsCommand(),
 		analyseCommand(), reportCommand(), compareCommand(), verifyCommand(), exportCommand(), importCommand(),
 	}
 }

@@ -1,0 +1,262 @@
+package glance
+
+import (
+	"io/fs"
+	"slices"
+	"sort"
+	"strings"
+	"time"
+
+	"gaugelog/config"
+	"gaugelog/ingest/segment"
+)
+
+// Summary is how one run stands.
+type Summary struct {
+	Title, Specimen string
+	// First and Last bound the readings, ns since 1970 UTC; 0 where there are none.
+	First, Last int64
+	// Started tells that a recorder began the run, Ended that the last one said
+	// it stopped.
+	Started, Ended bool
+	// Gauge is the one the figures are of: the rig's creep gauge.
+	Gauge string
+	// SagMM is its apparent sag since before the first load, RateMMPerDay how
+	// it moved over RateOverS seconds at the end.
+	SagMM, RateMMPerDay *float64
+	RateOverS           float64
+	// SagLimitMM is the rig's limit on sag, nil for none.
+	SagLimitMM *float64
+	// Step is the last one marked; DaysToGo what is left of the plan from its
+	// mark on, less than 0 where the plan is over; nil without a plan or step.
+	Step     string
+	DaysToGo *float64
+	// Alarms are raised and not over, oldest first: "cause: text".
+	Alarms []string
+}
+
+// window is how long a stretch of readings a figure is the median of.
+const window = int64(10 * time.Minute)
+
+// ends shows a run folder without the segments in its middle.
+type ends struct{ segment.FS }
+
+// ReadDir lists the first segment and the last two.
+func (e ends) ReadDir(dir string) ([]fs.DirEntry, error) {
+	all, err := e.FS.ReadDir(dir)
+	if err != nil || dir != segment.ReadingsDir || len(all) <= 3 {
+		return all, err
+	}
+	sort.Slice(all, func(i, j int) bool { return all[i].Name() < all[j].Name() })
+	return append(slices.Clone(all[:1]), all[len(all)-2:]...), nil
+}
+
+// Look sums a run up. Its error is a folder that cannot be read.
+func Look(fsys segment.FS, rig *config.Rig) (*Summary, error) {
+	s := &Summary{Title: rig.Title, Specimen: rig.Specimen.Name, Gauge: rig.Read.CreepGauge}
+	if rig.Limits.Sag != nil {
+		s.SagLimitMM = &rig.Limits.Sag.Value
+	}
+	d, err := segment.OpenFolder(ends{fsys})
+	if err != nil {
+		return nil, err
+	}
+	marks, _, err := d.Log(segment.MarksFile)
+	if err != nil {
+		return nil, err
+	}
+	events, _, err := d.Log(segment.EventsFile)
+	if err != nil {
+		return nil, err
+	}
+	s.alarms(events)
+	load := s.steps(rig, marks)
+	first, last, ok := d.Span()
+	if !ok {
+		return s, nil
+	}
+	s.First, s.Last = first, last
+	s.toGo(rig, marks)
+	return s, s.figures(d, rig, load)
+}
+
+// alarms follows what was raised and what is over.
+func (s *Summary) alarms(events []segment.Record) {
+	type key struct{ gauge, cause string }
+	var order []key
+	raised := map[key]string{}
+	for i := range events {
+		r := &events[i]
+		if r.Kind != segment.Event || r.Point == nil {
+			continue
+		}
+		v, _ := r.Point.Value("detail")
+		detail, _ := v.(string)
+		cause, _, _ := strings.Cut(detail, ":")
+		k := key{r.Point.Tag("gauge"), cause}
+		switch r.Name {
+		case "alarm-raised":
+			order, raised[k] = append(order, k), detail
+		case "alarm-over":
+			delete(raised, k)
+		case "started":
+			s.Started, s.Ended = true, false
+		case "stopped":
+			s.Ended = true
+		}
+	}
+	for _, k := range order {
+		if text, ok := raised[k]; ok {
+			s.Alarms = append(s.Alarms, text)
+			delete(raised, k)
+		}
+	}
+}
+
+// steps finds the last step marked, and the instant of the first load.
+func (s *Summary) steps(rig *config.Rig, marks []segment.Record) (load int64) {
+	gone := map[string]bool{}
+	for i := range marks {
+		if marks[i].Kind == segment.Withdraw {
+			gone[text(&marks[i], "id")] = true
+		}
+	}
+	at := int64(0)
+	for i := range marks {
+		m := &marks[i]
+		if id := text(m, "id"); m.Point == nil || id != "" && gone[id] {
+			continue
+		}
+		if m.Kind == segment.Load && (load == 0 || m.Time < load) {
+			load = m.Time
+		}
+		step := text(m, "step")
+		if m.Kind == segment.StepMark {
+			step = text(m, "name")
+		}
+		if step != "" && m.Time >= at {
+			s.Step, at = step, m.Time
+		}
+	}
+	return load
+}
+
+// toGo sums up the holds of the plan from the present step on.
+func (s *Summary) toGo(rig *config.Rig, marks []segment.Record) {
+	began, i := s.First, 0
+	if s.Step != "" {
+		i = slices.IndexFunc(rig.Plan, func(p config.PlanStep) bool { return p.Step == s.Step })
+		for k := range marks {
+			if m := &marks[k]; (text(m, "step") == s.Step || m.Kind == segment.StepMark && text(m, "name") == s.Step) && m.Time > began {
+				began = m.Time
+			}
+		}
+	}
+	if len(rig.Plan) == 0 || i < 0 {
+		return
+	}
+	left := -float64(s.Last-began) / 1e9
+	for _, p := range rig.Plan[i:] {
+		left += p.Hold.Value
+	}
+	days := left / 86400
+	s.DaysToGo = &days
+}
+
+func text(r *segment.Record, key string) string {
+	if r.Point == nil {
+		return ""
+	}
+	v, _ := r.Point.Value(key)
+	t, _ := v.(string)
+	return t
+}
+
+// figures reads three windows: before the first load, a day before the end (or
+// as near to it as there is), and the end. Where the rig names no creep gauge
+// it is the one on the beam that sagged most, as in the analysis.
+func (s *Summary) figures(d *segment.Folder, rig *config.Rig, load int64) error {
+	scale := map[string]float64{}
+	for _, g := range rig.Gauges {
+		if s.Gauge == g.Name || s.Gauge == "" && (g.Sees == "" || g.Sees == "beam") {
+			scale[g.Name] = scaleOf(g)
+		}
+	}
+	now, err := medians(d, scale, max(s.Last-window, load+(s.Last-load)/2), s.Last)
+	if err != nil {
+		return err
+	}
+	var base map[string]middle
+	if load > 0 {
+		if base, err = medians(d, scale, load-window, load-int64(30*time.Second)); err != nil {
+			return err
+		}
+	}
+	for _, g := range rig.Gauges {
+		b, known := base[g.Name]
+		n, there := now[g.Name]
+		if sag := n.mm - b.mm; known && there && (s.SagMM == nil || sag > *s.SagMM) {
+			s.Gauge, s.SagMM = g.Name, &sag
+		}
+	}
+	day := max(s.Last-int64(24*time.Hour), load+window, s.First)
+	n, there := now[s.Gauge]
+	if !there || s.Last-window-day < 3*window {
+		return nil
+	}
+	before, err := medians(d, scale, day, day+window)
+	b, known := before[s.Gauge]
+	if err != nil || !known || n.at-b.at < 2*window {
+		return err
+	}
+	s.RateOverS = float64(n.at-b.at) / 1e9
+	rate := (n.mm - b.mm) / s.RateOverS * 86400
+	s.RateMMPerDay = &rate
+	return nil
+}
+
+// scaleOf turns an indication into sag but for its zero: sense and gain.
+func scaleOf(g config.Gauge) float64 {
+	down := 1.0
+	if g.Sense == "up" {
+		down = -1
+	}
+	if g.Calibration != nil && g.Calibration.Gain.Value != 0 {
+		down /= g.Calibration.Gain.Value
+	}
+	return down
+}
+
+// middle is the median of some readings, scaled, and of their instants.
+type middle struct {
+	mm float64
+	at int64
+}
+
+// medians are those of the gauges' readings in [from, to]; a gauge without one
+// is not among them.
+func medians(d *segment.Folder, scale map[string]float64, from, to int64) (map[string]middle, error) {
+	var only []string
+	for name := range scale {
+		only = append(only, name)
+	}
+	slices.Sort(only)
+	r := d.Read(segment.ReadOptions{Workers: 1, From: from, To: to, Only: only})
+	defer r.Close()
+	mm, at := map[string][]float64{}, map[string][]int64{}
+	for rec, err := range r.Records() {
+		if err != nil {
+			return nil, err
+		}
+		mm[rec.Name], at[rec.Name] = append(mm[rec.Name], rec.MM), append(at[rec.Name], rec.Time)
+	}
+	out := map[string]middle{}
+	for name, v := range mm {
+		t := at[name]
+		slices.Sort(v)
+		slices.Sort(t)
+		n := len(v)
+		out[name] = middle{scale[name] * (v[n/2] + v[(n-1)/2]) / 2, t[n/2]}
+	}
+	return out, nil
+}

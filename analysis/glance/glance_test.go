@@ -1,0 +1,113 @@
+package glance
+
+import (
+	"fmt"
+	"math"
+	"os"
+	"strings"
+	"testing"
+
+	"gaugelog/config"
+	"gaugelog/ingest/segment"
+)
+
+const rigText = `specimen:
+  name: strip
+  section: {shape: rectangle, width: 20 mm, depth: 5 mm}
+  length: 500 mm
+supports: [{name: l, at: 0 mm}, {name: r, at: 500 mm}]
+gauges: [{name: mid, at: 250 mm, sense: up, resolution: 0.01 mm}]
+loads: [{name: pan, at: 250 mm}]
+plan: [{step: zero, hold: 1 h}, {step: l1, set: {pan: 1 kg}, hold: 4 d}]
+limits: {sag: 6 mm}
+`
+
+const t0 = int64(1790000000000000000)
+
+// TestLook holds the figures to a run whose truth is its own formula: 2 mm at
+// once when the load comes after an hour, then 0.1 mm a day, the gauge's sense up.
+func TestLook(t *testing.T) {
+	dir := t.TempDir()
+	root, err := os.OpenRoot(dir)
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer root.Close()
+	var text strings.Builder
+	for s := int64(0); s <= 3*86400; s += 60 {
+		mm := 5.0
+		if s >= 3600 {
+			mm -= 2 + 0.1*float64(s-3600)/86400
+		}
+		fmt.Fprintf(&text, "indication,gauge=mid mm=%.6f %d\n", mm, t0+s*1e9)
+	}
+	for name, content := range map[string]string{
+		"rig.yaml": rigText, "readings/000001.lp": text.String(),
+		"marks.lp": fmt.Sprintf("load,name=pan id=\"m1\",newton=9.8,step=\"l1\" %d\n", t0+3600e9),
+		"events.lp": fmt.Sprintf("event,kind=started detail=\"\",n=1i %d\nevent,gauge=mid,kind=alarm-raised detail=\"sag: too much\",n=1i %d\n"+
+			"event,gauge=mid,kind=alarm-raised detail=\"knock: a jump\",n=1i %d\nevent,gauge=mid,kind=alarm-over detail=\"knock: a jump\",n=1i %d\n",
+			t0, t0+7200e9, t0+7300e9, t0+7400e9),
+	} {
+		if err := os.MkdirAll(dir+"/readings", 0o755); err != nil {
+			t.Fatal(err)
+		}
+		if err := os.WriteFile(dir+"/"+name, []byte(content), 0o644); err != nil {
+			t.Fatal(err)
+		}
+	}
+	parsed := 0
+	look := func() *Summary {
+		s, err := LookAgain(segment.OSFS(root, segment.OSOptions{}), func(b []byte) (*config.Rig, error) {
+			parsed++
+			return config.Parse("rig.yaml", b)
+		})
+		if err != nil {
+			t.Fatal(err)
+		}
+		return s
+	}
+	s := look()
+	near := func(what string, got *float64, want, within float64) {
+		t.Helper()
+		if got == nil || math.Abs(*got-want) > within {
+			t.Errorf("%s %v, want %g", what, got, want)
+		}
+	}
+	near("sag", s.SagMM, 2+0.1*(3*86400-3600-300)/86400, 1e-3)
+	near("rate", s.RateMMPerDay, 0.1, 1e-3)
+	near("days to go", s.DaysToGo, 4-3+1.0/24, 1e-9)
+	if s.Step != "l1" || s.Ended || len(s.Alarms) != 1 || s.Alarms[0] != "sag: too much" || *s.SagLimitMM != 6 {
+		t.Errorf("%+v", s)
+	}
+	if again := look(); fmt.Sprint(*again.SagMM, again.Alarms, again.Last) != fmt.Sprint(*s.SagMM, s.Alarms, s.Last) || parsed != 1 {
+		t.Errorf("the second look: %+v, parsed %d times", again, parsed)
+	}
+	// A reading more, and it is looked at anew.
+	f, err := os.OpenFile(dir+"/readings/000001.lp", os.O_APPEND|os.O_WRONLY, 0)
+	if err != nil {
+		t.Fatal(err)
+	}
+	fmt.Fprintf(f, "indication,gauge=mid mm=2 %d\n", t0+3*86400e9+60e9)
+	if err := f.Close(); err != nil {
+		t.Fatal(err)
+	}
+	if third := look(); third.Last != t0+3*86400e9+60e9 || parsed != 2 {
+		t.Errorf("after growing: %+v", third)
+	}
+}
+
+func TestEmpty(t *testing.T) {
+	root, err := os.OpenRoot(t.TempDir())
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer root.Close()
+	rig, err := config.Parse("rig.yaml", []byte(rigText))
+	if err != nil {
+		t.Fatal(err)
+	}
+	s, err := Look(segment.OSFS(root, segment.OSOptions{}), rig)
+	if err != nil || s.Last != 0 || s.SagMM != nil || s.RateMMPerDay != nil || s.DaysToGo != nil {
+		t.Errorf("%+v, %v", s, err)
+	}
+}
