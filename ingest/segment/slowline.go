@@ -61,6 +61,8 @@ func comment(line []byte) bool {
 var (
 	errNoTime = errors.New("no time stamp")
 	errTwo    = errors.New("more than one point on a line")
+	// errControl: a comment that is no text.
+	errControl = errors.New("control characters in a comment")
 )
 
 // slowLine decodes one line, with its newline, through the library's decoder,
@@ -69,7 +71,13 @@ var (
 // line or a comment gives ok false and no error.
 func slowLine(line []byte) (rec Record, ok bool, err error) {
 	trimmed := bytes.TrimRight(line, "\r\n")
-	if len(bytes.TrimLeft(trimmed, " ")) == 0 || comment(line) {
+	if len(bytes.TrimLeft(trimmed, " ")) == 0 {
+		return rec, false, nil
+	}
+	if comment(line) {
+		if bytes.ContainsFunc(trimmed, func(r rune) bool { return r < ' ' && r != '\t' }) {
+			return rec, false, errControl // nobody writes such a comment: it is rot
+		}
 		return rec, false, nil
 	}
 	d := lineprotocol.NewDecoderWithBytes(line)
