@@ -23,6 +23,7 @@ var style string
 
 var pageTemplate = template.Must(template.New("report").Funcs(template.FuncMap{
 	"kind":  kindOf,
+	"glue":  glue,
 	"svg":   svgOf,
 	"src":   dataURI,
 	"label": columnLabel,
@@ -61,6 +62,11 @@ func kindOf(b Block) string {
 	panic(fmt.Sprintf("report: unknown block %T", b))
 }
 
+var valueAndUnit = regexp.MustCompile(`(\d) (%|°|(?:mm|µm|s|min|h|d|a|N|kg|MPa|in|psi|lbf|lb|mil)\b)`)
+
+// glue keeps a value and its unit on one line.
+func glue(s string) string { return valueAndUnit.ReplaceAllString(s, "$1\u00a0$2") }
+
 func columnLabel(c Column) string {
 	if c.Unit == "" {
 		return c.Name
@@ -70,7 +76,7 @@ func columnLabel(c Column) string {
 
 // legendWidth is kept free beside a plot that has a legend, so that the legend
 // never lies on the data.
-const legendWidth = 30 * vg.Millimeter
+const legendWidth = 34 * vg.Millimeter
 
 // drawFigure draws a figure's plots with their legends on the right, the
 // second under the first with the frames' sides in line.

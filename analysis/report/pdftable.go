@@ -71,7 +71,7 @@ func (s *sheet) fit(l *laidTable) bool {
 	least, most := make([]float64, n), make([]float64, n)
 	measure := func(j int, text, weight string) {
 		s.style(weight, l.size, dark)
-		text = printable(text)
+		text = glue(printable(text))
 		most[j] = max(most[j], s.f.GetStringWidth(text)+0.2)
 		for _, w := range strings.Split(text, " ") {
 			least[j] = max(least[j], s.f.GetStringWidth(w)+0.2)
@@ -290,7 +290,7 @@ func (s *sheet) row(l *laidTable, cells [][]string, weight string) {
 func (s *sheet) wrap(text string, w float64) []string {
 	var out []string
 	line := ""
-	for _, word := range strings.Split(printable(text), " ") {
+	for _, word := range strings.Split(glue(printable(text)), " ") {
 		try := word
 		if line != "" {
 			try = line + " " + word

@@ -41,7 +41,7 @@ func (b *builder) loadSagFigure() (Figure, bool) {
 		}
 		any = true
 		addLine(p, model, lineStyle(i), "")
-		addPoints(p, points, glyphStyle(i), g)
+		addPoints(p, points, glyphStyle(i), named(g, i, len(b.spanGauges())))
 	}
 	return Figure{ID: "load-sag", Width: 170, Height: 85, Plot: p,
 		Caption: fmt.Sprintf("Load against sag, %s after full load of each step, without the older steps' creep. Points: readings; lines: the fitted beam.", span(b.r.Stiffness.InitialAfterS)),
@@ -101,7 +101,7 @@ func (b *builder) curveFigure() (Figure, bool) {
 		for j := range c.PointAtMM {
 			points = append(points, plotter.XY{X: c.PointAtMM[j] * mm, Y: c.PointMM[j] * mm})
 		}
-		addLine(p, line, lineStyle(i), c.Step)
+		addLine(p, line, lineStyle(i), named(c.Step, i, len(b.r.Series.Curve)))
 		addPoints(p, points, glyphStyle(i), "")
 	}
 	b.addSupports(p, mm)
@@ -155,7 +155,7 @@ func (b *builder) historyFigure() (Figure, bool) {
 		if g.Sees != "beam" && g.Sees != "" {
 			name += ", " + g.Sees
 		}
-		addLine(p, line, lineStyle(i), name)
+		addLine(p, line, lineStyle(i), named(name, i, len(b.r.Series.Gauges)))
 	}
 	return Figure{ID: "history", Width: 170, Height: 66, Plot: p,
 		Caption: "Sag of every gauge over the whole run, net of support movement and of disturbances' offsets.",

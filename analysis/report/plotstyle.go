@@ -116,8 +116,32 @@ func addLine(p *plot.Plot, xy plotter.XYs, st draw.LineStyle, name string) {
 	l := &plotter.Line{XYs: xy, LineStyle: st}
 	p.Add(l)
 	if name != "" {
-		p.Legend.Add(name, l)
+		p.Legend.Add(shortName(name), l)
 	}
+}
+
+// shortName cuts a name to what the room beside a plot holds.
+func shortName(name string) string {
+	const most = 17
+	if r := []rune(name); len(r) > most {
+		return string(r[:most-1]) + "…"
+	}
+	return name
+}
+
+// mostNames is how many names a legend has room for.
+const mostNames = 14
+
+// named is the legend's name of the i-th of n series: where there are too many
+// the last one named says how many more there are.
+func named(name string, i, n int) string {
+	switch {
+	case n <= mostNames || i < mostNames-1:
+		return name
+	case i == mostNames-1:
+		return fmt.Sprintf("and %d more", n-i)
+	}
+	return ""
 }
 
 // addPoints adds markers with their name in the legend.
@@ -129,7 +153,7 @@ func addPoints(p *plot.Plot, xy plotter.XYs, st draw.GlyphStyle, name string) {
 	s := &plotter.Scatter{XYs: xy, GlyphStyle: st}
 	p.Add(s)
 	if name != "" {
-		p.Legend.Add(name, s)
+		p.Legend.Add(shortName(name), s)
 	}
 }
 

@@ -98,3 +98,48 @@ func TestReportInUSUnits(t *testing.T) {
 		t.Error("a table of the US report is in SI units")
 	}
 }
+
+// Every format is written beside the page, whole, and the same again; json is
+// what analyse prints.
+func TestReportFormats(t *testing.T) {
+	dir, into := demoRun(t), t.TempDir()
+	write := func(format, name string, more ...string) []byte {
+		t.Helper()
+		path := filepath.Join(into, name)
+		var out, errOut bytes.Buffer
+		args := append([]string{"report", dir, "--format", format, "--output", path}, more...)
+		if code := run(args, strings.NewReader(""), &out, &errOut); code != Done {
+			t.Fatalf("report --format %s ended with %d: %s", format, code, &errOut)
+		}
+		b, err := os.ReadFile(path)
+		if err != nil {
+			t.Fatal(err)
+		}
+		return b
+	}
+	for format, begins := range map[string]string{"pdf": "%PDF-1.", "md": "# ", "csv": "title,,,", "json": "{\n \"schema\""} {
+		first := write(format, "first."+format)
+		if !bytes.HasPrefix(first, []byte(begins)) {
+			t.Errorf("%s begins with %q", format, first[:min(20, len(first))])
+		}
+		if !bytes.Equal(first, write(format, "second."+format)) {
+			t.Errorf("the same run gave another %s", format)
+		}
+	}
+	if bytes.Equal(write("pdf", "letter.pdf", "--paper", "letter"), write("pdf", "a4.pdf")) {
+		t.Error("Letter and A4 are the same file")
+	}
+	var result, errOut bytes.Buffer
+	if code := run([]string{"analyse", dir, "--json"}, strings.NewReader(""), &result, &errOut); code != Done {
+		t.Fatalf("analyse ended with %d: %s", code, &errOut)
+	}
+	if !bytes.Equal(result.Bytes(), write("json", "again.json")) {
+		t.Error("report --format json is not what analyse --json prints")
+	}
+	for _, args := range [][]string{{"--format", "doc"}, {"--format", "pdf", "--paper", "a3"}} {
+		var out, errOut bytes.Buffer
+		if code := run(append([]string{"report", dir}, args...), strings.NewReader(""), &out, &errOut); code != BadInput || !strings.Contains(errOut.String(), "mend: give") {
+			t.Errorf("report %v ended with %d: %s", args, code, &errOut)
+		}
+	}
+}
