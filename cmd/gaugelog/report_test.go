@@ -138,7 +138,7 @@ func TestReportFormats(t *testing.T) {
 	}
 	for _, args := range [][]string{{"--format", "doc"}, {"--format", "pdf", "--paper", "a3"}} {
 		var out, errOut bytes.Buffer
-		if code := run(append([]string{"report", dir}, args...), strings.NewReader(""), &out, &errOut); code != BadInput || !strings.Contains(errOut.String(), "mend: give") {
+		if code := run(append([]string{"report", dir}, args...), strings.NewReader(""), &out, &errOut); code != Wrong || !strings.Contains(errOut.String(), "mend: give") {
 			t.Errorf("report %v ended with %d: %s", args, code, &errOut)
 		}
 	}
