@@ -67,7 +67,7 @@ func Evaluate(h *history.History, o Options) (*Result, error) {
 	if e := r.addStiffness(h, f, g.Value); e != nil {
 		ei, s = e.Bending.Value, shearOf(e, s)
 	}
-	if err := r.addCreep(h, f, ei, s, rules, o); err != nil {
+	if err := r.addCreep(h, f, g.Value, ei, s, rules, o); err != nil {
 		return nil, err
 	}
 	if err := r.addEvaluations(h, f, rules, ei, s, g.Value, g.U); err != nil {
@@ -122,7 +122,7 @@ func (r *Result) addStiffness(h *history.History, f *steps.Findings, gravity flo
 }
 
 // addCreep fits the laws; where that cannot be, a warning says why.
-func (r *Result) addCreep(h *history.History, f *steps.Findings, ei, s float64, rules *evaluator, o Options) error {
+func (r *Result) addCreep(h *history.History, f *steps.Findings, gravity, ei, s float64, rules *evaluator, o Options) error {
 	shares, err := influence(h.Rig, ei, s, true)
 	if err != nil {
 		return err
@@ -141,7 +141,12 @@ func (r *Result) addCreep(h *history.History, f *steps.Findings, ei, s float64, 
 		r.Warnings = append(r.Warnings, Warning{Code: "no-creep", Text: fmt.Sprintf("no creep law: %v", err)})
 		return nil
 	}
-	r.Creep = creepOf(h, t, instrument{h.Rig, f.Chord}, f.Steps[t.step].Name, a)
+	own := instrument{h.Rig, f.Chord}
+	shared, err := commonOf(h, f, t, own, gravity, ei, s)
+	if err != nil {
+		return err
+	}
+	r.Creep = creepOf(h, t, own, shared, f.Steps[t.step].Name, a)
 	r.Drift = driftOf(h, t, a)
 	for _, n := range a.Notes {
 		r.Warnings = append(r.Warnings, Warning{Code: n.Code, Gauge: r.Creep.Gauge, Text: n.Text})

@@ -58,7 +58,7 @@ func valueQOrNil(v *creep.Value, unit string) *Q {
 }
 
 // creepOf renders the creep analysis.
-func creepOf(h *history.History, t *creepTask, own instrument, step string, a *creep.Analysis) Creep {
+func creepOf(h *history.History, t *creepTask, own instrument, shared common, step string, a *creep.Analysis) Creep {
 	c := emptyCreep(h.Rig)
 	c.Gauge, c.Step = h.Rig.Gauges[t.gauge].Name, step
 	if a.Best == nil {
@@ -66,7 +66,7 @@ func creepOf(h *history.History, t *creepTask, own instrument, step string, a *c
 	}
 	c.Model = string(a.Best.Model)
 	for _, p := range a.Best.Parameters {
-		c.Parameters[p.Name] = quantity(p.Value, p.U, p.Unit)
+		c.Parameters[p.Name] = shared.parameter(p)
 	}
 	for _, m := range a.Candidates {
 		if m.Fit != nil && !math.IsNaN(m.AICc) && !math.IsInf(m.AICc, 0) {
@@ -84,7 +84,7 @@ func creepOf(h *history.History, t *creepTask, own instrument, step string, a *c
 	for _, v := range a.Equivalent {
 		c.Equivalent = append(c.Equivalent, Equivalent{AfterS: secondsOf(v.AfterH), Relative: valueQ(v.Value, "1")})
 	}
-	c.Rate, c.Method, c.Stage = valueQOrNil(a.Rate, "mm/d"), a.Method, string(a.Stage)
+	c.Rate, c.Method, c.Stage = shared.sagRate(valueQOrNil(a.Rate, "mm/d")), a.Method, string(a.Stage)
 	c.Acceleration = Acceleration{
 		MinimumTime: t.instantOf(a.Acceleration.MinimumH), CautionTime: t.instantOf(a.Acceleration.CautionH),
 		ClearAreaTime: t.instantOf(a.Acceleration.ClearAreaH),

@@ -194,6 +194,7 @@ func sagOf(r *analysis.Result, step, gauge string, after float64) (float64, bool
 // What was made to happen must be named for what it was.
 func TestDemoDisturbances(t *testing.T) {
 	r, _ := demoResult(t)
+	sim := demoSim(t)
 	want := map[string]string{"spike": "middle", "gauge-knock": "quarter-a", "gap": ""}
 	for _, d := range r.Disturbances {
 		gauge, known := want[d.Kind]
@@ -203,6 +204,14 @@ func TestDemoDisturbances(t *testing.T) {
 		}
 		if gauge != "" && (len(d.Gauges) != 1 || d.Gauges[0] != gauge) {
 			t.Errorf("the %s is laid to %v, it was %s", d.Kind, d.Gauges, gauge)
+		}
+		if d.Kind == "gap" { // the power cut, 120 h after the full load of s4, for 40 min
+			from, _ := time.Parse(time.RFC3339Nano, d.From)
+			cut := sim.Cuts()[0]
+			near(t, "the beginning of the gap, s", float64(from.UnixNano()-sim.Instant(0).Wall)/1e9, float64(cut.From)/1e9, 15*60)
+			if d.To == nil {
+				t.Error("the gap has no end")
+			}
 		}
 		if d.Kind == "gauge-knock" {
 			near(t, "the knock, mm", d.Size.Value, 0.062, 0.003)
