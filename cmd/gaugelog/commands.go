@@ -12,7 +12,7 @@ import (
 func commands() []*cobra.Command {
 	return []*cobra.Command{
 		demoCommand(), newCommand(), checkCommand(), portsCommand(), simulateCommand(),
-		listenCommand(), nudgeCommand(), sectionCommand(), calibrateCommand(),
+		listenCommand(), nudgeCommand(), sectionCommand(), calibrateCommand(), serviceCommand(),
 		recordCommand(), markCommand(), forwardCommand(), rigsCommand(),
 		analyseCommand(), reportCommand(), compareCommand(), verifyCommand(), exportCommand(), importCommand(),
 	}

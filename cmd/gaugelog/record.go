@@ -188,6 +188,7 @@ func (r *recording) run(ctx context.Context, cmd *cobra.Command, opener device.O
 		return err
 	}
 	sink.Runner = runner
+	defer tellSystem(r.recs)()
 	r.recs = nil // the runner's from now on
 	recording, stop := context.WithCancel(context.WithoutCancel(ctx))
 	defer stop()
