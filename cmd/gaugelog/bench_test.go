@@ -3,6 +3,7 @@ package main
 import (
 	"bytes"
 	"encoding/json"
+	"flag"
 	"fmt"
 	"io"
 	"math"
@@ -60,10 +61,34 @@ type benchRun struct {
 	events   [][]foundEvent
 }
 
+// benchSeeds is for longer campaigns than every change needs:
+//
+//	go test -run 'TestBench$' -timeout 1h ./cmd/gaugelog -args -bench.seeds 100
+var benchSeeds = flag.Uint64("bench.seeds", 1, "how many benches to run, each with its own noise and damage")
+
+// benchJoint builds the bench; beyond the first, the damage is drawn anew too.
+func benchJoint(seed uint64, logged io.Writer) (*simulators.Joint, error) {
+	if seed == 0 {
+		return simulators.Bench(5, false, logged)
+	}
+	var sims []*simulators.Sim
+	for n := 1; n <= simulators.BenchRigs; n++ {
+		d := simulators.BenchRig(n)
+		own := seed*simulators.BenchRigs + uint64(n)
+		d.Faults.Seed = &own
+		sim, err := simulators.New(simulators.Options{Rig: d.Rig, Truth: d.Truth, Faults: d.Faults, Seed: own, Frames: logged})
+		if err != nil {
+			return nil, err
+		}
+		sims = append(sims, sim)
+	}
+	return simulators.Join(sims...)
+}
+
 func conductBench(t *testing.T, seed uint64) *benchRun {
 	t.Helper()
 	var logged bytes.Buffer
-	joint, err := simulators.Bench(seed, false, &logged)
+	joint, err := benchJoint(seed, &logged)
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -193,20 +218,26 @@ func TestBench(t *testing.T) {
 	if testing.Short() {
 		t.Skip("an hour of virtual time")
 	}
-	b := conductBench(t, 5)
-	t.Run("readings", b.checkReadings)
-	t.Run("ports", b.checkPorts)
-	t.Run("units", b.checkUnits)
-	t.Run("no readings", b.checkNoReadings)
-	t.Run("refused", b.checkRefused)
-	t.Run("verify", func(t *testing.T) {
-		for _, folder := range b.folders {
-			var out, errOut bytes.Buffer
-			if code := run([]string{"verify", folder}, strings.NewReader(""), &out, &errOut); code != Done {
-				t.Errorf("verify %s ended with %d: %s%s", folder, code, &out, &errOut)
-			}
+	for seed := range *benchSeeds {
+		t.Run(fmt.Sprintf("seed %d", seed), func(t *testing.T) {
+			b := conductBench(t, seed)
+			t.Run("readings", b.checkReadings)
+			t.Run("ports", b.checkPorts)
+			t.Run("units", b.checkUnits)
+			t.Run("no readings", b.checkNoReadings)
+			t.Run("refused", b.checkRefused)
+			t.Run("verify", b.checkWhole)
+		})
+	}
+}
+
+func (b *benchRun) checkWhole(t *testing.T) {
+	for _, folder := range b.folders {
+		var out, errOut bytes.Buffer
+		if code := run([]string{"verify", folder}, strings.NewReader(""), &out, &errOut); code != Done {
+			t.Errorf("verify %s ended with %d: %s%s", folder, code, &out, &errOut)
 		}
-	})
+	}
 }
 
 func (b *benchRun) checkReadings(t *testing.T) {
