@@ -14,7 +14,7 @@ func commands() []*cobra.Command {
 		demoCommand(), newCommand(), checkCommand(), portsCommand(), simulateCommand(),
 		listenCommand(), nudgeCommand(), sectionCommand(), calibrateCommand(), serviceCommand(),
 		recordCommand(), markCommand(), forwardCommand(), rigsCommand(),
-		analyseCommand(), reportCommand(), compareCommand(), verifyCommand(), exportCommand(), importCommand(),
+		analyseCommand(), reportCommand(), compareCommand(), verifyCommand(), exportCommand(), importCommand(), docsCommand(),
 	}
 }
 
