@@ -43,7 +43,7 @@ func (r *run) classify() {
 			e.taken = true
 			continue
 		}
-		v := r.nature(e, pats)
+		v := r.nature(e, append(pats[:len(pats):len(pats)], r.together(e)...))
 		if ruling != "" {
 			v.kind, v.candidates = Kind(ruling), nil
 			v.evidence = "decided by a person; the readings alone: " + v.evidence
@@ -164,49 +164,9 @@ func (r *run) loadDisturbance(e *cluster, v verdict, moved []int) Disturbance {
 	d.Size = largest(d.By)
 	if v.fit != nil {
 		d.Which = v.fit.p.which
-		d.Load = r.newtons(*v.fit)
+		d.Load = r.newtons(e, *v.fit)
 	}
 	return d
-}
-
-// newtons turns a fitted amount into a force; nil where the run holds no
-// marked change that tells the scale.
-func (r *run) newtons(f fitted) *Value {
-	k := r.kappa
-	if f.p.learned {
-		k = 1
-	}
-	if k == 0 {
-		return nil
-	}
-	n := f.a / k
-	return &Value{n, hypot(f.ua/k, 0.02*n)}
-}
-
-// influenceScale is by how much the given influence must be multiplied to
-// give the sags seen at the marked changes; 0 where unknown.
-func (r *run) influenceScale() float64 {
-	if r.opt.Influence == nil {
-		return 0
-	}
-	var k []float64
-	for i, c := range r.changes {
-		e := r.matchOf(i)
-		if e == nil {
-			continue
-		}
-		num, den := 0.0, 0.0
-		for g, v := range r.expected(c) {
-			if e.known[g] {
-				num += v * e.jump[g].MM
-				den += v * v
-			}
-		}
-		if den > 0 {
-			k = append(k, num/den)
-		}
-	}
-	return Median(k)
 }
 
 // report turns a lasting cluster into a disturbance and its treatment.
@@ -218,7 +178,7 @@ func (r *run) report(e *cluster, v verdict, moved []int) {
 		d.From = t.start
 		d.Treated = "treated as a load step of its own"
 		r.add(d)
-		r.unmarked = append(r.unmarked, unmarkedStep{event: e, at: t, fit: *v.fit, newton: d.Load})
+		r.unmarked = append(r.unmarked, unmarkedStep{event: e, at: t, fit: *v.fit, newton: d.Load, told: len(r.out.Disturbances) - 1})
 		return
 	}
 	d := Disturbance{Kind: v.kind, Gauges: moved, From: t.start, Candidates: v.candidates, Evidence: v.evidence}

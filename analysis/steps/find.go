@@ -63,7 +63,7 @@ func (r *run) happenings() error {
 		r.matchChanges()
 		r.findStuck()
 		r.weakResponses()
-		r.classify()
+		r.explain()
 		return nil
 	}
 	return nil

@@ -219,7 +219,8 @@ type unmarkedStep struct {
 	event  *cluster
 	at     timing
 	fit    fitted
-	newton *Value
+	newton *Value // estimate, N; nil where nothing tells the scale
+	told   int    // index of the disturbance that tells of it
 }
 
 // run is the state of one Find.
@@ -231,6 +232,9 @@ type run struct {
 	hot     []interval
 	events  []cluster
 	matched matching
+	// doubtful says of each change that its delta is not what its marks say,
+	// one of its loads having been changed unmarked before.
+	doubtful []bool
 	// before is what hung before the first reading, as marked.
 	before change
 	rules  []rule // decisions of a person
@@ -240,6 +244,7 @@ type run struct {
 	keys      []key
 	pending   []pendingOffset
 	unmarked  []unmarkedStep
+	former    []unmarkedStep // those of the classification before
 	// kappa scales the given influence to the sags seen; 0 where unknown.
 	kappa float64
 	out   *Findings

@@ -53,9 +53,12 @@ func downUp(a float64) string {
 	return "down"
 }
 
-// best returns the pattern of a kind that fits best, nil where none fits.
+// best returns the pattern of a kind that fits best, nil where none fits. Of
+// several loads that fit, the one of the likest proportions is taken: how far
+// the worst gauge is off says little of that, for supports yield with any load.
 func (r *run) best(e *cluster, pats []pattern, k Kind) *fitted {
 	var best *fitted
+	likest := 0.0
 	for _, p := range pats {
 		if p.kind != k {
 			continue
@@ -64,9 +67,13 @@ func (r *run) best(e *cluster, pats []pattern, k Kind) *fitted {
 		if !ok || f.worst >= 1 || math.Abs(f.a) < 3*f.ua {
 			continue
 		}
-		if best == nil || f.worst < best.worst {
+		better := best == nil || f.worst < best.worst
+		if k == LoadChanged {
+			better = math.Abs(r.alike(e, p.v)) > likest
+		}
+		if better {
 			c := f
-			best = &c
+			best, likest = &c, math.Abs(r.alike(e, p.v))
 		}
 	}
 	return best

@@ -11,6 +11,7 @@ type pattern struct {
 	load    int    // index of the load, -1 otherwise
 	v       []float64
 	learned bool // seen in this run, so known better than foretold
+	loose   bool // learned, but by how many newtons nobody knows
 	newton  float64
 	// shares is what part of the change each load took (rig's order), adding up
 	// to 1; nil for the one load, or where nobody can tell.
@@ -42,15 +43,10 @@ func (p *pattern) share(j int) float64 {
 // patterns lists the causes that move several gauges in known proportions.
 func (r *run) patterns() []pattern {
 	var out []pattern
-	for j, l := range r.h.Rig.Loads {
-		if r.opt.Influence == nil {
-			break
+	for j := range r.h.Rig.Loads {
+		if r.opt.Influence != nil {
+			out = append(out, r.foretold(j))
 		}
-		v := make([]float64, len(r.gauges))
-		for g := range v {
-			v[g] = r.opt.Influence[g][j]
-		}
-		out = append(out, pattern{kind: LoadChanged, which: l.Name, load: j, v: v, newton: 1})
 	}
 	out = append(out, r.learned()...)
 	if len(r.h.Rig.Supports) == 2 {
@@ -59,6 +55,15 @@ func (r *run) patterns() []pattern {
 		}
 	}
 	return out
+}
+
+// foretold is the pattern of load j by the influence that was given.
+func (r *run) foretold(j int) pattern {
+	v := make([]float64, len(r.gauges))
+	for g := range v {
+		v[g] = r.opt.Influence[g][j]
+	}
+	return pattern{kind: LoadChanged, which: r.h.Rig.Loads[j].Name, load: j, v: v, newton: 1}
 }
 
 // learned returns the patterns of the marked changes of load that were found.
@@ -93,6 +98,7 @@ func (r *run) learned() []pattern {
 			p.v[g] = e.jump[g].MM / p.newton
 		}
 		p.newton = 1
+		p.loose = r.inDoubt(i)
 		out = append(out, p)
 	}
 	return out

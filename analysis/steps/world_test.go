@@ -29,6 +29,7 @@ type world struct {
 	happenings    []happening
 	silent        [][2]float64 // no readings between, s
 	marks         []history.Mark
+	sparse        bool // mark the loads that changed only
 	amend         []config.Amendment
 	readTimes     []float64
 	noInfluence   bool
@@ -236,11 +237,14 @@ func (w *world) history(t *testing.T) *history.History {
 		}
 	}
 	marks := append([]history.Mark(nil), w.marks...)
-	for _, c := range w.changes {
+	for i, c := range w.changes {
 		if math.IsNaN(c.late) {
 			continue
 		}
 		for j, n := range c.newton {
+			if w.sparse && i > 0 && n == w.changes[i-1].newton[j] {
+				continue
+			}
 			m := history.Mark{Kind: "load", Load: rig.Loads[j].Name, Newton: n, Step: c.name, Time: at(c.at + c.late)}
 			marks = append(marks, m)
 		}
