@@ -21,6 +21,8 @@ type creepTask struct {
 	end    int64 // its end
 	// unload is the first change after the creep step, -1 where there is none.
 	unload int
+	// below is true where less hung after the creep step than at the baseline.
+	below bool
 }
 
 // hours turns an instant into hours from the task's origin.
@@ -81,6 +83,7 @@ func creepTaskOf(h *history.History, f *steps.Findings, shares [][]float64) (*cr
 	first := f.Loads[0]
 	t.origin = first.Full - int64(first.RampS*1e9)
 	t.full, t.end = f.Steps[step].Full, f.Steps[step].To
+	t.below = f.BelowBaseline() > step
 	for i, c := range f.Loads {
 		if c.Step == step {
 			t.full = c.Full

@@ -89,12 +89,10 @@ func creepOf(h *history.History, t *creepTask, own instrument, shared common, st
 		MinimumTime: t.instantOf(a.Acceleration.MinimumH), CautionTime: t.instantOf(a.Acceleration.CautionH),
 		ClearAreaTime: t.instantOf(a.Acceleration.ClearAreaH),
 	}
-	before := beforeUnloading(a)
-	for _, v := range a.Recovery {
-		left := valueQ(v.Residual, "mm")
-		c.Recovery = append(c.Recovery, Recovery{AfterS: secondsOf(v.AfterH), Recovered: *own.share(v.Share, t.gauge, before), Residual: *own.widen(&left, t.gauge)})
+	if !t.below {
+		c.Recovery = recoveryOf(t, own, a)
+		c.PermanentSet = valueQOrNil(a.PermanentSet, "mm")
 	}
-	c.PermanentSet = valueQOrNil(a.PermanentSet, "mm")
 	for i, v := range a.Forecast[:min(len(a.Forecast), len(h.Rig.Forecast))] {
 		c.Forecast = append(c.Forecast, forecastOf(h.Rig, own, t.gauge, i, v))
 	}
@@ -108,6 +106,19 @@ func creepOf(h *history.History, t *creepTask, own instrument, shared common, st
 		c.Fit.AtBound = c.Fit.AtBound || p.AtBound && f.Model != creep.KelvinChain
 	}
 	return c
+}
+
+// recoveryOf renders what came back. Where less hung in the end than at the
+// baseline (see steps.Findings.BelowBaseline), what is left of the sag is no
+// measure of recovery, for the beam rises above its zero: creepOf leaves it out.
+func recoveryOf(t *creepTask, own instrument, a *creep.Analysis) []Recovery {
+	out := []Recovery{}
+	before := beforeUnloading(a)
+	for _, v := range a.Recovery {
+		left := valueQ(v.Residual, "mm")
+		out = append(out, Recovery{AfterS: secondsOf(v.AfterH), Recovered: *own.share(v.Share, t.gauge, before), Residual: *own.widen(&left, t.gauge)})
+	}
+	return out
 }
 
 // initialOf is the sag that relative creep divides by, mm; 0 where none was read.

@@ -1,5 +1,7 @@
 package steps
 
+import "math"
+
 // hanging is what hangs on the beam, by load of the rig. A load's value is
 // unknown from an unmarked change until its next mark; an estimate may stand
 // in for it.
@@ -30,7 +32,8 @@ func (h *hanging) allKnown() bool {
 func (h *hanging) disturb(u *unmarkedStep) []float64 {
 	delta := make([]float64, len(h.newton))
 	for j := range h.newton {
-		if !u.fit.p.moves(j) {
+		// A change without an estimate may have been one of several loads.
+		if u.newton != nil && !u.fit.p.moves(j) {
 			continue
 		}
 		// An estimate that rests on no value is none.
@@ -38,6 +41,9 @@ func (h *hanging) disturb(u *unmarkedStep) []float64 {
 		if can {
 			delta[j] = u.newton.MM * u.fit.p.share(j)
 			h.newton[j] += delta[j]
+			if math.Abs(h.newton[j]) < 1e-9*math.Abs(delta[j]) {
+				h.newton[j] = 0 // rounding, of a load taken off whole
+			}
 		}
 		h.known[j], h.estimated[j] = false, can
 	}
@@ -59,4 +65,21 @@ func (h *hanging) set(c change) (delta []float64, known bool) {
 		h.newton[j], h.known[j], h.estimated[j] = c.newton[j], true, false
 	}
 	return delta, known
+}
+
+// BelowBaseline returns the last step, behind the baseline, in which less of
+// any load hung than at the baseline; -1 where there is none. Sags count from
+// the loaded beam then, and what came back by that step is no recovery.
+func (f *Findings) BelowBaseline() int {
+	if f.Baseline >= len(f.Steps) {
+		return -1
+	}
+	for k := len(f.Steps) - 1; k > f.Baseline; k-- {
+		for name, n := range f.Steps[f.Baseline].Loads {
+			if now, ok := f.Steps[k].Loads[name]; ok && now < n-1e-6 {
+				return k
+			}
+		}
+	}
+	return -1
 }

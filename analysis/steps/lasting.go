@@ -205,6 +205,9 @@ func (r *run) finish() {
 			r.warn("ringing", -1, s.Full, fmt.Sprintf("the beam swung for %.3g s after step %s (up to %.3g mm): the load was not put on gently", s.RingingS, s.Name, s.RingingMM))
 		}
 	}
+	if k := r.out.BelowBaseline(); k >= 0 {
+		r.warn("unloaded-below-baseline", -1, r.out.Steps[k].From, fmt.Sprintf("less hung on the beam in step %s than at the baseline (step %s): sags count from the loaded beam, so no recovery and no permanent set are stated; record the beam before anything hangs on it", r.out.Steps[k].Name, r.out.Steps[r.out.Baseline].Name))
+	}
 	r.warnStill()
 	for _, u := range r.rules {
 		if !u.used {
