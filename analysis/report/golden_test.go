@@ -247,3 +247,30 @@ func TestEveryPartSaysWhatItShows(t *testing.T) {
 		}
 	}
 }
+
+var metric = regexp.MustCompile(`\b(mm|MPa|µm|°C|N|N·m2|kN)\b`)
+
+// In US units nothing but what was typed in (the job card, marks, amendments)
+// and the clauses' own words is in SI.
+func TestUnitsAreNotMixed(t *testing.T) {
+	o := demoOptions(t)
+	o.Units = "us"
+	d := Build(demoResult(t), o)
+	found := 0
+	for _, s := range d.Sections {
+		if s.ID == "job" || s.ID == "entries" || s.ID == "evaluations" {
+			continue
+		}
+		one := &Document{Sections: []Section{s}}
+		sayings(one, func(what, text string, _ bool) {
+			found++
+			// Warnings are in the analysis's own words.
+			if what != "item" && metric.MatchString(text) {
+				t.Errorf("the %s %q of %s is in SI units", what, text, s.ID)
+			}
+		})
+	}
+	if found < 100 {
+		t.Errorf("only %d texts were looked at", found)
+	}
+}

@@ -181,7 +181,7 @@ func (s *sheet) section(no int, sec Section) {
 		head += float64(len(s.wrap(sec.Lead, s.width)))*lineHeight(bodySize) + 1
 	}
 	if len(sec.Blocks) > 0 {
-		head += s.least(sec.Blocks[0])
+		head += s.least(sec.Blocks[0]) + 2
 	}
 	s.ensure(min(head, s.floor-topMargin))
 	if s.y > topMargin {
@@ -210,9 +210,22 @@ func (s *sheet) least(b Block) float64 {
 	case Picture:
 		return 90
 	case Table:
-		return s.layTable(v, false).least()
+		return s.leastOf(s.layTable(v, false))
+	}
+	if l, ok := b.(List); ok && l.Grave {
+		return s.listHeight(l)
 	}
 	return 3 * lineHeight(bodySize)
+}
+
+// listHeight is that of a whole grave list, which is never cut.
+func (s *sheet) listHeight(l List) float64 {
+	h := 2.0
+	s.style("B", bodySize, dark)
+	for _, item := range l.Items {
+		h += float64(len(s.wrap(item, s.width-6)))*lineHeight(bodySize) + 0.8
+	}
+	return min(h, s.floor-topMargin)
 }
 
 func (s *sheet) block(b Block, answers bool) {
@@ -236,6 +249,9 @@ func (s *sheet) block(b Block, answers bool) {
 // list writes items; a grave one has a bar down its side.
 func (s *sheet) list(l List) {
 	s.y += 1.2
+	if l.Grave {
+		s.ensure(s.listHeight(l))
+	}
 	for _, item := range l.Items {
 		weight := ""
 		if l.Grave {

@@ -1,6 +1,9 @@
 package report
 
-import "strings"
+import (
+	"math"
+	"strings"
+)
 
 // laidTable is a table with its columns' widths and every cell wrapped.
 type laidTable struct {
@@ -100,22 +103,24 @@ func shareWidth(least, most []float64, room float64) []float64 {
 		for j := range out {
 			out[j] = most[j] + (room-sumMost)/float64(len(out))
 		}
-	case sumLeast <= room: // short columns first get all, the rest share alike
+	case sumLeast <= room: // short columns come to all they need first, long texts share the rest
 		copy(out, least)
 		for left := room - sumLeast; left > 1e-6; {
-			open := 0
+			weight := 0.0
 			for j := range out {
 				if out[j] < most[j]-1e-9 {
-					open++
+					weight += math.Sqrt(most[j])
 				}
 			}
-			part := left / float64(max(open, 1))
-			for j := range out {
-				add := min(part, most[j]-out[j])
-				out[j], left = out[j]+add, left-add
-			}
-			if open == 0 {
+			if weight == 0 {
 				break
+			}
+			part := left / weight
+			for j := range out {
+				if out[j] < most[j]-1e-9 {
+					add := min(part*math.Sqrt(most[j]), most[j]-out[j])
+					out[j], left = out[j]+add, left-add
+				}
 			}
 		}
 	default: // not even words fit: columns below an even share keep their words
@@ -174,12 +179,15 @@ func (l *laidTable) whole() float64 {
 	return h
 }
 
-// least is the height of the table's beginning: its head and two rows, or all
+// smallTable is the height up to which a table is never cut.
+func (s *sheet) smallTable() float64 { return 0.4 * (s.floor - topMargin) }
+
+// leastOf is the height of the table's beginning: its head and two rows, or all
 // of a small table.
-func (l *laidTable) least() float64 {
-	h := l.top() + 2
-	if w := l.whole(); w < 60 {
-		return w + 2
+func (s *sheet) leastOf(l *laidTable) float64 {
+	h := l.top() + 2.2
+	if w := l.whole(); w < s.smallTable() {
+		return w + 2.2
 	}
 	for _, r := range l.rows[:min(2, len(l.rows))] {
 		h += l.height(r)
@@ -192,10 +200,10 @@ func (l *laidTable) least() float64 {
 func (s *sheet) table(l *laidTable) {
 	s.y += 2.2
 	page := s.floor - topMargin
-	if w := l.whole(); w < 0.4*page {
+	if w := l.whole(); w < s.smallTable() {
 		s.ensure(w)
 	} else {
-		s.ensure(min(l.least(), page))
+		s.ensure(min(s.leastOf(l), page))
 	}
 	s.tableHead(l, false)
 	for i, r := range l.rows {

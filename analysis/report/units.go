@@ -32,9 +32,14 @@ var us = units{
 	"N.mm2": {1 / (pound * inch * inch), "lb-in2"},
 	"mm/N":  {pound / inch, "in/lbf"},
 	"N/mm":  {inch / pound, "lbf/in"},
-	"mm/d":  {1 / inch, "in/d"},
-	"mm/K":  {1 / (inch * 1.8), "in/°F"},
-	"m/s2":  {1 / 0.3048, "ft/s2"},
+
+	// The laws' parameters.
+	"mm/(N.h)":   {pound / inch, "in/(lbf.h)"},
+	"mm/(N.h^n)": {pound / inch, "in/(lbf.h^n)"},
+
+	"mm/d": {1 / inch, "in/d"},
+	"mm/K": {1 / (inch * 1.8), "in/°F"},
+	"m/s2": {1 / 0.3048, "ft/s2"},
 }
 
 func unitsOf(name string) units {
