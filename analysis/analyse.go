@@ -64,6 +64,7 @@ func Evaluate(h *history.History, o Options) (*Result, error) {
 		Supports: supportsOf(h.Rig, f), Disturbances: disturbancesOf(h.Rig, f), Decisions: decisionsOf(f),
 		Evaluations: []Evaluation{}, Warnings: append(notesOf(h), warningsOf(h.Rig, f)...), Series: seriesOf(h, f),
 	}
+	found := len(r.Warnings)
 	if e := r.addStiffness(h, f, g.Value); e != nil {
 		ei, s = e.Bending.Value, shearOf(e, s)
 	}
@@ -72,6 +73,9 @@ func Evaluate(h *history.History, o Options) (*Result, error) {
 	}
 	if err := r.addEvaluations(h, f, rules, ei, s, g.Value, g.U); err != nil {
 		return nil, err
+	}
+	if f.TooFew {
+		r.Warnings = r.Warnings[:found] // what came behind follows from that
 	}
 	return r, nil
 }

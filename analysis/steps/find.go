@@ -43,7 +43,24 @@ func Find(h *history.History, opt Options) (*Findings, error) {
 	r.figures()
 	r.settlements()
 	r.finish()
+	r.tooFew()
 	return r.out, nil
+}
+
+// tooFew says so where no gauge left more than one reading, and silences what
+// else would be said: it all follows from that.
+func (r *run) tooFew() {
+	for i := range r.gauges {
+		n := 0
+		for _, p := range r.gauges[i].seq {
+			n += p.n
+		}
+		if n > 1 {
+			return
+		}
+	}
+	r.out.TooFew, r.out.Warnings = true, nil
+	r.warn("too-few-readings", -1, r.h.First, "no gauge left more than one reading: there is no sag, no stiffness and no creep to state; record on, or check that the folder is whole")
 }
 
 // happenings finds the clusters and explains them. A unit key that was pressed

@@ -206,6 +206,9 @@ type Findings struct {
 	Chord                    Chord
 	Decisions                []Decision
 	Warnings                 []Warning
+	// TooFew is true where no gauge left more than one reading: nothing can be
+	// said then, and Warnings holds that one alone.
+	TooFew bool
 }
 
 // pendingOffset is an offset of one gauge, to be put on its track.
