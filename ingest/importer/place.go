@@ -39,7 +39,6 @@ type placer struct {
 	loads    map[string]string
 	marks    []entry
 	out      []reading
-	probes   map[string]reading
 }
 
 type seen struct {
