@@ -82,7 +82,7 @@ func creepOf(h *history.History, t *creepTask, own instrument, shared common, st
 		})
 	}
 	for _, v := range a.Equivalent {
-		c.Equivalent = append(c.Equivalent, Equivalent{AfterS: secondsOf(v.AfterH), Relative: valueQ(v.Value, "1")})
+		c.Equivalent = append(c.Equivalent, Equivalent{AfterS: secondsOf(v.AfterH), Relative: *own.relative(&v.Value, t.gauge, initial)})
 	}
 	c.Rate, c.Method, c.Stage = shared.sagRate(valueQOrNil(a.Rate, "mm/d")), a.Method, string(a.Stage)
 	c.Acceleration = Acceleration{
