@@ -63,7 +63,7 @@ func (r *run) spike(e, f *cluster, gauges []int) {
 	}
 	d := Disturbance{Kind: Spike, Gauges: gauges, From: e.lo, To: f.hi,
 		Treated:  "readings between left out",
-		Evidence: fmt.Sprintf("%s left their level and came back within %.3g s", r.names(gauges), seconds(f.hi-e.lo))}
+		Evidence: fmt.Sprintf("%s left their level and came back within %s", r.names(gauges), lasted(seconds(f.hi-e.lo)))}
 	for _, g := range gauges {
 		size := e.peak[g]
 		if e != f {

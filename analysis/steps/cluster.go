@@ -194,11 +194,29 @@ func (c *cluster) measureGauge(g *gauge, before, after int64) {
 	r, ru := edge(g, pts[b:hi], mid)
 	c.jump[g.index] = Value{r - l, hypot(lu, ru)}
 	c.moved[g.index] = math.Abs(r-l) > max(4*hypot(lu, ru), 1.5*g.res*max(pts[a-1].f, pts[b].f))
+	if c.moved[g.index] && hypot(lu, ru) > 0.05*math.Abs(r-l) {
+		// Over a long gap two short lines, carried on to its middle, tell that
+		// there was a jump but hardly its size: the levels beside it tell more.
+		near := levelAt(g, pts[b:hi], c.hi) - levelAt(g, pts[lo:a], c.lo)
+		if math.Abs(near) > 5*hypot(lu, ru) {
+			c.jump[g.index] = Value{near, hypot(near-(r-l), g.noise) / math.Sqrt(3)}
+		}
+	}
+	// An excursion is one from the straight way across: a beam that creeps
+	// through the cluster leaves no level.
+	from, to := levelAt(g, pts[lo:a], c.lo), levelAt(g, pts[b:hi], c.hi)
+	slope := (to - from) / max(seconds(c.hi-c.lo), 1e-9)
 	for _, p := range pts[a:b] {
-		if d := p.y - l; math.Abs(d) > math.Abs(c.peak[g.index]) {
+		if d := p.y - from - slope*seconds(p.t-c.lo); math.Abs(d) > math.Abs(c.peak[g.index]) {
 			c.peak[g.index] = d
 		}
 	}
+}
+
+// levelAt is edge without its uncertainty.
+func levelAt(g *gauge, pts []point, t int64) float64 {
+	level, _ := edge(g, pts, t)
+	return level
 }
 
 // edge estimates a gauge's level at the instant t from readings on one side

@@ -72,8 +72,22 @@ func (r *run) doubts() []bool {
 	return out
 }
 
+// inDoubt says that the jumps of a change's cluster are not those of its
+// delta: the delta is false, or the cluster holds another change too.
 func (r *run) inDoubt(change int) bool {
-	return change < len(r.doubtful) && r.doubtful[change]
+	if change < len(r.doubtful) && r.doubtful[change] {
+		return true
+	}
+	e := r.matchOf(change)
+	if e == nil {
+		return false
+	}
+	for k, c := range r.changes {
+		if k != change && r.matched[k] < 0 && c.last >= e.lo && c.first <= e.hi {
+			return true
+		}
+	}
+	return false
 }
 
 // hangingBefore is what hung right before an instant, the unmarked changes

@@ -199,10 +199,10 @@ func (r *run) finish() {
 			if s.OffsetS < 0 {
 				word = "early"
 			}
-			r.warn("mark-off", -1, s.Marked, fmt.Sprintf("the mark of step %s came %.3g s %s; the readings' own time was used", s.Name, math.Abs(s.OffsetS), word))
+			r.warn("mark-off", -1, s.Marked, fmt.Sprintf("the mark of step %s came %s %s; the readings' own time was used", s.Name, lasted(math.Abs(s.OffsetS)), word))
 		}
 		if s.RingingS > 0 {
-			r.warn("ringing", -1, s.Full, fmt.Sprintf("the beam swung for %.3g s after step %s (up to %.3g mm): the load was not put on gently", s.RingingS, s.Name, s.RingingMM))
+			r.warn("ringing", -1, s.Full, fmt.Sprintf("the beam swung for %s after step %s (up to %.3g mm): the load was not put on gently", lasted(s.RingingS), s.Name, s.RingingMM))
 		}
 	}
 	if k := r.out.BelowBaseline(); k >= 0 {

@@ -1,6 +1,10 @@
 package steps
 
-import "sort"
+import (
+	"fmt"
+	"math"
+	"sort"
+)
 
 // Sampling is dense around changes and sparse in long holds, so how far apart
 // readings lie is a question of when.
@@ -50,3 +54,11 @@ func (r *run) near(t int64) int64 { return max(120*second, 6*nanos(r.spacing(t))
 
 // pad is how far beyond an instant readings are taken for comparison.
 func (r *run) pad(t int64) int64 { return max(60*second, 30*nanos(r.spacing(t))) }
+
+// lasted writes a time in seconds to three figures, never with an exponent.
+func lasted(s float64) string {
+	if math.Abs(s) < 100 {
+		return fmt.Sprintf("%.3g s", s)
+	}
+	return fmt.Sprintf("%.0f s", s)
+}

@@ -25,6 +25,17 @@ type share struct {
 // first seconds of creep are not part of the ramp.
 const settled = 0.03
 
+// blind is how long nothing may be read, where more was, before a change in
+// between is said to have happened unseen, s.
+const blind = 60
+
+// Ringing is told by readings at most this far apart, s: seldomer ones show
+// creep and temperature, and no swing.
+const (
+	ringingSpacing = 1.5
+	ringingGap     = 5
+)
+
 // time finds the first movement and the instant of full load of a cluster
 // from all gauges that moved, each weighted by its jump over its scatter.
 // mark is the operator's instant, 0 for none.
@@ -49,6 +60,10 @@ func (r *run) time(c *cluster, mark int64) timing {
 		return r.coarse(c, mark)
 	}
 	lo, hi := s[first-1].t, s[first].t
+	if gap := seconds(hi - lo); gap > max(blind, 5*r.spacing(lo)) && s[first].z > 0.8 {
+		// All of it happened while nothing was read.
+		return r.coarse(&cluster{lo: lo, hi: hi}, mark)
+	}
 	after := r.aftermath(s, c, hi)
 	done := first
 	for done < len(s) && !complete(s, done, after) {
@@ -58,7 +73,7 @@ func (r *run) time(c *cluster, mark int64) timing {
 		done = mid
 	}
 	t := r.ramped(s, first, done, lo, hi, mark)
-	t.ringing, t.swingMM = r.ringing(c, s, done, after)
+	t.ringing, t.swingMM = r.ringing(c, s, first, done, after)
 	return t
 }
 
@@ -206,7 +221,9 @@ func levelBefore(pts []point, lo int64, g *gauge) (func(int64) float64, bool) {
 	if !ok {
 		return nil, false
 	}
-	return func(t int64) float64 { return fit.at(seconds(t - lo)) }, true
+	// Carried on for hours, over a gap, a line of a minute tells nothing.
+	end := max(4*seconds(pts[b-1].t-pts[a].t), 180)
+	return func(t int64) float64 { return fit.at(min(seconds(t-lo), end)) }, true
 }
 
 // aftermath is the level behind a change as a function of time: a straight
@@ -234,16 +251,28 @@ func (r *run) aftermath(s []share, c *cluster, since int64) func(int64) float64 
 }
 
 // ringing measures how long the shares swing about the later level, and by
-// how much of the greatest jump.
-func (r *run) ringing(c *cluster, s []share, done int, after func(int64) float64) (lasts, swing float64) {
+// how much of the greatest jump; 0 where readings come too seldom to tell, or
+// a gap lies between.
+func (r *run) ringing(c *cluster, s []share, first, done int, after func(int64) float64) (lasts, swing float64) {
 	most := 0.0
 	for g := range c.jump {
 		most = max(most, math.Abs(c.jump[g].MM))
+	}
+	if r.spacing(c.hi) > ringingSpacing {
+		return 0, 0
+	}
+	for i := max(first, 1); i <= done && i < len(s); i++ {
+		if s[i].t-s[i-1].t > ringingGap*second {
+			return 0, 0
+		}
 	}
 	last := done
 	// Once it has been quiet for a while, what comes later is something else.
 	quiet := max(5*second, nanos(10*r.spacing(c.hi)))
 	for i := done; i < len(s) && s[i].t < s[last].t+quiet; i++ {
+		if i > done && s[i].t-s[i-1].t > ringingGap*second {
+			break
+		}
 		if d := math.Abs(s[i].z - after(s[i].t)); d > max(4*s[i].u, settled) {
 			last, swing = i, max(swing, d*most)
 		}
