@@ -37,7 +37,10 @@ func (r *run) classify() {
 		}
 		moved := e.movedGauges()
 		if len(moved) == 0 {
-			if ruling == "" {
+			// What lasts longer, between many readings or over a gap, is creep or
+			// weather: no excursion of a moment.
+			long := max(shortly, 3*nanos(max(r.spacing(e.lo), r.spacing(e.hi))))
+			if ruling == "" && e.hi-e.lo <= long {
 				r.spike(e, e, r.peakGauges(e))
 			}
 			e.taken = true

@@ -194,23 +194,39 @@ func (c *cluster) measureGauge(g *gauge, before, after int64) {
 	r, ru := edge(g, pts[b:hi], mid)
 	c.jump[g.index] = Value{r - l, hypot(lu, ru)}
 	c.moved[g.index] = math.Abs(r-l) > max(4*hypot(lu, ru), 1.5*g.res*max(pts[a-1].f, pts[b].f))
-	if c.moved[g.index] && hypot(lu, ru) > 0.05*math.Abs(r-l) {
+	from, to := levelAt(g, pts[lo:a], c.lo), levelAt(g, pts[b:hi], c.hi)
+	if near := to - from; c.moved[g.index] {
+		c.moved[g.index] = !c.crept(g, near, pts[lo:a], pts[b:hi])
 		// Over a long gap two short lines, carried on to its middle, tell that
 		// there was a jump but hardly its size: the levels beside it tell more.
-		near := levelAt(g, pts[b:hi], c.hi) - levelAt(g, pts[lo:a], c.lo)
-		if math.Abs(near) > 5*hypot(lu, ru) {
+		if u := hypot(lu, ru); u > 0.05*math.Abs(r-l) && math.Abs(near) > 5*u {
 			c.jump[g.index] = Value{near, hypot(near-(r-l), g.noise) / math.Sqrt(3)}
 		}
 	}
 	// An excursion is one from the straight way across: a beam that creeps
 	// through the cluster leaves no level.
-	from, to := levelAt(g, pts[lo:a], c.lo), levelAt(g, pts[b:hi], c.hi)
 	slope := (to - from) / max(seconds(c.hi-c.lo), 1e-9)
 	for _, p := range pts[a:b] {
 		if d := p.y - from - slope*seconds(p.t-c.lo); math.Abs(d) > math.Abs(c.peak[g.index]) {
 			c.peak[g.index] = d
 		}
 	}
+}
+
+// crept says that a rise over a long gap is no more than the slopes on either
+// side make of it: creep slows down, so what crept lies between the two.
+func (c *cluster) crept(g *gauge, rise float64, left, right []point) bool {
+	wide := seconds(c.hi - c.lo)
+	before, behind := left[len(left)-1].t-left[0].t, right[len(right)-1].t-right[0].t
+	if wide <= max(blind, seconds(min(before, behind))) || len(left) < 8 || len(right) < 8 {
+		return false
+	}
+	slope := func(pts []point, span int64) float64 {
+		return (levelAt(g, pts, pts[len(pts)-1].t) - levelAt(g, pts, pts[0].t)) / seconds(span)
+	}
+	a, b := wide*slope(left, before), wide*slope(right, behind)
+	slack := 4*g.noise + g.res
+	return a*b > 0 && rise >= min(a, b)-slack && rise <= max(a, b)+slack
 }
 
 // levelAt is edge without its uncertainty.

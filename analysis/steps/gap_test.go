@@ -59,3 +59,30 @@ func TestTwoLoadsWithinGap(t *testing.T) {
 		t.Errorf("s3 is complete after s4 began")
 	}
 }
+
+// Fast creep over an unread hour is neither a load nor a support.
+func TestCreepWithinGap(t *testing.T) {
+	for seed := range uint64(5) {
+		w := plank()
+		w.seed = seed
+		w.length = 30000
+		w.changes = w.changes[:4]
+		w.silent = [][2]float64{{3900, 8300}}
+		for s := 8300.0; s < w.length; s += 150 {
+			w.silent = append(w.silent, [2]float64{s + 0.5, s + 149.5})
+		}
+		for s := 3300.0; s < 3900; s += 10 {
+			w.silent = append(w.silent, [2]float64{s + 0.5, s + 9.5})
+		}
+		f := w.find(t)
+		for _, d := range f.Disturbances {
+			if d.Kind != GapKind {
+				t.Errorf("seed %d: false alarm:%s", seed, tell(f))
+				break
+			}
+		}
+		if len(f.Steps) != 5 {
+			t.Errorf("seed %d: %d steps", seed, len(f.Steps))
+		}
+	}
+}
