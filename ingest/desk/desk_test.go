@@ -134,7 +134,9 @@ func TestBinsOverARestart(t *testing.T) {
 	if err := os.Remove(file); err != nil {
 		t.Fatal(err)
 	}
-	if read := count(); kept != read || damaged != read || read < 1440 {
+	// The last reading before the stop may reach the desk and no longer the
+	// recorder: the stored bins then count one more than the folder holds.
+	if read := count(); kept < read || kept > read+1 || damaged != read || read < 1440 {
 		t.Errorf("%d readings from the stored bins, %d with a damaged file, %d without", kept, damaged, read)
 	}
 }
