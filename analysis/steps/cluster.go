@@ -3,6 +3,7 @@ package steps
 import (
 	"fmt"
 	"math"
+	"slices"
 	"sort"
 
 	"gaugelog/analysis/history"
@@ -58,6 +59,7 @@ func (r *run) scanWindow(raw [][]history.Sample) {
 		all = append(all, jumps(g, flat, []int{1, 2, 5, 15, 45}, func(p point) float64 { return g.noise * p.f }, 1)...)
 	}
 	sort.SliceStable(all, func(a, b int) bool { return all[a].lo < all[b].lo })
+	first := len(r.events)
 	for i := 0; i < len(all); {
 		c := cluster{lo: all[i].lo, hi: all[i].hi, raw: pts}
 		j := i
@@ -67,6 +69,52 @@ func (r *run) scanWindow(raw [][]history.Sample) {
 		}
 		r.events = append(r.events, c)
 		i = j
+	}
+	r.trim(r.events[first:], pts)
+}
+
+// Readings that far beside a cluster are held against it, ns and number.
+const (
+	keptBefore, keptBehind = 60 * second, 120 * second
+	keptReadings           = 30
+)
+
+// trim lets the clusters of a window keep the readings they are timed and
+// measured by, and the window go, where that saves memory.
+func (r *run) trim(events []cluster, pts [][]point) {
+	kept, all := 0, 0
+	cut := make([][][]point, len(events))
+	for i := range events {
+		c := &events[i]
+		cut[i] = make([][]point, len(pts))
+		for g, p := range pts {
+			gg := &r.gauges[g]
+			from, to := c.lo-keptBefore-12*nanos(gg.spacing(c.lo)), c.hi+keptBehind+12*nanos(gg.spacing(c.hi))
+			at := func(t int64) int { return sort.Search(len(p), func(k int) bool { return p[k].t > t }) }
+			a := max(0, min(at(from-1), at(c.lo)-keptReadings))
+			b := min(len(p), max(at(to), at(c.hi)+keptReadings))
+			cut[i][g] = p[a:b]
+			kept += b - a
+		}
+	}
+	for _, p := range pts {
+		all += len(p)
+	}
+	if 2*kept > all {
+		return
+	}
+	for i := range events {
+		for g := range cut[i] {
+			cut[i][g] = slices.Clone(cut[i][g])
+		}
+		events[i].raw = cut[i]
+	}
+}
+
+// forget drops the single readings around the clusters once all are timed.
+func (r *run) forget() {
+	for i := range r.events {
+		r.events[i].raw = nil
 	}
 }
 

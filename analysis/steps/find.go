@@ -36,6 +36,7 @@ func Find(h *history.History, opt Options) (*Findings, error) {
 	}
 	r.chooseChord()
 	r.buildSteps()
+	r.forget()
 	r.lasting()
 	if err := r.tracks(); err != nil {
 		return nil, err

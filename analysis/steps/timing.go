@@ -156,7 +156,7 @@ func (r *run) shares(c *cluster) []share {
 		j := c.jump[g].MM
 		u := max(gg.noise, floorU(gg.res)) / math.Abs(j)
 		for _, p := range c.raw[g] {
-			if p.t >= c.lo-60*second-12*nanos(gg.spacing(c.lo)) && p.t <= c.hi+120*second+12*nanos(gg.spacing(c.hi)) {
+			if p.t >= c.lo-keptBefore-12*nanos(gg.spacing(c.lo)) && p.t <= c.hi+keptBehind+12*nanos(gg.spacing(c.hi)) {
 				all = append(all, share{p.t, (p.y - base(p.t)) / j, u})
 			}
 		}
@@ -205,7 +205,7 @@ func combine(all []share, tol int64) []share {
 // levelBefore is a gauge's line before a cluster, as a function of time.
 func levelBefore(pts []point, lo int64, g *gauge) (func(int64) float64, bool) {
 	b := sort.Search(len(pts), func(k int) bool { return pts[k].t > lo })
-	a := max(0, b-30)
+	a := max(0, b-keptReadings)
 	if a == b {
 		return nil, false
 	}
