@@ -87,7 +87,7 @@ func (r *run) fillSteps() {
 					delete(kg, l.Name)
 				}
 			}
-			r.warn("unmarked-step", -1, p.at.start, fmt.Sprintf("the load changed %sand nobody marked it: confirm what happened, and mark it with --when (%s)", p.un.estimate(), s.Name))
+			r.warn("unmarked-step", -1, p.at.start, fmt.Sprintf("the load changed %sand nobody marked it%s: confirm what happened, and mark it with --when (%s)", p.un.estimate(), hung.gone(p.un), s.Name))
 		default:
 			c := r.changes[p.change]
 			s.Name, s.Marked = c.name, c.first

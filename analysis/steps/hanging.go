@@ -50,6 +50,20 @@ func (h *hanging) disturb(u *unmarkedStep) []float64 {
 	return delta
 }
 
+// gone says in words that an unmarked change is taken for the removal of all
+// that hung of its loads; "" where some is left. To be asked after disturb.
+func (h *hanging) gone(u *unmarkedStep) string {
+	if u.newton == nil || u.newton.MM >= 0 {
+		return ""
+	}
+	for j, n := range h.newton {
+		if u.fit.p.moves(j) && (n != 0 || !h.estimated[j]) {
+			return ""
+		}
+	}
+	return "; within what the sags can tell it is all that hung there, and is taken for that"
+}
+
 // set takes in a marked change and returns its delta by load, and whether all
 // of it is known: a load that somebody changed in the meantime has none.
 func (h *hanging) set(c change) (delta []float64, known bool) {

@@ -2,6 +2,8 @@ package steps
 
 import (
 	"math"
+	"slices"
+	"strings"
 	"testing"
 
 	"gaugelog/analysis/history"
@@ -113,6 +115,9 @@ func TestUnloadingForgotten(t *testing.T) {
 		last := f.Steps[len(f.Steps)-1]
 		if !last.Unmarked || last.LoadsKnown || last.DeltaKnown || len(last.Loads) != 2 || last.Loads["loada"] != 0 || last.Loads["loadb"] != 0 {
 			t.Errorf("influence %v: %s %v", given, last.Name, last.Loads)
+		}
+		if w := f.Warnings[slices.IndexFunc(f.Warnings, func(w Warning) bool { return w.Code == "unmarked-step" })]; !strings.Contains(w.Text, "all that hung") {
+			t.Errorf("influence %v: %s", given, w.Text)
 		}
 		c := f.Loads[len(f.Loads)-1]
 		if math.Abs(c.Delta[0]+319) > 1e-9 || math.Abs(c.Delta[1]+171.8) > 1e-9 {
