@@ -83,7 +83,7 @@ func addCurves(r *Result, rig *config.Rig, f *steps.Findings, e *stiffness.Estim
 	for i := f.Baseline + 1; i < len(f.Steps); i++ {
 		step := f.Steps[i]
 		addIncrements(step, sums, whole)
-		if step.Response == nil || !*step.Response || totalOf(step.Loads) <= totalOf(f.Steps[f.Baseline].Loads) {
+		if !step.LoadsKnown || step.Response == nil || !*step.Response || totalOf(step.Loads) <= totalOf(f.Steps[f.Baseline].Loads) {
 			continue
 		}
 		k := i - f.Baseline - 1

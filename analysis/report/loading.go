@@ -53,6 +53,9 @@ func (b *builder) stepTable() Table {
 		if st.Start.US != nil {
 			u = significant(*st.Start.US, 2)
 		}
+		if st.Start.Marked != nil {
+			response = "cannot tell"
+		}
 		if st.Response != nil {
 			response = map[bool]string{true: "yes", false: "none seen"}[*st.Response]
 		}
