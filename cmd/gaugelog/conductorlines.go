@@ -233,7 +233,9 @@ func (c *conductor) converse(ctx context.Context, l *simLine, b simulators.Batch
 func (c *conductor) answer(ctx context.Context, l *simLine, a *answerer, f *simulators.Frame, reply []byte, end int64) error {
 	late := f.Doubtful && f.Lead == 0
 	l.mu.Lock()
-	l.now, l.reply = a, reply
+	// A copy: the simulation writes its next bytes into the same memory, and
+	// only the terminal knows that it is done with these.
+	l.now, l.reply = a, slices.Clone(reply)
 	if late {
 		l.reply = nil
 	}

@@ -55,14 +55,14 @@ func TestSurviveAFullDisk(t *testing.T) {
 		t.Fatal(err)
 	}
 	waitFor(t, 60*time.Second, "the recording to go on", func() bool {
-		return strings.Contains(eventsIn(t, s.run), "kind=disk-back")
+		return strings.Contains(eventsText(t, s.run), "kind=disk-back")
 	})
 	time.Sleep(time.Second)
 	if err := s.process.end(t, syscall.SIGTERM); err != nil {
 		t.Errorf("%v\n%s", err, s.process.err.String())
 	}
 	total := s.onceEach(0, 4*400*4)
-	if events := eventsIn(t, s.run); !strings.Contains(events, "kind=disk-full") {
+	if events := eventsText(t, s.run); !strings.Contains(events, "kind=disk-full") {
 		t.Errorf("no event says that the disk was full:\n%s", events)
 	}
 	t.Logf("%d readings through a full disk, each once", total)

@@ -206,8 +206,8 @@ func notesIn(t *testing.T, run string) map[string]int {
 	return out
 }
 
-// eventsIn reads events.lp as text.
-func eventsIn(t *testing.T, run string) string {
+// eventsText reads events.lp as text.
+func eventsText(t *testing.T, run string) string {
 	t.Helper()
 	text, err := os.ReadFile(filepath.Join(run, segment.EventsFile))
 	if err != nil {

@@ -203,7 +203,7 @@ func (s *traced) upTo(sent map[string]int) {
 	s.t.Helper()
 	for g, numbers := range stored(s.t, s.run) {
 		if last := numbers[len(numbers)-1]; last < sent[g]-50 {
-			s.t.Errorf("gauge %s: reading %d is the last stored, %d were sent\n%s\n%s", g, last, sent[g], s.process.err.String(), eventsIn(s.t, s.run))
+			s.t.Errorf("gauge %s: reading %d is the last stored, %d were sent\n%s\n%s", g, last, sent[g], s.process.err.String(), eventsText(s.t, s.run))
 		}
 	}
 }
@@ -276,7 +276,7 @@ func TestSurviveADiskThatStaysBroken(t *testing.T) {
 				}
 				s.goesOn(300 * time.Millisecond)
 				s.onceEach(1, total+10)
-				if !strings.Contains(eventsIn(t, s.run), "kind=gap") {
+				if !strings.Contains(eventsText(t, s.run), "kind=gap") {
 					t.Error("the gap stands in no event")
 				}
 				t.Logf("%d calls failed; ending says %v; %d readings before going on", s.injected(), err, total)
@@ -295,7 +295,7 @@ func TestSurviveASlowDisk(t *testing.T) {
 		t.Errorf("%v\n%s", err, s.process.err.String())
 	}
 	total := s.onceEach(0, 900)
-	events := eventsIn(t, s.run)
+	events := eventsText(t, s.run)
 	for _, want := range []string{"kind=disk-slow", "kind=disk-back"} {
 		if !strings.Contains(events, want) {
 			t.Errorf("no event %s:\n%s", want, events)

@@ -4,6 +4,7 @@ import (
 	"context"
 	"errors"
 	"strings"
+	"sync"
 	"testing"
 	"testing/synctest"
 	"time"
@@ -57,13 +58,13 @@ func TestAsked(t *testing.T) {
 		wire := opener.Plug("p")
 		ctx, stop := context.WithCancel(t.Context())
 		done := make(chan bool)
-		said := map[string]bool{}
+		var said sync.Map // announced in one goroutine, looked up in another
 		go func() {
 			defer close(done)
 			for {
 				select {
 				case b := <-wire.Asked():
-					if !said[string(b)] {
+					if _, yes := said.Load(string(b)); !yes {
 						t.Errorf("%q was sent before it was announced", b)
 					}
 					if string(b) == "READ?\n" {
@@ -78,7 +79,7 @@ func TestAsked(t *testing.T) {
 		o := listen.Options{Opener: opener, Port: "p", Line: line, Fixed: true, Say: func(s string) {
 			for _, r := range guess.UsualRequests() {
 				if strings.Contains(s, r.Words+" (") {
-					said[string(r.Bytes)] = true
+					said.Store(string(r.Bytes), true)
 				}
 			}
 		}}
