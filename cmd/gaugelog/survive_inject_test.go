@@ -234,7 +234,11 @@ func TestSurviveFailingCalls(t *testing.T) {
 				s.leavesFailedAlone()
 				total := s.onceEach(0, 0)
 				s.upTo(sent)
-				if text := s.process.err.String(); err != nil && !strings.Contains(text, "compress") && !strings.Contains(text, "SHA256SUMS") {
+				// Where the fault meets the very end (the closing mark of the last
+				// segment, its compression, the sums) nothing is lost, and the
+				// command says which file it could not end.
+				text := s.process.err.String()
+				if err != nil && !strings.Contains(text, "compress") && !strings.Contains(text, "SHA256SUMS") && !strings.Contains(text, "gaugelog: readings/") {
 					t.Errorf("%v\n%s", err, text)
 				}
 				s.goesOn(300 * time.Millisecond)
