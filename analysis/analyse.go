@@ -37,26 +37,15 @@ func Analyse(dir string, o Options) (*Result, error) {
 
 // Evaluate works out the result of a run that was read back.
 func Evaluate(h *history.History, o Options) (*Result, error) {
-	g, _, err := stiffness.GravityOf(h.Rig.Gravity)
-	if err != nil {
-		return nil, err
-	}
 	rules, err := evaluatorOf(h.Rig, o.Rules)
 	if err != nil {
 		return nil, err
 	}
-	ei, s, err := nominal(h.Rig)
+	st, err := stageOf(h)
 	if err != nil {
 		return nil, err
 	}
-	expected, err := influence(h.Rig, ei, s, false)
-	if err != nil {
-		return nil, err
-	}
-	f, err := steps.Find(h, steps.Options{Gravity: g.Value, Influence: expected})
-	if err != nil {
-		return nil, err
-	}
+	g, ei, s, f := st.gravity, st.ei, st.s, st.findings
 	r := &Result{
 		Schema: Schema, Run: runOf(h, g, o), Steps: stepsOf(h.Rig, f),
 		Stiffness: emptyStiffness(h.Rig), Creep: emptyCreep(h.Rig),
