@@ -166,7 +166,7 @@ func guestRecords(base int64) error {
 	if err != nil {
 		return err
 	}
-	rig, ports, err := f.lay("/", "{sampling: all, sync: 200 ms, roll: {size: 24 kB}}")
+	rig, ports, err := f.lay("/", "{sampling: all, sync: 200 ms, roll: {size: 8 kB}}")
 	if err != nil {
 		return err
 	}
