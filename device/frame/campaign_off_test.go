@@ -2,5 +2,9 @@
 
 package frame_test
 
-// slipDraws is how many damaged frames of each kind and fault are drawn.
-const slipDraws = 20_000
+const (
+	// slipDraws is how many damaged frames of each kind and fault are drawn.
+	slipDraws = 20_000
+	// usualMutations is how many damaged streams the mutation campaign feeds.
+	usualMutations = 250_000
+)
