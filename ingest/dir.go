@@ -136,7 +136,10 @@ func (d *Dir) AppendMark(m Mark, clock Clock) (string, error) {
 	}
 	defer lock.Close()
 	d.shareWithGroup(marksLockName)
-	id, err := AppendMark(d.fs, m, clock.Now(), clock.State())
+	// The state before the time: a clock set in between must not make a time of
+	// before its setting count as one of after it.
+	state := clock.State()
+	id, err := AppendMark(d.fs, m, clock.Now(), state)
 	d.shareWithGroup(marksName)
 	if err != nil {
 		return "", err

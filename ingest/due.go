@@ -46,6 +46,11 @@ func (r *Recorder) syncEvery() int64 {
 
 // cut ends the batch that is being filled, under the clock as it is now.
 func (r *Recorder) cut() {
+	r.believe()
+	r.endBatch()
+}
+
+func (r *Recorder) endBatch() {
 	r.noteLosses()
 	r.filling.clock = r.clockState()
 	r.waiting = append(r.waiting, r.filling)

@@ -2,7 +2,6 @@ package ingest
 
 import (
 	"fmt"
-	"math"
 	"time"
 
 	"gaugelog/device"
@@ -33,46 +32,6 @@ func (r *Recorder) Handle(e Event) error {
 	return err
 }
 
-// advance moves the present to the instant, and notices a stepped wall clock.
-func (r *Recorder) advance(at device.Instant) {
-	r.now = max(r.now, at.Boot)
-	moved := at.Wall - at.Boot - r.offset
-	if -stepAfter <= moved && moved <= stepAfter {
-		return
-	}
-	if r.o.Live {
-		// The two clocks of a reading are read one after the other; only a
-		// second, guarded look tells a step from a process that was held up.
-		seen := r.o.Clock.Now()
-		moved = seen.Wall - seen.Boot - r.offset
-		if -stepAfter <= moved && moved <= stepAfter {
-			return
-		}
-	}
-	r.stepped(moved)
-}
-
-// stepped goes over to the new wall clock. What was stamped by the old one is
-// cut off under a checkpoint of its own, so that a reader can tell the two
-// apart; where the clock went back, stamps start afresh in a new segment.
-func (r *Recorder) stepped(by int64) {
-	old := r.wall()
-	if by < 0 {
-		r.filling.roll = true
-	}
-	r.cut()
-	r.offset += by
-	for _, c := range r.channels {
-		c.memory.rebase(by)
-		if by < 0 {
-			c.lastWall = math.MinInt64
-		}
-	}
-	r.happened(Happening{Kind: ClockStepped, From: old,
-		Detail: fmt.Sprintf("the wall clock was stepped by %+.3f s", float64(by)/1e9)})
-	r.send()
-}
-
 func (r *Recorder) reading(d *device.Reading) error {
 	switch d.Kind {
 	case device.Indication, device.Ambient:
@@ -90,7 +49,7 @@ func (r *Recorder) reading(d *device.Reading) error {
 		}
 		r.portEvent(kind, d)
 	case device.FramesRefused:
-		r.happened(Happening{Kind: FramesRefused, Gauge: r.onlyOn(d.Port), N: int64(d.N), Detail: d.Port + ": " + d.Detail})
+		r.refused(d)
 	case device.UnitKey:
 		r.happened(Happening{Kind: UnitKey, Gauge: d.Gauge, Detail: "the gauge now shows " + d.Unit})
 	}
@@ -253,10 +212,13 @@ func (r *Recorder) portEvent(kind string, d *device.Reading) {
 		detail += ": " + d.Detail
 	}
 	told := false
-	for _, c := range r.channels {
-		if c.port == d.Port && d.Port != "" {
+	for i, c := range r.channels {
+		if c.port != d.Port || d.Port == "" {
+			continue
+		}
+		told = true
+		if r.silences[i].portMoved(d, r.now) {
 			r.happened(Happening{Kind: kind, Gauge: c.name, Detail: detail})
-			told = true
 		}
 	}
 	if !told {

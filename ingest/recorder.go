@@ -76,6 +76,7 @@ type Recorder struct {
 	gauges   map[string]int // index into channels
 	probes   map[string]int
 	silences []silence
+	refusals []*refusals // by port
 
 	unlock func() error
 	store  *store
@@ -84,6 +85,8 @@ type Recorder struct {
 	run    string
 
 	offset   int64 // wall minus boot-time clock, as stamps are made
+	set      bool  // the wall clock has been set since this boot, as checkpoints say
+	gapFrom  int64 // wall clock: a gap before this recording whose length nobody knows yet; 0: none
 	now      int64 // boot-time clock: the latest instant seen
 	filling  *batch
 	waiting  []*batch // cut, not yet committed; the first may have failed
@@ -223,6 +226,7 @@ func headerWord(text string) string {
 
 func (r *Recorder) openStore(found *folder) error {
 	state := r.o.Clock.State()
+	r.believe()
 	header := segment.Header{Run: found.run, Boot: state.BootID, Rig: found.rigSum, Program: headerWord(r.o.Program), Clock: r.clockState()}
 	r.sealer = newSealer(r.o.FS, r.o.Compress)
 	s := &store{fs: r.o.FS, header: header, channels: r.channels,
@@ -249,9 +253,7 @@ func (r *Recorder) openStore(found *folder) error {
 func (r *Recorder) beginEvents(found *folder) {
 	if found.resumed {
 		if found.last != 0 {
-			d := time.Duration(r.o.Start.Wall - found.last)
-			r.happened(Happening{Kind: Gap, From: found.last,
-				Detail: fmt.Sprintf("nothing was recorded for %s by the wall clock", d.Round(time.Millisecond))})
+			r.statesGap(found.last)
 		}
 		r.happened(Happening{Kind: Started, Detail: "the recording goes on"})
 	} else {
@@ -264,6 +266,19 @@ func (r *Recorder) beginEvents(found *folder) {
 	if last, any := lastChange(found.marks, r.wall()); any {
 		r.policy.changedAt = last - r.offset
 	}
+}
+
+// statesGap records the gap since an earlier recorder of the run. A machine
+// without a battery clock starts with a time of the past: how long the gap was is
+// known only once its clock is set; see stepped.
+func (r *Recorder) statesGap(last int64) {
+	d := time.Duration(r.o.Start.Wall - last)
+	how := fmt.Sprintf("for %s by the wall clock", d.Round(time.Millisecond))
+	if !r.set {
+		r.gapFrom = last
+		how = "since then; the wall clock is not set, so for how long is not known yet"
+	}
+	r.happened(Happening{Kind: Gap, From: last, Detail: "nothing was recorded " + how})
 }
 
 // lastChange is the time of the latest mark that speaks of a change before now.
@@ -281,11 +296,6 @@ func (r *Recorder) Run() string { return r.run }
 
 // wall is the present by the wall clock.
 func (r *Recorder) wall() int64 { return r.now + r.offset }
-
-// clockState is the state of the clocks as a checkpoint carries it.
-func (r *Recorder) clockState() segment.ClockState {
-	return segment.ClockState{Boot: r.now, Wall: r.wall(), Synced: r.o.Clock.State().Synchronised}
-}
 
 // Close ends the recording: what is in memory goes to disk, the segment is
 // sealed, SHA256SUMS is brought up to date and the lock is given back. Its
