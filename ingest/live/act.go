@@ -12,6 +12,7 @@ import (
 
 	"gaugelog/config"
 	"gaugelog/ingest"
+	"gaugelog/ingest/answer"
 	"gaugelog/ingest/desk"
 )
 
@@ -35,17 +36,6 @@ func formsOf(d *desk.Desk, _ *desk.Snapshot) formView {
 	return v
 }
 
-func setWords(p config.PlanStep) string {
-	var parts []string
-	for _, s := range p.Set {
-		parts = append(parts, s.Load+" "+s.Weight.Shown)
-	}
-	if len(parts) == 0 {
-		return ""
-	}
-	return ": " + strings.Join(parts, ", ")
-}
-
 // fieldNames are the fields a mark's form may have.
 var fieldNames = []string{"kind", "step", "load", "value", "gauge", "act", "note", "when", "by", "id", "why"}
 
@@ -63,14 +53,14 @@ func (s *Server) ask(w http.ResponseWriter, r *http.Request, p *page) {
 	now := time.Now()
 	m, err := markOf(p.desk, r.PostForm.Get, now)
 	if err != nil {
-		s.render(w, http.StatusUnprocessableEntity, "refusal", confirmView{Title: titleOf(p.desk), Path: p.path(), Words: err.Error()})
+		s.render(w, http.StatusUnprocessableEntity, "refusal", confirmView{Title: answer.TitleOf(p.desk), Path: p.path(), Words: err.Error()})
 		return
 	}
-	v := confirmView{Title: titleOf(p.desk), Path: p.path()}
+	v := confirmView{Title: answer.TitleOf(p.desk), Path: p.path()}
 	if m.Withdraw != "" {
 		v.Words = "Withdraw mark " + m.Withdraw + " (" + wordsOf(p.desk, m.Withdraw) + ")? It stays in the file but counts no more. Reason: " + m.Why
 	} else {
-		v.Words = markWords(m)
+		v.Words = answer.MarkWords(m)
 		v.When = p.desk.Local(time.Unix(0, m.Time)).Format("Mon 2 Jan 2006, 15:04:05 MST")
 	}
 	for _, name := range fieldNames {
@@ -86,7 +76,7 @@ func (s *Server) ask(w http.ResponseWriter, r *http.Request, p *page) {
 func wordsOf(d *desk.Desk, id string) string {
 	for _, m := range d.Snapshot().Marks {
 		if m.ID == id {
-			return markWords(m)
+			return answer.MarkWords(m)
 		}
 	}
 	return "not found"
@@ -110,13 +100,13 @@ func (s *Server) mark(w http.ResponseWriter, r *http.Request, p *page) {
 		err = errors.New("the time lies in the future")
 	}
 	if err != nil {
-		s.render(w, http.StatusUnprocessableEntity, "refusal", confirmView{Title: titleOf(p.desk), Path: p.path(), Words: err.Error()})
+		s.render(w, http.StatusUnprocessableEntity, "refusal", confirmView{Title: answer.TitleOf(p.desk), Path: p.path(), Words: err.Error()})
 		return
 	}
 	id, err := p.once.do(once, func() (string, error) { return p.desk.Mark(r.Context(), m) })
 	if err != nil {
 		s.o.Log.Error("a mark from the page was not entered", "error", err)
-		s.render(w, http.StatusUnprocessableEntity, "refusal", confirmView{Title: titleOf(p.desk), Path: p.path(), Words: err.Error()})
+		s.render(w, http.StatusUnprocessableEntity, "refusal", confirmView{Title: answer.TitleOf(p.desk), Path: p.path(), Words: err.Error()})
 		return
 	}
 	if m.Withdraw != "" {
@@ -133,7 +123,7 @@ func (s *Server) seen(w http.ResponseWriter, r *http.Request, p *page) {
 		err = p.desk.See(r.Context(), id, clean(r.PostForm.Get("by")))
 	}
 	if err != nil {
-		s.render(w, http.StatusUnprocessableEntity, "refusal", confirmView{Title: titleOf(p.desk), Path: p.path(), Words: err.Error()})
+		s.render(w, http.StatusUnprocessableEntity, "refusal", confirmView{Title: answer.TitleOf(p.desk), Path: p.path(), Words: err.Error()})
 		return
 	}
 	http.Redirect(w, r, p.path()+"?done=seen", http.StatusSeeOther)

@@ -16,6 +16,7 @@ import (
 	"gaugelog/device"
 	"gaugelog/ingest"
 	"gaugelog/ingest/alarm"
+	"gaugelog/ingest/answer"
 	"gaugelog/ingest/desk"
 	"gaugelog/ingest/desk/desktest"
 	"gaugelog/ingest/rollup"
@@ -119,8 +120,7 @@ func curves(rig *config.Rig, loaded, at time.Time) *desk.Curves {
 // html is the whole page of a snapshot.
 func html(t testing.TB, d *desk.Desk, s *desk.Snapshot, known bool) string {
 	t.Helper()
-	v := words(d, s)
-	v.Known, v.Path, v.Plots = known, "/r/slat-3/", plotsOf(d, s)
+	v := sectionView{answer.Of(d, s), known, "/r/slat-3/", plotsOf(d, s)}
 	parts := map[string]template.HTML{}
 	for _, id := range sections {
 		var b bytes.Buffer
@@ -130,7 +130,7 @@ func html(t testing.TB, d *desk.Desk, s *desk.Snapshot, known bool) string {
 		parts[id] = template.HTML(b.String())
 	}
 	var b bytes.Buffer
-	if err := templates.ExecuteTemplate(&b, "page", view{Title: titleOf(d), Path: v.Path, Parts: parts, Known: known, Forms: formsOf(d, s)}); err != nil {
+	if err := templates.ExecuteTemplate(&b, "page", view{Title: answer.TitleOf(d), Path: v.Path, Parts: parts, Known: known, Forms: formsOf(d, s)}); err != nil {
 		t.Fatal(err)
 	}
 	return b.String()

@@ -7,6 +7,7 @@ import (
 	"regexp"
 	"sync"
 
+	"gaugelog/ingest/answer"
 	"gaugelog/ingest/desk"
 )
 
@@ -31,6 +32,14 @@ func newPage(d *desk.Desk) *page { return &page{desk: d, once: newOnceOnly()} }
 
 func (p *page) path() string { return "/r/" + p.desk.Name() + "/" }
 
+// sectionView is what the sections are rendered from.
+type sectionView struct {
+	answer.View
+	Known bool
+	Path  string
+	Plots template.HTML
+}
+
 // view is what the whole page is rendered from.
 type view struct {
 	Title, Specimen, Path string
@@ -51,16 +60,9 @@ func (s *Server) show(w http.ResponseWriter, r *http.Request, p *page) {
 	}
 	rig := p.desk.Rig()
 	s.render(w, http.StatusOK, "page", view{
-		Title: titleOf(p.desk), Specimen: rig.Specimen.Name, Path: p.path(), Parts: parts, Known: known,
+		Title: answer.TitleOf(p.desk), Specimen: rig.Specimen.Name, Path: p.path(), Parts: parts, Known: known,
 		Done: doneText(r.URL.Query().Get("done")), Forms: formsOf(p.desk, p.desk.Snapshot()),
 	})
-}
-
-func titleOf(d *desk.Desk) string {
-	if t := d.Rig().Title; t != "" {
-		return t
-	}
-	return d.Rig().Specimen.Name
 }
 
 var markID = regexp.MustCompile(`^m[0-9]{1,9}$`)
@@ -96,8 +98,7 @@ func (p *page) render(known bool) (map[string]template.HTML, error) {
 	if p.parts[i] != nil {
 		return p.parts[i], nil
 	}
-	v := words(p.desk, s)
-	v.Known, v.Plots, v.Path = known, p.plots, p.path()
+	v := sectionView{answer.Of(p.desk, s), known, p.path(), p.plots}
 	parts := map[string]template.HTML{}
 	for _, id := range sections {
 		var b bytes.Buffer
@@ -124,4 +125,15 @@ func (p *page) changes(last map[string]string, known bool) []change {
 		}
 	}
 	return out
+}
+
+// brief is a run in the list of runs.
+type brief struct {
+	Path, Title   string
+	Banner, Alive answer.Answer
+}
+
+func (p *page) brief() brief {
+	banner, alive := answer.Brief(p.desk)
+	return brief{p.path(), answer.TitleOf(p.desk), banner, alive}
 }

@@ -1,0 +1,94 @@
+package answer
+
+import (
+	"fmt"
+	"strings"
+	"time"
+
+	"gaugelog/ingest/alarm"
+	"gaugelog/ingest/desk"
+)
+
+// AlarmRow is one alarm of the list. Seen and Over are empty until it was seen,
+// and until it has ended.
+type AlarmRow struct {
+	ID     int    `json:"id"`
+	Tone   Tone   `json:"tone"`
+	Cause  string `json:"cause"`
+	Text   string `json:"text"`
+	Advice string `json:"advice"`
+	Raised string `json:"raised"`
+	Seen   string `json:"seen,omitempty"`
+	Over   string `json:"over,omitempty"`
+}
+
+func (w speaker) alarm(a alarm.Alarm) AlarmRow {
+	r := AlarmRow{ID: a.ID, Tone: ToneOf(a.Level), Cause: strings.ReplaceAll(a.Cause, "-", " "), Text: subject(a) + a.Text, Advice: a.Advice, Raised: w.day(a.Raised)}
+	if !a.Seen.IsZero() {
+		r.Seen = w.day(a.Seen)
+		if a.SeenBy != "" {
+			r.Seen += " by " + a.SeenBy
+		}
+	}
+	if !a.Over.IsZero() {
+		r.Over = w.day(a.Over)
+	}
+	return r
+}
+
+// oldSync is when the last completed sync is called old.
+const oldSync = time.Minute
+
+func (w speaker) machine() []Fact {
+	s := w.s.Status
+	sync := Fact{"Last sync to disk", desk.Span(s.SyncAge) + " ago", Normal}
+	if s.SyncAge > oldSync {
+		sync.Tone = Abnormal
+	}
+	disk := Fact{"Disk", "free space not known", Unknown}
+	if s.DiskFree >= 0 {
+		disk.Value, disk.Tone = desk.Bytes(s.DiskFree)+" free", Normal
+	}
+	if w.raised("disk") {
+		disk.Tone = Abnormal
+	}
+	if s.Fault != "" {
+		disk.Value, disk.Tone = s.Fault, Abnormal
+	}
+	clock := Fact{"Clock", "kept by a time source", Normal}
+	if !s.ClockSynchronised {
+		clock.Value, clock.Tone = "not kept by a time source", Abnormal
+	}
+	stored := Fact{"Readings kept", fmt.Sprintf("%s since this start", count(s.Stored)), Normal}
+	if s.Dropped > 0 {
+		stored.Value += fmt.Sprintf(", %s lost for want of room", count(s.Dropped))
+		stored.Tone = Abnormal
+	}
+	out := []Fact{sync, disk, clock, stored}
+	if s.Waiting > 0 {
+		out = append(out, Fact{"Waiting for the disk", count(int64(s.Waiting)) + " readings", Normal})
+	}
+	if m := w.lastMark(); m != nil {
+		out = append(out, Fact{"Last mark", MarkWords(*m) + ", " + w.day(time.Unix(0, m.Time)), Tone{}})
+	}
+	if w.s.Rebuilding {
+		out = append(out, Fact{"Plots", "earlier readings are still being read", Unknown})
+	}
+	return out
+}
+
+// count prints a whole number with thin spaces between thousands.
+func count(n int64) string {
+	s := fmt.Sprint(n)
+	if len(s) < 5 {
+		return s
+	}
+	var b strings.Builder
+	for i, c := range s {
+		if i > 0 && (len(s)-i)%3 == 0 {
+			b.WriteRune('\u202f')
+		}
+		b.WriteRune(c)
+	}
+	return b.String()
+}
