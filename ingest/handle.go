@@ -49,7 +49,7 @@ func (r *Recorder) reading(d *device.Reading) error {
 		}
 		r.portEvent(kind, d)
 	case device.FramesRefused:
-		r.refused(d)
+		r.happened(Happening{Kind: FramesRefused, Gauge: r.onlyOn(d.Port), N: int64(d.N), Detail: d.Port + ": " + d.Detail})
 	case device.UnitKey:
 		r.happened(Happening{Kind: UnitKey, Gauge: d.Gauge, Detail: "the gauge now shows " + d.Unit})
 	}
@@ -212,13 +212,10 @@ func (r *Recorder) portEvent(kind string, d *device.Reading) {
 		detail += ": " + d.Detail
 	}
 	told := false
-	for i, c := range r.channels {
-		if c.port != d.Port || d.Port == "" {
-			continue
-		}
-		told = true
-		if r.silences[i].portMoved(d, r.now) {
+	for _, c := range r.channels {
+		if c.port == d.Port && d.Port != "" {
 			r.happened(Happening{Kind: kind, Gauge: c.name, Detail: detail})
+			told = true
 		}
 	}
 	if !told {
