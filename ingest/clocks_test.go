@@ -74,11 +74,11 @@ func TestTwoPowerCutsAndAClockSetLate(t *testing.T) {
 						must(t, err)
 					}
 				}
-				must(t, r.flushSync())
 				if r.writer != nil {
-					r.writer.stop()
+					r.settle(r.writer.stop())
 				}
-				r.sealer.finish()
+				must(t, r.flushSync())
+				must(t, r.sealer.finish())
 				if i < len(lives)-1 {
 					disk = disk.Crash(rng, false)
 				}
