@@ -63,6 +63,35 @@ func FromSamples(g Given) (*History, error) {
 	return h, nil
 }
 
+// FromSource returns a History of readings that src holds or makes up as they
+// are asked for: for simulations too long to be kept in memory. Samples and
+// Ambient of g do not count. First, last and the numbers of readings are those
+// of the source's bins.
+func FromSource(g Given, src Source) *History {
+	h := &History{Rig: g.Rig, Amendments: g.Amendments, Events: g.Events, source: src, GaugeReadings: make([]int64, len(g.Rig.Gauges))}
+	h.Marks = slices.Clone(g.Marks)
+	sort.SliceStable(h.Marks, func(i, j int) bool { return h.Marks[i].Time < h.Marks[j].Time })
+	for i := range g.Rig.Gauges {
+		bins := src.Bins(i)
+		if len(bins) == 0 {
+			continue
+		}
+		for _, b := range bins {
+			h.GaugeReadings[i] += int64(b.N)
+		}
+		first, last := bins[0].FirstTime, bins[len(bins)-1].LastTime
+		if h.Readings == 0 || first < h.First {
+			h.First = first
+		}
+		if h.Readings == 0 || last > h.Last {
+			h.Last = last
+		}
+		h.Readings += h.GaugeReadings[i]
+	}
+	h.Gaps = neighbourGaps(h)
+	return h
+}
+
 func notMultiple(g config.Gauge) Note {
 	return Note{Code: "not-a-multiple", Gauge: g.Name, Text: fmt.Sprintf(
 		"indications of gauge %s are no multiples of its resolution of %g mm; medians are exact to a nanometre all the same, but check the resolution in the rig file", g.Name, g.Resolution.Value)}

@@ -11,8 +11,13 @@ import (
 // perDecade is how many cells of a track a decade of time after full load has.
 const perDecade = 40
 
-// mostPoints bounds a track's evenly spaced part.
-const mostPoints = 1400
+// A track's evenly spaced part has at most about mostPoints cells, none of
+// them of fewer than wideBins bins: so that medians of bins tell it and no
+// reading is read back again.
+const (
+	mostPoints = 1400
+	wideBins   = 4
+)
 
 // tracks builds every gauge's corrected history.
 func (r *run) tracks() error {
@@ -86,11 +91,11 @@ func (r *run) stepCells(k int) ([][]point, error) {
 	s := r.out.Steps[k]
 	width := history.BinWidth(r.h.First, r.h.Last)
 	edges := r.edges(k)
-	// From here on every cell holds at least four bins. The zero step's cells
+	// From here on every cell holds at least that many bins. The zero step's cells
 	// narrow towards its end, the others' towards their beginning.
 	split := len(edges) - 1
 	if s.Full != 0 {
-		for split > 0 && edges[split]-edges[split-1] >= 4*width {
+		for split > 0 && edges[split]-edges[split-1] >= wideBins*width {
 			split--
 		}
 		fine, err := r.fineCells(edges[:split+1])
@@ -103,7 +108,7 @@ func (r *run) stepCells(k int) ([][]point, error) {
 		return fine, nil
 	}
 	first := 0
-	for first < len(edges)-1 && edges[first+1]-edges[first] >= 4*width {
+	for first < len(edges)-1 && edges[first+1]-edges[first] >= wideBins*width {
 		first++
 	}
 	fine, err := r.fineCells(edges[first:])
@@ -119,7 +124,7 @@ func (r *run) stepCells(k int) ([][]point, error) {
 // edges are the limits of a step's cells.
 func (r *run) edges(k int) []int64 {
 	s := r.out.Steps[k]
-	widest := max((r.h.Last-r.h.First)/mostPoints, second)
+	widest := max((r.h.Last-r.h.First)/mostPoints, wideBins*history.BinWidth(r.h.First, r.h.Last))
 	least := max(nanos(r.spacing(max(s.Full, s.From))), second)
 	end := s.To
 	if k == len(r.out.Steps)-1 {
@@ -153,6 +158,10 @@ func spread(length, least, widest int64) []int64 {
 		out = append(out, d)
 		next := int64(float64(d) * math.Pow(10, 1.0/perDecade))
 		d = min(max(next, d+least), d+max(widest, least))
+	}
+	// What is left over is no cell of its own.
+	if n := len(out); n > 2 && length-out[n-1] < out[n-1]-out[n-2] {
+		out = out[:n-1]
 	}
 	return append(out, length)
 }
