@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"regexp"
 	"slices"
+	"strconv"
 	"strings"
 
 	"gaugelog/config"
@@ -39,7 +40,7 @@ func side(p *Proposal, split []parts, front bool) string {
 			unit = true
 			continue
 		}
-		s.WriteString(tokenPattern(p, seen, front, len(rows)))
+		s.WriteString(tokenPattern(p, seen, front, front && k == 0, len(rows)))
 	}
 	if !front && !unit {
 		assumeUnit(p, split)
@@ -87,15 +88,19 @@ func assumeUnit(p *Proposal, split []parts) {
 }
 
 // tokenPattern is the grammar of one token with the texts seen in its place.
-func tokenPattern(p *Proposal, seen []string, front bool, frames int) string {
+// opens is that of a frame's first one.
+func tokenPattern(p *Proposal, seen []string, front, opens bool, frames int) string {
 	if len(seen) == 1 {
 		if kindOf(seen[0]) == 'd' && front {
 			p.unsure("%q stands before the number in every frame: fixed text, or a channel number if more instruments share the line", seen[0])
 		}
+		if kindOf(seen[0]) == 'l' && len(seen[0]) == 1 && !opens {
+			p.unsure("%q stands in every frame: fixed text, or a status letter: then write (?P<status>[%s]) in its place, with all letters the manual lists, and add statuses: with their meanings", seen[0], seen[0])
+		}
 		return regexp.QuoteMeta(seen[0])
 	}
 	class := classOf(seen)
-	if front && kindOf(seen[0]) != 'b' && kindOf(seen[0]) != 'o' && len(seen) <= 32 && len(seen)*2 <= frames && !slices.Contains(p.groups, "channel") {
+	if front && (kindOf(seen[0]) == 'd' || kindOf(seen[0]) == 'l' && opens) && len(seen) <= 32 && len(seen)*2 <= frames && !slices.Contains(p.groups, "channel") {
 		p.groups = append(p.groups, "channel")
 		p.unsure("%s stand before the number by turns: taken as the channels of instruments on one line", strings.Join(seen, ", "))
 		return "(?P<channel>" + class + ")"
@@ -103,10 +108,53 @@ func tokenPattern(p *Proposal, seen []string, front bool, frames int) string {
 	if kindOf(seen[0]) == 'b' {
 		return class
 	}
+	return otherGroup(p, seen, class)
+}
+
+// otherGroup is a group for texts that stand in one place by turns, of a
+// meaning unknown.
+func otherGroup(p *Proposal, seen []string, class string) string {
 	name := fmt.Sprintf("other%d", len(p.groups)+1)
 	p.groups = append(p.groups, name)
-	p.unsure("%s stand in one place by turns: if they are a status, call the group status and add statuses: with their meanings", strings.Join(seen[:min(len(seen), 6)], ", "))
+	quoted := make([]string, min(len(seen), 6))
+	for i := range quoted {
+		quoted[i] = strconv.Quote(seen[i])
+	}
+	p.unsure("%s stand in one place by turns: if they are a status, call the group status in place of %s and add statuses: with their meanings", strings.Join(quoted, ", "), name)
 	return "(?P<" + name + ">" + class + ")"
+}
+
+// lastMark takes the last character off bodies of one length where it is a
+// mark that is no letter or digit in some (such as a blank or an exclamation
+// mark); pattern is its group, "" where there is none.
+func lastMark(p *Proposal, bodies []string) (pattern string, cut []string) {
+	var seen []string
+	other := false
+	for _, b := range bodies {
+		if b == "" || len(b) != len(bodies[0]) || kindOf(b[len(b)-1:]) == 'd' {
+			return "", bodies
+		}
+		last := b[len(b)-1:]
+		other = other || kindOf(last) != 'l'
+		if !slices.Contains(seen, last) {
+			seen = append(seen, last)
+		}
+	}
+	if len(seen) < 2 || len(seen) > 6 || !other {
+		return "", bodies
+	}
+	slices.Sort(seen)
+	for _, b := range bodies {
+		cut = append(cut, b[:len(b)-1])
+	}
+	class := ""
+	for _, s := range seen {
+		if strings.Contains(`\]^-[`, s) {
+			s = `\` + s
+		}
+		class += s
+	}
+	return otherGroup(p, seen, "["+class+"]"), cut
 }
 
 // classOf is the character class and width that covers the texts.

@@ -50,6 +50,9 @@ func modbus(c Capture) (Proposal, bool) {
 		p.unsure("one count is taken as 0.001 mm: compare with the display")
 	}
 	p.unsure("whether register %d is the one that holds the indication, and in mm: see the manual's table", m.Register)
+	if used := map[bool]int{true: 1, false: 2}[strings.HasSuffix(m.Type, "16")]; count > used {
+		p.unsure("%d more registers were read (% X): if one holds status bits, add status: with its number and status_bits: with their meanings", count-used, registers[2*used:])
+	}
 	p.Frame.Modbus = m
 	p.Frame.Line = c.Line
 	if c.Line != (config.Line{}) {
@@ -114,7 +117,7 @@ func scpi(c Capture) (Proposal, bool) {
 	for _, l := range list {
 		if scpiNumber.Match(l.body) {
 			p.Frames++
-			if len(p.Values) < 5 {
+			if len(p.Values) < shownValues {
 				p.Values = append(p.Values, string(l.body))
 			}
 		}
@@ -147,4 +150,12 @@ func escape(p []byte) string {
 		}
 	}
 	return s.String()
+}
+
+// ModbusRead is the request to read count registers (function 3 or 4) from
+// first on at a bus address (MODBUS Application Protocol V1.1b3, 6.3 and 6.4).
+func ModbusRead(address, function byte, first, count uint16) []byte {
+	p := []byte{address, function, byte(first >> 8), byte(first), byte(count >> 8), byte(count)}
+	crc := frame.CRC16(p)
+	return append(p, byte(crc), byte(crc>>8))
 }

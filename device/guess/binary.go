@@ -1,14 +1,12 @@
 package guess
 
 import (
-	"bytes"
 	"encoding/hex"
 	"slices"
 	"strings"
 	"time"
 
 	"gaugelog/config"
-	"gaugelog/device/frame"
 )
 
 // leastBinary is the number of frames a binary proposal stands on at least.
@@ -19,13 +17,13 @@ func fixed(c Capture) (Proposal, bool) {
 	if printable(c.Bytes()) > 0.9 {
 		return Proposal{}, false
 	}
-	rows, byPause := fixedRows(c)
+	rows, total, byPause := fixedRows(c)
 	if len(rows) < leastBinary {
 		return Proposal{}, false
 	}
 	n := len(rows[0].body)
 	p := Proposal{Frame: config.Frame{Kind: "binary", Unit: "mm"}, Frames: len(rows)}
-	p.Share = float64(len(rows)*n) / float64(len(c.Bytes()))
+	p.Share = min(1, float64(len(rows)*n)/float64(total))
 	if p.Share < LeastShare {
 		return p, false
 	}
@@ -34,7 +32,20 @@ func fixed(c Capture) (Proposal, bool) {
 	} else {
 		p.unsure("%d bytes a frame, found by what repeats; no pauses show where a frame begins", n)
 	}
-	end := sumAtEnd(&p, rows)
+	p.rank = p.Share
+	end := n
+	if t, ok := findTailSum(rows); ok {
+		at := t.at - n
+		p.Frame.Checksum = &config.Checksum{Kind: t.kind, At: &at, Order: t.order}
+		if t.from > 0 {
+			p.Frame.Checksum.From = &t.from
+		}
+		p.sure("byte %d begins a checksum (%s of the bytes from %d on): it holds in %d frames", t.at, t.kind, t.from, len(rows))
+		end = t.at
+		p.rank += 3 // at a wrong speed no sum holds
+	} else {
+		p.unsure("no checksum was found in the last bytes")
+	}
 	varies := varying(rows)
 	first, last := slices.Index(varies[:end], true), lastTrue(varies[:end])
 	if first < 0 {
@@ -50,37 +61,130 @@ func fixed(c Capture) (Proposal, bool) {
 	} else {
 		p.unsure("no fixed first bytes were found: a lost byte would shift every value")
 	}
+	p.Frame.Binary = layout
+	last = flagBits(&p, layout, rows, first, last)
 	place(&p, layout, rows, sync, first, last, end)
 	scale, err := config.ParseNumber("0.001")
 	if err != nil {
 		panic(err)
 	}
 	layout.Scale = &scale
-	p.unsure("one count is taken as 0.001 mm, and no bit as a flag: compare with the display at two places, one below zero")
-	p.Frame.Binary = layout
+	p.unsure("one count is taken as 0.001 mm: compare with the display at two places, one below zero")
 	var starts []time.Duration
 	for _, r := range rows {
 		starts = append(starts, r.at)
 	}
 	pace(&p, c, starts)
-	p.rank = p.Share
 	return p, true
 }
 
-// place finds where the value stands and which of its bytes counts least: the
-// one that takes the most different values.
-func place(p *Proposal, l *config.Binary, rows []piece, sync, first, last, end int) {
-	kinds := func(i int) int {
-		seen := map[byte]bool{}
-		for _, r := range rows {
-			seen[r.body[i]] = true
+// flagBits takes a last moving byte in which few bits change for flags, and
+// returns the last byte of the value then. A bit without which the value jumps
+// where it passes zero is its sign.
+func flagBits(p *Proposal, l *config.Binary, rows []piece, first, last int) int {
+	var seen []byte
+	changed := byte(0)
+	for _, r := range rows {
+		b := r.body[last]
+		changed |= b ^ rows[0].body[last]
+		if !slices.Contains(seen, b) {
+			seen = append(seen, b)
 		}
-		return len(seen)
 	}
+	busy := 0
+	for i := first; i < last; i++ {
+		busy = max(busy, kindsIn(rows, i))
+	}
+	if last-first < 1 || ones(changed) > 3 || len(seen) > 4 || busy < 2*len(seen) {
+		return last
+	}
+	names := []string{}
+	for bit := range 8 {
+		if changed>>bit&1 == 0 {
+			continue
+		}
+		if l.Flags == nil && signBit(rows, first, last-1, last, bit) {
+			l.Flags = append(l.Flags, config.Flag{Byte: last, Bit: bit, Means: "negative"})
+			l.Type = "unsigned"
+			p.unsure("bit %d of byte %d is taken as the minus: with it the value passes zero without a jump", bit, last)
+			continue
+		}
+		names = append(names, string(rune('0'+bit)))
+	}
+	if len(names) > 0 {
+		p.unsure("byte %d has few values: taken as flags, of which bit %s changed: add flags: with what the manual says they mean", last, strings.Join(names, " and "))
+	}
+	return last - 1
+}
+
+// signBit tells whether a bit makes the moving bytes a smooth course through
+// zero: without their sign the values turn back there, so that their second
+// differences grow.
+func signBit(rows []piece, first, last, flags, bit int) bool {
+	rough := func(signed bool) (sum float64) {
+		var v [3]float64
+		for i, r := range rows {
+			now := magnitude(r.body[first:last+1], littleEnd(rows, first, last))
+			if signed && r.body[flags]>>bit&1 == 1 {
+				now = -now
+			}
+			v[0], v[1], v[2] = v[1], v[2], now
+			if d := v[2] - 2*v[1] + v[0]; i >= 2 {
+				sum += d * d
+			}
+		}
+		return sum
+	}
+	return rough(true) < 0.9*rough(false)
+}
+
+// magnitude is the whole number that bytes make.
+func magnitude(p []byte, little bool) (v float64) {
+	for i := range p {
+		b := p[i]
+		if little {
+			b = p[len(p)-1-i]
+		}
+		v = v*256 + float64(b)
+	}
+	return v
+}
+
+// littleEnd tells which end of the value moves more: the byte that takes the
+// most different values counts least.
+func littleEnd(rows []piece, first, last int) bool {
+	return kindsIn(rows, first) > kindsIn(rows, last)
+}
+
+// kindsIn is the number of different values byte i takes.
+func kindsIn(rows []piece, i int) int {
+	seen := map[byte]bool{}
+	for _, r := range rows {
+		seen[r.body[i]] = true
+	}
+	return len(seen)
+}
+
+// place finds where the value stands and which of its bytes counts least.
+func place(p *Proposal, l *config.Binary, rows []piece, sync, first, last, end int) {
 	l.Order = "big"
-	if kinds(first) > kinds(last) {
+	if littleEnd(rows, first, last) {
 		l.Order = "little"
 	}
+	if l.Flags != nil { // all between the header and the flags is the magnitude
+		if w := last + 1 - sync; l.Order == "big" && w <= 4 {
+			first = sync
+		}
+		l.Offset, l.Width = first, min(last+1-first, 4)
+	} else {
+		widen(l, sync, first, last, end)
+	}
+	p.unsure("bytes %d to %d move: taken as a number (%s) of %d bytes from byte %d, the %s end first", first, last, l.Type, l.Width, l.Offset, l.Order)
+}
+
+// widen takes the moving bytes and the still ones beside them to a width that
+// numbers commonly have.
+func widen(l *config.Binary, sync, first, last, end int) {
 	for _, width := range []int{2, 4, 8} {
 		if last-first+1 > width {
 			continue
@@ -97,130 +201,4 @@ func place(p *Proposal, l *config.Binary, rows []piece, sync, first, last, end i
 	if l.Offset+l.Width > end || l.Width == 0 { // odd room: take what there is
 		l.Offset, l.Width = first, min(last-first+1, 3)
 	}
-	p.unsure("bytes %d to %d move: taken as a signed number of %d bytes from byte %d, the %s end first", first, last, l.Width, l.Offset, l.Order)
-}
-
-// fixedRows cuts a capture into frames of one length: by pauses, or else by
-// the period after which fixed bytes come again.
-func fixedRows(c Capture) (rows []piece, byPause bool) {
-	list := bursts(c)
-	count := map[int]int{}
-	best := 0
-	for _, l := range list {
-		if count[len(l.body)]++; count[len(l.body)] > count[best] {
-			best = len(l.body)
-		}
-	}
-	if best >= 3 && best <= 64 && count[best] >= leastBinary && count[best]*10 >= len(list)*8 {
-		return slices.DeleteFunc(list, func(l piece) bool { return len(l.body) != best }), true
-	}
-	all := c.Bytes()
-	for n := 3; n <= 64 && n*leastBinary <= len(all); n++ {
-		if at, ok := phase(all, n); ok {
-			for i := at; i+n <= len(all); i += n {
-				rows = append(rows, piece{arrival(c, i), all[i : i+n]})
-			}
-			return rows, false
-		}
-	}
-	return nil, false
-}
-
-// phase finds where in a period of n bytes the fixed bytes begin; false where
-// none are fixed, or all are.
-func phase(p []byte, n int) (int, bool) {
-	steady := make([]bool, n)
-	some, others := false, false
-	for k := range n {
-		steady[k] = true
-		for i := k + n; i < len(p); i += n {
-			steady[k] = steady[k] && p[i] == p[k]
-		}
-		some, others = some || steady[k], others || !steady[k]
-	}
-	if !some || !others {
-		return 0, false
-	}
-	best, at := 0, 0
-	for k := range n {
-		run := 0
-		for run < n && steady[(k+run)%n] {
-			run++
-		}
-		if run > best {
-			best, at = run, k
-		}
-	}
-	return at, true
-}
-
-func varying(rows []piece) []bool {
-	v := make([]bool, len(rows[0].body))
-	for _, r := range rows {
-		for i, b := range r.body {
-			v[i] = v[i] || b != rows[0].body[i]
-		}
-	}
-	return v
-}
-
-func lastTrue(v []bool) int {
-	for i := len(v) - 1; i >= 0; i-- {
-		if v[i] {
-			return i
-		}
-	}
-	return -1
-}
-
-// sumAtEnd looks for a checksum in the last byte or two and returns where the
-// bytes before it end.
-func sumAtEnd(p *Proposal, rows []piece) int {
-	n := len(rows[0].body)
-	for _, kind := range []string{"crc16", "sum8", "xor8", "twos-complement"} {
-		size := 1
-		if kind == "crc16" {
-			size = 2
-		}
-		for _, from := range []int{0, 1, 2} {
-			for _, order := range []string{"", "high-first"} {
-				if order != "" && kind != "crc16" || from >= n-size {
-					continue
-				}
-				if !holds(rows, kind, order, from, size) {
-					continue
-				}
-				at := -size
-				p.Frame.Checksum = &config.Checksum{Kind: kind, At: &at, Order: order}
-				if from > 0 {
-					p.Frame.Checksum.From = &from
-				}
-				p.sure("the last %d bytes are a checksum (%s, from byte %d): it holds in all %d frames", size, kind, from, len(rows))
-				return n - size
-			}
-		}
-	}
-	p.unsure("no checksum was found in the last bytes")
-	return n
-}
-
-func holds(rows []piece, kind, order string, from, size int) bool {
-	different := map[string]bool{}
-	for _, r := range rows {
-		body, sum := r.body[from:len(r.body)-size], r.body[len(r.body)-size:]
-		want, _ := hex.DecodeString(sumOf(body, kind, order))
-		if !bytes.Equal(want, sum) {
-			return false
-		}
-		different[string(body)] = true
-	}
-	return len(different) >= leastSums
-}
-
-// ModbusRead is the request to read count registers (function 3 or 4) from
-// first on at a bus address (MODBUS Application Protocol V1.1b3, 6.3 and 6.4).
-func ModbusRead(address, function byte, first, count uint16) []byte {
-	p := []byte{address, function, byte(first >> 8), byte(first), byte(count >> 8), byte(count)}
-	crc := frame.CRC16(p)
-	return append(p, byte(crc), byte(crc>>8))
 }

@@ -8,6 +8,8 @@ import (
 	"time"
 
 	"gaugelog/config"
+	"gaugelog/device"
+	"gaugelog/device/frame"
 )
 
 // Chunk is what one read of a port gave.
@@ -43,8 +45,8 @@ type Proposal struct {
 	// bytes that they hold, 0..1.
 	Frames int
 	Share  float64
-	// Values are the first few values read, as text; nil where the kind was
-	// not decoded here.
+	// Values are the first few values read, as text; nil where none was read
+	// (a Modbus answer is judged by its registers).
 	Values []string
 	// rank puts the likelier first.
 	rank float64
@@ -69,7 +71,7 @@ const LeastShare = 0.7
 func Propose(captures ...Capture) []Proposal {
 	var out []Proposal
 	for _, c := range captures {
-		if len(c.Bytes()) == 0 {
+		if len(c.Bytes()) == 0 || string(c.Request) == Identify {
 			continue
 		}
 		if len(c.Request) > 0 {
@@ -86,10 +88,16 @@ func Propose(captures ...Capture) []Proposal {
 			}
 			p.Frame.Line = c.Line
 			lineOf(&p, c, lineWords)
+			if p.Values == nil {
+				p.Values = read(p.Frame, c)
+			}
 			out = append(out, p)
 		}
 	}
 	slices.SortStableFunc(out, func(a, b Proposal) int { return cmp.Compare(b.rank, a.rank) })
+	// What is far less likely than the best is no help: rubbish at another
+	// speed nearly always looks like something.
+	out = slices.DeleteFunc(out, func(p Proposal) bool { return p.rank*2 < out[0].rank })
 	for i := range out {
 		if out[i].Frame.Name == "" {
 			out[i].Frame.Name = "proposed"
@@ -97,6 +105,39 @@ func Propose(captures ...Capture) []Proposal {
 	}
 	return out
 }
+
+// shownValues is the number of values read that a proposal shows.
+const shownValues = 5
+
+// read lets the frame package read a capture by a proposal, pauses and all,
+// and returns the first values as text: what the display can be compared with.
+func read(f config.Frame, c Capture) (values []string) {
+	o, err := device.FrameOptions(f, "")
+	if err != nil {
+		return nil // a proposal that lacks something only the manual says
+	}
+	d, err := frame.New(o)
+	if err != nil {
+		return nil
+	}
+	take := func(f *frame.Frame) {
+		if f.Rejected == frame.None && f.HasValue && len(values) < shownValues {
+			values = append(values, f.Value.String()+" "+f.Unit.String())
+		}
+	}
+	for i, k := range c.Chunks {
+		if i > 0 && k.At-c.Chunks[i-1].At > 50*time.Millisecond {
+			d.Quiet(take)
+		}
+		d.Feed(k.Bytes, take)
+	}
+	d.Quiet(take)
+	return values
+}
+
+// Identify is the SCPI question who it is (IEEE 488.2, 10.14). Its answer
+// tells that the instrument speaks SCPI, and is no indication.
+const Identify = "*IDN?\n"
 
 // UsualLines returns the line settings worth trying, in the order of their use
 // (common practice). Seven data bits need no try of their own: read as eight
@@ -123,6 +164,8 @@ func UsualRequests() []Request {
 		{[]byte("?\r"), "a question mark and CR"},
 		{[]byte("?\r\n"), "a question mark and CR LF"},
 		{[]byte("\r"), "CR alone"},
+		{[]byte("\x05"), "ENQ"},
+		{[]byte(Identify), "the SCPI query *IDN? (who are you)"},
 		{[]byte("READ?\n"), "the SCPI query READ?"},
 		{[]byte("P\r\n"), "the letter P (print) and CR LF"},
 		{[]byte("D\r\n"), "the letter D (data) and CR LF"},

@@ -30,6 +30,7 @@ func text(c Capture) (Proposal, bool) {
 	}
 	sum, bodies := findSum(string(start), bodies)
 	summed := len(bodies)
+	mark, bodies := lastMark(&p, bodies)
 	split, odd := takeApart(bodies)
 	if len(split) == 0 {
 		return Proposal{}, false
@@ -39,7 +40,7 @@ func text(c Capture) (Proposal, bool) {
 	around[1] = side(&p, split, false)
 	around[0] += leadBlanks(split)
 	number := numberPattern(&p, split)
-	p.Frame.Pattern = around[0] + "(?P<value>" + number + ")" + around[1]
+	p.Frame.Pattern = around[0] + "(?P<value>" + number + ")" + around[1] + mark
 	if sum != nil {
 		p.Frame.Pattern += sum.pattern
 		p.Frame.Checksum = &sum.checksum
@@ -172,9 +173,18 @@ func numberPattern(p *Proposal, split []parts) string {
 		zeros = zeros || len(q.digits) > 1 && q.digits[0] == '0'
 	}
 	var s strings.Builder
-	s.WriteString(signPattern(p, leads))
 	lo, hi := slices.Min(wide), slices.Max(wide)
+	field, padded := fieldWidth(split)
+	if !padded {
+		s.WriteString(signPattern(p, leads))
+	}
 	switch {
+	case padded:
+		fmt.Fprintf(&s, `[ \d+-]{%d}`, field)
+		p.sure("%d characters before the point, filled up with blanks", field)
+		if !strings.Contains(strings.Join(leads, ""), "-") {
+			p.unsure("no value below zero was seen: the minus is taken to stand among the blanks before the digits")
+		}
 	case lo == hi && zeros:
 		fmt.Fprintf(&s, `\d{%d}`, hi)
 		p.sure("%d digits before the point, filled up with zeros", hi)
@@ -196,6 +206,20 @@ func numberPattern(p *Proposal, split []parts) string {
 		p.unsure("%d to %d digits behind the point, as seen", lo, hi)
 	}
 	return s.String()
+}
+
+// fieldWidth is the number of characters of a field filled up with blanks in
+// front of the digits: sign, blanks and digits before the point together.
+func fieldWidth(split []parts) (int, bool) {
+	blanks := false
+	n := len(split[0].lead) + len(split[0].digits)
+	for _, q := range split {
+		if len(q.lead)+len(q.digits) != n {
+			return 0, false
+		}
+		blanks = blanks || len(q.lead) > 1 && q.lead[0] == ' '
+	}
+	return n, blanks && len(split) >= 3 && split[0].point != ""
 }
 
 // signPattern writes the grammar of the sign from the leads that were seen.
@@ -261,7 +285,7 @@ func decoded(p *Proposal, c Capture, start, end []byte) bool {
 		}
 		p.Frames++
 		good += f.Size
-		if len(p.Values) < 5 {
+		if len(p.Values) < shownValues {
 			p.Values = append(p.Values, f.Value.String()+" "+f.Unit.String())
 		}
 	})

@@ -191,6 +191,17 @@ func (f kindParts) into(g group) {
 		sub.plain("order", b.Order)
 		sub.plain("type", b.Type)
 		sub.plain("scale", shown(b.Scale))
+		if len(b.Flags) > 0 {
+			list := &yaml.Node{Kind: yaml.SequenceNode, Style: yaml.FlowStyle}
+			for _, f := range b.Flags {
+				flag := newGroup()
+				flag.whole("byte", f.Byte)
+				flag.whole("bit", f.Bit)
+				flag.plain("means", f.Means)
+				list.Content = append(list.Content, flag.n)
+			}
+			sub.node("flags", list)
+		}
 		g.node("binary", sub.n)
 	case f.Modbus != nil:
 		m := f.Modbus
