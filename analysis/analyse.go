@@ -8,6 +8,7 @@ import (
 	"gaugelog/analysis/history"
 	"gaugelog/analysis/steps"
 	"gaugelog/analysis/stiffness"
+	"gaugelog/config"
 )
 
 // Options chooses what Analyse does.
@@ -16,6 +17,11 @@ type Options struct {
 	Program string
 	// Beyond allows forecasts more than two decades of time beyond the data.
 	Beyond bool
+	// Thorough, if set, is handed what the modulus was worked out from and gives
+	// the check of its uncertainty by drawn inputs, such as
+	// [stiffness.Thorough] with a context and a progress bar. Its error is
+	// Evaluate's.
+	Thorough func(stiffness.Input) (*stiffness.MonteCarlo, error)
 	// Rules is a folder of rule files of the user's own; "": none. Analyse
 	// takes the run's own RulesFolder where it is not set.
 	Rules string
@@ -54,8 +60,16 @@ func Evaluate(h *history.History, o Options) (*Result, error) {
 		Evaluations: []Evaluation{}, Warnings: append(notesOf(h), warningsOf(h.Rig, f)...), Series: seriesOf(h, f),
 	}
 	found := len(r.Warnings)
-	if e := r.addStiffness(h, f, g.Value); e != nil {
+	in := stiffnessInput(h, f, g.Value)
+	if e := r.addStiffness(h.Rig, f, in); e != nil {
 		ei, s = e.Bending.Value, shearOf(e, s)
+		if o.Thorough != nil {
+			mc, err := o.Thorough(in)
+			if err != nil {
+				return nil, fmt.Errorf("checking the modulus's uncertainty by draws: %w", err)
+			}
+			r.Stiffness.MonteCarlo = monteCarloOf(mc)
+		}
 	}
 	if err := r.addCreep(h, f, g.Value, ei, s, rules, o); err != nil {
 		return nil, err
@@ -100,17 +114,17 @@ func notesOf(h *history.History) []Warning {
 }
 
 // addStiffness fits the beam; where that cannot be, a warning says why.
-func (r *Result) addStiffness(h *history.History, f *steps.Findings, gravity float64) *stiffness.Estimate {
-	e, err := stiffness.Compute(stiffnessInput(h, f, gravity))
+func (r *Result) addStiffness(rig *config.Rig, f *steps.Findings, in stiffness.Input) *stiffness.Estimate {
+	e, err := stiffness.Compute(in)
 	if err != nil {
 		r.Warnings = append(r.Warnings, Warning{Code: "no-modulus", Text: fmt.Sprintf("no stiffness: %v", err)})
 		return nil
 	}
-	r.Stiffness = stiffnessOf(h.Rig, e)
+	r.Stiffness = stiffnessOf(rig, e)
 	for _, w := range e.Warnings {
 		r.Warnings = append(r.Warnings, Warning{Code: w.Code, Gauge: w.Gauge, Text: w.Text})
 	}
-	addCurves(r, h.Rig, f, e)
+	addCurves(r, rig, f, e)
 	return e
 }
 

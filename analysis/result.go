@@ -83,66 +83,6 @@ type Largest struct {
 	Sag Q `json:"sag"`
 }
 
-// Stiffness is what the loading part says of the beam.
-type Stiffness struct {
-	Modulus                 *Q                 `json:"modulus,omitempty"`
-	ApparentModulus         *Q                 `json:"apparent_modulus,omitempty"`
-	ShearModulus            *Q                 `json:"shear_modulus,omitempty"`
-	Bending                 *Q                 `json:"bending,omitempty"`
-	Shear                   *Q                 `json:"shear,omitempty"`
-	ShearFrom               string             `json:"shear_from,omitempty"` // "test" | "prior" | "none"
-	Supports                []SupportStiffness `json:"supports"`
-	CorrelationBendingShear *float64           `json:"correlation_bending_shear,omitempty"`
-	StiffnessAt             []StiffnessAt      `json:"stiffness_at"`
-	Fit                     *Fit               `json:"fit,omitempty"`
-	Budget                  []BudgetLine       `json:"budget"`
-	InitialAfterS           float64            `json:"initial_after_s"`
-	Residuals               []Residual         `json:"residuals"`
-}
-
-// SupportStiffness is one support's yielding.
-type SupportStiffness struct {
-	Name       string `json:"name"`
-	Compliance *Q     `json:"compliance,omitempty"` // mm/N
-}
-
-// StiffnessAt is load over sag at one gauge.
-type StiffnessAt struct {
-	Gauge         string `json:"gauge"`
-	Ratio         *Q     `json:"ratio,omitempty"` // N per mm
-	LocalModulus  *Q     `json:"local_modulus,omitempty"`
-	GlobalModulus *Q     `json:"global_modulus,omitempty"`
-}
-
-// Fit says how well the model holds the readings.
-type Fit struct {
-	Chi2 float64 `json:"chi2"`
-	DOF  int     `json:"dof"`
-	P    float64 `json:"p"`
-	// Birge is the factor by which uncertainties were widened; 1 if none.
-	Birge float64 `json:"birge"`
-	// Condition is the condition number of the scaled design.
-	Condition float64 `json:"condition"`
-}
-
-// BudgetLine is one input of the modulus's uncertainty.
-type BudgetLine struct {
-	Input       string  `json:"input"`
-	Type        string  `json:"type"` // "A" | "B"
-	UInput      Q       `json:"u_input"`
-	Sensitivity float64 `json:"sensitivity"` // change of the modulus per unit of the input
-	Share       float64 `json:"share"`       // of the modulus's variance, 0..1
-	Source      string  `json:"source"`
-}
-
-// Residual is reading minus model for one gauge and step, mm.
-type Residual struct {
-	Gauge string  `json:"gauge"`
-	Step  string  `json:"step"`
-	MM    float64 `json:"mm"`
-	U     float64 `json:"u"`
-}
-
 // Creep is how the sag grows under steady load, from the creep step.
 type Creep struct {
 	Gauge         string       `json:"gauge,omitempty"`

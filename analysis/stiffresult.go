@@ -8,6 +8,9 @@ import (
 	"gaugelog/config"
 )
 
+// manyDOF are degrees of freedom that nobody needs to be told.
+const manyDOF = 1e6
+
 // expanded makes a Q with its freedom, coverage factor and U95.
 func expanded(v *stiffness.Quantity, unit string) *Q {
 	if v == nil || math.IsNaN(v.Value) {
@@ -17,7 +20,7 @@ func expanded(v *stiffness.Quantity, unit string) *Q {
 	if q.U != nil && v.K > 0 {
 		k, u95 := v.K, v.U95
 		q.K, q.U95 = &k, &u95
-		if v.DOF > 0 && !math.IsInf(v.DOF, 0) {
+		if v.DOF > 0 && v.DOF < manyDOF {
 			dof := v.DOF
 			q.DOF = &dof
 		}
@@ -29,6 +32,7 @@ func expanded(v *stiffness.Quantity, unit string) *Q {
 func emptyStiffness(rig *config.Rig) Stiffness {
 	return Stiffness{
 		Supports: []SupportStiffness{}, StiffnessAt: []StiffnessAt{}, Budget: []BudgetLine{}, Residuals: []Residual{},
+		Standards: []StandardModulus{}, BendingBudget: []BudgetLine{},
 		InitialAfterS: rig.Read.InitialAfter.Value,
 	}
 }
@@ -41,7 +45,7 @@ func stiffnessOf(rig *config.Rig, e *stiffness.Estimate) Stiffness {
 	s.ShearModulus = expanded(e.ShearModulus, "MPa")
 	s.Bending = expanded(&e.Bending, "N.mm2")
 	s.Shear = expanded(e.Shear, "N")
-	s.ShearFrom = e.ShearFrom
+	s.ShearFrom, s.ShearText = e.ShearFrom, e.ShearWords
 	s.CorrelationBendingShear = e.CorrelationBendingShear
 	for _, p := range e.Supports {
 		s.Supports = append(s.Supports, SupportStiffness{Name: p.Name, Compliance: expanded(p.Compliance, "mm/N")})
@@ -52,17 +56,30 @@ func stiffnessOf(rig *config.Rig, e *stiffness.Estimate) Stiffness {
 			LocalModulus: expanded(g.Local, "MPa"), GlobalModulus: expanded(g.Global, "MPa"),
 		})
 	}
-	s.Fit = &Fit{Chi2: e.Fit.Chi2, DOF: e.Fit.DOF, P: e.Fit.P, Birge: e.Fit.Birge, Condition: e.Fit.Condition}
-	for _, l := range e.Budget {
-		s.Budget = append(s.Budget, BudgetLine{
-			Input: l.Input, Type: l.Type, UInput: quantity(l.U, 0, l.Unit),
-			Sensitivity: l.Sensitivity, Share: l.Share, Source: l.Source,
-		})
+	for _, m := range e.Standards {
+		s.Standards = append(s.Standards, StandardModulus{Standard: m.Standard, Gauge: m.Gauge, Includes: m.Includes, Modulus: *expanded(&m.Modulus, "MPa")})
 	}
+	s.Fit = &Fit{Chi2: e.Fit.Chi2, DOF: e.Fit.DOF, P: e.Fit.P, Birge: e.Fit.Birge, Condition: e.Fit.Condition, Unknowns: e.Unknowns, Correlation: e.Correlation}
+	s.Budget, s.BendingBudget = budgetOf(e.Budget), budgetOf(e.BendingBudget)
 	for _, r := range e.Residuals {
 		s.Residuals = append(s.Residuals, Residual{Gauge: r.Gauge, Step: r.Step, MM: r.MM, U: r.U})
 	}
 	return s
+}
+
+func budgetOf(lines []stiffness.Line) []BudgetLine {
+	out := []BudgetLine{}
+	for _, l := range lines {
+		b := BudgetLine{
+			Input: l.Input, Type: l.Type, Distribution: l.Distribution, UInput: quantity(l.U, 0, l.Unit),
+			Sensitivity: l.Sensitivity, Share: l.Share, Source: l.Source,
+		}
+		if l.DOF > 0 && l.DOF < manyDOF {
+			b.DOF = &l.DOF
+		}
+		out = append(out, b)
+	}
+	return out
 }
 
 // curvePlaces is at how many places the fitted curve is drawn.

@@ -1,9 +1,7 @@
 package report
 
 import (
-	"cmp"
 	"fmt"
-	"slices"
 	"sort"
 	"strings"
 
@@ -151,105 +149,6 @@ func (b *builder) shape() Section {
 		s.Blocks = append(s.Blocks, Paragraph{"No curve was fitted: " + b.whyMissing("modulus") + "."})
 	}
 	return s
-}
-
-// stiffness is the result, its fit and its budget.
-func (b *builder) stiffness() Section {
-	st := b.r.Stiffness
-	s := Section{ID: "stiffness", Title: "Stiffness",
-		Lead: "One weighted least-squares estimate from all gauges and steps, " + span(st.InitialAfterS) + " after full load."}
-	t := Table{Caption: "Stiffness", Columns: []Column{{Name: "Quantity", Text: true}, {Name: "Value", Text: true}}}
-	add := func(name string, q *analysis.Q) {
-		if q != nil {
-			t.Rows = append(t.Rows, []string{name, b.with(q)})
-		}
-	}
-	add("Modulus of elasticity E (shear taken out)", st.Modulus)
-	add("Apparent modulus (bending only, from the creep gauge)", st.ApparentModulus)
-	add("Shear modulus G, "+b.shearWords(), st.ShearModulus)
-	add("Bending stiffness EI", st.Bending)
-	add("Shear stiffness", st.Shear)
-	for _, c := range st.Supports {
-		add("Compliance of support "+c.Name, c.Compliance)
-	}
-	for _, g := range st.StiffnessAt {
-		add("Load over sag at "+g.Gauge, g.Ratio)
-		add("Local modulus at "+g.Gauge, g.LocalModulus)
-		add("Global modulus at "+g.Gauge, g.GlobalModulus)
-	}
-	if len(t.Rows) == 0 {
-		s.Lead = ""
-		s.Blocks = append(s.Blocks, Paragraph{"No stiffness was worked out: " + b.whyMissing("modulus") + "."})
-		return s
-	}
-	t.Says = "Intervals are U = k u for 95 % (JCGM 100). E divides EI by the second moment of area measured; the apparent modulus leaves shear in."
-	s.Blocks = append(s.Blocks, t)
-	if f := st.Fit; f != nil {
-		text := fmt.Sprintf("Fit: chi-square %s with %d degrees of freedom (p = %s); condition number %s.",
-			significant(f.Chi2, 3), f.DOF, significant(f.P, 2), significant(f.Condition, 3))
-		if f.Birge > 1 {
-			text += " The uncertainties were widened by " + fixed(f.Birge, 2) + " because the residuals are larger than stated uncertainties allow."
-		}
-		if st.CorrelationBendingShear != nil {
-			text += " Correlation of bending and shear: " + fixed(*st.CorrelationBendingShear, 3) + "."
-		}
-		s.Blocks = append(s.Blocks, Paragraph{text})
-	}
-	s.Blocks = append(s.Blocks, b.fitTables()...)
-	if len(st.Budget) > 0 {
-		s.Blocks = append(s.Blocks, b.budgetTable())
-	}
-	return s
-}
-
-func (b *builder) budgetTable() Table {
-	t := Table{Caption: "Uncertainty budget of E", Columns: []Column{
-		{Name: "Input", Text: true}, {Name: "Type"}, {Name: "Its u", Text: true}, {Name: "Share of variance", Unit: "%"}, {Name: "From", Text: true}}}
-	for _, l := range b.r.Stiffness.Budget {
-		f, unit := b.u.convert(l.UInput.Unit)
-		t.Rows = append(t.Rows, []string{l.Input, l.Type, strings.TrimSpace(significant(l.UInput.Value*f, 2) + " " + unit), fixed(100*l.Share, 1), l.Source})
-	}
-	t.Says = "By the GUM (JCGM 100): the share is each input's part of the variance of E."
-	return t
-}
-
-// fitTables show what the fitted beam leaves over, by step and gauge.
-func (b *builder) fitTables() []Block {
-	rest := b.r.Stiffness.Residuals
-	if len(rest) == 0 {
-		return nil
-	}
-	micro, unit := b.small()
-	var gauges, steps []string
-	cell := map[[2]string]string{}
-	for _, v := range rest {
-		if !slices.Contains(gauges, v.Gauge) {
-			gauges = append(gauges, v.Gauge)
-		}
-		if !slices.Contains(steps, v.Step) {
-			steps = append(steps, v.Step)
-		}
-		d := max(0, decimalsFor(v.U*micro))
-		cell[[2]string{v.Step, v.Gauge}] = fixed(v.MM*micro, d)
-	}
-	var out []Block
-	for from := 0; from < len(gauges); from += mostGauges {
-		part := gauges[from:min(from+mostGauges, len(gauges))]
-		t := Table{Caption: "Reading less fitted beam, " + unit, Columns: []Column{{Name: "Step", Text: true}}}
-		for _, g := range part {
-			t.Columns = append(t.Columns, Column{Name: g})
-		}
-		for _, st := range steps {
-			row := []string{st}
-			for _, g := range part {
-				row = append(row, cmp.Or(cell[[2]string{st, g}], "–"))
-			}
-			t.Rows = append(t.Rows, row)
-		}
-		t.Says = "Of the increments of initial sag, support movement and plunger forces in the model: what one gauge leaves over in every step is its own fault, what all leave over in one step is the load's."
-		out = append(out, t)
-	}
-	return out
 }
 
 // small is the factor from mm to the unit of small deviations, and its name.

@@ -190,7 +190,8 @@ func simple(value, u float64) Quantity {
 	return q
 }
 
-// apparent is the modulus that bending alone would need for the creep gauge.
+// apparent is the modulus that bending alone would need for the creep gauge,
+// from all changes that added load: taking it off again would cancel them.
 func (e *Estimate) apparent() {
 	f := e.fit
 	m := f.m
@@ -202,7 +203,7 @@ func (e *Estimate) apparent() {
 	bent := 0.0
 	none := make([]float64, len(m.rig.Supports))
 	for _, o := range m.rows {
-		if o.gauge != g {
+		if o.gauge != g || m.totalOf(o.step) <= 0 {
 			continue
 		}
 		steps[o.step] = true
@@ -225,12 +226,14 @@ func (e *Estimate) apparent() {
 }
 
 // creepGauge is the gauge named in the rig file, else the beam gauge that
-// sagged most; -1 if it was not read.
+// sagged most as load came on; -1 if it was not read.
 func (m *model) creepGauge() int {
 	best, sag := -1, 0.0
 	sum := make([]float64, len(m.rig.Gauges))
 	for _, o := range m.rows {
-		sum[o.gauge] += o.mm
+		if m.totalOf(o.step) > 0 {
+			sum[o.gauge] += o.mm
+		}
 	}
 	for g, gauge := range m.rig.Gauges {
 		if !m.reads(g) || sees(gauge) != "beam" {

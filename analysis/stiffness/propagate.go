@@ -20,14 +20,17 @@ type Quantity struct {
 
 // Line is one input's part in a figure's uncertainty.
 type Line struct {
-	Input       string
-	Type        string  // "A" | "B"
-	Unit        string  // of the input
-	U           float64 // standard uncertainty of the input, in Unit
-	DOF         float64 // 0 for many
-	Sensitivity float64 // change of the figure per unit of the input
-	Share       float64 // of the figure's variance, 0..1
-	Source      string
+	Input string
+	Type  string // "A" | "B"
+	// Distribution is what the Monte Carlo draws from: "normal", "rectangular"
+	// or "t" (few degrees of freedom).
+	Distribution string
+	Unit         string  // of the input
+	U            float64 // standard uncertainty of the input, in Unit
+	DOF          float64 // 0 for many
+	Sensitivity  float64 // change of the figure per unit of the input
+	Share        float64 // of the figure's variance, 0..1
+	Source       string
 }
 
 // figure is something computed from the unknowns and the state.
@@ -49,7 +52,7 @@ func (f *fitted) propagate(fig figure) (Quantity, []Line) {
 		cs.move(down, -h)
 		s := (fig(f.theta, up) - fig(f.theta, down)) / (2 * h)
 		s -= mat.Dot(&reach, f.jac.ColView(c))
-		lines = append(lines, Line{Input: cs.name, Type: cs.kind, Unit: cs.unit, U: cs.u, DOF: cs.dof, Sensitivity: s, Source: cs.source})
+		lines = append(lines, Line{Input: cs.name, Type: cs.kind, Distribution: cs.distribution(), Unit: cs.unit, U: cs.u, DOF: cs.dof, Sensitivity: s, Source: cs.source})
 	}
 	lines = append(lines, f.priorLines(grad)...)
 	return combine(value, lines)
@@ -64,7 +67,7 @@ func (f *fitted) readingLine(reach *mat.VecDense, u float64) Line {
 		pooled += f.read.At(r, r) / float64(len(f.m.rows))
 	}
 	pooled = math.Sqrt(pooled)
-	l := Line{Input: "readings", Type: "A", Unit: "mm", U: pooled, Sensitivity: u / pooled,
+	l := Line{Input: "readings", Type: "A", Distribution: "normal", Unit: "mm", U: pooled, Sensitivity: u / pooled,
 		Source: "scatter, resolution and stated error of the single increments (pooled; the sensitivity is that of all together)"}
 	if f.birge > 1 {
 		l.DOF, l.Source = float64(f.sol.DOF), l.Source+", widened by the fit's scatter"
@@ -91,7 +94,7 @@ func (f *fitted) priorLines(grad []float64) []Line {
 			s += g * f.sol.Covariance.At(j, p.Column) / (p.U * p.U)
 		}
 		name := f.m.rig.Supports[f.m.yields[p.Column-f.m.firstYield()]].Name
-		out = append(out, Line{Input: "compliance of support " + name, Type: "B", Unit: "mm/N", U: p.U, Sensitivity: s, Source: "stated in the rig file"})
+		out = append(out, Line{Input: "compliance of support " + name, Type: "B", Distribution: "normal", Unit: "mm/N", U: p.U, Sensitivity: s, Source: "stated in the rig file"})
 	}
 	return out
 }

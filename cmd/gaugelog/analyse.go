@@ -1,6 +1,7 @@
 package main
 
 import (
+	"context"
 	"encoding/json"
 	"errors"
 	"fmt"
@@ -14,11 +15,13 @@ import (
 	"gaugelog/analysis"
 	"gaugelog/analysis/history"
 	"gaugelog/analysis/report"
+	"gaugelog/analysis/stiffness"
 	"gaugelog/config"
 )
 
 func analyseCommand() *cobra.Command {
-	var asJSON, beyond bool
+	var asJSON bool
+	var how howToAnalyse
 	var units string
 	c := &cobra.Command{
 		Use:     "analyse RUN",
@@ -34,7 +37,8 @@ analysed up to its last completed sync.`,
 			if units != "si" && units != "us" {
 				return wrongf("give --units si or --units us", "units %q are not known", units)
 			}
-			r, opt, err := readRun(args[0], beyond)
+			how.progress = cmd.ErrOrStderr()
+			r, opt, err := readRun(cmd.Context(), args[0], how)
 			if err != nil {
 				return err
 			}
@@ -48,7 +52,7 @@ analysed up to its last completed sync.`,
 		},
 	}
 	c.Flags().BoolVar(&asJSON, "json", false, "print the whole result as JSON (layout: analysis/schema.json)")
-	c.Flags().BoolVar(&beyond, "beyond", false, "forecast more than two decades of time beyond the data")
+	how.flags(c)
 	c.Flags().StringVar(&units, "units", "si", "units of the text: si or us")
 	return c
 }
@@ -69,9 +73,40 @@ func needRun(dir string) error {
 	return nil
 }
 
+// howToAnalyse is what analyse and report let the user choose.
+type howToAnalyse struct {
+	beyond, thorough bool
+	progress         io.Writer // for a bar, where it is a terminal; may be nil
+}
+
+func (how *howToAnalyse) flags(c *cobra.Command) {
+	c.Flags().BoolVar(&how.beyond, "beyond", false, "forecast more than two decades of time beyond the data")
+	c.Flags().BoolVar(&how.thorough, "thorough", false, "check the modulus's uncertainty by 200 000 draws of all inputs (JCGM 101)")
+}
+
+// draws is the check by draws, nil where it was not asked for.
+func (how howToAnalyse) draws(ctx context.Context) func(stiffness.Input) (*stiffness.MonteCarlo, error) {
+	if !how.thorough {
+		return nil
+	}
+	return func(in stiffness.Input) (*stiffness.MonteCarlo, error) {
+		var bar *progress
+		mc, err := stiffness.Thorough(ctx, in, func(done, total int) {
+			if bar == nil {
+				bar = newProgress(how.progress, "drawing all inputs", int64(total))
+			}
+			bar.at(int64(done))
+		})
+		if bar != nil {
+			bar.done()
+		}
+		return mc, err
+	}
+}
+
 // analyseRun reads and evaluates a run folder, and returns the rig as amended.
-func analyseRun(dir string, beyond bool) (*analysis.Result, *config.Rig, error) {
-	h, r, err := evaluateRun(dir, beyond)
+func analyseRun(ctx context.Context, dir string) (*analysis.Result, *config.Rig, error) {
+	h, r, err := evaluateRun(ctx, dir, howToAnalyse{})
 	if err != nil {
 		return nil, nil, err
 	}
@@ -79,12 +114,17 @@ func analyseRun(dir string, beyond bool) (*analysis.Result, *config.Rig, error) 
 }
 
 // evaluateRun reads and evaluates a run folder.
-func evaluateRun(dir string, beyond bool) (*history.History, *analysis.Result, error) {
+func evaluateRun(ctx context.Context, dir string, how howToAnalyse) (*history.History, *analysis.Result, error) {
 	h, err := history.Load(dir)
 	if err != nil {
 		return nil, nil, wrongInput(err)
 	}
-	r, err := analysis.Evaluate(h, analysis.Options{Program: version(), Beyond: beyond, Rules: filepath.Join(dir, analysis.RulesFolder)})
+	r, err := analysis.Evaluate(h, analysis.Options{
+		Program: version(), Beyond: how.beyond, Thorough: how.draws(ctx), Rules: filepath.Join(dir, analysis.RulesFolder),
+	})
+	if ctx.Err() != nil {
+		return nil, nil, ctx.Err()
+	}
 	if err != nil {
 		return nil, nil, wrongInput(err)
 	}

@@ -1,6 +1,7 @@
 package main
 
 import (
+	"context"
 	"errors"
 	"fmt"
 	"io"
@@ -38,7 +39,7 @@ that plot stand in --json.`,
 			return nil
 		},
 		RunE: func(cmd *cobra.Command, args []string) error {
-			subjects, err := subjectsOf(args)
+			subjects, err := subjectsOf(cmd.Context(), args)
 			if err != nil {
 				return err
 			}
@@ -66,7 +67,7 @@ that plot stand in --json.`,
 }
 
 // subjectsOf analyses the runs; every one that cannot be is told of.
-func subjectsOf(runs []string) ([]compare.Subject, error) {
+func subjectsOf(ctx context.Context, runs []string) ([]compare.Subject, error) {
 	var out []compare.Subject
 	var errs []error
 	for _, run := range runs {
@@ -76,7 +77,7 @@ func subjectsOf(runs []string) ([]compare.Subject, error) {
 		}
 		var r *analysis.Result
 		var rig *config.Rig
-		r, rig, err := analyseRun(run, false)
+		r, rig, err := analyseRun(ctx, run)
 		if err != nil {
 			errs = append(errs, fmt.Errorf("%s: %w", run, err))
 			continue

@@ -68,7 +68,7 @@ func runDemo(cmd *cobra.Command, into string, seed uint64) error {
 	if err := leaveTruth(into, sim); err != nil {
 		return err
 	}
-	page, err := writeReport(into, reportOptions{format: "html", progress: cmd.ErrOrStderr()})
+	page, err := writeReport(cmd.Context(), into, reportOptions{format: "html"})
 	if err != nil {
 		return err
 	}

@@ -3,9 +3,9 @@ package main
 import (
 	"bytes"
 	"cmp"
+	"context"
 	"errors"
 	"fmt"
-	"io"
 	"os"
 	"path/filepath"
 	"slices"
@@ -25,9 +25,8 @@ var reportFormats = []string{"html", "pdf", "md", "json", "csv"}
 
 // reportOptions is what writeReport needs beside the run.
 type reportOptions struct {
+	howToAnalyse
 	format, output, units, paper string
-	beyond                       bool
-	progress                     io.Writer
 }
 
 func reportCommand() *cobra.Command {
@@ -48,7 +47,8 @@ What lies in RUN/report/ can always be made again and is replaced.
 		Example: "  gaugelog report runs/first --format pdf --paper letter\n  gaugelog report runs/first --output slat.html",
 		Args:    oneRun,
 		RunE: func(cmd *cobra.Command, args []string) error {
-			page, err := writeReport(args[0], o)
+			o.progress = cmd.ErrOrStderr()
+			page, err := writeReport(cmd.Context(), args[0], o)
 			if page != "" {
 				fmt.Fprintln(cmd.OutOrStdout(), page)
 			}
@@ -59,13 +59,13 @@ What lies in RUN/report/ can always be made again and is replaced.
 	c.Flags().StringVar(&o.paper, "paper", "a4", "paper of a pdf: a4 or letter")
 	c.Flags().StringVar(&o.output, "output", "", "file to write (default RUN/report/report.html)")
 	c.Flags().StringVar(&o.units, "units", "si", "units of the report: si or us")
-	c.Flags().BoolVar(&o.beyond, "beyond", false, "forecast more than two decades of time beyond the data")
+	o.flags(c)
 	return c
 }
 
 // writeReport analyses a run and writes its report; it returns where. A file
 // named by output is not overwritten.
-func writeReport(run string, o reportOptions) (string, error) {
+func writeReport(ctx context.Context, run string, o reportOptions) (string, error) {
 	if !slices.Contains(reportFormats, o.format) {
 		return "", wrongf("give --format "+strings.Join(reportFormats, ", "), "format %q is not known", o.format)
 	}
@@ -76,7 +76,7 @@ func writeReport(run string, o reportOptions) (string, error) {
 	if !slices.Contains(report.Papers, o.paper) {
 		return "", wrongf("give --paper a4 or --paper letter", "paper %q is not known", o.paper)
 	}
-	r, opt, err := readRun(run, o.beyond)
+	r, opt, err := readRun(ctx, run, o.howToAnalyse)
 	if err != nil {
 		return "", err
 	}
@@ -106,9 +106,9 @@ func writeReport(run string, o reportOptions) (string, error) {
 }
 
 // readRun analyses a run and gathers what its report shows beside the result.
-func readRun(run string, beyond bool) (*analysis.Result, report.Options, error) {
+func readRun(ctx context.Context, run string, how howToAnalyse) (*analysis.Result, report.Options, error) {
 	var o report.Options
-	h, r, err := evaluateRun(run, beyond)
+	h, r, err := evaluateRun(ctx, run, how)
 	if err != nil {
 		return nil, o, err
 	}
