@@ -8,7 +8,7 @@ import "testing"
 //
 //	go test -tags campaign -run Campaign -v -timeout 60m ./analysis/creep
 func TestCoverageCampaign(t *testing.T) {
-	c := coverage(t, 1000, true)
+	c := coverage(t, 30000, 1000, true)
 	c.log(t)
 	for name, hit := range map[string]int{"n": c.n, "sag": c.sag} {
 		if share := float64(hit) / float64(c.tests); share < 0.93 || share > 0.97 {

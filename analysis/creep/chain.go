@@ -25,31 +25,51 @@ func chainFamily(tMin, tMax float64) family {
 }
 
 // solveChain fits a chain: none of its elements negative, smoothed by second
-// differences as far as cross-validation asks.
-func (s *system) solveChain() (*lsq.NonlinearSolution, error) {
+// differences as far as cross-validation asks. It takes the lags as they were
+// found before.
+func (s *system) solveChain() (*solution, error) {
 	lags := s.searched
-	s.searched = nil // a chain takes the lags as they were found before
+	s.searched = nil
 	defer func() { s.searched = lags }()
-	a := mat.NewDense(len(s.y), s.columns(), nil)
-	s.design(nil, a)
-	s.whiten(a)
-	free := make([]bool, s.columns())
-	for j := len(s.fam.names); j < len(free); j++ {
+	law, n := len(s.fam.names), s.linear()
+	var blocks []lsq.Reduced
+	for i := range s.parts {
+		blocks = append(blocks, s.block(i, nil).Reduce(law))
+	}
+	a, y := lsq.Compact(blocks, law)
+	free := make([]bool, n)
+	free[0] = true
+	for j := law; j < n; j++ {
 		free[j] = true
 	}
-	free[0] = true
 	scale := mat.Norm(a.ColView(1), 2)
 	var lambdas []float64
 	for e := -4.0; e <= 1; e++ {
 		lambdas = append(lambdas, scale*math.Pow(10, e))
 	}
-	p := lsq.NonNegative{Problem: lsq.Problem{Design: a, Y: s.whiteY(), Names: s.names(), Priors: s.priors()},
-		Free: free, Smooth: lsq.SecondDifference(s.columns(), 1, len(s.fam.taus))}
-	sol, err := p.SolveGCV(lambdas)
+	p := lsq.NonNegative{Problem: lsq.Problem{Design: a, Y: y, Names: s.names()}, Free: free,
+		Smooth: lsq.SecondDifference(n, 1, len(s.fam.taus)), Observations: s.rows()}
+	x, err := p.SolveGCV(lambdas)
 	if err != nil {
 		return nil, err
 	}
-	s.fam.effective = sol.Effective
-	return &lsq.NonlinearSolution{P: sol.X, Covariance: sol.Covariance, Chi2: sol.Chi2, DOF: sol.DOF,
-		Condition: sol.Condition, AtBound: sol.Zero, Residuals: sol.Residuals, Fitted: sol.Fitted}, nil
+	s.fam.effective = x.Effective
+	sol := &solution{law: x.X[:law], zero: x.Zero[:law], chi2: x.Chi2, cov: mat.NewSymDense(law, nil)}
+	for i := range law {
+		for j := i; j < law; j++ {
+			sol.cov.SetSym(i, j, x.Covariance.At(i, j))
+		}
+	}
+	at := law
+	for i := range s.parts {
+		k := len(s.parts[i].extra)
+		sol.own = append(sol.own, x.X[at:at+k])
+		u := make([]float64, k)
+		for j := range u {
+			u[j] = math.Sqrt(x.Covariance.At(at+j, at+j))
+		}
+		sol.ownU = append(sol.ownU, u)
+		at += k
+	}
+	return sol, nil
 }

@@ -141,6 +141,9 @@ func (in *Input) until(tH float64) Input {
 			k++
 		}
 		s.Changes = s.Changes[:max(k, 1)]
+		if s.Parts != nil {
+			s.Parts = s.Parts[:len(s.Changes)]
+		}
 	}
 	out.EndH = min(in.EndH, tH)
 	return out
@@ -151,18 +154,14 @@ func (in *Input) until(tH float64) Input {
 func (a *Analysis) fitAll(in *Input) []*Fit {
 	models := Models()
 	fits, errs := make([]*Fit, len(models)), make([]error, len(models))
-	var lags []float64
 	fits[0], errs[0] = fitLaw(in, models[0], nil)
 	if errors.Is(errs[0], ErrTooFew) {
 		a.note("no-law", "%v", errs[0])
 		return nil
 	}
-	if fits[0] != nil && len(in.Ambient) > 0 {
-		_, lags = fits[0].sys.at(fits[0].q)
-	}
 	var wait sync.WaitGroup
 	for i := 1; i < len(models); i++ {
-		wait.Go(func() { fits[i], errs[i] = fitLaw(in, models[i], lags) })
+		wait.Go(func() { fits[i], errs[i] = fitLaw(in, models[i], fits[0]) })
 	}
 	wait.Wait()
 	var out []*Fit
@@ -182,6 +181,7 @@ func (a *Analysis) fitAll(in *Input) []*Fit {
 // choose sets Candidates, Best and Distinguishable.
 func (a *Analysis) choose(fits []*Fit) {
 	a.Best, a.Candidates, a.Distinguishable = nil, nil, false
+	level(fits)
 	for _, f := range fits {
 		if f.admissible() && (a.Best == nil || f.AICc < a.Best.AICc) {
 			a.Best = f
@@ -210,6 +210,23 @@ func (a *Analysis) choose(fits []*Fit) {
 		a.Candidates[i].Weight /= sum
 	}
 	a.Distinguishable = second >= 2
+}
+
+// level makes AICc comparable: the observations are counted, and gauges
+// that repeat each other discounted, as by the law that fits best.
+func level(fits []*Fit) {
+	var best *Fit
+	for _, f := range fits {
+		if f.admissible() && (best == nil || f.deviance < best.deviance) {
+			best = f
+		}
+	}
+	if best == nil {
+		return
+	}
+	for _, f := range fits {
+		f.AICc = f.aicc(best.effectiveBins(), best.shared)
+	}
 }
 
 // remarks gathers the notes of the best fit.

@@ -3,7 +3,6 @@ package creep
 import (
 	"errors"
 	"fmt"
-	"math"
 
 	"gaugelog/analysis/lsq"
 
@@ -50,7 +49,9 @@ type Fit struct {
 	// gauge: its standard deviation and its fading time, mm and h. Scale is
 	// the factor on the bins' stated u.
 	SlowMM, FadeH, Scale float64
-	// K is the number of parameters, DOF NEffective - K (at least 1).
+	// K is the number of parameters; DOF the degrees of freedom behind the
+	// intervals: bins less parameters where the noise was averaged over, which
+	// counts what correlation takes, else NEffective - K; at least 1.
 	K, DOF float64
 	AICc   float64
 	Status lsq.Status
@@ -61,16 +62,23 @@ type Fit struct {
 	linear  []float64
 	shape   float64
 	// inner is the covariance of the law's coefficients and the search
-	// coordinate, inflated.
+	// coordinate, with all that widens it.
 	inner *mat.SymDense
 	sys   *system
-	q     []float64
+	sol   *solution
+	// widening is the factor by which averaging over noises and what gauges
+	// have in common widen variances.
+	widening float64
+	// deviance is minus twice the log likelihood, less a constant; free the
+	// number of parameters that no prior pays for; shared the factor by which
+	// gauges repeat each other.
+	deviance, free, shared float64
 }
 
 // Nuisance is one fitted column beside the law.
 type Nuisance struct {
 	Parameter
-	Kind    string // offset | drift | zero | ambient
+	Kind    string // offset | drift | zero | ambient | load
 	Series  int
 	Ambient int
 }
@@ -103,165 +111,50 @@ func (in *Input) span() (tMin, tMax float64, n int) {
 	return tMin, tMax, n
 }
 
-// fitLaw does the work of FitLaw on checked input; lags are starting values
-// of ln lag, nil where nothing is known of them.
-func fitLaw(in *Input, m Model, lags []float64) (*Fit, error) {
+// fitLaw does the work of FitLaw on checked input; known is a fit of another
+// family to the same input whose lags and noise to start from, nil: none.
+func fitLaw(in *Input, m Model, known *Fit) (*Fit, error) {
 	tMin, tMax, n := in.span()
 	if n < 5 || tMax < 3*tMin {
 		return nil, fmt.Errorf("%w: %d bins from %.3g h to %.3g h after full load; at least 5 over a threefold time are needed", ErrTooFew, n, tMin, tMax)
 	}
+	var lags []float64
+	if known != nil {
+		_, lags = known.sys.at(known.sol.q)
+	}
 	s := newSystem(in, familyOf(m, tMin, tMax), lags)
-	if len(s.y) <= s.columns()+s.shapes()+len(s.searched)+1 {
-		return nil, fmt.Errorf("%w: %d bins for %d unknowns", ErrTooFew, len(s.y), s.columns()+s.shapes()+len(s.searched))
+	if unknowns := s.linear() + s.shapes() + len(s.searched); s.rows() <= unknowns+1 {
+		return nil, fmt.Errorf("%w: %d bins for %d unknowns", ErrTooFew, s.rows(), unknowns)
 	}
-	sol, err := s.settle(lags != nil)
+	sol, err := s.settle(known)
 	if err != nil {
 		return nil, err
 	}
-	return s.result(sol), nil
-}
-
-// settle alternates between law and noise until both hold.
-func (s *system) settle(knowLags bool) (*lsq.NonlinearSolution, error) {
-	var starts [][]float64
-	var sol *lsq.NonlinearSolution
-	for pass := range 4 {
-		var err error
-		if starts == nil && s.shapes() == 1 && len(s.searched) > 0 {
-			if starts, err = s.startsWithLags(knowLags); err != nil {
-				return nil, err
-			}
-		}
-		next, err := s.solve(starts)
-		if err != nil {
-			return nil, err
-		}
-		done := sol != nil && settled(sol, next)
-		sol = next
-		if done || pass == 3 {
-			break
-		}
-		if q := sol.P[s.columns():]; len(q) > 0 {
-			starts = [][]float64{append([]float64(nil), q...)}
-		}
-		s.learnNoise(sol)
-	}
-	return sol, nil
-}
-
-// settled reports whether no parameter moved by a hundredth of its u.
-func settled(a, b *lsq.NonlinearSolution) bool {
-	if b.Covariance == nil {
-		return true
-	}
-	for j := range b.P {
-		if math.Abs(a.P[j]-b.P[j]) > 0.01*b.U(j)+1e-12*math.Abs(b.P[j]) {
-			return false
-		}
-	}
-	return true
-}
-
-// startsWithLags fits with the lags held to find the shape, then offers
-// several lags to the joint search.
-func (s *system) startsWithLags(known bool) ([][]float64, error) {
-	search := s.searched
-	s.searched = nil
-	sol, err := s.solve(nil)
-	s.searched = search
-	if err != nil {
-		return nil, err
-	}
-	starts := [][]float64{{sol.P[s.columns()]}}
-	for _, a := range search {
-		lo, hi, _ := s.in.Ambient[a].lagBounds()
-		offer := []float64{lo + 0.15*(hi-lo), lo + 0.5*(hi-lo), lo + 0.85*(hi-lo)}
-		if known {
-			offer = []float64{s.lag[a]}
-		}
-		var more [][]float64
-		for _, q := range starts {
-			for _, l := range offer {
-				more = append(more, append(append([]float64(nil), q...), l))
-			}
-		}
-		starts = more
-	}
-	return starts, nil
-}
-
-// solve fits with the noise as it stands.
-func (s *system) solve(starts [][]float64) (*lsq.NonlinearSolution, error) {
-	if s.fam.model == KelvinChain {
-		return s.solveChain()
-	}
-	p := lsq.Separable{Columns: s.columns(), Y: s.whiteY(), Names: s.names(), Priors: s.priors(), Starts: starts,
-		Lower: []float64{s.fam.lower}, Upper: []float64{s.fam.upper}}
-	for _, a := range s.searched {
-		lo, hi, _ := s.in.Ambient[a].lagBounds()
-		p.Lower, p.Upper = append(p.Lower, lo), append(p.Upper, hi)
-	}
-	p.Design = func(q []float64, a *mat.Dense) {
-		s.design(q, a)
-		s.whiten(a)
-	}
-	p.Derivative = func(q []float64, k int, d *mat.Dense) {
-		s.derivative(q, k, d)
-		s.whiten(d)
-	}
-	return p.Fit()
-}
-
-// residuals returns reading minus fit of every row, mm.
-func (s *system) residuals(linear, q []float64) []float64 {
-	a := mat.NewDense(len(s.y), s.columns(), nil)
-	s.design(q, a)
-	r := make([]float64, len(s.y))
-	for i := range r {
-		r[i] = s.y[i]
-		for j, c := range linear {
-			r[i] -= a.At(i, j) * c
-		}
-	}
-	return r
-}
-
-// learnNoise estimates every series' noise from the residuals.
-func (s *system) learnNoise(sol *lsq.NonlinearSolution) {
-	r := s.residuals(sol.P[:s.columns()], sol.P[s.columns():])
-	lost := float64(len(sol.P)) / float64(len(s.in.Series))
-	for i := range s.in.Series {
-		if s.first[i+1] > s.first[i] {
-			q := &s.in.Series[i]
-			s.noise[i] = estimateNoise(q.TimeH, q.U, r[s.first[i]:s.first[i+1]], lost)
-		}
-	}
+	return s.result(sol, known), nil
 }
 
 // result turns a solution into a Fit.
-func (s *system) result(sol *lsq.NonlinearSolution) *Fit {
-	nc := s.columns()
-	f := &Fit{Model: s.fam.model, Status: sol.Status, fam: s.fam, changes: s.in.Series[0].Changes, sys: s,
-		linear: sol.P[:len(s.fam.names)], q: sol.P[nc:], Notes: append([]Note(nil), s.notes...)}
-	f.shape, _ = s.at(f.q)
-	r := s.residuals(sol.P[:nc], f.q)
-	f.spread(r)
-	f.count(sol)
-	f.parameters(sol)
-	f.compensate(sol)
-	f.remark(sol)
+func (s *system) result(sol *solution, known *Fit) *Fit {
+	f := &Fit{Model: s.fam.model, Status: sol.status, fam: s.fam, changes: s.in.Series[0].Changes, sys: s,
+		linear: sol.law, sol: sol, Notes: append([]Note(nil), s.notes...)}
+	f.shape, _ = s.at(sol.q)
+	f.spread(s.residuals(sol))
+	f.count()
+	f.parameters(known)
+	f.compensate()
+	f.remark()
 	return f
 }
 
 // spread fills the residuals and what they say of the noise.
-func (f *Fit) spread(r []float64) {
+func (f *Fit) spread(r [][]float64) {
 	s := f.sys
-	for i := range s.in.Series {
-		f.TimeH = append(f.TimeH, s.in.Series[i].TimeH)
-		f.ResidualMM = append(f.ResidualMM, r[s.first[i]:s.first[i+1]])
+	for i := range s.parts {
+		f.TimeH = append(f.TimeH, s.parts[i].TimeH)
 	}
-	own := f.ResidualMM[0]
-	f.N, f.RMSmm, f.NEffective = len(own), rms(own), s.noise[0].effectN
+	f.ResidualMM = r
+	own, n := r[0], s.parts[0].noise
+	f.N, f.RMSmm, f.NEffective = len(own), rms(own), n.effective(s.parts[0].U)
 	var up, down float64
 	for i, v := range own {
 		down += v * v
@@ -272,33 +165,41 @@ func (f *Fit) spread(r []float64) {
 	if down > 0 {
 		f.Lag1 = up / down
 	}
-	f.SlowMM, f.FadeH, f.Scale = s.noise[0].slow, s.noise[0].fadeH, s.noise[0].scale
+	f.SlowMM, f.FadeH, f.Scale = n.slow, n.fadeH, n.scale
+	f.shared = s.between(r)
 }
 
-// count fills K, DOF and AICc: minus twice the log likelihood of the
-// correlated residuals plus 2k plus the correction for few observations
-// (Hurvich and Tsai 1989), the observations counted as NEffective.
-func (f *Fit) count(sol *lsq.NonlinearSolution) {
+// count fills K, DOF and AICc.
+func (f *Fit) count() {
 	s := f.sys
-	f.K = float64(len(sol.P))
+	f.K = float64(s.linear() + len(f.sol.q))
 	if s.fam.model == KelvinChain {
 		f.K = s.fam.effective
 	}
-	var logDet, eff float64
-	for _, n := range s.noise {
-		logDet += n.logDet
-		eff += n.effectN
+	f.free = f.K
+	f.deviance = f.sol.chi2
+	for i := range s.parts {
+		f.deviance += s.parts[i].noise.logDet
+		f.free -= float64(len(s.parts[i].priors())) // a prior pays for its own parameter
 	}
-	own := f.K
-	for _, n := range s.extra {
-		if n.prior != nil {
-			own-- // a prior pays for its own parameter
-		}
-	}
-	f.DOF = max(eff-own, 1)
-	f.AICc = sol.Chi2 + logDet + 2*own + 2*own*(own+1)/max(eff-own-1, 0.5)
+	f.free = max(f.free, 1)
+	f.AICc = f.aicc(f.effectiveBins(), f.shared)
+	f.DOF = max(f.effectiveBins()-f.free, 1)
 }
 
-// inflation is the factor on the covariance for parameters taken from few
-// effective observations.
-func (f *Fit) inflation() float64 { return (f.DOF + f.K) / f.DOF }
+// effectiveBins is what the bins of all gauges are worth.
+func (f *Fit) effectiveBins() float64 {
+	var n float64
+	for i := range f.sys.parts {
+		n += f.sys.parts[i].noise.effective(f.sys.parts[i].U)
+	}
+	return n / f.shared
+}
+
+// aicc is Akaike's criterion, minus twice the log likelihood of the
+// correlated residuals plus 2k, with the correction for few observations
+// (Hurvich and Tsai 1989). shared tells how far gauges repeat each other.
+func (f *Fit) aicc(observations, shared float64) float64 {
+	k := f.free
+	return f.deviance/shared + 2*k + 2*k*(k+1)/max(observations-k-1, 0.5)
+}

@@ -6,8 +6,6 @@ import (
 	"slices"
 
 	"gaugelog/analysis/lsq"
-
-	"gonum.org/v1/gonum/mat"
 )
 
 // Label says how far a forecast may be trusted.
@@ -178,52 +176,40 @@ func (a *Analysis) widthAt(in *Input, far *Forecast, untilH float64) (float64, b
 	for i := range plan.Series {
 		plan.Series[i].extend(in.FullH, untilH)
 	}
-	_, lag := f.sys.at(f.q)
+	_, lag := f.sys.at(f.sol.q)
 	s := newSystem(&plan, f.fam, lag)
-	for i, n := range f.sys.noise {
-		q := &plan.Series[i]
-		s.noise[i] = newNoise(q.TimeH, q.U, n.scale, n.slow, n.fadeH)
-	}
-	nq := s.shapes() + len(s.searched)
-	j := mat.NewDense(len(s.y), s.columns()+nq, nil)
-	q := f.q[:min(nq, len(f.q))]
-	if len(q) < nq || len(s.extra) != len(f.sys.extra) {
-		return 0, false
-	}
-	s.design(q, j.Slice(0, len(s.y), 0, s.columns()).(*mat.Dense))
-	d := mat.NewDense(len(s.y), s.columns(), nil)
-	for k := range nq {
-		s.derivative(q, k, d)
-		for i := range s.y {
-			var t float64
-			for c := range s.columns() {
-				t += d.At(i, c) * f.coefficient(c)
-			}
-			j.Set(i, s.columns()+k, t)
+	s.holdLaw(f.linear, f.shape)
+	sol := *f.sol
+	sol.own = nil
+	for i := range s.parts {
+		p, n := &s.parts[i], f.sys.parts[i].noise
+		p.noise = newNoise(p.TimeH, p.U, n.scale, n.slow, n.fadeH)
+		if len(p.extra) != len(f.sys.parts[i].extra) {
+			return 0, false
 		}
+		sol.own = append(sol.own, f.sol.own[i])
 	}
-	s.whiten(j)
-	sol, err := lsq.Solve(lsq.Problem{Design: j, Y: make([]float64, len(s.y)), Priors: s.priors(), Names: s.names()})
-	if err != nil {
+	if nq := s.shapes() + len(s.searched); nq < len(sol.q) {
+		sol.q, sol.atBound = sol.q[:nq], sol.atBound[:nq]
+	}
+	l, kept := s.linearise(&sol)
+	var reduced []lsq.Reduced
+	for i := range s.parts {
+		reduced = append(reduced, l.reduce(i, s.parts[i].noise))
+	}
+	x, err := lsq.Join(reduced, l.n, nil)
+	if err != nil || !finite(x.LogDet) {
 		return 0, false
 	}
 	_, own := f.gradient(in.FullH+far.AfterH, in.steady())
-	g := make([]float64, s.columns()+nq)
+	g := make([]float64, l.n)
 	copy(g, own[:len(f.fam.names)])
-	if f.fam.shape != "" {
-		g[s.columns()] = own[len(f.fam.names)]
+	if f.fam.shape != "" && len(kept) > 0 && kept[0] == 0 {
+		g[len(f.fam.names)] = own[len(f.fam.names)]
 	}
-	u := sol.PredictU(g) * math.Sqrt(f.inflation())
+	u := lsq.PropagateU(x.SharedCovariance(), g) * math.Sqrt(f.widening)
 	total := math.Sqrt(u*u + far.UBetween*far.UBetween + far.UResidual*far.UResidual)
 	return 2 * f.Coverage() * total, finite(total)
-}
-
-// coefficient returns linear unknown c of the fit.
-func (f *Fit) coefficient(c int) float64 {
-	if c < len(f.linear) {
-		return f.linear[c]
-	}
-	return f.Nuisance[c-len(f.linear)].Value
 }
 
 // extend adds bins 20 a decade from the last to untilH, as uncertain as the

@@ -26,6 +26,12 @@ type Series struct {
 	N     []int     // readings in each bin; nil: 1 each
 	// Changes is the load history as this gauge feels it, in order of time.
 	Changes []Change
+	// Parts splits every change's Newton by load (changes by loads); nil where
+	// that is not known. PartU is the relative standard uncertainty of each
+	// load's effect on this gauge, compared with what the load has on the
+	// creep gauge in the creep step's pattern; 0: exact.
+	Parts [][]float64
+	PartU float64
 	// ZeroU is the standard uncertainty of the series' zero (mm), common to
 	// all its bins; 0: exact.
 	ZeroU float64
@@ -160,6 +166,14 @@ func (s *Series) validate() error {
 	if len(s.Changes) == 0 {
 		return errors.New("no change of load")
 	}
+	if s.PartU < 0 || !finite(s.PartU) || s.Parts != nil && len(s.Parts) != len(s.Changes) {
+		return fmt.Errorf("%d changes of load, split for %d, with relative uncertainty %g", len(s.Changes), len(s.Parts), s.PartU)
+	}
+	for _, parts := range s.Parts {
+		if len(parts) == 0 || len(parts) != len(s.Parts[0]) || !allFinite(parts) {
+			return errors.New("a change of load is not split into the same loads as the first, or by no number")
+		}
+	}
 	for _, c := range s.Changes {
 		if !finite(c.AtH) || !finite(c.RampH) || c.RampH < 0 || !finite(c.Newton) {
 			return errors.New("a change of load is not a number or has a negative ramp")
@@ -189,3 +203,12 @@ func (a *Ambient) validate(series int) error {
 }
 
 func finite(v float64) bool { return !math.IsNaN(v) && !math.IsInf(v, 0) }
+
+func allFinite(v []float64) bool {
+	for _, x := range v {
+		if !finite(x) {
+			return false
+		}
+	}
+	return true
+}

@@ -10,14 +10,13 @@ import (
 // unequally spaced bins are served. whiten turns residuals into independent
 // ones of unit variance by the scalar Kalman filter.
 type noise struct {
-	scale   float64 // factor on the bins' u
-	slow    float64 // standard deviation of the fading part, mm
-	fadeH   float64
-	decay   []float64 // exp(-dt/fade) to the bin before
-	gain    []float64
-	sd      []float64 // of the innovation, mm
-	logDet  float64
-	effectN float64
+	scale  float64 // factor on the bins' u
+	slow   float64 // standard deviation of the fading part, mm
+	fadeH  float64
+	decay  []float64 // exp(-dt/fade) to the bin before
+	gain   []float64
+	sd     []float64 // of the innovation, mm
+	logDet float64
 }
 
 // newNoise prepares the filter for bins at timeH with u.
@@ -38,19 +37,26 @@ func newNoise(timeH, u []float64, scale, slow, fadeH float64) *noise {
 		n.logDet += math.Log(total)
 		left *= white / total
 	}
-	n.effectN = n.effective(u)
 	return n
 }
 
-// whiten overwrites v, one value a bin, a stride apart.
-func (n *noise) whiten(v []float64, stride int) {
+// whiten overwrites v, one value a bin.
+func (n *noise) whiten(v []float64) {
 	var state float64
 	for i := range n.sd {
-		at := &v[i*stride]
 		state *= n.decay[i]
-		e := *at - state
+		e := v[i] - state
 		state += n.gain[i] * e
-		*at = e / n.sd[i]
+		v[i] = e / n.sd[i]
+	}
+}
+
+// whitenAll overwrites every column.
+func (n *noise) whitenAll(sets ...[][]float64) {
+	for _, cols := range sets {
+		for _, v := range cols {
+			n.whiten(v)
+		}
 	}
 }
 
@@ -63,7 +69,7 @@ func (n *noise) effective(u []float64) float64 {
 		one[i] = 1
 		mean += 1 / (n.scale*n.scale*u[i]*u[i] + n.slow*n.slow)
 	}
-	n.whiten(one, 1)
+	n.whiten(one)
 	var s float64
 	for _, v := range one {
 		s += v * v
@@ -84,7 +90,7 @@ func estimateNoise(timeH, u, r []float64, lost float64) *noise {
 	cost := func(ratio, fade float64) (value, scale float64) {
 		f := newNoise(timeH, u, 1, ratio*typical, fade)
 		copy(work, r)
-		f.whiten(work, 1)
+		f.whiten(work)
 		var s float64
 		for _, v := range work {
 			s += v * v

@@ -102,53 +102,109 @@ func (f *Fit) Rate(tH float64) Value {
 }
 
 // parameters fills Parameters, Cov, Nuisance, Lags and the inner covariance.
-func (f *Fit) parameters(sol *lsq.NonlinearSolution) {
+func (f *Fit) parameters(known *Fit) {
 	s, n := f.sys, len(f.fam.names)
-	cov := sol.Covariance
-	if cov == nil { // unidentifiable: Status and a Note say so
-		cov = mat.NewSymDense(len(sol.P), nil)
-	}
-	scale := f.inflation() * s.between(f.ResidualMM)
-	pick := make([]int, n, n+1)
-	for j := range pick {
-		pick[j] = j
-	}
-	if f.fam.shape != "" {
-		pick = append(pick, s.columns())
-	}
-	f.inner = mat.NewSymDense(len(pick), nil)
-	for a, i := range pick {
-		for b := a; b < len(pick); b++ {
-			f.inner.SetSym(a, b, scale*cov.At(i, pick[b]))
+	size := n + s.shapes()
+	f.widening = f.shared
+	cov, ownU := f.averagedCovariance(known)
+	f.inner = mat.NewSymDense(size, nil)
+	for a := range size {
+		for b := a; b < size; b++ {
+			f.inner.SetSym(a, b, f.shared*cov.At(a, b))
 		}
 	}
-	f.lawParameters(sol.AtBound, pick)
-	for j, x := range s.extra {
-		k := n + j
-		f.Nuisance = append(f.Nuisance, Nuisance{Parameter: Parameter{Name: x.name, Value: sol.P[k], U: math.Sqrt(scale * cov.At(k, k)), Unit: x.unit},
-			Kind: x.kind.String(), Series: x.series, Ambient: x.ambient})
+	f.lawParameters()
+	for i := range s.parts {
+		for j, x := range s.parts[i].extra {
+			u := 0.0
+			if ownU != nil {
+				u = math.Sqrt(f.shared) * ownU[i][j]
+			}
+			if x.prior != nil {
+				u = min(u, x.prior.U) // what was known stays known
+			}
+			f.Nuisance = append(f.Nuisance, Nuisance{Parameter: Parameter{Name: x.name, Value: f.sol.own[i][j], U: u, Unit: x.unit},
+				Kind: x.kind.String(), Series: i, Ambient: x.ambient})
+		}
 	}
-	_, lag := s.at(f.q)
+	_, lag := s.at(f.sol.q)
 	for a := range s.in.Ambient {
 		p := Parameter{Name: "lag of " + s.in.Ambient[a].Name, Value: math.Exp(lag[a]), Unit: "h"}
 		for k, b := range s.searched {
-			if c := s.columns() + s.shapes() + k; a == b && c < len(sol.P) {
-				p.U, p.AtBound = p.Value*math.Sqrt(scale*cov.At(c, c)), sol.AtBound[c]
+			if c := s.shapes() + k; a == b && c < len(f.sol.q) {
+				p.U, p.AtBound = p.Value*math.Sqrt(f.shared*cov.At(n+c, n+c)), f.sol.atBound[c]
 			}
 		}
 		f.Lags = append(f.Lags, p)
 	}
 }
 
+// averagedCovariance is the covariance of the law's coefficients and the
+// search coordinates, averaged over the noises the readings allow, and the
+// uncertainties of the series' own unknowns. Zeros where unidentifiable.
+func (f *Fit) averagedCovariance(known *Fit) (*mat.SymDense, [][]float64) {
+	s, n := f.sys, len(f.fam.names)
+	out := mat.NewSymDense(n+max(len(f.sol.q), s.shapes()), nil)
+	if f.sol.cov == nil { // Status and a Note say so
+		return out, nil
+	}
+	if f.Model == KelvinChain {
+		// Its smoothing is no likelihood: it takes the widening that another
+		// family found.
+		factor := (f.DOF + f.K) / f.DOF
+		if known != nil {
+			factor = max(known.widening/known.shared, 1)
+			f.DOF = known.DOF
+		}
+		f.widening *= factor
+		for a := range n {
+			for b := a; b < n; b++ {
+				out.SetSym(a, b, factor*f.sol.cov.At(a, b))
+			}
+		}
+		u := copied(f.sol.ownU)
+		for i := range u {
+			for j := range u[i] {
+				u[i][j] *= math.Sqrt(factor)
+			}
+		}
+		return out, u
+	}
+	l, kept := s.linearise(f.sol)
+	mean := s.average(l)
+	if mean == nil {
+		f.widening *= (f.DOF + f.K) / f.DOF
+		scaled := mat.NewSymDense(out.SymmetricDim(), nil)
+		scaled.ScaleSym((f.DOF+f.K)/f.DOF, f.sol.cov)
+		return scaled, f.sol.ownU
+	}
+	f.widening *= mean.factor
+	f.DOF = max((float64(s.rows())-f.K)/f.shared, 1)
+	place := make([]int, 0, l.n)
+	for j := range n {
+		place = append(place, j)
+	}
+	for _, k := range kept {
+		place = append(place, n+k)
+	}
+	for a, i := range place {
+		for b := a; b < len(place); b++ {
+			out.SetSym(i, place[b], mean.shared.At(a, b))
+		}
+	}
+	return out, mean.own
+}
+
 // lawParameters turns coefficients and search coordinate into Parameters.
-func (f *Fit) lawParameters(atBound []bool, pick []int) {
+func (f *Fit) lawParameters() {
 	n := len(f.fam.names)
-	factor := make([]float64, len(pick))
+	size := f.inner.SymmetricDim()
+	factor := make([]float64, size)
 	for j := range factor {
 		factor[j] = 1
 	}
 	for j, name := range f.fam.names {
-		f.Parameters = append(f.Parameters, Parameter{Name: name, Value: f.linear[j], Unit: f.fam.units[j], AtBound: atBound[j]})
+		f.Parameters = append(f.Parameters, Parameter{Name: name, Value: f.linear[j], Unit: f.fam.units[j], AtBound: f.sol.zero != nil && f.sol.zero[j]})
 	}
 	if f.fam.shape != "" {
 		v := f.shape
@@ -156,11 +212,11 @@ func (f *Fit) lawParameters(atBound []bool, pick []int) {
 			v = math.Exp(v)
 			factor[n] = v
 		}
-		f.Parameters = append(f.Parameters, Parameter{Name: f.fam.shape, Value: v, Unit: f.fam.shapeUnit, AtBound: atBound[pick[n]]})
+		f.Parameters = append(f.Parameters, Parameter{Name: f.fam.shape, Value: v, Unit: f.fam.shapeUnit, AtBound: f.sol.atBound[0]})
 	}
-	f.Cov = mat.NewSymDense(len(pick), nil)
-	for a := range pick {
-		for b := a; b < len(pick); b++ {
+	f.Cov = mat.NewSymDense(size, nil)
+	for a := range size {
+		for b := a; b < size; b++ {
 			f.Cov.SetSym(a, b, f.inner.At(a, b)*factor[a]*factor[b])
 		}
 		f.Parameters[a].U = math.Sqrt(f.Cov.At(a, a))
@@ -170,25 +226,19 @@ func (f *Fit) lawParameters(atBound []bool, pick []int) {
 	}
 }
 
-// String returns the kind in one word.
-func (k kind) String() string {
-	return [...]string{"offset", "drift", "zero", "ambient"}[k]
-}
-
-// compensate fills CompensatedMM: the reading less all that is not law.
-func (f *Fit) compensate(sol *lsq.NonlinearSolution) {
+// compensate fills CompensatedMM: the reading less all that is neither load
+// nor creep.
+func (f *Fit) compensate() {
 	s := f.sys
-	a := mat.NewDense(len(s.y), s.columns(), nil)
-	_, lag := s.at(f.q)
-	s.extraColumns(lag, a)
-	out := append([]float64(nil), s.y...)
-	for i := range out {
-		for j := len(s.fam.names); j < s.columns(); j++ {
-			out[i] -= a.At(i, j) * sol.P[j]
+	for i := range s.parts {
+		own, _ := s.columns(i, f.sol.q)
+		out := append([]float64(nil), s.parts[i].SagMM...)
+		for j, x := range s.parts[i].extra {
+			if x.kind != kindLoad {
+				subtract(out, own[j:j+1], f.sol.own[i][j:j+1])
+			}
 		}
-	}
-	for i := range s.in.Series {
-		f.CompensatedMM = append(f.CompensatedMM, out[s.first[i]:s.first[i+1]])
+		f.CompensatedMM = append(f.CompensatedMM, out)
 	}
 }
 
@@ -203,7 +253,7 @@ func (s *system) between(residual [][]float64) float64 {
 	var pairs int
 	for i := range g {
 		for j := i + 1; j < g; j++ {
-			c, ok := commonCorrelation(s.in.Series[i].TimeH, residual[i], s.in.Series[j].TimeH, residual[j])
+			c, ok := commonCorrelation(s.parts[i].TimeH, residual[i], s.parts[j].TimeH, residual[j])
 			if ok {
 				sum += c
 				pairs++

@@ -9,16 +9,17 @@ import (
 )
 
 // remark says in words what a reader must know of the fit.
-func (f *Fit) remark(sol *lsq.NonlinearSolution) {
+func (f *Fit) remark() {
+	sol := f.sol
 	note := func(code, format string, args ...any) {
 		f.Notes = append(f.Notes, Note{Code: code, Text: fmt.Sprintf(format, args...)})
 	}
 	in := f.sys.in
-	if sol.Status == lsq.Unidentifiable {
-		note("not-identifiable", "%s: %s cannot be told apart; no uncertainty can be given, and no forecast", f.Model, strings.Join(sol.Unclear, ", "))
+	if sol.status == lsq.Unidentifiable {
+		note("not-identifiable", "%s: %s cannot be told apart; no uncertainty can be given, and no forecast", f.Model, strings.Join(sol.unclear, ", "))
 	}
-	if sol.Status == lsq.Stalled || sol.Status == lsq.IterationLimit {
-		note("search-"+strings.ReplaceAll(sol.Status.String(), " ", "-"), "%s: the search for the law did not come to rest; take its figures with caution", f.Model)
+	if sol.status == lsq.Stalled || sol.status == lsq.IterationLimit {
+		note("search-"+strings.ReplaceAll(sol.status.String(), " ", "-"), "%s: the search for the law did not come to rest; take its figures with caution", f.Model)
 	}
 	for _, p := range f.Parameters {
 		if p.AtBound && p.Name == f.fam.shape {

@@ -5,8 +5,6 @@ import (
 	"math"
 
 	"gaugelog/analysis/lsq"
-
-	"gonum.org/v1/gonum/mat"
 )
 
 // kind says what a column beside the law stands for.
@@ -17,60 +15,93 @@ const (
 	kindDrift
 	kindZero
 	kindAmbient
+	kindLoad
 )
 
-// nuisance is one column beside the law's.
+// String returns the kind in one word.
+func (k kind) String() string {
+	return [...]string{"offset", "drift", "zero", "ambient", "load"}[k]
+}
+
+// nuisance is one column beside the law's, of one series.
 type nuisance struct {
 	name, unit string
 	kind       kind
-	series     int
 	ambient    int
 	prior      *Knowledge
-	fixed      []float64 // one value a row; nil: worked out from the lag
+	// fixed has one value a row; nil: worked out from the lag, or from the law
+	// where load names the changes it answers to.
+	fixed []float64
+	load  []Change
 }
 
-// system is one family's regression over all rows of all series.
+// seriesPart is one series with the columns that are its own.
+type seriesPart struct {
+	*Series
+	extra []nuisance
+	noise *noise
+}
+
+// system is one family's regression over all series: the law's columns are
+// shared, all others belong to one series.
 type system struct {
-	in     *Input
-	fam    family
-	series []int // of each row
-	timeH  []float64
-	y      []float64
-	first  []int // first row of each series, and the total at the end
-	extra  []nuisance
+	in    *Input
+	fam   family
+	parts []seriesPart
 	// lag holds ln lag of each ambient record; searched lists those that the
 	// fit looks for, in order of their place among the search coordinates.
 	lag      []float64
 	searched []int
-	noise    []*noise
 	notes    []Note
 
 	value, slope []float64
-	// memory holds the last lagged column of each ambient record: design and
-	// derivative ask for the same one.
-	memory map[int]lagColumn
+	// memory holds the last lagged columns of each ambient record, and terms
+	// the law's columns at the last shape: design and derivative ask for the
+	// same ones.
+	memory map[int]lagColumns
+	terms  lawColumns
 }
 
-// lagColumn is a lagged column with its derivative by ln lag.
-type lagColumn struct {
-	lnLag        float64
-	value, slope []float64
+// lawColumns are the law's columns of every series with their derivatives by
+// the shape: by series, term, row.
+type lawColumns struct {
+	shape        float64
+	value, slope [][][]float64
+}
+
+// law returns the law's columns at a shape.
+func (s *system) law(shape float64) lawColumns {
+	if s.terms.value != nil && s.terms.shape == shape {
+		return s.terms
+	}
+	n := len(s.fam.names)
+	m := lawColumns{shape: shape}
+	for i := range s.parts {
+		p := &s.parts[i]
+		value, slope := make([][]float64, n), make([][]float64, n)
+		for j := range n {
+			value[j], slope[j] = make([]float64, len(p.TimeH)), make([]float64, len(p.TimeH))
+		}
+		for r, t := range p.TimeH {
+			s.fam.columns(t, p.Changes, shape, s.value, s.slope)
+			for j := range n {
+				value[j][r], slope[j][r] = s.value[j], s.slope[j]
+			}
+		}
+		m.value, m.slope = append(m.value, value), append(m.slope, slope)
+	}
+	s.terms = m
+	return m
 }
 
 // newSystem lays out rows and columns. lags gives ln lag of each ambient
 // record to start from; nil: the middle of its bounds.
 func newSystem(in *Input, fam family, lags []float64) *system {
-	s := &system{in: in, fam: fam, value: make([]float64, len(fam.names)), slope: make([]float64, len(fam.names)), memory: map[int]lagColumn{}}
+	s := &system{in: in, fam: fam, value: make([]float64, len(fam.names)), slope: make([]float64, len(fam.names)), memory: map[int]lagColumns{}}
 	for i := range in.Series {
-		s.first = append(s.first, len(s.y))
 		q := &in.Series[i]
-		s.timeH, s.y = append(s.timeH, q.TimeH...), append(s.y, q.SagMM...)
-		for range q.TimeH {
-			s.series = append(s.series, i)
-		}
-		s.noise = append(s.noise, newNoise(q.TimeH, q.U, 1, 0, 1))
+		s.parts = append(s.parts, seriesPart{Series: q, noise: newNoise(q.TimeH, q.U, 1, 0, 1)})
 	}
-	s.first = append(s.first, len(s.y))
 	for i := range in.Ambient {
 		lo, hi, search := in.Ambient[i].lagBounds()
 		at := (lo + hi) / 2
@@ -85,77 +116,49 @@ func newSystem(in *Input, fam family, lags []float64) *system {
 	s.layOffsets()
 	s.layDrifts()
 	s.layAmbient()
+	s.layLoads()
 	return s
 }
 
-// leastAmbientH is two daily cycles: with less, an answer to the weather and
-// creep cannot be told apart, and only a prior helps.
-const leastAmbientH = 48
-
-// long reports whether an ambient record covers two days of the readings.
-func (s *system) long(a int) bool {
-	rec := &s.in.Ambient[a]
-	lo, hi := math.Inf(1), math.Inf(-1)
-	for i, t := range s.timeH {
-		if rec.answers(s.series[i]) && t >= rec.TimeH[0] && t <= rec.TimeH[len(rec.TimeH)-1] {
-			lo, hi = min(lo, t), max(hi, t)
-		}
-	}
-	return hi-lo >= leastAmbientH
-}
-
-// reach reports whether an ambient record varies over the rows that answer.
-func (s *system) reach(a int) bool {
-	rec := &s.in.Ambient[a]
-	lo, hi := math.Inf(1), math.Inf(-1)
-	for i, t := range s.timeH {
-		if rec.answers(s.series[i]) {
-			v := interpolate(rec.TimeH, rec.Value, t)
-			lo, hi = min(lo, v), max(hi, v)
-		}
-	}
-	return hi-lo > 1e-9
-}
-
-// add appends a column unless it is nowhere felt.
-func (s *system) add(n nuisance) {
+// add appends a column to a series unless it is nowhere felt.
+func (s *system) add(series int, n nuisance) {
 	if n.fixed != nil && rms(n.fixed) == 0 {
 		s.notes = append(s.notes, Note{Code: "not-visible", Text: n.name + " falls outside the readings and was left out of the fit"})
 		return
 	}
-	s.extra = append(s.extra, n)
+	s.parts[series].extra = append(s.parts[series].extra, n)
+}
+
+// column evaluates f at every bin of a series.
+func (p *seriesPart) column(f func(tH float64) float64) []float64 {
+	v := make([]float64, len(p.TimeH))
+	for i, t := range p.TimeH {
+		v[i] = f(t)
+	}
+	return v
 }
 
 func (s *system) layOffsets() {
 	for _, o := range s.in.Offsets {
-		v := make([]float64, len(s.y))
-		for i, t := range s.timeH {
-			if s.series[i] == o.Series && t >= o.AtH && (o.ToH == 0 || t < o.ToH) {
-				v[i] = 1
+		v := s.parts[o.Series].column(func(t float64) float64 {
+			if t >= o.AtH && (o.ToH == 0 || t < o.ToH) {
+				return 1
 			}
-		}
-		s.add(nuisance{name: o.Name, unit: "mm", kind: kindOffset, series: o.Series, prior: o.Prior, fixed: v})
+			return 0
+		})
+		s.add(o.Series, nuisance{name: o.Name, unit: "mm", kind: kindOffset, prior: o.Prior, fixed: v})
 	}
 }
 
 func (s *system) layDrifts() {
 	for _, d := range s.in.Drifts {
-		v := make([]float64, len(s.y))
-		for i, t := range s.timeH {
-			if s.series[i] == d.Series && t > d.AtH {
-				v[i] = (t - d.AtH) / 24
-			}
-		}
-		s.add(nuisance{name: d.Name, unit: "mm/d", kind: kindDrift, series: d.Series, prior: d.Prior, fixed: v})
+		v := s.parts[d.Series].column(func(t float64) float64 { return max(t-d.AtH, 0) / 24 })
+		s.add(d.Series, nuisance{name: d.Name, unit: "mm/d", kind: kindDrift, prior: d.Prior, fixed: v})
 	}
-	for i := range s.in.Series {
-		if u := s.in.Series[i].ZeroU; u > 0 {
-			v := make([]float64, len(s.y))
-			for r := s.first[i]; r < s.first[i+1]; r++ {
-				v[r] = 1
-			}
-			s.add(nuisance{name: "zero of " + s.in.Series[i].Name, unit: "mm", kind: kindZero, series: i,
-				prior: &Knowledge{Value: 0, U: u}, fixed: v})
+	for i := range s.parts {
+		if u := s.parts[i].ZeroU; u > 0 && len(s.parts[i].TimeH) > 0 {
+			s.add(i, nuisance{name: "zero of " + s.parts[i].Name, unit: "mm", kind: kindZero,
+				prior: &Knowledge{Value: 0, U: u}, fixed: s.parts[i].column(func(float64) float64 { return 1 })})
 		}
 	}
 }
@@ -171,19 +174,109 @@ func (s *system) layAmbient() {
 			s.notes = append(s.notes, Note{Code: "ambient-short", Text: fmt.Sprintf("%s covers less than %d h of the readings; its part cannot be told from creep and stays in the sag", rec.Name, leastAmbientH)})
 			continue
 		}
-		for i := range s.in.Series {
-			if rec.answers(i) && s.first[i+1] > s.first[i] {
-				s.add(nuisance{name: rec.Name + " on " + s.in.Series[i].Name, unit: "mm per unit", kind: kindAmbient,
-					series: i, ambient: a, prior: rec.Prior})
+		for i := range s.parts {
+			if rec.answers(i) && len(s.parts[i].TimeH) > 0 {
+				s.add(i, nuisance{name: rec.Name + " on " + s.parts[i].Name, unit: "mm per unit", kind: kindAmbient, ambient: a, prior: rec.Prior})
 			}
 		}
 	}
 }
 
-// columns is the number of linear unknowns.
-func (s *system) columns() int { return len(s.fam.names) + len(s.extra) }
+// layLoads gives every load its own influence on every gauge, near the one
+// expected. In the creep gauge the creep step's pattern keeps its effect, for
+// the law is told in terms of it; there one load is the others' counterweight.
+func (s *system) layLoads() {
+	for i := range s.parts {
+		p := &s.parts[i]
+		if !(p.PartU > 0) || len(p.Parts) == 0 {
+			continue
+		}
+		loads := len(p.Parts[0])
+		pattern := make([]float64, loads)
+		weight := -1
+		for l := range loads {
+			for c, ch := range p.Changes {
+				if ch.AtH <= s.in.FullH+1e-9 {
+					pattern[l] += p.Parts[c][l]
+				}
+			}
+			if weight < 0 || math.Abs(pattern[l]) > math.Abs(pattern[weight]) {
+				weight = l
+			}
+		}
+		for l := range loads {
+			if i == 0 && l == weight {
+				continue
+			}
+			var changes []Change
+			felt := false
+			for c, ch := range p.Changes {
+				n := p.Parts[c][l]
+				if i == 0 && pattern[weight] != 0 {
+					n -= pattern[l] / pattern[weight] * p.Parts[c][weight]
+				}
+				felt = felt || math.Abs(n) > 1e-9*math.Abs(ch.Newton)
+				changes = append(changes, Change{AtH: ch.AtH, RampH: ch.RampH, Newton: n})
+			}
+			if felt {
+				s.add(i, nuisance{name: fmt.Sprintf("influence of load %d on %s", l+1, p.Name), unit: "1", kind: kindLoad,
+					prior: &Knowledge{U: p.PartU}, load: changes})
+			}
+		}
+	}
+	s.holdLaw(append([]float64{s.stiffnessGuess()}, make([]float64, len(s.fam.names)-1)...), (s.fam.lower+s.fam.upper)/2)
+}
 
-// shapes is 1 where the family has a shape parameter.
+// stiffnessGuess is the creep gauge's sag per newton by least squares.
+func (s *system) stiffnessGuess() float64 {
+	p := &s.parts[0]
+	var up, down float64
+	for i, t := range p.TimeH {
+		n := 0.0
+		for _, c := range p.Changes {
+			if t >= c.AtH+c.RampH {
+				n += c.Newton
+			}
+		}
+		up, down = up+n*p.SagMM[i], down+n*n
+	}
+	if down == 0 {
+		return 0
+	}
+	return up / down
+}
+
+// holdLaw fixes the columns of the loads' own influence to a law: they are
+// its response, which is linear in small deviations of the influence.
+func (s *system) holdLaw(linear []float64, shape float64) {
+	for i := range s.parts {
+		for j := range s.parts[i].extra {
+			n := &s.parts[i].extra[j]
+			if n.kind != kindLoad {
+				continue
+			}
+			n.fixed = s.parts[i].column(func(t float64) float64 {
+				s.fam.columns(t, n.load, shape, s.value, s.slope)
+				var sag float64
+				for k, c := range linear {
+					sag += c * s.value[k]
+				}
+				return sag
+			})
+		}
+	}
+}
+
+// linear is the number of linear unknowns, shapes 1 where the family has a
+// shape parameter, rows the number of bins.
+func (s *system) linear() int {
+	n := len(s.fam.names)
+	for i := range s.parts {
+		n += len(s.parts[i].extra)
+	}
+	return n
+}
+
 func (s *system) shapes() int {
 	if s.fam.shape == "" {
 		return 0
@@ -191,45 +284,16 @@ func (s *system) shapes() int {
 	return 1
 }
 
-// ambientColumn returns an ambient record's lagged value and the
-// derivative by ln lag at every row, relative to the baseline of the row's
-// series.
-func (s *system) ambientColumn(a int, lnLag float64) (value, slope []float64) {
-	if m, ok := s.memory[a]; ok && m.lnLag == lnLag {
-		return m.value, m.slope
+func (s *system) rows() (n int) {
+	for i := range s.parts {
+		n += len(s.parts[i].TimeH)
 	}
-	rec := &s.in.Ambient[a]
-	f, d := Lagged(rec.TimeH, rec.Value, math.Exp(lnLag))
-	value, slope = make([]float64, len(s.y)), make([]float64, len(s.y))
-	for i := range s.in.Series {
-		if !rec.answers(i) {
-			continue
-		}
-		begin := s.in.Series[i].Changes[0].AtH
-		var v0, d0, n float64
-		for r := s.first[i]; r < s.first[i+1]; r++ {
-			value[r], slope[r] = interpolate(rec.TimeH, f, s.timeH[r]), interpolate(rec.TimeH, d, s.timeH[r])
-			if s.timeH[r] < begin {
-				v0, d0, n = v0+value[r], d0+slope[r], n+1
-			}
-		}
-		if n > 0 {
-			v0, d0 = v0/n, d0/n
-		} else {
-			v0, d0 = interpolate(rec.TimeH, f, begin), interpolate(rec.TimeH, d, begin)
-		}
-		for r := s.first[i]; r < s.first[i+1]; r++ {
-			value[r] -= v0
-			slope[r] -= d0
-		}
-	}
-	s.memory[a] = lagColumn{lnLag, value, slope}
-	return value, slope
+	return n
 }
 
 // at splits the search coordinates into shape and ln lags.
 func (s *system) at(q []float64) (shape float64, lag []float64) {
-	if s.shapes() == 1 {
+	if s.shapes() == 1 && len(q) > 0 {
 		shape, q = q[0], q[1:]
 	}
 	lag = append([]float64(nil), s.lag...)
@@ -241,103 +305,96 @@ func (s *system) at(q []float64) (shape float64, lag []float64) {
 	return shape, lag
 }
 
-// design writes the columns at q, not whitened, into a.
-func (s *system) design(q []float64, a *mat.Dense) {
+// columns returns copies of the columns of series i at q, not whitened: its
+// own, and the law's.
+func (s *system) columns(i int, q []float64) (own, law [][]float64) {
 	shape, lag := s.at(q)
-	for i, t := range s.timeH {
-		s.fam.columns(t, s.in.Series[s.series[i]].Changes, shape, s.value, s.slope)
-		for j, v := range s.value {
-			a.Set(i, j, v)
-		}
-	}
-	s.extraColumns(lag, a)
-}
-
-// extraColumns writes the columns beside the law's.
-func (s *system) extraColumns(lag []float64, a *mat.Dense) {
-	done := map[int][]float64{}
-	for j, n := range s.extra {
+	p := &s.parts[i]
+	law = copied(s.law(shape).value[i])
+	for _, n := range p.extra {
 		col := n.fixed
 		if col == nil {
-			if done[n.ambient] == nil {
-				done[n.ambient], _ = s.ambientColumn(n.ambient, lag[n.ambient])
-			}
-			col = done[n.ambient]
+			col = s.ambientColumns(n.ambient, lag[n.ambient]).value[i]
 		}
-		for i := range s.timeH {
-			v := col[i]
-			if n.kind == kindAmbient && s.series[i] != n.series {
-				v = 0
-			}
-			a.Set(i, len(s.fam.names)+j, v)
-		}
+		own = append(own, append([]float64(nil), col...))
 	}
+	return own, law
 }
 
-// derivative writes the derivative of the columns by q[k] into d.
-func (s *system) derivative(q []float64, k int, d *mat.Dense) {
-	d.Zero()
+// block returns series i at q, whitened by its noise.
+func (s *system) block(i int, q []float64) lsq.AngularBlock {
+	p := &s.parts[i]
+	b := lsq.AngularBlock{Y: append([]float64(nil), p.SagMM...)}
+	b.Private, b.Shared = s.columns(i, q)
+	b.Priors = p.priors()
+	p.noise.whitenAll(b.Private, b.Shared, [][]float64{b.Y})
+	return b
+}
+
+// priors lists what is known of a series' own columns.
+func (p *seriesPart) priors() (out []lsq.Prior) {
+	for j, n := range p.extra {
+		if n.prior != nil {
+			out = append(out, lsq.Prior{Column: j, Value: n.prior.Value, U: n.prior.U})
+		}
+	}
+	return out
+}
+
+// tangent returns the derivative of series i's fit by q[k], not whitened.
+func (s *system) tangent(i, k int, q, law, own []float64) []float64 {
+	p := &s.parts[i]
 	shape, lag := s.at(q)
+	out := make([]float64, len(p.TimeH))
 	if k < s.shapes() {
-		for i, t := range s.timeH {
-			s.fam.columns(t, s.in.Series[s.series[i]].Changes, shape, s.value, s.slope)
-			for j, v := range s.slope {
-				d.Set(i, j, v)
+		for j, slope := range s.law(shape).slope[i] {
+			for r := range out {
+				out[r] += law[j] * slope[r]
 			}
 		}
-		return
+		return out
 	}
 	a := s.searched[k-s.shapes()]
-	_, slope := s.ambientColumn(a, lag[a])
-	for j, n := range s.extra {
+	slope := s.ambientColumns(a, lag[a]).slope[i]
+	for j, n := range p.extra {
 		if n.kind == kindAmbient && n.ambient == a {
-			for r := s.first[n.series]; r < s.first[n.series+1]; r++ {
-				d.Set(r, len(s.fam.names)+j, slope[r])
+			for r := range out {
+				out[r] += own[j] * slope[r]
 			}
 		}
 	}
+	return out
 }
 
-// whiten turns every column of a (rows of all series) into independent units.
-func (s *system) whiten(a *mat.Dense) {
-	raw := a.RawMatrix()
-	for i, n := range s.noise {
-		if s.first[i+1] == s.first[i] {
-			continue
-		}
-		for j := range raw.Cols {
-			n.whiten(raw.Data[s.first[i]*raw.Stride+j:], raw.Stride)
+// residuals returns reading minus fit of every series, mm.
+func (s *system) residuals(sol *solution) [][]float64 {
+	out := make([][]float64, len(s.parts))
+	for i := range s.parts {
+		own, law := s.columns(i, sol.q)
+		out[i] = append([]float64(nil), s.parts[i].SagMM...)
+		subtract(out[i], law, sol.law)
+		subtract(out[i], own, sol.own[i])
+	}
+	return out
+}
+
+// subtract takes columns times coefficients off v.
+func subtract(v []float64, cols [][]float64, c []float64) {
+	for j, x := range c {
+		for r := range v {
+			v[r] -= x * cols[j][r]
 		}
 	}
 }
 
-// whiteY returns the whitened sags.
-func (s *system) whiteY() []float64 {
-	y := append([]float64(nil), s.y...)
-	for i, n := range s.noise {
-		if s.first[i+1] > s.first[i] {
-			n.whiten(y[s.first[i]:s.first[i+1]], 1)
-		}
-	}
-	return y
-}
-
-// priors lists what is known of the columns beside the law.
-func (s *system) priors() []lsq.Prior {
-	var p []lsq.Prior
-	for j, n := range s.extra {
-		if n.prior != nil {
-			p = append(p, lsq.Prior{Column: len(s.fam.names) + j, Value: n.prior.Value, U: n.prior.U})
-		}
-	}
-	return p
-}
-
-// names lists linear unknowns, then search coordinates.
+// names lists the law's coefficients, then the series' own unknowns, then
+// search coordinates.
 func (s *system) names() []string {
 	out := append([]string(nil), s.fam.names...)
-	for _, n := range s.extra {
-		out = append(out, n.name)
+	for i := range s.parts {
+		for _, n := range s.parts[i].extra {
+			out = append(out, n.name)
+		}
 	}
 	if s.shapes() == 1 {
 		out = append(out, s.fam.shape)

@@ -17,6 +17,9 @@ type NonNegative struct {
 	// appended to the whitened design times Lambda. Nil: no smoothing.
 	Smooth *mat.Dense
 	Lambda float64
+	// Observations is their number where Design and Y were reduced from more
+	// (see Compact), for the cross-validation; 0: the rows of Design.
+	Observations int
 }
 
 // NonNegativeSolution is the answer to a NonNegative.
@@ -119,10 +122,14 @@ func (p NonNegative) solveWhite(a *mat.Dense, b []float64) (*NonNegativeSolution
 		s.Effective = trace(a, s.Covariance)
 	}
 	s.DOF = m - len(cols)
-	left := float64(m) - s.Effective
+	count := float64(m)
+	if p.Observations > 0 {
+		count = float64(p.Observations)
+	}
+	left := count - s.Effective
 	s.GCV = math.MaxFloat64
 	if left > 1e-9 {
-		s.GCV = float64(m) * s.Chi2 / (left * left)
+		s.GCV = count * s.Chi2 / (left * left)
 	}
 	return s, nil
 }
