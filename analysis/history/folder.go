@@ -66,7 +66,7 @@ func Open(fsys segment.FS) (*History, error) {
 		return nil, err
 	}
 	h.source = src
-	if o := folder.Origin(); o.Own && !o.Given {
+	if o := folder.Origin(); o.Own && (!o.Given || h.fetched) {
 		h.Gaps = recordedGaps(h, folder.Starts())
 	} else {
 		h.Gaps = neighbourGaps(h)

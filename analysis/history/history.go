@@ -106,6 +106,7 @@ type History struct {
 
 	source    Source
 	withdrawn map[string]string // id: why
+	fetched   bool              // recorded by gaugelog, and read back from a server
 	unknown   map[string]int64  // readings of gauges the rig does not name
 	damage    []segment.Damage  // of the segments
 	close     func() error

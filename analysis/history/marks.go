@@ -79,6 +79,10 @@ func (h *History) addEvent(r *segment.Record) {
 	if e.From != 0 && (e.Kind != "gap" || e.Gauge != "") {
 		e.From += r.Time - r.Raw
 	}
+	if e.Kind == "fetched" {
+		h.fetched = true
+		h.Notes = append(h.Notes, Note{Code: "fetched", Time: e.Time, Text: "this run was " + e.Detail})
+	}
 	h.Events = append(h.Events, e)
 }
 

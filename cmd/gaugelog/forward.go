@@ -5,7 +5,6 @@ import (
 	"errors"
 	"fmt"
 	"io"
-	"os"
 	"path/filepath"
 	"time"
 
@@ -65,13 +64,9 @@ func runForward(cmd *cobra.Command, run string, f forwardFlags) error {
 	if f.to == "" {
 		return wrongf("give --to, such as 'http://host:8086/write?db=lab'", "no address was given")
 	}
-	token := os.Getenv(tokenVariable)
-	if f.tokenFile != "" {
-		b, err := os.ReadFile(f.tokenFile)
-		if err != nil {
-			return wrong(err, "name the file that holds the token")
-		}
-		token = string(b)
+	token, err := tokenOf(f.tokenFile)
+	if err != nil {
+		return err
 	}
 	target, err := forward.ParseTarget(f.to, token, f.plain)
 	if err != nil {

@@ -44,21 +44,28 @@ func ParseTarget(address, token string, plain bool) (*Target, error) {
 	q.Set("precision", "ns")
 	u.RawQuery = q.Encode()
 	t := &Target{URL: u}
+	t.auth, err = Authorization(u, token, plain)
+	return t, err
+}
+
+// Authorization is the value of the header of that name for a token at an
+// address, "" for no token: Token at a version 2 address, Basic for
+// user:password, else Bearer. A token is refused over plain http to a host
+// outside private networks, unless plain allows it.
+func Authorization(u *url.URL, token string, plain bool) (string, error) {
 	switch token = strings.TrimSpace(token); {
 	case token == "":
-		return t, nil
+		return "", nil
 	case strings.ContainsAny(token, "\r\n"):
-		return nil, errors.New("the token has more than one line")
+		return "", errors.New("the token has more than one line")
 	case u.Scheme == "http" && !plain && !private(u.Hostname()):
-		return nil, errors.New("a token would go over plain http to a host outside private networks: use https")
-	case v2:
-		t.auth = "Token " + token
+		return "", errors.New("a token would go over plain http to a host outside private networks: use https")
+	case strings.HasSuffix(u.Path, "/api/v2/write"):
+		return "Token " + token, nil
 	case strings.Contains(token, ":"):
-		t.auth = "Basic " + basic(token)
-	default:
-		t.auth = "Bearer " + token
+		return "Basic " + basic(token), nil
 	}
-	return t, nil
+	return "Bearer " + token, nil
 }
 
 // private tells whether a host is this machine or on a private network by its

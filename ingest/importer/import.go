@@ -101,8 +101,8 @@ func fill(fsys segment.FS, o Options) (Summary, error) {
 		return Summary{}, err
 	}
 	run := sum.Sum(nil)
-	w := &folderWriter{fs: fsys, header: segment.Header{Run: "import-" + hex.EncodeToString(run[:8]), Boot: "imported",
-		Rig: hex.EncodeToString(rig[:]), Program: o.Program}}
+	w := newFolderWriter(fsys, segment.Header{Run: "import-" + hex.EncodeToString(run[:8]), Boot: "imported",
+		Rig: hex.EncodeToString(rig[:]), Program: o.Program})
 	if err := writeFile(fsys, segment.RigFile, o.RigBytes); err != nil {
 		return Summary{}, err
 	}
