@@ -2,20 +2,18 @@ package main
 
 import (
 	"context"
-	"encoding/hex"
 	"errors"
 	"fmt"
 	"io"
 	"io/fs"
-	"os"
 	"strconv"
+	"strings"
 	"time"
 
 	"github.com/spf13/cobra"
 
 	"gaugelog/config"
 	"gaugelog/device"
-	"gaugelog/device/devicetest"
 	"gaugelog/device/guess"
 	"gaugelog/device/listen"
 )
@@ -24,7 +22,7 @@ import (
 type listenFlags struct {
 	line                        config.Line
 	lasts, each, save, replay   string
-	request                     string
+	request, modbus, watch      string
 	guess, listenOnly, asJSON   bool
 	baudSet, bitsSet, paritySet bool
 	stopSet                     bool
@@ -42,13 +40,24 @@ Ctrl-C or --for ends it. PORT is a name from "gaugelog ports" or a device path.
 --guess tries the usual line settings and proposes complete frame descriptions to
 paste under "frames:" in the rig file, each with what it is sure of and what not.
 If nothing comes unasked it says so, and then asks by the requests instruments
-commonly answer (none of them sets anything); --no-asking forbids that. Move the
-plunger meanwhile, below zero too: what was not seen cannot be known.
+commonly answer (none of them sets anything); --no-asking forbids that. Where
+frames are found it watches a while longer: move the plunger, below zero too, and
+press its unit and hold keys. What was not seen cannot be known.
+
+Give what the manual says, and it is quicker and surer: with any of --baud,
+--data-bits, --parity, --stop-bits only that setting is tried, with --request or
+--modbus only that question is asked. With a send button, give --baud and --each
+30s, and press it some six times with the display at different values.
+
+Complete the proposal from the manual: what its "not sure" lines leave open, all
+codes of status and unit, and the decimals. FRAMES.md explains every key.
 
 --save keeps what was heard as a capture, a text file one event a line, which
 --replay listens to in place of a port.`,
-		Example: "  gaugelog listen usb:0403:6001:A10K3 --guess --save mid.capture",
-		Args:    cobra.MaximumNArgs(1),
+		Example: `  gaugelog listen usb:0403:6001:A10K3 --guess --save mid.capture
+  gaugelog listen PORT --guess --baud 4800 --data-bits 7 --parity even --request '?\r'
+  gaugelog listen PORT --guess --baud 19200 --parity even --modbus '17 holding 100 2'`,
+		Args: cobra.MaximumNArgs(1),
 		RunE: func(cmd *cobra.Command, args []string) error {
 			fl := cmd.Flags()
 			f.baudSet, f.bitsSet = fl.Changed("baud"), fl.Changed("data-bits")
@@ -77,6 +86,8 @@ plunger meanwhile, below zero too: what was not seen cannot be known.
 	fl.StringVar(&f.each, "each", "3 s", "with --guess: listen so long at each setting")
 	fl.BoolVar(&f.listenOnly, "no-asking", false, "with --guess: send nothing")
 	fl.StringVar(&f.request, "request", "", `ask by these bytes, again and again, such as '?\r' (escapes \r \n \t \xHH)`)
+	fl.StringVar(&f.modbus, "modbus", "", "ask Modbus RTU registers: bus address, holding or input, first register (from 0), how many")
+	fl.StringVar(&f.watch, "watch", "10 s", "with --guess: watch so long where frames were found (0 s: not at all)")
 	fl.StringVar(&f.save, "save", "", "keep what was heard in this file")
 	fl.StringVar(&f.replay, "replay", "", "listen to a capture in place of a port")
 	fl.BoolVar(&f.asJSON, "json", false, "print chunks (a line each) or proposals as JSON")
@@ -111,7 +122,15 @@ func runListen(cmd *cobra.Command, port string, f listenFlags) (err error) {
 	if len(o.Request) > 0 {
 		fmt.Fprintf(cmd.ErrOrStderr(), "asking %s by %q\n", port, o.Request)
 	}
-	o.Heard = func(k guess.Chunk) { printChunk(cmd.OutOrStdout(), "<", k, f.asJSON) }
+	// A port that stays silent looks like a program that hangs: say which it is.
+	still := time.AfterFunc(5*time.Second, func() {
+		fmt.Fprintf(cmd.ErrOrStderr(), "nothing yet at %s; still listening, Ctrl-C ends it\n", listen.Words(f.line))
+	})
+	defer still.Stop()
+	o.Heard = func(k guess.Chunk) {
+		still.Stop()
+		printChunk(cmd.OutOrStdout(), "<", k, f.asJSON)
+	}
 	c, err := o.For(ctx, 0)
 	if err == nil && len(c.Chunks) == 0 {
 		fmt.Fprintf(cmd.ErrOrStderr(), "nothing came at %s; it may send when its button is pressed or only when asked: try --guess\n", listen.Words(f.line))
@@ -124,8 +143,11 @@ func guessPort(cmd *cobra.Command, o listen.Options, f listenFlags) (err error) 
 	if o.Each, err = spanFlag("each", f.each); err != nil {
 		return err
 	}
+	if o.Watch, err = spanFlag("watch", f.watch); err != nil {
+		return err
+	}
 	o.Fixed = f.baudSet || f.bitsSet || f.paritySet || f.stopSet
-	o.Say = func(s string) { fmt.Fprintln(cmd.ErrOrStderr(), s) }
+	o.Say = tellTries(cmd.ErrOrStderr())
 	o.Mute = f.listenOnly
 	proposals, captures, err := o.Guess(cmd.Context())
 	if err := portTrouble(o.Port, err); err != nil {
@@ -142,7 +164,40 @@ func listenOptions(cmd *cobra.Command, port string, f listenFlags) (listen.Optio
 		return o, err
 	}
 	o.Request = request
+	if f.modbus != "" {
+		if f.request != "" {
+			return o, wrongf("leave one out", "--request and --modbus both say what to ask")
+		}
+		if o.Request, err = modbusFlag(f.modbus); err != nil {
+			return o, err
+		}
+	}
 	return o, nil
+}
+
+// modbusFlag makes the question of --modbus, such as "17 holding 100 2".
+func modbusFlag(text string) ([]byte, error) {
+	const mend = "write bus address (1 to 247), holding or input, first register (from 0: a manual's 40001 or 30001 is 0) and how many (1 to 125), such as '17 holding 100 2'"
+	part := strings.Fields(text)
+	if len(part) != 4 {
+		return nil, wrongf(mend, "--modbus %q has %d words, not 4", text, len(part))
+	}
+	function := map[string]byte{"holding": 3, "input": 4}[part[1]]
+	if function == 0 {
+		return nil, wrongf(mend, "--modbus: %q is neither holding nor input", part[1])
+	}
+	var n [3]uint64
+	for i, k := range []struct {
+		text        string
+		least, most uint64
+	}{{part[0], 1, 247}, {part[2], 0, 65535}, {part[3], 1, 125}} {
+		v, err := strconv.ParseUint(k.text, 10, 16)
+		if err != nil || v < k.least || v > k.most {
+			return nil, wrongf(mend, "--modbus: %q is no whole number from %d to %d", k.text, k.least, k.most)
+		}
+		n[i] = v
+	}
+	return guess.ModbusRead(byte(n[0]), function, uint16(n[1]), uint16(n[2])), nil
 }
 
 // requestFlag reads --request with its escapes.
@@ -172,33 +227,6 @@ func quoteBare(s string) string {
 		}
 	}
 	return string(out)
-}
-
-// saveCapture writes what passes into a new file. The function returned ends
-// it and tells whether all was written.
-func saveCapture(o *listen.Options, name string) (func() error, error) {
-	w, err := os.OpenFile(name, os.O_WRONLY|os.O_CREATE|os.O_EXCL, 0o644)
-	if errors.Is(err, fs.ErrExist) {
-		return nil, wrongf("give another name, or remove it first", "%s exists already", name)
-	}
-	if err != nil {
-		return nil, err
-	}
-	record := &devicetest.Record{Opener: o.Opener, W: w}
-	o.Opener = record
-	port := o.Port
-	began := false
-	o.Opened = func(l config.Line) {
-		began = true
-		// Its error shows in the next event's, which Record keeps.
-		fmt.Fprintln(w, devicetest.LineComment(port, l))
-	}
-	return func() error {
-		if !began {
-			return errors.Join(w.Close(), os.Remove(name))
-		}
-		return errors.Join(record.Err(), w.Sync(), w.Close())
-	}, nil
 }
 
 // portTrouble says what an error of a port means for whoever plugged it in.
@@ -242,109 +270,4 @@ func printableText(p []byte) string {
 		}
 	}
 	return string(out)
-}
-
-// replayCapture listens to a file.
-func replayCapture(cmd *cobra.Command, f listenFlags) error {
-	r, err := os.Open(f.replay)
-	if err != nil {
-		return wrong(err, "name a capture that `listen --save` wrote")
-	}
-	defer r.Close()
-	events, err := devicetest.ReadCapture(r)
-	if err != nil {
-		return wrong(fmt.Errorf("%s: %w", f.replay, err), "name a capture that `listen --save` wrote")
-	}
-	if f.guess {
-		captures := capturesOf(events)
-		return printProposals(cmd, guess.Propose(captures...), captures, f.asJSON)
-	}
-	for _, e := range events {
-		switch e.What {
-		case "<", ">":
-			printChunk(cmd.OutOrStdout(), e.What, guess.Chunk{At: e.At, Bytes: e.Bytes}, f.asJSON)
-		case "line":
-			fmt.Fprintf(cmd.ErrOrStderr(), "%s at %s\n", e.Port, listen.Words(e.Line))
-		case "lost":
-			fmt.Fprintf(cmd.ErrOrStderr(), "%s was lost after %s\n", e.Port, e.At.Round(time.Millisecond))
-		}
-	}
-	return nil
-}
-
-// capturesOf sorts a capture's events into listenings: one an opening, and one
-// a request that differs from the last.
-func capturesOf(events []devicetest.Event) []guess.Capture {
-	var out []guess.Capture
-	open := map[string]int{} // the port's listening that goes on
-	begin := func(e devicetest.Event, c guess.Capture) {
-		out = append(out, c)
-		open[e.Port] = len(out) - 1
-	}
-	for _, e := range events {
-		i, known := open[e.Port]
-		switch {
-		case e.What == "open" || !known:
-			begin(e, guess.Capture{})
-			i = open[e.Port]
-		case e.What == "line":
-			out[i].Line = e.Line
-		}
-		switch c := &out[i]; {
-		case e.What == ">" && len(c.Chunks) == 0:
-			c.Request = e.Bytes
-		case e.What == ">" && string(c.Request) != string(e.Bytes):
-			begin(e, guess.Capture{Line: c.Line, Request: e.Bytes})
-		case e.What == "<":
-			c.Chunks = append(c.Chunks, guess.Chunk{At: e.At, Bytes: e.Bytes})
-		}
-	}
-	return out
-}
-
-// proposalJSON is a proposal as `listen --guess --json` prints it.
-type proposalJSON struct {
-	YAML   string   `json:"yaml"`
-	Sure   []string `json:"sure"`
-	Unsure []string `json:"unsure"`
-	Frames int      `json:"frames"`
-	Share  float64  `json:"share"` // of the bytes that the frames hold
-	Values []string `json:"values"`
-}
-
-func printProposals(cmd *cobra.Command, list []guess.Proposal, heard []guess.Capture, asJSON bool) error {
-	if asJSON {
-		out := []proposalJSON{}
-		for _, p := range list {
-			out = append(out, proposalJSON{p.YAML(), append([]string{}, p.Sure...), append([]string{}, p.Unsure...), p.Frames, p.Share, append([]string{}, p.Values...)})
-		}
-		return printJSON(cmd.OutOrStdout(), out)
-	}
-	if len(list) == 0 {
-		return failed(errors.New(nothingProposed(heard)), "check cable and power, press the instrument's send button meanwhile, and see its manual for line settings and request")
-	}
-	for i, p := range list[:min(3, len(list))] {
-		w := cmd.OutOrStdout()
-		if i == 0 {
-			fmt.Fprintln(w, "# Paste under frames: in the rig file, and read the manual on what is not sure.")
-		} else {
-			fmt.Fprintln(w, "# Or, less likely:")
-		}
-		for _, v := range p.Values {
-			fmt.Fprintf(w, "  # reads %s\n", v)
-		}
-		fmt.Fprint(w, p.YAML())
-	}
-	return nil
-}
-
-func nothingProposed(heard []guess.Capture) string {
-	var some []byte
-	for _, c := range heard {
-		some = append(some, c.Bytes()...)
-	}
-	if len(some) == 0 {
-		return "nothing came, asked or unasked"
-	}
-	return fmt.Sprintf("%d bytes came and make no sense as frames, such as %s", len(some), hex.EncodeToString(some[:min(16, len(some))]))
 }

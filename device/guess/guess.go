@@ -154,6 +154,8 @@ func UsualLines() []config.Line {
 type Request struct {
 	Bytes []byte
 	Words string
+	// Modbus is that of a read by that protocol.
+	Modbus bool
 }
 
 // UsualRequests returns questions worth asking an instrument that sends
@@ -161,17 +163,17 @@ type Request struct {
 // own). None of them sets anything.
 func UsualRequests() []Request {
 	return []Request{
-		{[]byte("?\r"), "a question mark and CR"},
-		{[]byte("?\r\n"), "a question mark and CR LF"},
-		{[]byte("\r"), "CR alone"},
-		{[]byte("\x05"), "ENQ"},
-		{[]byte(Identify), "the SCPI query *IDN? (who are you)"},
-		{[]byte("READ?\n"), "the SCPI query READ?"},
-		{[]byte("P\r\n"), "the letter P (print) and CR LF"},
-		{[]byte("D\r\n"), "the letter D (data) and CR LF"},
-		{[]byte("1"), "the digit 1"},
-		{ModbusRead(1, 3, 0, 2), "a Modbus read of holding registers 0 and 1 at address 1"},
-		{ModbusRead(1, 4, 0, 2), "a Modbus read of input registers 0 and 1 at address 1"},
+		{Bytes: []byte("?\r"), Words: "a question mark and CR"},
+		{Bytes: []byte("?\r\n"), Words: "a question mark and CR LF"},
+		{Bytes: []byte("\r"), Words: "CR alone"},
+		{Bytes: []byte("\x05"), Words: "ENQ"},
+		{Bytes: []byte(Identify), Words: "the SCPI query *IDN? (who are you)"},
+		{Bytes: []byte("READ?\n"), Words: "the SCPI query READ?"},
+		{Bytes: []byte("P\r\n"), Words: "the letter P (print) and CR LF"},
+		{Bytes: []byte("D\r\n"), Words: "the letter D (data) and CR LF"},
+		{Bytes: []byte("1"), Words: "the digit 1"},
+		{Bytes: ModbusRead(1, 3, 0, 2), Words: "a Modbus read of holding registers 0 and 1 at address 1", Modbus: true},
+		{Bytes: ModbusRead(1, 4, 0, 2), Words: "a Modbus read of input registers 0 and 1 at address 1", Modbus: true},
 	}
 }
 

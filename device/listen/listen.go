@@ -1,6 +1,7 @@
 package listen
 
 import (
+	"cmp"
 	"context"
 	"errors"
 	"fmt"
@@ -35,6 +36,10 @@ type Options struct {
 	Say func(string)
 	// Each is how long Guess listens at one setting; default 3 s.
 	Each time.Duration
+	// Watch is how long Guess goes on where frames were found, so that the
+	// plunger can be moved and the keys pressed: what was not seen cannot be
+	// proposed. 0: not at all.
+	Watch time.Duration
 
 	began time.Time
 }
@@ -47,11 +52,11 @@ func (o *Options) say(format string, args ...any) {
 
 // Words names a line setting as the trade does, such as "9600 baud, 8N1".
 func Words(l config.Line) string {
-	parity := "?"
+	parity := "N"
 	if l.Parity != "" {
 		parity = string(l.Parity[0] - 'a' + 'A')
 	}
-	return fmt.Sprintf("%d baud, %d%s%s", l.Baud, l.DataBits, parity, l.StopBits)
+	return fmt.Sprintf("%d baud, %d%s%s", cmp.Or(l.Baud, config.DefaultBaud), cmp.Or(l.DataBits, config.DefaultDataBits), parity, cmp.Or(l.StopBits, "1"))
 }
 
 // For opens the port and listens until ctx ends or d is over (0: no end). The
@@ -97,95 +102,4 @@ func (o Options) For(ctx context.Context, d time.Duration) (c guess.Capture, err
 		}
 	}
 	return c, nil
-}
-
-// enough is the number of frames after which a good proposal is believed.
-const enough = 3
-
-// Guess tries line settings and, where nothing comes unasked, requests, and
-// returns what the bytes may be, the likeliest first. It returns early once a
-// proposal explains nearly all that came. The captures are what was heard.
-func (o Options) Guess(ctx context.Context) ([]guess.Proposal, []guess.Capture, error) {
-	if o.began.IsZero() {
-		o.began = time.Now()
-	}
-	if o.Each <= 0 {
-		o.Each = 3 * time.Second
-	}
-	lines := guess.UsualLines()
-	if o.Fixed {
-		lines = []config.Line{o.Line}
-	}
-	request := o.Request
-	o.Request = nil
-	var all []guess.Capture
-	if len(request) == 0 {
-		for _, l := range lines {
-			o.Line = l
-			o.say("listening at %s for %s", Words(l), o.Each)
-			c, err := o.For(ctx, o.Each)
-			all = append(all, c)
-			if err != nil || ctx.Err() != nil || good(c) {
-				return guess.Propose(all...), all, err
-			}
-		}
-		if o.Mute || anything(all) {
-			return guess.Propose(all...), all, nil
-		}
-	}
-	requests := guess.UsualRequests()
-	if len(request) > 0 {
-		requests = []guess.Request{{Bytes: request, Words: "the request given"}}
-	} else {
-		o.say("nothing came unasked; now the instrument will be asked, by requests that set nothing")
-	}
-	return o.ask(ctx, lines, requests, all)
-}
-
-// ask tries requests at each setting; the first that is answered is repeated.
-func (o Options) ask(ctx context.Context, lines []config.Line, requests []guess.Request, all []guess.Capture) ([]guess.Proposal, []guess.Capture, error) {
-	const patience = 600 * time.Millisecond
-	for _, l := range lines {
-		for _, r := range requests {
-			o.Line, o.Request, o.Again = l, r.Bytes, patience
-			o.say("asking at %s: %s (%q)", Words(l), r.Words, r.Bytes)
-			c, err := o.For(ctx, patience)
-			if err == nil && ctx.Err() == nil && len(c.Chunks) > 0 {
-				o.say("it answers; asking it a few times more")
-				more, again := o.For(ctx, 6*patience)
-				c.Chunks, err = append(c.Chunks, more.Chunks...), again
-			}
-			if len(c.Chunks) > 0 {
-				all = append(all, c)
-			}
-			if err != nil || ctx.Err() != nil || good(c) {
-				return guess.Propose(all...), all, err
-			}
-		}
-	}
-	return guess.Propose(all...), all, nil
-}
-
-// good tells whether a capture explains itself well enough to stop.
-func good(c guess.Capture) bool {
-	p := guess.Propose(c)
-	if len(p) == 0 || p[0].Share < 0.95 {
-		return false
-	}
-	switch p[0].Frame.Kind {
-	case "modbus", "scpi":
-		return true
-	case "binary":
-		return p[0].Frame.Checksum != nil
-	}
-	return p[0].Frames >= enough
-}
-
-func anything(all []guess.Capture) bool {
-	for _, c := range all {
-		if len(c.Chunks) > 0 {
-			return true
-		}
-	}
-	return false
 }

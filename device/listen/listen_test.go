@@ -39,13 +39,78 @@ func TestStreaming(t *testing.T) {
 		if err != nil || len(p) == 0 || p[0].Frame.Kind != "text" || len(all) != 1 {
 			t.Fatalf("%v %+v, %d captures", err, p, len(all))
 		}
-		if len(said) != 1 || !strings.Contains(said[0], "9600 baud, 8N1") {
+		if len(said) != 2 || !strings.Contains(said[0], "8 line settings (at most 24s)") || !strings.Contains(said[1], "9600 baud, 8N1") {
 			t.Errorf("said %q", said)
 		}
 		select {
 		case b := <-wire.Asked():
 			t.Errorf("it was sent %q", b)
 		default:
+		}
+	})
+}
+
+// Where frames are found it goes on watching, and what is seen only then is in
+// the proposal.
+func TestWatch(t *testing.T) {
+	synctest.Test(t, func(t *testing.T) {
+		opener := &devicetest.Opener{}
+		wire := opener.Plug("p")
+		ctx, stop := context.WithCancel(t.Context())
+		done := make(chan bool)
+		go func() {
+			defer close(done)
+			for i := 0; ctx.Err() == nil; i++ {
+				if i < 24 {
+					wire.Send([]byte("+001.234\r\n"))
+				} else {
+					wire.Send([]byte("-000.034\r\n"))
+				}
+				time.Sleep(250 * time.Millisecond)
+			}
+		}()
+		p, all, err := listen.Options{Opener: opener, Port: "p", Watch: 10 * time.Second}.Guess(ctx)
+		stop()
+		<-done
+		if err != nil || len(p) == 0 || len(all) != 1 || !strings.Contains(strings.Join(p[0].Sure, ";"), "a sign always stands") {
+			t.Fatalf("%v %+v, %d captures", err, p, len(all))
+		}
+	})
+}
+
+// The answer to *IDN? is told and never taken for an indication; a Modbus
+// instrument with even parity is asked with even parity.
+func TestAskedWithParity(t *testing.T) {
+	synctest.Test(t, func(t *testing.T) {
+		opener := &devicetest.Opener{}
+		wire := opener.Plug("p")
+		ctx, stop := context.WithCancel(t.Context())
+		done := make(chan bool)
+		var said []string
+		go func() {
+			defer close(done)
+			for {
+				select {
+				case b := <-wire.Asked():
+					if string(b) == guess.Identify {
+						wire.Send([]byte("A,B,1.25,4.5\n"))
+					}
+				case <-ctx.Done():
+					return
+				}
+			}
+		}()
+		p, _, err := listen.Options{Opener: opener, Port: "p", Say: func(s string) { said = append(said, s) }}.Guess(ctx)
+		stop()
+		<-done
+		words := strings.Join(said, "\n")
+		if err != nil || len(p) != 0 {
+			t.Fatalf("%v %+v", err, p)
+		}
+		for _, want := range []string{`it answers "A,B,1.25,4.5"`, "19200 baud, 8E1", "4800 baud, 7E1"} {
+			if !strings.Contains(words, want) {
+				t.Errorf("%q was not said:\n%s", want, words)
+			}
 		}
 	})
 }
