@@ -23,6 +23,7 @@ func analyseCommand() *cobra.Command {
 	var asJSON bool
 	var how howToAnalyse
 	var units string
+	var from fromFlags
 	c := &cobra.Command{
 		Use:     "analyse RUN",
 		GroupID: "after",
@@ -30,30 +31,35 @@ func analyseCommand() *cobra.Command {
 		Long: `Reads a run folder back and works out the load steps, the sag of each gauge,
 stiffness, creep, recovery, drift and what disturbed the test, each with its
 uncertainty. The folder is only read. A run that is still being recorded is
-analysed up to its last completed sync.`,
-		Example: "  gaugelog analyse runs/first --json > result.json",
-		Args:    oneRun,
+analysed up to its last completed sync.
+
+` + fromWords,
+		Example: "  gaugelog analyse runs/first --json > result.json\n  gaugelog analyse --from 'http://lab:8086/query?db=sag' --rig rig.yaml",
+		Args:    from.args,
 		RunE: func(cmd *cobra.Command, args []string) error {
 			if units != "si" && units != "us" {
 				return wrongf("give --units si or --units us", "units %q are not known", units)
 			}
 			how.progress = cmd.ErrOrStderr()
-			r, opt, err := readRun(cmd.Context(), args[0], how)
-			if err != nil {
-				return err
-			}
-			opt.Units = units
-			if asJSON {
-				err = printJSON(cmd.OutOrStdout(), r)
-			} else {
-				err = report.Text(cmd.OutOrStdout(), report.Build(r, opt))
-			}
-			return errors.Join(err, held(r))
+			return from.on(cmd, args, func(run string) error {
+				r, opt, err := readRun(cmd.Context(), run, how)
+				if err != nil {
+					return err
+				}
+				opt.Units = units
+				if asJSON {
+					err = printJSON(cmd.OutOrStdout(), r)
+				} else {
+					err = report.Text(cmd.OutOrStdout(), report.Build(r, opt))
+				}
+				return errors.Join(err, held(r))
+			})
 		},
 	}
 	c.Flags().BoolVar(&asJSON, "json", false, "print the whole result as JSON (layout: analysis/schema.json)")
 	how.flags(c)
 	c.Flags().StringVar(&units, "units", "si", "units of the text: si or us")
+	from.add(c.Flags())
 	return c
 }
 

@@ -31,6 +31,7 @@ type reportOptions struct {
 
 func reportCommand() *cobra.Command {
 	var o reportOptions
+	var from fromFlags
 	c := &cobra.Command{
 		Use:     "report RUN",
 		GroupID: "after",
@@ -43,16 +44,24 @@ What lies in RUN/report/ can always be made again and is replaced.
   pdf    for print, on A4 or Letter
   md     Markdown, plots by their captions
   json   the result as ` + "`analyse --json`" + ` prints it
-  csv    the tables, one block each, for spreadsheets`,
+  csv    the tables, one block each, for spreadsheets
+
+` + fromWords + ` The report is then
+written to --output, else to report.html (or .pdf and so on) here.`,
 		Example: "  gaugelog report runs/first --format pdf --paper letter\n  gaugelog report runs/first --output slat.html",
-		Args:    oneRun,
+		Args:    from.args,
 		RunE: func(cmd *cobra.Command, args []string) error {
 			o.progress = cmd.ErrOrStderr()
-			page, err := writeReport(cmd.Context(), args[0], o)
-			if page != "" {
-				fmt.Fprintln(cmd.OutOrStdout(), page)
+			if from.from != "" && from.keep == "" && o.output == "" {
+				o.output = "report." + o.format // the folder does not stay
 			}
-			return err
+			return from.on(cmd, args, func(run string) error {
+				page, err := writeReport(cmd.Context(), run, o)
+				if page != "" {
+					fmt.Fprintln(cmd.OutOrStdout(), page)
+				}
+				return err
+			})
 		},
 	}
 	c.Flags().StringVar(&o.format, "format", "html", "html, pdf, md, json or csv")
@@ -60,6 +69,7 @@ What lies in RUN/report/ can always be made again and is replaced.
 	c.Flags().StringVar(&o.output, "output", "", "file to write (default RUN/report/report.html)")
 	c.Flags().StringVar(&o.units, "units", "si", "units of the report: si or us")
 	o.flags(c)
+	from.add(c.Flags())
 	return c
 }
 
