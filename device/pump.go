@@ -137,7 +137,7 @@ func (p *pump) lose(err error) {
 	}
 	p.lost, p.lostAt = true, p.now()
 	p.log.Warn("port lost", "error", err)
-	p.events(Reading{Kind: PortLost, At: p.lostAt, Detail: err.Error()})
+	p.events(Reading{Kind: PortLost, At: p.lostAt, Detail: err.Error(), Deaf: errors.Is(err, errDeaf)})
 }
 
 // regain records, once a gauge has answered in its own frame, that the port is

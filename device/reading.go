@@ -55,8 +55,13 @@ type Reading struct {
 	Celsius, HumidityPercent float64
 	// Detail says why, for NoReading, PortLost, PortBack and FramesRefused.
 	Detail string
-	// N counts frames refused.
-	N int
+	// N counts frames refused; the first and the last of them came at First
+	// and Last.
+	N           int
+	First, Last Instant
+	// Deaf says of PortLost that the port is there and was open, but nothing
+	// that counts was heard for so long that it is opened anew.
+	Deaf bool
 }
 
 // Sink takes readings. Calls for one port come from one goroutine, in order;

@@ -101,7 +101,7 @@ func (p *pump) refuse(s *slot, f *frame.Frame, at Instant, why string) {
 		return
 	}
 	p.refused.Add(1)
-	p.refusals.add(why, f.Raw)
+	p.refusals.add(why, f.Raw, at)
 	p.refusals.due(p, at)
 	// A damaged answer is the answer; a foreign one is not.
 	if s.asked != nil && f.Rejected != frame.None && f.Rejected != frame.BadAddress {
@@ -111,13 +111,14 @@ func (p *pump) refuse(s *slot, f *frame.Frame, at Instant, why string) {
 
 // refusals sums the refused frames of a port between two readings of them.
 type refusals struct {
-	n      int
-	why    string
-	raw    []byte // of the last one, its beginning
-	told   bool
-	toldAt Instant
-	votes  [16]votes
-	oldest int
+	n           int
+	first, last Instant
+	why         string
+	raw         []byte // of the last one, its beginning
+	told        bool
+	toldAt      Instant
+	votes       [16]votes
+	oldest      int
 }
 
 // votes counts the decoders that refused the bytes at one offset.
@@ -153,8 +154,12 @@ func (r *refusals) vote(p *pump, s *slot, f *frame.Frame) bool {
 	return false
 }
 
-func (r *refusals) add(why string, raw []byte) {
+func (r *refusals) add(why string, raw []byte, at Instant) {
+	if r.n == 0 {
+		r.first = at
+	}
 	r.n++
+	r.last = at
 	r.why = why
 	r.raw = append(r.raw[:0], raw[:min(len(raw), 40)]...)
 }
@@ -171,6 +176,6 @@ func (r *refusals) flush(p *pump, at Instant) {
 	if r.n == 0 {
 		return
 	}
-	p.events(Reading{Kind: FramesRefused, At: at, N: r.n, Detail: fmt.Sprintf("last: %s: %q", r.why, r.raw)})
+	p.events(Reading{Kind: FramesRefused, At: at, N: r.n, First: r.first, Last: r.last, Detail: fmt.Sprintf("last: %s: %q", r.why, r.raw)})
 	r.n, r.told, r.toldAt = 0, true, at
 }

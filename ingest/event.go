@@ -50,6 +50,7 @@ const (
 	FramesRefused = "frames-refused"
 	NoReading     = "no-reading"
 	UnitKey       = "unit-key"
+	StatusChanged = "status" // the gauge says something else of itself: battery-low, hold, a limit
 	ClockStepped  = "clock-stepped"
 	Gap           = "gap"
 	Dropped       = "dropped"
@@ -64,7 +65,7 @@ const (
 
 var happeningKinds = map[string]bool{
 	Started: true, Stopped: true, PortLost: true, PortBack: true, FramesRefused: true,
-	NoReading: true, UnitKey: true, ClockStepped: true, Gap: true, Dropped: true,
+	NoReading: true, UnitKey: true, StatusChanged: true, ClockStepped: true, Gap: true, Dropped: true,
 	DiskFull: true, DiskBack: true, DiskSlow: true, RigAmended: true,
 	AlarmRaised: true, AlarmSeen: true, AlarmOver: true,
 }

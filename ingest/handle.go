@@ -49,7 +49,7 @@ func (r *Recorder) reading(d *device.Reading) error {
 		}
 		r.portEvent(kind, d)
 	case device.FramesRefused:
-		r.happened(Happening{Kind: FramesRefused, Gauge: r.onlyOn(d.Port), N: int64(d.N), Detail: d.Port + ": " + d.Detail})
+		r.refused(d)
 	case device.UnitKey:
 		r.happened(Happening{Kind: UnitKey, Gauge: d.Gauge, Detail: "the gauge now shows " + d.Unit})
 	}
@@ -102,6 +102,7 @@ func (r *Recorder) value(d *device.Reading) error {
 	}
 	c.seen, c.lastBoot, c.lastWall = true, s.boot, s.wall
 	c.unit, c.status = s.unit, s.status
+	r.says(c, s.status)
 	return nil
 }
 
@@ -212,10 +213,13 @@ func (r *Recorder) portEvent(kind string, d *device.Reading) {
 		detail += ": " + d.Detail
 	}
 	told := false
-	for _, c := range r.channels {
-		if c.port == d.Port && d.Port != "" {
+	for i, c := range r.channels {
+		if c.port != d.Port || d.Port == "" {
+			continue
+		}
+		told = true
+		if r.silences[i].portMoved(d, r.now) {
 			r.happened(Happening{Kind: kind, Gauge: c.name, Detail: detail})
-			told = true
 		}
 	}
 	if !told {

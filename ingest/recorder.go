@@ -76,6 +76,7 @@ type Recorder struct {
 	gauges   map[string]int // index into channels
 	probes   map[string]int
 	silences []silence
+	refusals []*refusals // by port
 
 	unlock func() error
 	store  *store

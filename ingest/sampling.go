@@ -129,6 +129,7 @@ type channel struct {
 	interval     int64
 	unit, status string
 	storedMM     float64
+	saying       saying
 	evenly       pace // record.sampling.every
 	densely      pace // record.sampling.dense and its companions
 }

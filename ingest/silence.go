@@ -12,26 +12,31 @@ import (
 // where the rig states no silent_after.
 const leastSilence = int64(3 * time.Second)
 
-// spellEvery is how often a lasting spell of frames without a number is noted.
-const spellEvery = int64(time.Minute)
-
-// silence watches one gauge or probe for what it does not say.
+// silence watches one gauge or probe for what it does not say. What it does
+// not say while its port is lost, or while it shows no number, is told by
+// those events: one fault is one event.
 type silence struct {
 	after  int64 // stated; 0: three times the interval seen; negative: never
 	last   int64 // boot-time instant of the last reading
 	usual  int64 // interval between readings, slowly following
-	silent bool
-
-	// A spell of frames that carry no number.
-	spell      int64 // not yet noted
-	spellFrom  int64 // wall clock
-	spellNoted int64 // boot-time instant
-	inSpell    bool
-	why        string
+	heard  int64 // boot-time instant of the last sign of life: a frame, the return of its port
+	silent bool  // no reading came for too long
+	told   bool  // an event said so
+	port   portState
+	spell  spell // of frames that carry no number
 }
 
+// portState is how the port of a gauge stands.
+type portState uint8
+
+const (
+	portThere portState = iota
+	portLost            // an event said so
+	portDeaf            // reopened in vain, after the silence was told
+)
+
 func newSilence(rig *config.Rig, frame string, stated *config.Duration, now int64) silence {
-	s := silence{last: now}
+	s := silence{last: now, heard: now}
 	for i := range rig.Frames {
 		f := &rig.Frames[i]
 		if f.Name != frame {
@@ -63,66 +68,52 @@ func (s *silence) limit() int64 {
 // spoke notes that a number came.
 func (r *Recorder) spoke(i int, at int64) {
 	s := &r.silences[i]
-	if s.silent {
-		s.silent = false
+	switch {
+	case s.told:
 		r.happened(Happening{Kind: Gap, Gauge: r.channels[i].name, From: s.last + r.offset,
 			Detail: "no readings for " + seconds(at-s.last)})
-	} else if r.channels[i].seen {
+	case s.silent || s.spell.on || s.heard > s.last: // no interval of its own making
+	case r.channels[i].seen:
 		d := max(0, at-s.last)
 		if s.usual == 0 {
 			s.usual = d
 		}
 		s.usual += (d - s.usual) / 8
 	}
+	s.silent, s.told = false, false
 	s.last = max(s.last, at)
-	if s.inSpell {
-		r.tellSpell(i)
-		s.inSpell = false
-	}
-}
-
-// noNumber notes a frame without a number: the first of a spell at once, the
-// others summed.
-func (r *Recorder) noNumber(i int, d *device.Reading) {
-	s := &r.silences[i]
-	s.spell++
-	if !s.inSpell || s.why != d.Detail {
-		s.inSpell, s.why, s.spellFrom = true, d.Detail, 0
-		r.tellSpell(i)
-		return
-	}
-	if s.spellFrom == 0 {
-		s.spellFrom = r.wall()
-	}
-}
-
-func (r *Recorder) tellSpell(i int) {
-	s := &r.silences[i]
-	if s.spell == 0 {
-		return
-	}
-	r.happened(Happening{Kind: NoReading, Gauge: r.channels[i].name, Detail: s.why, From: s.spellFrom, N: s.spell})
-	s.spell, s.spellFrom, s.spellNoted = 0, 0, r.now
-}
-
-// tellSpells notes what has summed up for a minute, or all of it.
-func (r *Recorder) tellSpells(all bool) {
-	for i := range r.silences {
-		s := &r.silences[i]
-		if s.spell > 0 && (all || r.now-s.spellNoted >= spellEvery) {
-			r.tellSpell(i)
-		}
-	}
+	s.heard = s.last
+	r.endSpell(i)
 }
 
 // watchSilence finds the gauges and probes that have been silent for too long.
+// Where damaged frames come on the port, that is what is told of it.
 func (r *Recorder) watchSilence() {
 	for i := range r.silences {
 		s := &r.silences[i]
-		if !s.silent && r.now-s.last > s.limit() {
-			s.silent = true
-			r.happened(Happening{Kind: NoReading, Gauge: r.channels[i].name, From: s.last + r.offset,
-				Detail: "silent: nothing came for " + seconds(r.now-s.last)})
+		limit := s.limit()
+		s.silent = s.silent || r.now-s.last > limit
+		if s.told || s.port != portThere || r.now-s.heard <= limit || r.refusing(r.channels[i].port) {
+			continue
 		}
+		s.told = true
+		r.happened(Happening{Kind: NoReading, Gauge: r.channels[i].name, From: s.last + r.offset,
+			Detail: "silent: nothing came for " + seconds(r.now-s.heard)})
 	}
+}
+
+// portMoved notes the loss or return of the port of a gauge or probe, and
+// reports whether that is news: a port that was reopened because its gauges
+// are silent is none, where the silence was told.
+func (s *silence) portMoved(d *device.Reading, now int64) bool {
+	before := s.port
+	switch {
+	case d.Kind == device.PortBack:
+		s.port, s.heard = portThere, max(s.heard, now)
+	case d.Deaf && s.told:
+		s.port = portDeaf
+	default:
+		s.port = portLost
+	}
+	return s.port == portLost || before == portLost
 }

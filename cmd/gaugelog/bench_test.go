@@ -221,11 +221,13 @@ func TestBench(t *testing.T) {
 	for seed := range *benchSeeds {
 		t.Run(fmt.Sprintf("seed %d", seed), func(t *testing.T) {
 			b := conductBench(t, seed)
+			t.Run("schedule", b.checkSchedule)
 			t.Run("readings", b.checkReadings)
 			t.Run("ports", b.checkPorts)
 			t.Run("units", b.checkUnits)
 			t.Run("no readings", b.checkNoReadings)
 			t.Run("refused", b.checkRefused)
+			t.Run("ledger", b.checkLedger)
 			t.Run("verify", b.checkWhole)
 		})
 	}
