@@ -189,6 +189,9 @@ func (r *run) report(e *cluster, v verdict, moved []int) {
 		d.By = append(d.By, e.jump[g])
 	}
 	d.Size = largest(d.By)
+	if v.kind == SupportShift {
+		r.shifts = append(r.shifts, e)
+	}
 	switch {
 	case v.kind == SupportShift && r.chordPossible():
 		d.Treated = "a real movement: taken off by the support gauges"

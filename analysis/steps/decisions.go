@@ -140,6 +140,19 @@ func (r *run) ruling(c *cluster) string {
 	return ""
 }
 
+// rulingAt returns what a person decided about a disturbance without a
+// cluster, "" for nothing.
+func (r *run) rulingAt(from, to int64) string {
+	for i := range r.rules {
+		u := &r.rules[i]
+		if u.what == "disturbance" && u.at >= from-120*second && u.at <= to+120*second && u.name == "" {
+			u.used = true
+			return u.value
+		}
+	}
+	return ""
+}
+
 func (r *run) gauge(name string) int {
 	for i := range r.h.Rig.Gauges {
 		if r.h.Rig.Gauges[i].Name == name {

@@ -17,7 +17,7 @@ func (r *run) explain() {
 	}
 	for range 4 {
 		r.out.Disturbances, r.out.Excluded = r.out.Disturbances[:disturbances], r.out.Excluded[:excluded]
-		r.pending = r.pending[:pending]
+		r.pending, r.shifts = r.pending[:pending], nil
 		for i := range r.events {
 			r.events[i].taken = taken[i]
 		}

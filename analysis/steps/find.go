@@ -38,6 +38,7 @@ func Find(h *history.History, opt Options) (*Findings, error) {
 	r.buildSteps()
 	r.forget()
 	r.lasting()
+	r.slowSettlements()
 	if err := r.tracks(); err != nil {
 		return nil, err
 	}

@@ -246,6 +246,7 @@ type run struct {
 	stuckRuns []stuck
 	keys      []key
 	pending   []pendingOffset
+	shifts    []*cluster // sudden movements of a support
 	unmarked  []unmarkedStep
 	former    []unmarkedStep // those of the classification before
 	// kappa scales the given influence to the sags seen; 0 where unknown.

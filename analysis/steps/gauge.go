@@ -115,8 +115,9 @@ func (g *gauge) sag(mm float64) float64 { return g.sign * (mm - g.offset) / g.ga
 // resolution's floor.
 func (g *gauge) scatter() (noise, interval float64) {
 	var spread, second, gaps []float64
+	held := g.held()
 	for i, p := range g.seq {
-		if p.n >= 5 {
+		if p.n >= 5 && !held[i] {
 			spread = append(spread, p.sd)
 		}
 		if i > 0 {
@@ -129,10 +130,32 @@ func (g *gauge) scatter() (noise, interval float64) {
 	}
 	floor := floorU(g.res)
 	interval = Median(gaps)
-	if 2*len(spread) > len(g.seq) {
+	if 4*len(spread) > len(g.seq) {
 		return max(Median(spread), floor), interval
 	}
 	return max(trimmedSigma(second)/math.Sqrt(6), floor), interval
+}
+
+// heldBins is how many bins in a row may be of one value before they are taken
+// for those of a gauge on hold or at its stop, which tell nothing of scatter.
+const heldBins = 10
+
+// held says which bins lie in a row of at least heldBins of one value.
+func (g *gauge) held() []bool {
+	out := make([]bool, len(g.seq))
+	for i := 0; i < len(g.seq); {
+		j := i + 1
+		for j < len(g.seq) && g.seq[i].min == g.seq[i].max && g.seq[j].min == g.seq[i].min && g.seq[j].max == g.seq[i].min {
+			j++
+		}
+		if j-i >= heldBins {
+			for k := i; k < j; k++ {
+				out[k] = true
+			}
+		}
+		i = j
+	}
+	return out
 }
 
 // trimmedSigma estimates a standard deviation from absolute deviations: the

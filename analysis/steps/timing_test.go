@@ -159,8 +159,8 @@ func coverage(t *testing.T, n int, seed uint64) (covered float64, width float64,
 // Of steps over twenty times the noise the stated interval covers the true
 // start in at least 94 %, and is at most 1.2 sampling intervals wide.
 func TestStartIntervalCovers(t *testing.T) {
-	n := stepsDrawn
-	covered, width, missed := coverage(t, n, 1000)
+	n := *stepsDrawn
+	covered, width, missed := coverage(t, n, seedOf(1000, 0))
 	t.Logf("%d steps: %.1f %% covered, median width %.2f intervals, %d missed", n, 100*covered, width, missed)
 	if covered < 0.94 || width > 1.2 {
 		t.Errorf("%.1f %% covered (want 94), median width %.2f intervals (want 1.2), %d missed", 100*covered, width, missed)

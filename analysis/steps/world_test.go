@@ -236,6 +236,15 @@ func (w *world) history(t *testing.T) *history.History {
 			samples[g] = append(samples[g], history.Sample{Time: stamp, MM: ind})
 		}
 	}
+	h, err := history.FromSamples(history.Given{Rig: rig, Samples: samples, Marks: w.marked(rig), Amendments: w.amend})
+	if err != nil {
+		t.Fatal(err)
+	}
+	return h
+}
+
+// marked are the operator's entries.
+func (w *world) marked(rig *config.Rig) []history.Mark {
 	marks := append([]history.Mark(nil), w.marks...)
 	for i, c := range w.changes {
 		if math.IsNaN(c.late) {
@@ -249,11 +258,7 @@ func (w *world) history(t *testing.T) *history.History {
 			marks = append(marks, m)
 		}
 	}
-	h, err := history.FromSamples(history.Given{Rig: rig, Samples: samples, Marks: marks, Amendments: w.amend})
-	if err != nil {
-		t.Fatal(err)
-	}
-	return h
+	return marks
 }
 
 func (w *world) find(t *testing.T) *Findings {
