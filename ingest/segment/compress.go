@@ -82,7 +82,7 @@ func pack(fs FS, src File, plain, partial string, out *Compressed) (ix *frameInd
 		return nil, err
 	}
 	p := packer{dst: dst, enc: enc, name: plain, ix: new(frameIndex)}
-	s := splitter{r: io.NewSectionReader(src, 0, info.Size()), size: info.Size()}
+	s := splitter{r: io.NewSectionReader(src, 0, info.Size()), about: frameSize, size: info.Size()}
 	for final := false; !final; {
 		at := s.off
 		p.text, final, err = s.next(p.text)
@@ -184,7 +184,7 @@ func compareUnpacked(fs FS, src File, name string, ix *frameIndex, size int64) e
 	if back == nil || len(back.frames) != len(ix.frames) {
 		return fmt.Errorf("%s: reading it back gave no index; the plain segment stays", name)
 	}
-	dec := newFrameDecoder()
+	dec := newFrameDecoder(zstd.IgnoreChecksum(false))
 	defer dec.Close()
 	var stored, text, want []byte
 	at := int64(0)

@@ -2,9 +2,9 @@ package segment
 
 import (
 	"bytes"
-	"fmt"
 	"math/rand/v2"
 	"regexp"
+	"strconv"
 	"testing"
 
 	"github.com/influxdata/line-protocol/v2/lineprotocol"
@@ -14,52 +14,63 @@ import (
 // another way than the code.
 var exactForm = regexp.MustCompile(`^indication,gauge=[A-Za-z0-9_.-]{1,64} mm=-?[0-9]{1,9}(\.[0-9]{1,6})? [1-9][0-9]{18}\n$`)
 
-// agree checks one line: where the fast path takes it, it has exactly the form
-// and the library's decoder reads the same; where it has the form (and the
-// stamp fits), the fast path takes it.
-func agree(t *testing.T, line []byte) {
+// agree checks a text by itself: see agreeWith.
+func agree(t *testing.T, text []byte) {
 	t.Helper()
-	names := newInterner(nil)
+	agreeWith(t, text, newInterner(nil))
+}
+
+// agreeWith checks the lines of a text: those that the fast path takes have
+// exactly the form and the library's decoder reads the same; where it stops at
+// a line that has the form, its stamp does not fit. It returns how many it took.
+func agreeWith(t *testing.T, text []byte, names *interner) int {
+	t.Helper()
 	var cols columns
-	taken := fastLines(line, &cols, names)
-	if taken == 0 {
-		if exactForm.Match(line) {
-			if rec, ok, err := slowLine(line); ok && err == nil && rec.Kind == Indication {
-				t.Fatalf("the fast path refuses %q", line)
+	taken := fastLines(text, &cols, names)
+	if rest := text[taken:]; len(rest) > 0 {
+		if n := bytes.IndexByte(rest, '\n') + 1; n > 0 && exactForm.Match(rest[:n]) {
+			if rec, ok, err := slowLine(rest[:n]); ok && err == nil && rec.Kind == Indication {
+				t.Fatalf("the fast path refuses %q", rest[:n])
 			}
 		}
-		return
 	}
-	line = line[:taken]
+	line := text[:taken]
 	for i := range cols.gauge {
 		n := bytes.IndexByte(line, '\n') + 1
-		one := line[:n]
+		agreeOn(t, line[:n], names.names[cols.gauge[i]], cols.micro[i], cols.time[i])
 		line = line[n:]
-		if !exactForm.Match(one) {
-			t.Fatalf("the fast path takes %q", one)
-		}
-		d := lineprotocol.NewDecoderWithBytes(one)
-		d.Next()
-		m, err := d.Measurement()
-		key, value, err2 := d.NextTag()
-		if err != nil || err2 != nil || string(m) != "indication" || string(key) != "gauge" || string(value) != names.names[cols.gauge[i]] {
-			t.Fatalf("%q: gauge %q, the library says %q", one, names.names[cols.gauge[i]], value)
-		}
-		f, v, err := d.NextField()
-		if err != nil || string(f) != "mm" || v.FloatV() != float64(cols.micro[i])/1e6 {
-			t.Fatalf("%q: %d millionths, the library says %v", one, cols.micro[i], v)
-		}
-		raw, err := d.TimeBytes()
-		if err != nil || fmt.Sprint(cols.time[i]) != string(raw) {
-			t.Fatalf("%q: time %d, the library says %s", one, cols.time[i], raw)
-		}
-		rec, ok, err := slowLine(one)
-		if err != nil || !ok || rec.Point != nil || rec.MM != float64(cols.micro[i])/1e6 || rec.Time != cols.time[i] || rec.Name != string(value) {
-			t.Fatalf("%q: the slow path gives %+v %v", one, rec, err)
-		}
 	}
 	if len(line) > 0 {
 		t.Fatalf("%q taken without a row", line)
+	}
+	return len(cols.gauge)
+}
+
+// agreeOn holds one line that the fast path took against the library and the
+// slow path.
+func agreeOn(t *testing.T, one []byte, name string, micro, stamp int64) {
+	t.Helper()
+	if !exactForm.Match(one) {
+		t.Fatalf("the fast path takes %q", one)
+	}
+	d := lineprotocol.NewDecoderWithBytes(one)
+	d.Next()
+	m, err := d.Measurement()
+	key, value, err2 := d.NextTag()
+	if err != nil || err2 != nil || string(m) != "indication" || string(key) != "gauge" || string(value) != name {
+		t.Fatalf("%q: gauge %q, the library says %q", one, name, value)
+	}
+	f, v, err := d.NextField()
+	if err != nil || string(f) != "mm" || v.FloatV() != float64(micro)/1e6 {
+		t.Fatalf("%q: %d millionths, the library says %v", one, micro, v)
+	}
+	raw, err := d.TimeBytes()
+	if err != nil || strconv.FormatInt(stamp, 10) != string(raw) {
+		t.Fatalf("%q: time %d, the library says %s", one, stamp, raw)
+	}
+	rec, ok, err := slowLine(one)
+	if err != nil || !ok || rec.Point != nil || rec.MM != float64(micro)/1e6 || rec.Time != stamp || rec.Name != name {
+		t.Fatalf("%q: the slow path gives %+v %v", one, rec, err)
 	}
 }
 
@@ -79,6 +90,8 @@ var seeds = []string{
 	"indication,gauge=mid mm=01.5 1790000000000000000\n",
 	"indication,gauge=mid mm=1i 1790000000000000000\n",
 	"indication,gauge=mid mm=1.5 179000000000000000\n",
+	"indication,gauge=mid mm=1.5 \x00\x00\x00\x00\x00\x00\x00\x0000000000000\n",
+	"indication,gauge=mid mm=1.5 \x01\x00\x00\x00\x00\x00\x00\x0000000000000\n",
 	"indication,gauge=mid mm=1.5\n",
 	"indication,gauge=mid  mm=1.5 1790000000000000000\n",
 	"indication,gauge=mid mm=1.5,mm=2 1790000000000000000\n",

@@ -193,7 +193,7 @@ func (d *Folder) commentsAt(f *segFile, see func(it item, at int64) bool) error 
 		return err
 	}
 	defer closeText()
-	s := splitter{r: text}
+	s := splitter{r: text, about: chunkSize}
 	if info, err := file.Stat(); err == nil && !f.compressed {
 		s.size = info.Size()
 	}

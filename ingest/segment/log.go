@@ -167,7 +167,7 @@ func (l *Log) catchUp(f File, size int64) error {
 	if size == l.good {
 		return nil // nobody else wrote, as nearly always
 	}
-	s := splitter{r: io.NewSectionReader(f, l.good, size-l.good), size: size - l.good}
+	s := splitter{r: io.NewSectionReader(f, l.good, size-l.good), about: chunkSize, size: size - l.good}
 	base := l.good
 	for {
 		at := base + s.off

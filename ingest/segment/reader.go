@@ -160,7 +160,7 @@ func (r *Reader) produce(f *segFile, work chan<- *job) bool {
 		return r.failed(f, 0, err, work)
 	}
 	defer closeText()
-	s := splitter{r: text, foreign: !f.own}
+	s := splitter{r: text, about: chunkSize, foreign: !f.own}
 	if !f.compressed {
 		s.size = f.size
 	}
@@ -239,7 +239,7 @@ func decodeJobs(work <-chan *job, who int) {
 	for j := range work {
 		if j.frame != nil && j.file.compressed && j.fail == nil {
 			if dec == nil {
-				dec = newFrameDecoder()
+				dec = newFrameDecoder(zstd.IgnoreChecksum(true))
 			}
 			j.text, j.fail = j.frame.unpack(dec, j.packd, j.text)
 		}

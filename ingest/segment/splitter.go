@@ -9,9 +9,10 @@ import (
 )
 
 // splitter cuts a text into chunks of whole blocks (own files) or whole lines
-// (foreign ones), of about chunkSize, in memory bounded by the longest block.
+// (foreign ones), of about the same length, in memory bounded by the longest block.
 type splitter struct {
 	r       io.Reader
+	about   int // how long a chunk is at least, but for the last
 	foreign bool
 	carry   []byte
 	off     int64 // of the next chunk in the text
@@ -29,7 +30,7 @@ type splitter struct {
 func (s *splitter) next(buf []byte) (chunk []byte, final bool, err error) {
 	buf = append(buf[:0], s.carry...)
 	s.carry = s.carry[:0]
-	for target := chunkSize; ; target *= 2 {
+	for target := s.about; ; target *= 2 {
 		buf = s.fill(buf, target)
 		if s.eof {
 			s.off += int64(len(buf))

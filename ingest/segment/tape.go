@@ -141,7 +141,7 @@ func (t *Tape) seek(f *segFile, offset int64) error {
 		}
 	}
 	t.base = offset
-	t.s = splitter{r: text, foreign: !f.own}
+	t.s = splitter{r: text, about: chunkSize, foreign: !f.own}
 	return nil
 }
 
