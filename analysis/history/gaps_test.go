@@ -93,6 +93,27 @@ func tenSeconds(t *testing.T, off [2]int64) *History {
 	return h
 }
 
+// An interval without readings is explained by what the gauge sent instead.
+func TestGapOfFramesWithoutReadings(t *testing.T) {
+	for want, e := range map[string]Event{
+		"no reading: over-range":                        {Kind: "no-reading", Gauge: "mid", From: at(2000), Time: at(2400), N: 400, Detail: "over-range"},
+		"no reading: usb:1: last: wrong checksum":       {Kind: "frames-refused", Gauge: "mid", From: at(2000), Time: at(2400), N: 400, Detail: "usb:1: last: wrong checksum"},
+		"no reading, and nothing recorded says why":     {Kind: "no-reading", Gauge: "left", Time: at(2400), Detail: "over-range"},
+		"no reading by its stamps: the clock was moved": {Kind: "clock-stepped", Time: at(2400), Detail: "the clock was moved"},
+	} {
+		h := tenSeconds(t, [2]int64{at(2000), at(2500)})
+		h.Events = []Event{e}
+		for i := range h.Rig.Gauges {
+			if h.Rig.Gauges[i].Name != "mid" {
+				continue
+			}
+			if got := h.unexplained(i); len(got) != 1 || got[0].Why != want {
+				t.Errorf("%+v, want %q", got, want)
+			}
+		}
+	}
+}
+
 // Where the clock before a power cut was wrong, the gap begins at the last
 // reading.
 func TestGapBehindAWrongClock(t *testing.T) {

@@ -221,8 +221,25 @@ func (h *History) unexplainedWhy(g *Gap) string {
 		if e.Kind == "clock-stepped" && e.Time > g.From-second && e.Time <= g.To+second {
 			return "no reading by its stamps: " + e.Detail
 		}
+		if e.Time > g.From && e.Time <= g.To+second && h.spoiled(e, g.Gauge) {
+			return "no reading: " + e.Detail
+		}
 	}
 	return "no reading, and nothing recorded says why"
+}
+
+// spoiled tells whether the event is of frames of the gauge that held no
+// number, or of damaged ones on its port.
+func (h *History) spoiled(e *Event, gauge string) bool {
+	switch e.Kind {
+	case "no-reading":
+		return e.Gauge == gauge
+	case "frames-refused":
+		return e.Gauge == gauge || e.Gauge == "" && slices.ContainsFunc(h.Rig.Gauges, func(g config.Gauge) bool {
+			return g.Name == gauge && g.Port != "" && strings.HasPrefix(e.Detail, g.Port+": ")
+		})
+	}
+	return false
 }
 
 // pacing is how far apart the rig's sampling lets readings lie, in nanoseconds.
