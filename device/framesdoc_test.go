@@ -41,8 +41,11 @@ func examples(t *testing.T) []example {
 func rigOf(description string) string {
 	name := strings.Fields(description)[2]
 	channel := ""
-	if strings.Contains(description, "modbus") {
+	switch {
+	case strings.Contains(description, "modbus"):
 		channel = `, channel: "7"`
+	case strings.Contains(description, "{channel}"):
+		channel = `, channel: "07"`
 	}
 	return `
 specimen: {name: a, section: {shape: rectangle, width: 140 mm, depth: 38 mm}, length: 800 mm}
