@@ -25,6 +25,7 @@ func (r *Rig) Check() []Problem {
 	c.records()
 	c.limits()
 	c.alarms()
+	c.forward()
 	c.problems.sort()
 	return c.problems
 }

@@ -12,7 +12,7 @@ import (
 // mend.
 var wrongRigs = []struct{ name, old, new, want, mend string }{
 	{"unknown key", "  material: plastic", "  §materail: plastic", `unknown key "materail" in specimen`, "did you mean material?"},
-	{"unknown empty key", "timezone: Europe/Dublin", "§forwards:", `unknown key "forwards"`, "known here: alarms, details, evaluate"},
+	{"unknown empty key", "timezone: Europe/Dublin", "§shelves:", `unknown key "shelves"`, "known here: alarms, details, evaluate"},
 	{"wrong case", "    at: 300 mm", "    §At: 300 mm", `unknown key "At" in gauges[mid]`, "did you mean at?"},
 	{"key in a list, in braces", "{name: left,  at: 0 mm}", "{name: left, at: 0 mm, §knid: pin}", `unknown key "knid" in supports[left]`, "did you mean kind?"},
 	{"repeated key", "  length: 800 mm", "  length: 800 mm\n  §length: 900 mm", "key length stands twice in specimen (first in line 10)", "keep one"},

@@ -19,6 +19,7 @@ type Rig struct {
 	Read     Read       `mapstructure:"read"`
 	Limits   Limits     `mapstructure:"limits"`
 	Alarms   Alarms     `mapstructure:"alarms"`
+	Forward  Forward    `mapstructure:"forward"`
 	Evaluate []string   `mapstructure:"evaluate"`
 	Forecast []Duration `mapstructure:"forecast"`
 

@@ -87,7 +87,7 @@ func TestCommentedExamplesLoad(t *testing.T) {
 		}
 		return strings.Join(out, "")
 	}
-	full := text + block("frames") + block("probes") + block("alarms") + block("evaluate") + block("forecast") + block("gravity")
+	full := text + block("frames") + block("probes") + block("alarms") + block("forward") + block("evaluate") + block("forecast") + block("gravity")
 	for _, key := range []string{"mass", "expect", "bar", "stand", "calibration", "contact", "serial_number", "silent_after", "u", "line"} {
 		full = regexp.MustCompile(`(?m)^( +)# `+key+`:`).ReplaceAllString(full, "${1}"+key+":")
 	}
@@ -98,7 +98,7 @@ func TestCommentedExamplesLoad(t *testing.T) {
 	for _, p := range append(r.Check(), r.CheckPorts()...) {
 		t.Errorf("%v (%s)", p, p.Fix)
 	}
-	if len(r.Frames) != 7 || len(r.Probes) != 1 || len(r.Alarms.Command) != 2 || r.Gauges[0].Calibration == nil || r.Specimen.Expect.Modulus == nil {
+	if len(r.Frames) != 7 || len(r.Probes) != 1 || len(r.Alarms.Command) != 2 || r.Forward.To == "" || r.Gauges[0].Calibration == nil || r.Specimen.Expect.Modulus == nil {
 		t.Errorf("not all examples were read: %d frames, %d probes", len(r.Frames), len(r.Probes))
 	}
 	sections := regexp.MustCompile(`(?m)^  # (section: .*)$`).FindAllStringSubmatch(text, -1)

@@ -6,9 +6,6 @@ import (
 	"crypto/sha256"
 	"encoding/hex"
 	"errors"
-	"fmt"
-	"io"
-	"io/fs"
 	"net/http"
 	"os"
 	"path/filepath"
@@ -58,6 +55,8 @@ type Options struct {
 	Tell func(Notice)
 	// Wait waits for a time or the context; nil: really.
 	Wait func(context.Context, time.Duration) error
+	// opened hands the forwarder to a test.
+	opened func(*Forwarder)
 	// Client sends; nil: one that follows no redirect, with a limit of 60 s.
 	Client *http.Client
 }
@@ -85,6 +84,7 @@ type Forwarder struct {
 	bytes    int // bound of one body; less once the server said 413
 	refusals int // in a row
 	count    Count
+	board    board
 }
 
 // Open takes up where an earlier forwarding of the run to this server ended.
@@ -124,6 +124,9 @@ func Open(o Options) (*Forwarder, error) {
 	f.name = "to-" + hex.EncodeToString(sum[:6])
 	if err := f.openState(id); err != nil {
 		return nil, errors.Join(err, f.Close())
+	}
+	if o.opened != nil {
+		o.opened(f)
 	}
 	return f, nil
 }
@@ -172,6 +175,7 @@ func (f *Forwarder) Close() error {
 func (f *Forwarder) Count() Count { return f.count }
 
 func (f *Forwarder) tell(n Notice) {
+	f.noted(n)
 	if f.o.Tell != nil {
 		f.o.Tell(n)
 	}
@@ -200,147 +204,4 @@ func (f *Forwarder) Run(ctx context.Context, follow bool) error {
 			return err
 		}
 	}
-}
-
-// signature changes when the folder does.
-func (f *Forwarder) signature() (string, error) {
-	entries, err := f.o.FS.ReadDir(segment.ReadingsDir)
-	if err != nil && !errors.Is(err, fs.ErrNotExist) {
-		return "", err
-	}
-	sign := fmt.Sprint(len(entries))
-	if n := len(entries); n > 0 {
-		if info, err := entries[n-1].Info(); err == nil {
-			sign += fmt.Sprint(" ", entries[n-1].Name(), info.Size())
-		}
-	}
-	for _, name := range []string{segment.MarksFile, segment.EventsFile} {
-		if file, err := f.o.FS.Open(name); err == nil {
-			if info, err := file.Stat(); err == nil {
-				sign += fmt.Sprint(" ", info.Size())
-			}
-			file.Close()
-		}
-	}
-	return sign, nil
-}
-
-// pass sends what is new: the logs first, for they are small and say what the
-// readings mean, then what was held back and is no more, then the readings.
-func (f *Forwarder) pass(ctx context.Context) error {
-	d, err := segment.OpenFolder(f.o.FS)
-	if err != nil {
-		return err
-	}
-	for _, name := range []string{segment.MarksFile, segment.EventsFile} {
-		if err := f.file(ctx, d, name); err != nil && !errors.Is(err, fs.ErrNotExist) {
-			return err
-		}
-	}
-	if err := f.held(ctx, d); err != nil {
-		return err
-	}
-	for _, name := range d.Names() {
-		if err := f.file(ctx, d, name); err != nil {
-			return err
-		}
-	}
-	return nil
-}
-
-// file sends the rest of one file.
-func (f *Forwarder) file(ctx context.Context, d *segment.Folder, name string) error {
-	t, err := d.Tape(name, f.cursor.Offsets[name])
-	if errors.Is(err, segment.ErrNoPlace) {
-		f.tell(Notice{Again: name + ": " + err.Error() + ": it is sent again"})
-		f.cursor.Offsets[name] = 0
-		t, err = d.Tape(name, 0)
-	}
-	if err != nil {
-		return err
-	}
-	defer t.Close()
-	for {
-		s, err := t.Next()
-		if err == io.EOF {
-			return nil
-		}
-		if err != nil {
-			return err
-		}
-		from := f.cursor.Offsets[name]
-		if s.Unset > 0 {
-			f.count.Held += s.Unset
-			f.cursor.hold(stretch{name, from, s.To})
-		} else if err := f.stretch(ctx, s, t.Gauges()); err != nil {
-			return err
-		}
-		f.cursor.Offsets[name] = s.To
-		if err := syncRead(t); err != nil {
-			return err
-		}
-		if err := f.cursor.save(f.state, f.name); err != nil {
-			return err
-		}
-	}
-}
-
-// stretch sends one stretch of a file.
-func (f *Forwarder) stretch(ctx context.Context, s segment.Stretch, gauges []string) (err error) {
-	f.lines, err = f.liner.batch(f.lines[:0], s.Batch, gauges, func(err error) error {
-		return f.setAside([]byte("\n"), "a record of "+s.File+" cannot be sent: "+err.Error())
-	})
-	if err != nil {
-		return err
-	}
-	return f.send(ctx, f.lines)
-}
-
-// held sends what was held back where its clock is known now.
-func (f *Forwarder) held(ctx context.Context, d *segment.Folder) error {
-	for i := 0; i < len(f.cursor.Held); {
-		h := &f.cursor.Held[i]
-		done, err := f.heldOne(ctx, d, h)
-		if err != nil {
-			return err
-		}
-		if !done {
-			i++
-			continue
-		}
-		f.cursor.Held = append(f.cursor.Held[:i], f.cursor.Held[i+1:]...)
-		if err := f.cursor.save(f.state, f.name); err != nil {
-			return err
-		}
-	}
-	return nil
-}
-
-// heldOne sends as much of a held stretch as can be; true when all is sent.
-func (f *Forwarder) heldOne(ctx context.Context, d *segment.Folder, h *stretch) (bool, error) {
-	t, err := d.Tape(h.File, h.From)
-	if errors.Is(err, segment.ErrNoPlace) {
-		return true, nil // it was written again elsewhere, and is held from there
-	}
-	if err != nil {
-		return false, err
-	}
-	defer t.Close()
-	for h.From < h.To {
-		s, err := t.Next()
-		if err == io.EOF {
-			return true, nil
-		}
-		if err != nil || s.Unset > 0 {
-			return false, err
-		}
-		if err := f.stretch(ctx, s, t.Gauges()); err != nil {
-			return false, err
-		}
-		h.From = s.To
-		if err := f.cursor.save(f.state, f.name); err != nil {
-			return false, err
-		}
-	}
-	return true, nil
 }
