@@ -40,6 +40,10 @@ func (r *Recorder) stepped(by int64) {
 	// Not cut: that would say of stamps by the old clock that it had been set.
 	r.endBatch()
 	r.offset += by
+	if !r.set && r.policy.changedAt < r.o.Start.Boot {
+		// A change of before this recording is known by its wall clock alone.
+		r.policy.changedAt -= by
+	}
 	for _, c := range r.channels {
 		c.memory.rebase(by)
 		if by < 0 {

@@ -103,7 +103,7 @@ func conductBench(t *testing.T, seed uint64) *benchRun {
 			t.Fatal(err)
 		}
 		defer dir.Close()
-		c.runs = append(c.runs, &conductedRun{rig: d.Rig, rigText: d.RigText, dir: dir, runID: fmt.Sprintf("bench-%d", n)})
+		c.runs = append(c.runs, &conductedRun{rig: d.Rig, rigText: d.RigText, fs: dir.FS(), runID: fmt.Sprintf("bench-%d", n)})
 		b.folders = append(b.folders, folder)
 	}
 	began := time.Now()

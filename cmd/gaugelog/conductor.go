@@ -4,7 +4,6 @@ import (
 	"cmp"
 	"context"
 	"errors"
-	"fmt"
 	"log/slog"
 	"slices"
 	"sync"
@@ -13,6 +12,7 @@ import (
 	"gaugelog/config"
 	"gaugelog/device"
 	"gaugelog/ingest"
+	"gaugelog/ingest/segment"
 	"gaugelog/simulators"
 	"gaugelog/simulators/terminals"
 )
@@ -31,11 +31,22 @@ type conductor struct {
 	runs     []*conductedRun
 	// progress is told how far the simulation is, in nanoseconds; may be nil.
 	progress func(reached int64)
+	// ports puts the simulated ports somewhere; nil: on pseudo-terminals.
+	ports func(names []string, heard terminals.Heard) (simPorts, error)
+	// clockOf turns an instant of the simulation into what the computer's clocks
+	// say, and whether its wall clock has been set; nil: true time, always set.
+	clockOf func(simulators.Instant) (at device.Instant, set bool)
+	// stops are done at their instants, in their order, behind all that was
+	// sent before.
+	stops []conductedStop
+	// cut is told that the power is gone, before anything is opened again; it
+	// may put another file system in a run's place. May be nil.
+	cut func()
 
-	terms  *terminals.Bank
+	terms  simPorts
 	lines  []*simLine
 	byPort map[string]*simLine
-	clock  *ingest.FixedClock
+	clock  ingest.FixedClock
 
 	mu       sync.Mutex
 	present  device.Instant // of the last event of the schedule
@@ -46,12 +57,21 @@ type conductor struct {
 	running chan error
 }
 
+// conductedStop is something that is done to the recording at an instant, in
+// nanoseconds from the start.
+type conductedStop struct {
+	at int64
+	do func()
+}
+
 // conductedRun is one rig and the run folder it is recorded into.
 type conductedRun struct {
 	rig     *config.Rig
 	rigText []byte
-	dir     *ingest.Dir
+	fs      segment.FS
 	runID   string
+	// mostWaiting bounds what waits in memory for the disk; 0: the usual.
+	mostWaiting int
 
 	rec *ingest.Recorder // nil while the computer is without power
 }
@@ -71,19 +91,20 @@ func (c *conductor) conduct(ctx context.Context) (err error) {
 		return err
 	}
 	defer func() { err = errors.Join(err, c.terms.Close()) }()
-	at := simInstant(c.computer.Instant(0))
-	if err := c.powerUp(ctx, at, c.computer.BootID(0)); err != nil {
+	if err := c.powerUp(ctx, c.computer.Instant(0), c.computer.BootID(0)); err != nil {
 		return err
 	}
+	at := c.instant(c.computer.Instant(0))
 	defer func() { err = errors.Join(err, c.closeBank()) }()
 	for done := false; !done; {
-		st := c.source.Next(c.source.End(), longestStretch)
+		st := c.source.Next(c.until(), longestStretch)
 		done = st.Done
+		c.look(st.At)
 		if err := c.play(ctx, st); err != nil {
 			return err
 		}
 		if c.powered() {
-			at = simInstant(st.At)
+			at = c.instant(st.At)
 			if err := c.tick(at); err != nil {
 				return err
 			}
@@ -93,6 +114,10 @@ func (c *conductor) conduct(ctx context.Context) (err error) {
 				return err
 			}
 		}
+		for len(c.stops) > 0 && c.stops[0].at <= st.Reached {
+			c.stops[0].do()
+			c.stops = c.stops[1:]
+		}
 		if c.progress != nil {
 			c.progress(st.Reached)
 		}
@@ -101,6 +126,14 @@ func (c *conductor) conduct(ctx context.Context) (err error) {
 		}
 	}
 	return c.end(at)
+}
+
+// until is how far the next stretch may go.
+func (c *conductor) until() int64 {
+	if len(c.stops) > 0 {
+		return min(c.source.End(), c.stops[0].at)
+	}
+	return c.source.End()
 }
 
 // powered tells whether the recording computer runs.
@@ -174,7 +207,7 @@ func (c *conductor) order(port string) int {
 
 // happen does what the schedule asks for.
 func (c *conductor) happen(ctx context.Context, e simulators.Event) error {
-	at := simInstant(e.At)
+	at := c.instant(e.At)
 	c.setPresent(at)
 	switch e.Kind {
 	case simulators.MarkDue:
@@ -185,9 +218,13 @@ func (c *conductor) happen(ctx context.Context, e simulators.Event) error {
 		for _, run := range c.runs {
 			run.rec = nil
 		}
-		return c.closeBank()
+		err := c.closeBank()
+		if c.cut != nil {
+			c.cut()
+		}
+		return err
 	case simulators.PowerBack:
-		return c.powerUp(ctx, at, e.Boot)
+		return c.powerUp(ctx, e.At, e.Boot)
 	case simulators.Unplugged:
 		return c.unplug(ctx, c.byPort[e.Port])
 	case simulators.Plugged:
@@ -203,7 +240,7 @@ func (c *conductor) setPresent(at device.Instant) {
 }
 
 func (c *conductor) mark(e simulators.Event) error {
-	at := simInstant(e.At)
+	at := c.instant(e.At)
 	m := ingest.Mark{Time: at.Wall, Step: e.Mark.Step}
 	for _, l := range e.Mark.Loads {
 		v := ingest.LoadValue{Name: l.Name, Newton: l.Newton, Shown: l.Shown}
@@ -214,8 +251,8 @@ func (c *conductor) mark(e simulators.Event) error {
 		m.Loads = append(m.Loads, v)
 	}
 	run := c.runs[e.Rig]
-	c.clock.At = at
-	if _, err := ingest.AppendMark(run.dir.FS(), m, at, c.clock.State()); err != nil {
+	c.look(e.At)
+	if _, err := ingest.AppendMark(run.fs, m, at, c.clock.State()); err != nil {
 		return err
 	}
 	if run.rec == nil {
@@ -225,17 +262,19 @@ func (c *conductor) mark(e simulators.Event) error {
 }
 
 // powerUp starts the recording programs of one life of the computer.
-func (c *conductor) powerUp(ctx context.Context, at device.Instant, boot string) error {
+func (c *conductor) powerUp(ctx context.Context, i simulators.Instant, boot string) error {
 	for _, l := range c.lines {
 		l.forget()
 	}
+	at := c.instant(i)
 	c.setPresent(at)
-	c.clock = &ingest.FixedClock{At: at, Known: ingest.ClockState{BootID: boot, Synchronised: true}}
+	c.clock.Known.BootID = boot
+	c.look(i)
 	var rigs []*config.Rig
 	for _, run := range c.runs {
 		rec, err := ingest.Open(ingest.Options{
-			FS: run.dir.FS(), Rig: run.rig, RigBytes: run.rigText, Run: run.runID,
-			Clock: c.clock, Start: at, Compress: true,
+			FS: run.fs, Rig: run.rig, RigBytes: run.rigText, Run: run.runID,
+			Clock: &c.clock, Start: at, Compress: true, MostWaiting: run.mostWaiting,
 		})
 		if err != nil {
 			return err
@@ -281,59 +320,20 @@ func (c *conductor) closeBank() error {
 	return err
 }
 
-// unplug takes a port away and waits until the device has noticed, for every
-// rig that uses it.
-func (c *conductor) unplug(ctx context.Context, l *simLine) error {
-	if err := c.terms.Unplug(l.index); err != nil || !c.powered() {
-		return err
+// instant is what the computer's clocks say at an instant of the simulation.
+func (c *conductor) instant(i simulators.Instant) device.Instant {
+	if c.clockOf == nil {
+		return device.Instant{Wall: i.Wall, Boot: i.Boot}
 	}
-	ctx, stop := context.WithTimeoutCause(ctx, patience, fmt.Errorf("nobody noticed that port %s was unplugged", l.name))
-	defer stop()
-	for c.lost(l.name) < len(l.rigs) {
-		select {
-		case <-c.news:
-		case <-ctx.Done():
-			return context.Cause(ctx)
-		}
-	}
-	return c.deliver()
+	at, _ := c.clockOf(i)
+	return at
 }
 
-// lost counts the rigs that were told of a port's loss and have not been
-// handed the news yet.
-func (c *conductor) lost(port string) (n int) {
-	c.mu.Lock()
-	defer c.mu.Unlock()
-	for _, r := range c.readings {
-		if r.Kind == device.PortLost && r.Port == port {
-			n++
-		}
+// look has the recorders' clock show an instant of the simulation.
+func (c *conductor) look(i simulators.Instant) {
+	if c.clockOf == nil {
+		c.clock.At, c.clock.Known.Synchronised = c.instant(i), true
+		return
 	}
-	return n
-}
-
-// plug brings a port back and waits until the device has opened it.
-func (c *conductor) plug(ctx context.Context, l *simLine) error {
-	if _, err := c.terms.Plug(l.index); err != nil || !c.powered() {
-		return err
-	}
-	for began := time.Now(); ; {
-		for _, s := range c.bank.Stats() {
-			if s.Port == l.name && s.Open {
-				return nil
-			}
-		}
-		if time.Since(began) > patience {
-			return fmt.Errorf("nobody opened port %s again after it was plugged", l.name)
-		}
-		select {
-		case <-time.After(time.Millisecond):
-		case <-ctx.Done():
-			return ctx.Err()
-		}
-	}
-}
-
-func simInstant(i simulators.Instant) device.Instant {
-	return device.Instant{Wall: i.Wall, Boot: i.Boot}
+	c.clock.At, c.clock.Known.Synchronised = c.clockOf(i)
 }

@@ -15,7 +15,6 @@ import (
 	"gaugelog/config"
 	"gaugelog/device"
 	"gaugelog/simulators"
-	"gaugelog/simulators/terminals"
 	"gaugelog/simulators/wire"
 )
 
@@ -61,7 +60,11 @@ func (c *conductor) openLines() error {
 		c.byPort[p.Name] = l
 		names = append(names, p.Name)
 	}
-	terms, err := terminals.Open(names, c.heard)
+	open := c.ports
+	if open == nil {
+		open = openTerminals
+	}
+	terms, err := open(names, c.heard)
 	c.terms = terms
 	return err
 }
@@ -307,20 +310,5 @@ func (c *conductor) Stamp(port string, offset int64) device.Instant {
 		defer c.mu.Unlock()
 		return c.present
 	}
-	return simInstant(l.frames[i].At)
-}
-
-// Open opens the pseudo-terminal behind a simulated port's name, wherever it
-// is now.
-func (c *conductor) Open(ctx context.Context, name string, line config.Line) (device.Port, error) {
-	for _, t := range c.terms.Terminals() {
-		if t.Name != name {
-			continue
-		}
-		if t.Path == "" {
-			return nil, fmt.Errorf("port %s is unplugged", name)
-		}
-		return device.SystemOpener{}.Open(ctx, t.Path, line)
-	}
-	return nil, fmt.Errorf("no simulated port is called %s", name)
+	return c.instant(l.frames[i].At)
 }

@@ -58,7 +58,7 @@ func runDemo(cmd *cobra.Command, into string, seed uint64) error {
 	bar := newProgress(cmd.ErrOrStderr(), "recording eight days of readings", sim.End())
 	c := &conductor{
 		source: sim, computer: sim, progress: bar.at,
-		runs: []*conductedRun{{rig: demo.Rig, rigText: demo.RigText, dir: dir, runID: fmt.Sprintf("demo-%d", seed)}},
+		runs: []*conductedRun{{rig: demo.Rig, rigText: demo.RigText, fs: dir.FS(), runID: fmt.Sprintf("demo-%d", seed)}},
 	}
 	began := time.Now()
 	if err := c.conduct(cmd.Context()); err != nil {

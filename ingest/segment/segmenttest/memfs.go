@@ -389,7 +389,11 @@ func (f *file) Sync() error {
 		n.lost = append(n.lost, [2]int{len(n.synced), len(n.data)})
 		return err
 	}
-	n.synced = slices.Clone(n.data)
+	// Bytes are only ever appended, so that those here now stay as they are.
+	n.synced = n.data[:len(n.data):len(n.data)]
+	if len(n.lost) > 0 {
+		n.synced = slices.Clone(n.synced)
+	}
 	for _, l := range n.lost {
 		clear(n.synced[l[0]:l[1]])
 	}
