@@ -71,7 +71,7 @@ func (r *Recorder) send() {
 			r.writer.todo <- r.inFlight
 			return
 		}
-		r.settle(outcome{batch: r.inFlight, err: r.store.commit(r.inFlight), moved: r.store.takeMoved(), refused: r.store.takeRefused()})
+		r.settle(r.store.try(r.inFlight))
 		if r.failing {
 			return
 		}
@@ -100,6 +100,10 @@ type outcome struct {
 	moved []string
 	// refused counts values that line protocol cannot carry.
 	refused int64
+	// eventsErr is what keeps events in memory, nil where nothing does;
+	// eventsLost counts those that memory had no room for.
+	eventsErr  error
+	eventsLost loss
 }
 
 // settle draws the consequences of a commit.
@@ -114,6 +118,7 @@ func (r *Recorder) settle(o outcome) {
 	if o.refused > 0 {
 		r.happened(Happening{Kind: Dropped, N: o.refused, Detail: "readings dropped: line protocol cannot carry them"})
 	}
+	r.settleEvents(&o)
 	if o.err != nil {
 		r.fail(o.err)
 		return
@@ -130,6 +135,23 @@ func (r *Recorder) settle(o outcome) {
 	r.waiting = append(r.waiting[:0], r.waiting[1:]...)
 	o.batch.reset()
 	r.spare = append(r.spare, o.batch)
+}
+
+// settleEvents tells of a fault of events.lp, and of its end.
+func (r *Recorder) settleEvents(o *outcome) {
+	if o.eventsLost.n > 0 {
+		if r.eventsLost.n == 0 {
+			r.eventsLost.from = o.eventsLost.from
+		}
+		r.eventsLost.n += o.eventsLost.n
+	}
+	switch was := r.eventsError != nil; {
+	case o.eventsErr != nil && !was:
+		r.happened(Happening{Kind: DiskFull, Detail: eventsName + ": " + faultText(o.eventsErr) + "; events wait in memory, readings go on"})
+	case o.eventsErr == nil && was:
+		r.happened(Happening{Kind: DiskBack, Detail: eventsName + " takes events again"})
+	}
+	r.eventsError = o.eventsErr
 }
 
 // fail notes that the disk takes nothing. The batch stays first in line.
@@ -178,7 +200,7 @@ func (r *Recorder) noteLosses() {
 			Detail: "readings dropped: the disk took nothing and memory was full"})
 		*l = loss{}
 	}
-	if l := r.eventsLost; l.n > 0 && len(r.filling.events) < mostEvents {
+	if l := r.eventsLost; l.n > 0 && r.eventsError == nil && len(r.filling.events) < mostEvents {
 		r.eventsLost = loss{}
 		r.happened(Happening{Kind: Dropped, From: l.from, N: l.n, Detail: "events dropped: too many at once"})
 	}
@@ -198,15 +220,15 @@ func (r *Recorder) flushSync() error {
 		}
 		for tries := 0; len(r.waiting) > 0; {
 			b := r.waiting[0]
-			err := r.store.commit(b)
 			r.inFlight, r.sentAt, r.lastCommit = b, r.now, r.now
-			r.settle(outcome{batch: b, err: err, moved: r.store.takeMoved(), refused: r.store.takeRefused()})
-			if err == nil {
+			o := r.store.try(b)
+			r.settle(o)
+			if o.err == nil {
 				tries = 0
 				continue
 			}
 			if tries++; tries == lastTries {
-				return fmt.Errorf("%s: %w", faultText(err), err)
+				return fmt.Errorf("%s: %w", faultText(o.err), o.err)
 			}
 		}
 	}

@@ -18,8 +18,7 @@ func startWriter(s *store) *writer {
 		// goroutine, and fault injection can count the calls of this one.
 		runtime.LockOSThread()
 		for b := range w.todo {
-			err := s.commit(b)
-			w.done <- outcome{batch: b, err: err, moved: s.takeMoved(), refused: s.takeRefused()}
+			w.done <- s.try(b)
 		}
 	}()
 	return w

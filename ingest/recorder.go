@@ -108,6 +108,7 @@ type Recorder struct {
 	lost        int64 // readings dropped so far, for Status
 	stored      int64
 	commitError error
+	eventsError error // keeps events in memory; nil: nothing does
 	freeAsked   int64 // boot-time instant
 	free        int64
 
@@ -162,6 +163,9 @@ func (r *Recorder) open() error {
 	r.lastCommit, r.lastSynced = r.now, r.now
 	r.beginEvents(found)
 	if err := r.flushSync(); err != nil {
+		return errors.Join(fmt.Errorf("the first sync: %w", err), r.store.finish(r.clockState()))
+	}
+	if err := r.store.lastEvents(); err != nil {
 		return errors.Join(fmt.Errorf("the first sync: %w", err), r.store.finish(r.clockState()))
 	}
 	if r.o.Live {
@@ -315,7 +319,7 @@ func (r *Recorder) Close(at device.Instant) error {
 	if err := r.flushSync(); err != nil {
 		errs = append(errs, fmt.Errorf("%d readings could not be saved: %w", r.held, err))
 	}
-	errs = append(errs, r.store.finish(r.clockState()), r.sealer.finish(), r.unlock())
+	errs = append(errs, r.store.lastEvents(), r.store.finish(r.clockState()), r.sealer.finish(), r.unlock())
 	if r.o.Live {
 		r.publish()
 	}

@@ -69,6 +69,8 @@ func (r *Recorder) publish() {
 	}
 	if r.commitError != nil {
 		s.Fault = faultText(r.commitError)
+	} else if r.eventsError != nil {
+		s.Fault = eventsName + ": " + faultText(r.eventsError)
 	} else if r.slowTold {
 		s.Fault = "the disk is slow"
 	}

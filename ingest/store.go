@@ -42,6 +42,12 @@ func (b *batch) reset() {
 	*b = batch{entries: b.entries[:0], events: b.events[:0]}
 }
 
+// try commits the batch and tells all that came of it.
+func (s *store) try(b *batch) outcome {
+	err := s.commit(b)
+	return outcome{batch: b, err: err, moved: s.takeMoved(), refused: s.takeRefused(), eventsErr: s.queued.err, eventsLost: s.takeLostEvents()}
+}
+
 func (b *batch) empty() bool { return len(b.entries) == 0 && len(b.events) == 0 && !b.roll }
 
 // store owns the files of a run that its recorder writes. One goroutine uses
@@ -58,6 +64,7 @@ type store struct {
 	openedAt int64 // boot-time instant
 	stamps   *segment.Stamps
 	events   *segment.Log
+	queued   eventQueue
 	// moved tells, once, of the segment that failed and the one that took over.
 	moved []string
 	// refused counts values that cannot be written as line protocol.
@@ -65,7 +72,8 @@ type store struct {
 	shown   segment.Shown
 }
 
-// commit puts the batch on disk. After an error the batch is kept and given
+// commit puts the batch on disk; its events may come later than its readings,
+// see eventQueue. After an error the batch is kept and given
 // again later: what a first attempt took is not taken twice.
 func (s *store) commit(b *batch) error {
 	if err := s.ready(b.clock); err != nil {
@@ -79,9 +87,8 @@ func (s *store) commit(b *batch) error {
 	if err := s.checkpoint(b.clock); err != nil {
 		return err
 	}
-	if err := s.commitEvents(b); err != nil {
-		return err
-	}
+	s.queued.take(b)
+	s.commitEvents(b.clock.Boot)
 	if b.roll || s.writer.Size() >= s.rollSize || b.clock.Boot-s.openedAt >= s.rollAge {
 		return s.roll(b.clock)
 	}

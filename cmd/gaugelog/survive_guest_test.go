@@ -42,6 +42,7 @@ func init() {
 }
 
 func guest() error {
+	fmt.Println("\nINIT")
 	if err := guestMachine(); err != nil {
 		return err
 	}

@@ -56,6 +56,8 @@ type Failure struct {
 	// create, append, open, rename, remove, readdir, mkdir, syncdir, write,
 	// read, sync, close, stat.
 	Only []string
+	// Name, where not empty, counts and fails calls on that file alone.
+	Name string
 	// Persistent fails all later calls (of those kinds) too.
 	Persistent bool
 	// Err is what they return.
@@ -87,6 +89,9 @@ func (m *FS) Calls() int {
 // call counts one call and says whether it fails. The lock is held.
 func (m *FS) call(kind, name string) error {
 	if m.fail != nil && len(m.fail.Only) > 0 && !slices.Contains(m.fail.Only, kind) {
+		return nil
+	}
+	if m.fail != nil && m.fail.Name != "" && m.fail.Name != name {
 		return nil
 	}
 	m.calls++
