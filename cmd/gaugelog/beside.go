@@ -35,11 +35,12 @@ func (f *pageFlags) add(fl *pflag.FlagSet) {
 }
 
 // beside is everything of a recording that must never hold it up: the desks
-// with their alarms, and the page.
+// with their alarms, the page, and the sending to a server.
 type beside struct {
 	desks    []*desk.Desk
 	server   *livepage.Server
 	outboxes []*alarm.Outbox
+	sendings []*sending
 	runner   *ingest.Runner
 	bank     *device.Bank
 	stop     context.CancelFunc
@@ -66,6 +67,13 @@ func (r *recording) openBeside(f pageFlags, logger *slog.Logger, out io.Writer) 
 			return nil, err
 		}
 		b.desks = append(b.desks, d)
+		s, err := openSending(rig, r.runs[i], r.dirs[i].FS(), logger)
+		if err != nil {
+			return nil, err
+		}
+		if s != nil {
+			b.sendings = append(b.sendings, s)
+		}
 	}
 	if f.address == "" {
 		if f.open || f.tokenFile != "" {
@@ -178,6 +186,9 @@ func (b *beside) start(ctx context.Context, runner *ingest.Runner, bank *device.
 	}
 	for _, o := range b.outboxes {
 		b.running.Go(func() { o.Run(ctx) })
+	}
+	for _, s := range b.sendings {
+		b.running.Go(func() { s.run(ctx) })
 	}
 	if b.server == nil {
 		return
