@@ -3,8 +3,11 @@ package steps
 import (
 	"fmt"
 	"math"
+	"runtime"
 	"slices"
 	"sort"
+
+	"golang.org/x/sync/errgroup"
 
 	"gaugelog/analysis/history"
 )
@@ -47,17 +50,17 @@ func (r *run) scan() error {
 
 func (r *run) scanWindow(raw [][]history.Sample) {
 	pts := make([][]point, len(raw))
-	var all []transition
+	found := make([][]transition, len(r.gauges))
+	var some errgroup.Group
+	some.SetLimit(runtime.GOMAXPROCS(0))
 	for gi := range r.gauges {
-		g := &r.gauges[gi]
-		pts[gi] = make([]point, 0, len(raw[gi]))
-		for _, s := range raw[gi] {
-			pts[gi] = append(pts[gi], g.fromSample(s))
-		}
-		flat, singles := hampel(g, pts[gi])
-		all = append(all, singles...)
-		all = append(all, jumps(g, flat, []int{1, 2, 5, 15, 45}, func(p point) float64 { return g.noise * p.f }, 1)...)
+		some.Go(func() error {
+			pts[gi], found[gi] = r.gauges[gi].scan(raw[gi])
+			return nil
+		})
 	}
+	_ = some.Wait() // none fails
+	all := slices.Concat(found...)
 	sort.SliceStable(all, func(a, b int) bool { return all[a].lo < all[b].lo })
 	first := len(r.events)
 	for i := 0; i < len(all); {
@@ -71,6 +74,16 @@ func (r *run) scanWindow(raw [][]history.Sample) {
 		i = j
 	}
 	r.trim(r.events[first:], pts)
+}
+
+// scan finds the sudden changes in one gauge's single readings.
+func (g *gauge) scan(raw []history.Sample) ([]point, []transition) {
+	pts := make([]point, 0, len(raw))
+	for _, s := range raw {
+		pts = append(pts, g.fromSample(s))
+	}
+	flat, found := hampel(g, pts)
+	return pts, append(found, jumps(g, flat, []int{1, 2, 5, 15, 45}, func(p point) float64 { return g.noise * p.f }, 1)...)
 }
 
 // Readings that far beside a cluster are held against it, ns and number.
@@ -154,7 +167,12 @@ func hampel(g *gauge, seq []point) (rest []point, singles []transition) {
 		for _, p := range seq[i-half : i+half+1] {
 			w = append(w, p.y)
 		}
-		m := Median(w)
+		sorted := [2*half + 1]float64(w)
+		slices.Sort(sorted[:])
+		off := math.Abs(seq[i].y - sorted[half])
+		if off <= max(3*g.res, 6*g.noise)*seq[i].f {
+			continue // as nearly all: the rest need not be worked out
+		}
 		// Both sides must agree with each other: a step is no spike.
 		left, right := Median(w[:half-1]), Median(w[half+2:])
 		spread := MAD(w)
@@ -163,7 +181,10 @@ func hampel(g *gauge, seq []point) (rest []point, singles []transition) {
 			spread = min(spread, g.noise*seq[i].f/madScale)
 		}
 		need := max(5*madScale*spread, 3*g.res*seq[i].f, 6*g.noise*seq[i].f)
-		bad[i] = math.Abs(seq[i].y-m) > need && math.Abs(left-right) < math.Abs(seq[i].y-m)/3
+		bad[i] = off > need && math.Abs(left-right) < off/3
+	}
+	if !slices.Contains(bad, true) {
+		return seq, nil
 	}
 	for i := 0; i < len(seq); i++ {
 		if !bad[i] {

@@ -72,14 +72,15 @@ type score struct {
 }
 
 // scores works out, for every place between points, the rise between the
-// medians of k points on either side less what the slopes beside it explain.
-func scores(seq []point, k int, sigma func(point) float64, res float64) []score {
+// medians of k points on either side less what the slopes beside it explain,
+// and returns the places where that is more than least times what is needed.
+func scores(seq []point, k int, sigma func(point) float64, res, least float64) []score {
 	b := blockMedians(seq, k)
 	n := len(seq)
 	if len(b.y) == 0 {
 		return nil
 	}
-	out := make([]score, 0, n)
+	var out []score
 	abs := make([]float64, 0, n)
 	for i := k - 1; i+k < n; i++ {
 		l, r := i-k+1, i+1
@@ -118,7 +119,12 @@ func scores(seq []point, k int, sigma func(point) float64, res float64) []score 
 		}
 		s.need = max(jumpSigmas*math.Sqrt(v), jumpCounts*res*coarse) + bend
 		abs = append(abs, math.Abs(s.jump))
-		out = append(out, s)
+		if s.stands(res*seq[i].f) && math.Abs(s.jump)/s.need > least {
+			out = append(out, s)
+		}
+	}
+	if len(out) == 0 {
+		return nil
 	}
 	// The run's own unrest (temperature, vibration) sets a floor of its own.
 	unrest := 0.0
@@ -126,21 +132,24 @@ func scores(seq []point, k int, sigma func(point) float64, res float64) []score 
 		unrest = jumpSigmas * trimmedSigma(abs)
 	}
 	for i := range out {
-		s := &out[i]
-		s.need = max(s.need, unrest)
-		if math.Abs(s.rise) < riseCounts*res*seq[s.i].f {
-			continue
-		}
-		// What a slope beside it alone makes of a small rise is no jump: that
-		// slope holds a change of its own. A spike has one and a half.
-		if math.Abs(s.jump) > 2*math.Abs(s.rise) {
-			continue
-		}
-		if s.jump*s.rise > 0 && math.Abs(s.jump) >= jumpShare*math.Abs(s.rise) {
-			s.ratio = math.Abs(s.jump) / s.need
-		}
+		out[i].ratio = math.Abs(out[i].jump) / max(out[i].need, unrest)
 	}
-	return out
+	return slices.DeleteFunc(out, func(s score) bool { return s.ratio <= least })
+}
+
+// stands says whether a rise may be a jump at all, count being what one count
+// is worth there.
+func (s *score) stands(count float64) bool {
+	rise, jump := math.Abs(s.rise), math.Abs(s.jump)
+	if rise < riseCounts*count {
+		return false
+	}
+	// What a slope beside it alone makes of a small rise is no jump: that
+	// slope holds a change of its own. A spike has one and a half.
+	if jump > 2*rise {
+		return false
+	}
+	return s.jump*s.rise > 0 && jump >= jumpShare*rise
 }
 
 func sq(x float64) float64 { return x * x }
@@ -155,12 +164,9 @@ func jumps(g *gauge, seq []point, scales []int, sigma func(point) float64, least
 		if k > 2 && len(seq) > 1 && float64(k)*seconds(seq[len(seq)-1].t-seq[0].t)/float64(len(seq)-1) > longest {
 			break
 		}
-		list := scores(seq, k, sigma, g.res)
+		list := scores(seq, k, sigma, g.res, least)
 		sort.SliceStable(list, func(a, b int) bool { return list[a].ratio > list[b].ratio })
 		for _, s := range list {
-			if s.ratio <= least {
-				break
-			}
 			near := false
 			for _, f := range found {
 				if d := f.index - s.i; d <= k && -d <= k {

@@ -3,7 +3,6 @@ package segment
 import (
 	"bytes"
 	"flag"
-	"fmt"
 	"math/rand/v2"
 	"strings"
 	"testing"
@@ -107,5 +106,5 @@ func TestFastPathAgreesOnMutations(t *testing.T) {
 	if taken == 0 || refused == 0 {
 		t.Errorf("%d lines taken, %d texts not to their end: that tests nothing", taken, refused)
 	}
-	t.Log(fmt.Sprintf("%d texts, %d lines taken by the fast path, %d texts not to their end", n, taken, refused))
+	t.Logf("%d texts, %d lines taken by the fast path, %d texts not to their end", n, taken, refused)
 }
