@@ -85,7 +85,7 @@ func scores(seq []point, k int, sigma func(point) float64, res, least float64) [
 	for i := k - 1; i+k < n; i++ {
 		l, r := i-k+1, i+1
 		rise, dt := b.y[r]-b.y[l], b.t[r]-b.t[l]
-		var slopes []float64
+		slopes := make([]float64, 0, 2)
 		va, vb := 1.0, 1.0
 		if l-k >= 0 {
 			d := b.t[l] - b.t[l-k]
