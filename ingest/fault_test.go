@@ -216,6 +216,92 @@ func TestOneFaultAtEveryCall(t *testing.T) {
 	}
 }
 
+// TestEveryCallFailsForGood lets every call fail from one in turn on, cuts the
+// power, and lets one more call fail while the next recorder begins and records.
+// What was acknowledged before either is there once, and a third recorder, on a
+// disk that is well again, goes on.
+func TestEveryCallFailsForGood(t *testing.T) {
+	for _, fault := range []error{syscall.EIO, syscall.ENOSPC} {
+		calls := countCalls(t, testOptions(nil, faultRig()))
+		again, refused := 0, 0
+		for at := 1; at <= calls; at += *stride {
+			mem := segmenttest.New()
+			b := newBench(t, 11)
+			o := testOptions(mem, faultRig())
+			o.Compress = at%compressEach == 0
+			mem.Inject(&segmenttest.Failure{At: at, Persistent: true, Err: fault})
+			if r, err := Open(o); err == nil {
+				b.r = r
+				for range faultSteps {
+					b.step()
+				}
+				if err := r.Close(b.at); err == nil && b.acked["g0"]+b.acked["g1"] < faultSteps {
+					t.Fatalf("%v from call %d on: Close says nothing of what it could not save", fault, at)
+				}
+			}
+			rng := rand.New(rand.NewPCG(3, uint64(at)))
+			for range max(1, secondFaults/(*stride)) {
+				second := 1 + rng.IntN(calls)
+				again++
+				if !b.recovers(o, mem.Crash(rng, rng.IntN(2) == 0), fault, second, fmt.Sprintf("%v from call %d on, then call %d", fault, at, second)) {
+					refused++
+				}
+			}
+		}
+		t.Logf("%v: from each %d. of %d calls on; one more fault in %d recoveries, %d of which refused to begin", fault, *stride, calls, again, refused)
+	}
+}
+
+// secondFaults is in how many recoveries of each folder one more call fails
+// where none is left out.
+const secondFaults = 3
+
+// recovers begins a second recorder whose call of that number fails, and a
+// third one behind it; false where the second did not begin.
+func (b *bench) recovers(o Options, disk *segmenttest.FS, fault error, call int, what string) bool {
+	b.t.Helper()
+	before := 0
+	if b.r != nil { // there is a run
+		before = b.check(what, disk)
+	}
+	o.FS, o.Start = disk, later(testStart, time.Hour)
+	disk.Inject(&segmenttest.Failure{At: call, Err: fault})
+	r, err := Open(o)
+	began := err == nil
+	if began {
+		now := o.Start
+		for i := range 20 {
+			now = later(now, time.Second)
+			must(b.t, r.Handle(Seen(indication("g1", 100+float64(i), now))))
+		}
+		_ = r.Close(now) // one fault is mended, or is of something without readings
+	}
+	disk.Inject(nil)
+	o.Start = later(testStart, 2*time.Hour)
+	r = mustOpen(b.t, o)
+	must(b.t, r.Handle(Seen(indication("g1", 200, later(o.Start, time.Second)))))
+	if err := r.Close(later(o.Start, time.Minute)); err != nil {
+		b.t.Fatalf("%s: the third recorder: %v", what, err)
+	}
+	v, err := segment.Verify(disk)
+	must(b.t, err)
+	if !v.Whole() {
+		b.t.Fatalf("%s: damage: %v", what, v.Damage)
+	}
+	total := 0
+	for _, records := range stored(b.t, disk) {
+		total += len(records)
+	}
+	want := before + 1
+	if began {
+		want += 20
+	}
+	if total != want {
+		b.t.Fatalf("%s: %d readings in the end, want %d", what, total, want)
+	}
+	return began
+}
+
 // TestFullDisk fills the disk for ten minutes: nothing is lost while memory
 // holds, what did not fit is counted, and the recording goes on by itself.
 func TestFullDisk(t *testing.T) {
