@@ -16,7 +16,11 @@ import (
 // model that knows what was sent: every frame sent intact while the port was
 // open arrives, once and in order; nothing else does.
 func TestRandomFaultsAgainstModel(t *testing.T) {
-	for seed := range uint64(60) {
+	seeds := uint64(60)
+	if testing.Short() {
+		seeds = 6
+	}
+	for seed := range seeds {
 		synctest.Test(t, func(t *testing.T) { randomFaults(t, seed) })
 	}
 }

@@ -52,7 +52,7 @@ func TestMutations(t *testing.T) {
 	cases := everyDecoder()
 	each := (*mutations + len(cases) - 1) / len(cases)
 	if testing.Short() {
-		each /= 10
+		each /= 50
 	}
 	var stray [][]byte
 	for _, c := range cases {

@@ -164,11 +164,24 @@ func mutate(s []byte, f func(what string, p []byte)) {
 		f(fmt.Sprintf("truncate to %d", i), bytes.Clone(s[:i]))
 	}
 	for i := 0; i <= len(s); i++ {
-		for c := range 256 {
-			p := append(bytes.Clone(s[:i]), byte(c))
+		for _, c := range inserted(s) {
+			p := append(bytes.Clone(s[:i]), c)
 			f(fmt.Sprintf("insert %#x at %d", c, i), append(p, s[i:]...))
 		}
 	}
+}
+
+// inserted lists the bytes to insert: all there are; in short tests those of the
+// frame and a few of other classes.
+func inserted(s []byte) []byte {
+	if testing.Short() {
+		return append([]byte("05+-. \x00\x80\xff"), s...)
+	}
+	all := make([]byte, 256)
+	for i := range all {
+		all[i] = byte(i)
+	}
+	return all
 }
 
 func flips(s []byte, f func(what string, p []byte)) {
