@@ -17,6 +17,7 @@ import (
 func demoCommand() *cobra.Command {
 	var into string
 	var seed uint64
+	var replace bool
 	c := &cobra.Command{
 		Use:     "demo",
 		GroupID: "prepare",
@@ -29,10 +30,11 @@ The same seed gives the same run folder, byte for byte.`,
 		Example: "  gaugelog demo --into demo --seed 1",
 		Args:    cobra.NoArgs,
 		RunE: func(cmd *cobra.Command, _ []string) error {
-			return runDemo(cmd, into, seed)
+			return runDemo(cmd, into, seed, replace)
 		},
 	}
-	c.Flags().StringVar(&into, "into", "demo", "folder to leave the run in; an earlier demo there is replaced")
+	c.Flags().StringVar(&into, "into", "demo", "folder to leave the run in")
+	c.Flags().BoolVar(&replace, "replace", false, "let the folder of an earlier demo go; no other folder is ever replaced")
 	c.Flags().Uint64Var(&seed, "seed", 1, "seed of noise, jitter and faults")
 	return c
 }
@@ -41,8 +43,8 @@ The same seed gives the same run folder, byte for byte.`,
 // and nothing else is ever overwritten.
 const demoSign = "demo: this run was simulated; `gaugelog demo` may replace this folder\n"
 
-func runDemo(cmd *cobra.Command, into string, seed uint64) error {
-	if err := clearDemo(into); err != nil {
+func runDemo(cmd *cobra.Command, into string, seed uint64, replace bool) error {
+	if err := clearDemo(into, replace); err != nil {
 		return err
 	}
 	demo := simulators.DemoRig()
@@ -77,9 +79,9 @@ func runDemo(cmd *cobra.Command, into string, seed uint64) error {
 	return nil
 }
 
-// clearDemo makes room for the demo: an earlier demo goes, anything else is
-// left alone and refused.
-func clearDemo(into string) error {
+// clearDemo makes room for the demo: an earlier demo goes where replace is set,
+// anything else is left alone and refused.
+func clearDemo(into string, replace bool) error {
 	entries, err := os.ReadDir(into)
 	if errors.Is(err, fs.ErrNotExist) || err == nil && len(entries) == 0 {
 		return nil
@@ -89,6 +91,9 @@ func clearDemo(into string) error {
 	}
 	if sign, err := os.ReadFile(filepath.Join(into, "demo.txt")); err != nil || string(sign) != demoSign {
 		return wrongf("give another folder with --into", "%s is not empty and was not left by a demo", into)
+	}
+	if !replace {
+		return wrongf("give another folder with --into, or --replace to let that one go", "%s holds an earlier demo", into)
 	}
 	return os.RemoveAll(into)
 }

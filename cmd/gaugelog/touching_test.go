@@ -53,7 +53,7 @@ func TestTouching(t *testing.T) {
 		ctx, stop := context.WithCancel(t.Context())
 		sent := make(chan bool)
 		go stream(ctx, sent, opener, []press{
-			{6 * time.Second, 0, 0.5}, // mid
+			{6 * time.Second, 0, 0.5},                                       // mid
 			{11 * time.Second, 1, -0.6}, {11200 * time.Millisecond, 0, 0.4}, // both
 			{16 * time.Second, 0, 0.5},  // mid once more, instead of edge
 			{26 * time.Second, 1, 0.45}, // mid anew, behind the "u"
