@@ -12,8 +12,8 @@ import (
 func commands() []*cobra.Command {
 	return []*cobra.Command{
 		demoCommand(), newCommand(), checkCommand(), portsCommand(), simulateCommand(),
-		listenCommand(), nudgeCommand(), sectionCommand(), calibrateCommand(), serviceCommand(),
-		recordCommand(), markCommand(), forwardCommand(), rigsCommand(),
+		listenCommand(), nudgeCommand(), sectionCommand(), roundCommand(), calibrateCommand(), serviceCommand(),
+		recordCommand(), markCommand(), watchCommand(), forwardCommand(), rigsCommand(),
 		analyseCommand(), reportCommand(), compareCommand(), verifyCommand(), exportCommand(), importCommand(), docsCommand(),
 	}
 }

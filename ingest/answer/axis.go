@@ -29,7 +29,12 @@ func (f *Figure) Range() (low, high float64, any bool) {
 func YTicks(low, high float64, n int) []Tick {
 	step, decimals := niceStep((high - low) / float64(n))
 	var out []Tick
-	for v := math.Ceil(low/step-1e-9) * step; v <= high+1e-9*step; v += step {
+	first := math.Ceil(low/step - 1e-9)
+	for k := range 4*n + 4 { // bounded, whatever the numbers
+		v := (first + float64(k)) * step
+		if !(v <= high+1e-9*step) {
+			break
+		}
 		out = append(out, Tick{v, number(v, decimals)})
 	}
 	return out

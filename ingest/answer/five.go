@@ -37,7 +37,11 @@ func subject(a alarm.Alarm) string {
 func (w speaker) alive() Answer {
 	st := w.s.Status
 	if st.Closed {
-		return Answer{Abnormal, "No: the recording has ended", nil}
+		a := Answer{Abnormal, "No: the recording has ended", nil}
+		if t := w.newest(); t != 0 {
+			a.More = []string{"The last reading came at " + w.day(time.Unix(0, t)) + "."}
+		}
+		return a
 	}
 	if len(st.Last) == 0 {
 		return Answer{Unknown, "The recording is starting", nil}
@@ -58,7 +62,7 @@ func (w speaker) alive() Answer {
 	count := fmt.Sprintf("%d of %d instruments answer", alive, len(st.Last))
 	var more []string
 	if newest != math.MaxInt64 {
-		more = append(more, "The newest reading is "+desk.Span(newest)+" old.")
+		more = append(more, "The newest reading"+w.onDisk()+" is "+desk.Span(newest)+" old.")
 	}
 	if len(waiting) > 0 {
 		more = append(more, "Nothing yet from "+strings.Join(waiting, ", ")+".")
@@ -70,6 +74,34 @@ func (w speaker) alive() Answer {
 		return Answer{Unknown, "Nothing has come yet", more}
 	}
 	return Answer{Normal, "Yes: " + count, more}
+}
+
+// newest is the stamp of the latest reading, 0 where there is none.
+func (w speaker) newest() int64 {
+	t := int64(0)
+	for _, l := range w.s.Status.Last {
+		if l.Seen {
+			t = max(t, l.Wall)
+		}
+	}
+	return t
+}
+
+// onDisk is said where what is known is what another process has written.
+func (w speaker) onDisk() string {
+	if w.s.Onlooking {
+		return " on disk"
+	}
+	return ""
+}
+
+// present is now, or the end of a recording that has ended: what the last day is
+// counted back from.
+func (w speaker) present() time.Time {
+	if t := w.newest(); w.s.Status.Closed && t != 0 {
+		return time.Unix(0, t)
+	}
+	return w.s.At
 }
 
 // age is how old a reading is now: its age at the recorder's look, and the
@@ -107,9 +139,11 @@ func (w speaker) travel() Answer {
 			first = g
 		}
 	}
-	if first != nil {
+	switch {
+	case w.s.Status.Closed:
+	case first != nil:
 		a.More = append(a.More, fmt.Sprintf("At its present rate %s runs out about %s.", first.Name, w.date(first.RunsOut)))
-	} else {
+	default:
 		a.More = append(a.More, "No gauge moves fast enough to run out in sight.")
 	}
 	return a
@@ -129,12 +163,16 @@ func (w speaker) yesterday() Answer {
 	if g == nil {
 		return Answer{Unknown, "Nothing to compare yet", nil}
 	}
-	now := fmt.Sprintf("Sag now %s mm at %s, uncorrected", desk.Fixed(*g.Sag, g.Resolution), g.Name) + w.net(g.Name) + "."
+	when := "now"
+	if w.s.Status.Closed {
+		when = "at the end"
+	}
+	now := fmt.Sprintf("Sag %s %s mm at %s, uncorrected", when, desk.Fixed(*g.Sag, g.Resolution), g.Name) + w.net(g.Name) + "."
 	if w.s.Loads.First.IsZero() {
 		now = fmt.Sprintf("No load is entered yet. %s shows %s mm.", g.Name, desk.Fixed(g.MM, g.Resolution))
 	}
 	changed := ""
-	if l := w.s.Loads.Since; !l.IsZero() && w.s.At.Sub(l) < 24*time.Hour {
+	if l := w.s.Loads.Since; !l.IsZero() && w.present().Sub(l) < 24*time.Hour {
 		changed = "The load changed at " + w.day(l) + ", in between."
 	}
 	a := Answer{Tone: Normal, More: []string{now}}
@@ -190,7 +228,11 @@ func (w speaker) speed() Answer {
 	}
 	if o := w.s.Outlook; o != nil {
 		if o.Rate != nil {
-			line := fmt.Sprintf("Creep rate at %s by the analysis: %+.3g mm/d", o.Gauge, *o.Rate)
+			where := o.Gauge
+			if o.Step != "" && o.Step != w.s.Loads.Step {
+				where += " in step " + o.Step
+			}
+			line := fmt.Sprintf("Creep rate at %s by the analysis: %+.3g mm/d", where, *o.Rate)
 			if o.RateU != nil {
 				line += fmt.Sprintf(" (u = %.2g mm/d)", *o.RateU)
 			}

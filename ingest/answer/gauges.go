@@ -32,17 +32,22 @@ func (w speaker) load() Load {
 		if l.Found {
 			how = "as found in the readings"
 		}
-		v.Lines = append(v.Lines, fmt.Sprintf("For %s, since %s, %s.", desk.Span(w.s.At.Sub(l.Since).Truncate(time.Second)), w.day(l.Since), how))
+		v.Lines = append(v.Lines, fmt.Sprintf("For %s, since %s, %s.", desk.Span(w.present().Sub(l.Since).Truncate(time.Second)), w.day(l.Since), how))
 	}
 	if !l.Ends.IsZero() {
-		if left := l.Ends.Sub(w.s.At); left > 0 {
+		switch left := l.Ends.Sub(w.present()); {
+		case left > 0 && w.s.Status.Closed:
+			v.Lines = append(v.Lines, fmt.Sprintf("The plan would have held it for another %s.", desk.Span(left.Truncate(time.Minute))))
+		case left > 0:
 			v.Lines = append(v.Lines, fmt.Sprintf("The plan holds it for another %s, until %s.", desk.Span(left.Truncate(time.Minute)), w.day(l.Ends)))
-		} else {
+		case w.s.Status.Closed:
+			v.Lines = append(v.Lines, "Its planned time was over at "+w.day(l.Ends)+".")
+		default:
 			v.Lines = append(v.Lines, "Its planned time was over at "+w.day(l.Ends)+"; the recording goes on.")
 		}
 	}
 	plan := w.d.Rig().Plan
-	if next := l.Planned + 1; l.Planned >= 0 && next < len(plan) {
+	if next := l.Planned + 1; !w.s.Status.Closed && l.Planned >= 0 && next < len(plan) {
 		v.Lines = append(v.Lines, "Next by the plan: "+plan[next].Step+setWords(plan[next])+".")
 	}
 	return v

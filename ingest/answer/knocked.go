@@ -17,6 +17,9 @@ var knockWords = map[string]string{
 
 func (w speaker) knocked() Answer {
 	from := "since yesterday " + w.d.Local(w.s.At).Format("15:04")
+	if w.s.Status.Closed {
+		from = "in the last day of the recording"
+	}
 	o := w.s.Outlook
 	if o == nil {
 		a := Answer{Unknown, "Not looked at yet", []string{"The analysis beside the recording has not answered."}}
@@ -29,7 +32,7 @@ func (w speaker) knocked() Answer {
 	for _, b := range o.Disturbances {
 		words, listed := knockWords[b.Kind]
 		at := time.Unix(0, b.From)
-		if !listed || w.s.At.Sub(at) > 24*time.Hour {
+		if !listed || w.present().Sub(at) > 24*time.Hour {
 			continue
 		}
 		line := w.day(at) + ": " + words

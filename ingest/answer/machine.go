@@ -42,7 +42,10 @@ const oldSync = time.Minute
 func (w speaker) machine() []Fact {
 	s := w.s.Status
 	sync := Fact{"Last sync to disk", desk.Span(s.SyncAge) + " ago", Normal}
-	if s.SyncAge > oldSync {
+	switch {
+	case s.Closed:
+		sync.Tone = Tone{}
+	case s.SyncAge > oldSync:
 		sync.Tone = Abnormal
 	}
 	disk := Fact{"Disk", "free space not known", Unknown}
@@ -60,11 +63,17 @@ func (w speaker) machine() []Fact {
 		clock.Value, clock.Tone = "not kept by a time source", Abnormal
 	}
 	stored := Fact{"Readings kept", fmt.Sprintf("%s since this start", count(s.Stored)), Normal}
+	if w.s.Onlooking {
+		stored = Fact{"Readings kept", "about " + count(w.readings()), Tone{}}
+	}
 	if s.Dropped > 0 {
 		stored.Value += fmt.Sprintf(", %s lost for want of room", count(s.Dropped))
 		stored.Tone = Abnormal
 	}
 	out := []Fact{sync, disk, clock, stored}
+	if s.Closed {
+		out = []Fact{sync, stored} // nobody is there whose disk and clock would matter
+	}
 	if s.Waiting > 0 {
 		out = append(out, Fact{"Waiting for the disk", count(int64(s.Waiting)) + " readings", Normal})
 	}
@@ -75,6 +84,21 @@ func (w speaker) machine() []Fact {
 		out = append(out, Fact{"Plots", "earlier readings are still being read", Unknown})
 	}
 	return out
+}
+
+// readings counts those in the bins of the gauges.
+func (w speaker) readings() (n int64) {
+	if w.s.Curves == nil {
+		return 0
+	}
+	for i := range w.s.Curves.Series {
+		if c := &w.s.Curves.Series[i]; c.Kind == desk.SagCurve {
+			for k := range c.Whole {
+				n += c.Whole[k].N
+			}
+		}
+	}
+	return n
 }
 
 // count prints a whole number with thin spaces between thousands.

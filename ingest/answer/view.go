@@ -45,6 +45,9 @@ type View struct {
 	Specimen string    `json:"specimen"`
 	At       string    `json:"at"` // in the rig's zone
 	Instant  time.Time `json:"instant"`
+	// Whole is false while earlier readings are still being read, or the
+	// analysis has not answered yet.
+	Whole bool `json:"whole"`
 	// Banner speaks of the alarms.
 	Banner Answer `json:"banner"`
 	// The five questions that people ask at a rig.
@@ -55,9 +58,11 @@ type View struct {
 	Speed     Answer     `json:"speed"`
 	Load      Load       `json:"load"`
 	Gauges    []GaugeRow `json:"gauges"`
-	Corrected string     `json:"corrected,omitempty"`
-	Outlook   Outlook    `json:"outlook"`
-	Room      []string   `json:"room,omitempty"`
+	// Lead is the gauge that the answers speak of; empty where there is none.
+	Lead      string   `json:"lead,omitempty"`
+	Corrected string   `json:"corrected,omitempty"`
+	Outlook   Outlook  `json:"outlook"`
+	Room      []string `json:"room,omitempty"`
 	// Alarms are raised, Past have ended within the last week.
 	Alarms  []AlarmRow `json:"alarms,omitempty"`
 	Past    []AlarmRow `json:"past,omitempty"`
@@ -68,19 +73,20 @@ type View struct {
 
 // Question is one of the five, with its answer.
 type Question struct {
-	// Name is a short name for lists, such as alive.
-	Name, Text string
-	Answer     Answer
+	// Name is a short name for lists, such as alive; Brief is the question in
+	// a word or two.
+	Name, Text, Brief string
+	Answer            Answer
 }
 
 // Questions lists the five questions in their order.
 func (v *View) Questions() []Question {
 	return []Question{
-		{"alive", "Is it alive?", v.Alive},
-		{"knocked", "Was it knocked overnight?", v.Knocked},
-		{"travel", "How much travel is left?", v.Travel},
-		{"yesterday", "What changed since yesterday?", v.Yesterday},
-		{"speed", "Is it speeding up?", v.Speed},
+		{"alive", "Is it alive?", "Alive?", v.Alive},
+		{"knocked", "Was it knocked overnight?", "Knocked?", v.Knocked},
+		{"travel", "How much travel is left?", "Travel left?", v.Travel},
+		{"yesterday", "What changed since yesterday?", "Since yesterday?", v.Yesterday},
+		{"speed", "Is it speeding up?", "Speeding up?", v.Speed},
 	}
 }
 
@@ -101,10 +107,13 @@ type speaker struct {
 func Of(d *desk.Desk, s *desk.Snapshot) View {
 	w := speaker{d, s}
 	v := View{
-		Title: TitleOf(d), Specimen: d.Rig().Specimen.Name, At: w.clock(s.At), Instant: s.At,
+		Title: TitleOf(d), Specimen: d.Rig().Specimen.Name, At: w.clock(s.At), Instant: s.At, Whole: s.Whole,
 		Banner: w.banner(), Alive: w.alive(), Knocked: w.knocked(), Travel: w.travel(), Yesterday: w.yesterday(), Speed: w.speed(),
 		Load: w.load(), Gauges: w.gauges(), Corrected: w.corrected(), Outlook: w.outlook(), Room: w.room(),
 		Machine: w.machine(), Steps: w.steps(), Marks: w.marks(),
+	}
+	if g := w.lead(); g != nil {
+		v.Lead = g.Name
 	}
 	for _, a := range s.Alarms {
 		v.Alarms = append(v.Alarms, w.alarm(a))

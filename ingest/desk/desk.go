@@ -40,6 +40,10 @@ type Options struct {
 	// first runs.
 	Analyse      Analyse
 	AnalyseFirst time.Duration
+	// Alarms, where not nil, makes a desk of an onlooker: the recording is
+	// another process's, which raises the alarms that this function gives
+	// (raised, and ended); the desk writes nothing into the folder.
+	Alarms func() (raised, ended []alarm.Alarm)
 	// Outbox carries alarm messages out; nil: nobody is told.
 	Outbox *alarm.Outbox
 	// Start is the instant of the recorder's start: what is older is on disk.
@@ -92,8 +96,8 @@ func New(o Options) (*Desk, error) {
 	d := &Desk{
 		o: o, zone: zoneOf(o.Rig.Timezone), channels: map[string]int{}, feed: make(chan sample, feedLength),
 		outlooks: make(chan outlookResult), books: make(chan bookResult), asked: make(chan func()),
-		engine: alarm.NewEngine(o.Rig.Alarms.Wants),
-		still:  make([]stillness, len(o.Rig.Gauges)),
+		engine: alarm.NewEngine(o.Rig.Alarms.Wants), rebuilding: true,
+		still: make([]stillness, len(o.Rig.Gauges)),
 	}
 	if o.Log == nil {
 		d.o.Log = slog.New(slog.DiscardHandler)
@@ -112,7 +116,9 @@ func New(o Options) (*Desk, error) {
 	if err := d.readMarks(); err != nil {
 		return nil, err
 	}
-	d.restoreAlarms()
+	if o.Alarms == nil {
+		d.restoreAlarms()
+	}
 	d.publish(time.Now())
 	return d, nil
 }
@@ -163,6 +169,17 @@ func (d *Desk) put(s sample) {
 	}
 }
 
+// Give puts a stored record into the bins' queue and waits for room there: for
+// an onlooker, behind whom nobody waits. What is no reading is left out.
+func (d *Desk) Give(ctx context.Context, r *segment.Record) {
+	d.each(r, func(series int, v float64) {
+		select {
+		case d.feed <- sample{series, r.Time, v}:
+		case <-ctx.Done():
+		}
+	})
+}
+
 // Snapshot is the latest look, about a second old. It waits for nothing.
 func (d *Desk) Snapshot() *Snapshot { return d.snapshot.Load() }
 
@@ -173,7 +190,6 @@ func (d *Desk) Run(ctx context.Context) {
 	if d.o.Analyse != nil {
 		d.background.Go(func() { d.watchOutlook(ctx) })
 	}
-	d.rebuilding = true
 	d.background.Go(func() { d.rebuild(ctx) })
 	ticker := time.NewTicker(time.Second)
 	defer ticker.Stop()
@@ -228,8 +244,10 @@ func (d *Desk) tick(now time.Time) {
 			d.o.Log.Error("the marks cannot be read", "error", err)
 		}
 	}
-	d.storeNow(now)
-	d.watch(now)
+	if d.o.Alarms == nil {
+		d.storeNow(now)
+		d.watch(now)
+	}
 	d.publish(now)
 }
 

@@ -29,7 +29,13 @@ func (d *Desk) publish(now time.Time) {
 	s := &Snapshot{
 		At: now, Status: status, Missed: d.missed.Load(), Loads: d.loads, Marks: d.marks, Withdrawn: d.gone,
 		Outlook: d.outlook.outlook, OutlookTried: d.outlook.at,
-		Alarms: d.engine.Current(), PastAlarms: d.engine.Past(), Rebuilding: d.rebuilding,
+		Rebuilding: d.rebuilding, Onlooking: d.o.Alarms != nil,
+	}
+	s.Whole = !d.rebuilding && !d.baseline.reread && !d.baseline.busy && (d.o.Analyse == nil || !d.outlook.at.IsZero())
+	if s.Onlooking {
+		s.Alarms, s.PastAlarms = d.o.Alarms()
+	} else {
+		s.Alarms, s.PastAlarms = d.engine.Current(), d.engine.Past()
 	}
 	if d.outlook.err != nil {
 		s.OutlookError = d.outlook.err.Error()

@@ -117,10 +117,15 @@ func (d *Desk) readFolder(ctx context.Context, book *rollup.Book, from, to int64
 }
 
 func (d *Desk) addRecord(book *rollup.Book, r *segment.Record) {
+	d.each(r, func(series int, v float64) { book.Add(series, r.Time, v) })
+}
+
+// each hands over what a record says of the desk's channels.
+func (d *Desk) each(r *segment.Record, take func(series int, v float64)) {
 	switch r.Kind {
 	case segment.Indication:
 		if i, ok := d.channels["gauge "+r.Name]; ok {
-			book.Add(i, r.Time, r.MM)
+			take(i, r.MM)
 		}
 	case segment.Ambient:
 		i, ok := d.channels["probe "+r.Name]
@@ -130,7 +135,7 @@ func (d *Desk) addRecord(book *rollup.Book, r *segment.Record) {
 		for k, field := range []string{"celsius", "humidity_percent"} {
 			if v, ok := r.Point.Value(field); ok {
 				if f, ok := v.(float64); ok {
-					book.Add(i+k, r.Time, f)
+					take(i+k, f)
 				}
 			}
 		}
@@ -275,7 +280,7 @@ func (d *Desk) end() {
 		}
 		break
 	}
-	if s := d.o.Status(); !d.rebuilding && s != nil && s.Closed && s.Fault == "" {
+	if s := d.o.Status(); d.o.Alarms == nil && !d.rebuilding && s != nil && s.Closed && s.Fault == "" {
 		if b := d.encode(); b != nil {
 			d.write(b)
 		}

@@ -38,6 +38,12 @@ type Snapshot struct {
 	Curves *Curves
 	// Rebuilding is true while what was recorded earlier is still being read.
 	Rebuilding bool
+	// Whole is true once what was recorded earlier is read and the analysis,
+	// where there is one, has answered: nothing more is on its way.
+	Whole bool
+	// Onlooking is true where another process records: what is known is what
+	// that one has written to disk.
+	Onlooking bool
 }
 
 // Gauge is one gauge at present. Sag is not corrected but for the gauge's

@@ -23,6 +23,7 @@ func (s *Server) handler() http.Handler {
 	mux.HandleFunc("POST /leave", s.leave)
 	mux.HandleFunc("GET /r/{rig}/{$}", s.looking(s.show))
 	mux.HandleFunc("GET /r/{rig}/stream", s.looking(s.stream))
+	mux.HandleFunc("GET /r/{rig}/follow", s.looking(s.follow))
 	mux.HandleFunc("POST /r/{rig}/ask", s.acting(s.ask))
 	mux.HandleFunc("POST /r/{rig}/mark", s.acting(s.mark))
 	mux.HandleFunc("POST /r/{rig}/seen", s.acting(s.seen))

@@ -1,7 +1,6 @@
 package live
 
 import (
-	"encoding/json"
 	"net/http"
 	"time"
 )
@@ -22,50 +21,17 @@ type change struct {
 
 // stream sends the sections that change, until the client or the server goes.
 func (s *Server) stream(w http.ResponseWriter, r *http.Request, p *page) {
-	select {
-	case s.streams <- struct{}{}:
-		defer func() { <-s.streams }()
-	default:
-		w.Header().Set("Retry-After", "30")
-		http.Error(w, "too many people are looking at once", http.StatusServiceUnavailable)
-		return
-	}
-	control := http.NewResponseController(w)
-	_ = control.SetReadDeadline(time.Time{}) // the request is read; only writes are watched
-	h := w.Header()
-	h.Set("Content-Type", "text/event-stream")
-	h.Set("X-Accel-Buffering", "no")
 	known := s.guard.known(r)
 	last := map[string]string{}
-	spoke := time.Time{}
-	ticker := time.NewTicker(streamEvery)
-	defer ticker.Stop()
-	for first := true; ; first = false {
-		if !first {
-			select {
-			case <-ticker.C:
-			case <-r.Context().Done():
-				return
-			}
-		}
+	spoke := time.Now()
+	s.events(w, r, func() []event {
 		out := p.changes(last, known)
+		// The page's script counts from the last event it was given: an empty
+		// one is its sign of life.
 		if len(out) == 0 && time.Since(spoke) < streamBeat {
-			continue
+			return nil
 		}
 		spoke = time.Now()
-		// A client that takes nothing for this long is cut off.
-		if control.SetWriteDeadline(time.Now().Add(streamWrite)) != nil {
-			return
-		}
-		b, err := json.Marshal(out)
-		if err != nil {
-			return
-		}
-		if _, err := w.Write([]byte("event: sections\ndata: " + string(b) + "\n\n")); err != nil {
-			return
-		}
-		if control.Flush() != nil {
-			return
-		}
-	}
+		return []event{{"sections", out}}
+	})
 }

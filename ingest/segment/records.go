@@ -19,16 +19,17 @@ func (r *Reader) Records() iter.Seq2[Record, error] {
 				yield(Record{}, err)
 				return
 			}
-			if !b.each(r.Gauges(), func(rec Record) bool { return yield(rec, nil) }) {
+			if !b.Each(r.Gauges(), func(rec Record) bool { return yield(rec, nil) }) {
 				return
 			}
 		}
 	}
 }
 
-// each calls f with each record in order until it returns false. Raw of a row
-// is its Time: the columns do not keep the stamp as written.
-func (b *Batch) each(gauges []string, f func(Record) bool) bool {
+// Each calls f with each record in order until it returns false, and says
+// whether f took all; gauges names the gauges by their numbers. Raw of a row is
+// its Time: the columns do not keep the stamp as written.
+func (b *Batch) Each(gauges []string, f func(Record) bool) bool {
 	o := 0
 	for i := 0; ; i++ {
 		for ; o < len(b.Others) && b.OtherAt[o] == i; o++ {
