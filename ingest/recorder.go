@@ -57,6 +57,9 @@ type Options struct {
 	// everything is done before Handle returns, in an order that depends on
 	// the events alone.
 	Live bool
+	// Visit says that this is one visit of a gauge that is carried from board
+	// to board: that nothing was recorded since the last one is no gap.
+	Visit bool
 	// Compress makes closed segments into .zst files.
 	Compress bool
 	// MostWaiting bounds the readings that wait in memory for the disk;
@@ -256,7 +259,7 @@ func (r *Recorder) openStore(found *folder) error {
 // and the amendments in force.
 func (r *Recorder) beginEvents(found *folder) {
 	if found.resumed {
-		if found.last != 0 {
+		if found.last != 0 && !r.o.Visit {
 			r.statesGap(found.last)
 		}
 		r.happened(Happening{Kind: Started, Detail: "the recording goes on"})
