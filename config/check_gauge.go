@@ -25,7 +25,7 @@ func (c *checker) gauges() {
 		if g.Stand != "" && !nameText.MatchString(g.Stand) {
 			c.fail(p+".stand", "stand name "+quoted(g.Stand)+" is not of small letters, digits, - and _", "begin with a letter or digit, and use no blanks or capitals")
 		}
-		c.positive(p+".silent_after", "silent_after", g.SilentAfter, "10 s")
+		c.silentAfter(p, g.SilentAfter, "10 s")
 	}
 	c.probes(map[string]string{})
 	c.channels()
@@ -165,6 +165,13 @@ func (c *checker) positive(path, key string, d *Duration, example string) {
 	}
 }
 
+// silentAfter checks the time a gauge or probe may be silent, which may be none.
+func (c *checker) silentAfter(p string, d *Duration, example string) {
+	if d != nil && *d != Never && d.Value <= 0 {
+		c.fail(p+".silent_after", "silent_after must be greater than zero", "write a time such as "+example+", none where it may be silent for ever, or leave it out")
+	}
+}
+
 func (c *checker) probes(seen map[string]string) {
 	for i := range c.rig.Probes {
 		b, p := &c.rig.Probes[i], at("probes", i)
@@ -172,7 +179,7 @@ func (c *checker) probes(seen map[string]string) {
 		if b.Temperature == "" && b.Humidity == "" {
 			c.warn(p, "probe "+b.Name+" reads nothing", "add temperature: or humidity: with the name of the group in its frame's pattern")
 		}
-		c.positive(p+".silent_after", "silent_after", b.SilentAfter, "60 s")
+		c.silentAfter(p, b.SilentAfter, "60 s")
 	}
 }
 

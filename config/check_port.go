@@ -107,7 +107,7 @@ func (c *checker) gaugeFrame(p string, g *Gauge, f *Frame) {
 	if !f.hasUnit() {
 		c.fail(p+".frame", "frame "+f.Name+" of gauge "+g.Name+" does not say the unit", "add unit: mm or unit: in to the frame, or a group (?P<unit>mm|in) where the instrument sends it")
 	}
-	if g.SilentAfter != nil && f.Every != nil && g.SilentAfter.Value <= f.Every.Value {
+	if g.SilentAfter != nil && *g.SilentAfter != Never && f.Every != nil && g.SilentAfter.Value <= f.Every.Value {
 		c.warn(p+".silent_after", "gauge "+g.Name+" counts as silent before its next reading is due", "make silent_after several times the frame's every")
 	}
 }

@@ -110,6 +110,9 @@ func (l *leaf) convert(t reflect.Type) (any, *Problem) {
 	if l.node.Kind != yaml.ScalarNode {
 		return nil, l.problem(l.node, l.shown+" is one value, and here is "+kindName(l.node), "write one value behind the colon")
 	}
+	if t == reflect.TypeFor[Duration]() && l.node.Value == "none" && strings.HasSuffix(l.path, ".silent_after") {
+		return Never, nil
+	}
 	if read, ok := quantityReader(t); ok {
 		v, problem := read(l.node.Value, l.percent)
 		if problem != nil {

@@ -44,6 +44,10 @@ type (
 	Number struct{ Quantity }
 )
 
+// Never is the Duration of silent_after: none, for an instrument that may be
+// silent for ever.
+var Never = Duration{Quantity{Value: -1, Shown: "none"}}
+
 // Weight is what a load is set to: a mass, which gravity turns into a force,
 // or a force stated as such. Exactly one of the two is set.
 type Weight struct {

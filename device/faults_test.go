@@ -128,6 +128,22 @@ func TestButtonGaugeIsNeverDeaf(t *testing.T) {
 	})
 }
 
+// Nor is one whose rig says silent_after: none.
+func TestGaugeThatMayBeSilentIsNeverDeaf(t *testing.T) {
+	synctest.Test(t, func(t *testing.T) {
+		var o devicetest.Opener
+		var l log
+		r := rig(1, signed)
+		r.Gauges[0].SilentAfter = &config.Never
+		o.Plug("p0")
+		b := start(t, device.Options{Rigs: []*config.Rig{r}, Opener: &o, Stamper: bubble{}, Sink: &l})
+		time.Sleep(6 * time.Hour)
+		if len(l.all()) != 0 || b.Stats()[0].Reconnects != 0 {
+			t.Errorf("%+v", l.all())
+		}
+	})
+}
+
 // Row 7: a stale value repeated is kept, every time.
 func TestRepeatedValueIsKept(t *testing.T) {
 	synctest.Test(t, func(t *testing.T) {

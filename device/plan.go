@@ -26,7 +26,7 @@ type instrument struct {
 	request []byte
 	every   time.Duration
 	timeout time.Duration
-	silent  time.Duration // 0: the rig file does not say
+	silent  time.Duration // 0: the rig file does not say; negative: it may be for ever
 	button  bool
 	targets []target
 
@@ -134,9 +134,17 @@ func (p *portPlan) add(t target, spec config.Frame, channel string, silent *conf
 	p.instruments = append(p.instruments, &instrument{
 		channel: channel, spec: spec, request: request, button: spec.Button,
 		every: span(spec.Every, defaultEvery), timeout: span(spec.Timeout, defaultTimeout),
-		silent: span(silent, 0), targets: []target{t},
+		silent: silence(silent), targets: []target{t},
 	})
 	return nil
+}
+
+// silence is how long a gauge may be silent; negative: for ever.
+func silence(d *config.Duration) time.Duration {
+	if d != nil && *d == config.Never {
+		return -1
+	}
+	return span(d, 0)
 }
 
 // placeFields finds the probe's groups in its frame's pattern.

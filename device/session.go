@@ -184,7 +184,7 @@ func (p *pump) tick(now time.Time, w *writer) error {
 func (p *pump) deafAfter() time.Duration {
 	limit, sends := time.Duration(0), false
 	for _, in := range p.plan.instruments {
-		if in.button && !in.asked() {
+		if in.button && !in.asked() || in.silent < 0 {
 			continue
 		}
 		sends = true
