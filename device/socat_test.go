@@ -77,6 +77,10 @@ func (p *socatPair) speak(t *testing.T) *os.File {
 		t.Fatal(err)
 	}
 	t.Cleanup(func() { f.Close() })
+	// The link may be there before socat has made its end raw.
+	if _, err := term.MakeRaw(int(f.Fd())); err != nil {
+		t.Fatal(err)
+	}
 	return f
 }
 
@@ -205,10 +209,7 @@ func TestSocatHalfOpen(t *testing.T) {
 	var l log
 	b := start(t, device.Options{Rigs: []*config.Rig{r}, Opener: opener(t), Sink: &l})
 	for i, text := range []string{"+001.000\r\n", "+002.000\r\n", "+003.000\r\n"} {
-		gauge, err := os.OpenFile(pair.gauge, os.O_RDWR, 0)
-		if err != nil {
-			t.Fatal(err)
-		}
+		gauge := pair.speak(t)
 		if _, err := gauge.WriteString(text); err != nil {
 			t.Fatal(err)
 		}
