@@ -36,6 +36,12 @@ func (r *run) unitFactor(e *cluster, g int) float64 {
 	if len(before) == 0 || len(after) == 0 {
 		return 0
 	}
+	// What the others did meanwhile this one may have done too: creep over a gap.
+	slack := 0.0
+	if e.gap {
+		slack = 1.5 * e.others(g)
+	}
+	pressed := gg.factor(e.lo) // pressed back: less proof is needed
 	// Right beside the cluster, so that creep does not spoil the ratio.
 	b, a := Median(before[max(0, len(before)-3):]), Median(after[:min(3, len(after))])
 	for _, f := range []float64{inch, 1 / inch} {
@@ -44,16 +50,28 @@ func (r *run) unitFactor(e *cluster, g int) float64 {
 		if f < 1 {
 			small = math.Abs(b)
 		}
-		tol := inch*gg.res*1.01 + 4*gg.noise*math.Sqrt(2)
+		tol := inch*gg.res*1.01 + 4*gg.noise*math.Sqrt(2) + slack
 		diff := math.Abs(a*f - b)
 		if f < 1 {
 			diff = math.Abs(a - b*inch)
 		}
-		if small > 12*gg.res && small*inch > 10*tol && diff <= tol {
+		back := math.Abs(pressed*f-1) < 1e-9 && pressed != 1
+		if (small > 12*gg.res && small*inch > 10*tol || back && small*inch > 3*tol) && diff <= tol {
 			return f
 		}
 	}
 	return 0
+}
+
+// others is the greatest movement of any other gauge in a cluster, mm.
+func (c *cluster) others(g int) float64 {
+	most := 0.0
+	for o := range c.jump {
+		if o != g && c.known[o] {
+			most = max(most, math.Abs(c.jump[o].MM))
+		}
+	}
+	return most
 }
 
 // pressUnit notes the key and rescales the readings until it is pressed back.
@@ -92,6 +110,27 @@ func (r *run) reportKeys() {
 		}
 		r.exclude(k.gauge, k.lo, k.hi, string(UnitKey))
 		r.add(d)
+	}
+}
+
+// toldKeys reports the unit keys that the recording saw: those gauges send
+// their unit, and every reading was converted as it came.
+func (r *run) toldKeys() {
+	open := map[int]int{} // gauge: index of its disturbance
+	for _, e := range r.h.Events {
+		g := r.gauge(e.Gauge)
+		if e.Kind != "unit-key" || g < 0 {
+			continue
+		}
+		if i, ok := open[g]; ok {
+			r.out.Disturbances[i].To = e.Time
+			delete(open, g)
+			continue
+		}
+		open[g] = len(r.out.Disturbances)
+		r.add(Disturbance{Kind: UnitKey, Gauges: []int{g}, From: e.Time,
+			Treated:  "every reading was converted as it came; nothing is taken off",
+			Evidence: fmt.Sprintf("the recording saw the unit change: %s", e.Detail)})
 	}
 }
 
@@ -210,7 +249,7 @@ func (r *run) around(t int64) (*cluster, bool) {
 	c := &cluster{lo: t - half, hi: t + half}
 	n := len(r.gauges)
 	c.raw = make([][]point, n)
-	c.jump, c.moved, c.peak, c.known = make([]Value, n), make([]bool, n), make([]float64, n), make([]bool, n)
+	c.clear(n)
 	for g := range r.gauges {
 		for _, s := range raw[g] {
 			c.raw[g] = append(c.raw[g], r.gauges[g].fromSample(s))

@@ -22,6 +22,9 @@ type cluster struct {
 	moved []bool
 	peak  []float64
 	known []bool // the gauge has readings on both sides
+	// near is the level right behind less that right before: over a gap a better
+	// measure than jump, creep and weather included.
+	near []Value
 	// raw holds the readings of every gauge around it.
 	raw [][]point
 	// gap is true where the gauges left no reading between lo and hi though
@@ -45,7 +48,52 @@ func (r *run) scan() error {
 	sort.SliceStable(r.events, func(a, b int) bool { return r.events[a].lo < r.events[b].lo })
 	r.events = dedupe(r.events)
 	r.measure()
+	return r.scanGaps()
+}
+
+// scanGaps looks for one gauge that came out of a gap elsewhere than the
+// others, where its readings beside the gap show no jump.
+func (r *run) scanGaps() error {
+	for _, g := range r.h.Gaps {
+		if g.Gauge != "" || r.during(g.From, g.To) {
+			continue
+		}
+		raw, err := r.h.Window(g.From-r.pad(g.From), g.To+r.pad(g.To))
+		if err != nil {
+			return fmt.Errorf("reading back around a gap: %w", err)
+		}
+		n := len(r.gauges)
+		c := cluster{lo: g.From, hi: g.To, gap: true, raw: make([][]point, n)}
+		c.clear(n)
+		for i := range r.gauges {
+			for _, s := range raw[i] {
+				c.raw[i] = append(c.raw[i], r.gauges[i].fromSample(s))
+			}
+			c.measureGauge(&r.gauges[i], math.MinInt64, math.MaxInt64)
+			c.moved[i] = false // a line carried over a gap is no jump
+		}
+		if r.outstanding(&c); len(c.movedGauges()) > 0 {
+			r.events = append(r.events, c)
+		}
+	}
+	sort.SliceStable(r.events, func(a, b int) bool { return r.events[a].lo < r.events[b].lo })
 	return nil
+}
+
+// during says that a cluster overlaps a stretch of time.
+func (r *run) during(from, to int64) bool {
+	for i := range r.events {
+		if r.events[i].lo < to && r.events[i].hi > from {
+			return true
+		}
+	}
+	return false
+}
+
+// clear makes room for what n gauges did.
+func (c *cluster) clear(n int) {
+	c.jump, c.near = make([]Value, n), make([]Value, n)
+	c.moved, c.known, c.peak = make([]bool, n), make([]bool, n), make([]float64, n)
 }
 
 func (r *run) scanWindow(raw [][]history.Sample) {
@@ -217,21 +265,23 @@ func (r *run) measure() {
 		if i+1 < len(r.events) {
 			after = r.events[i+1].lo
 		}
-		n := len(r.gauges)
-		c.jump, c.moved = make([]Value, n), make([]bool, n)
-		c.peak, c.known = make([]float64, n), make([]bool, n)
+		c.clear(len(r.gauges))
 		for gi := range r.gauges {
 			c.measureGauge(&r.gauges[gi], before, after)
 		}
-		c.gap = seconds(c.hi-c.lo) > 5*r.spacing(c.lo) && c.empty()
+		c.gap = seconds(c.hi-c.lo) > 5*r.spacing(c.lo) && c.empty(nanos(r.spacing(c.lo)))
+		if c.gap {
+			r.outstanding(c)
+		}
 	}
 }
 
-// empty says that no gauge left a reading inside the cluster.
-func (c *cluster) empty() bool {
+// empty says that no gauge left a reading inside the cluster, but for those
+// that are read a little later or sooner than the one that bounds it.
+func (c *cluster) empty(spacing int64) bool {
 	for _, pts := range c.raw {
 		for _, p := range pts {
-			if p.t > c.lo && p.t < c.hi {
+			if p.t > c.lo+spacing && p.t < c.hi-spacing {
 				return false
 			}
 		}
@@ -263,7 +313,9 @@ func (c *cluster) measureGauge(g *gauge, before, after int64) {
 	r, ru := edge(g, pts[b:hi], mid)
 	c.jump[g.index] = Value{r - l, hypot(lu, ru)}
 	c.moved[g.index] = math.Abs(r-l) > max(4*hypot(lu, ru), 1.5*g.res*max(pts[a-1].f, pts[b].f))
-	from, to := levelAt(g, pts[lo:a], c.lo), levelAt(g, pts[b:hi], c.hi)
+	from, fu := edge(g, pts[lo:a], c.lo)
+	to, tu := edge(g, pts[b:hi], c.hi)
+	c.near[g.index] = Value{to - from, hypot(fu, tu)}
 	if near := to - from; c.moved[g.index] {
 		c.moved[g.index] = !c.crept(g, near, pts[lo:a], pts[b:hi])
 		// Over a long gap two short lines, carried on to its middle, tell that
@@ -278,6 +330,36 @@ func (c *cluster) measureGauge(g *gauge, before, after int64) {
 	for _, p := range pts[a:b] {
 		if d := p.y - from - slope*seconds(p.t-c.lo); math.Abs(d) > math.Abs(c.peak[g.index]) {
 			c.peak[g.index] = d
+		}
+	}
+}
+
+// outstanding looks for one gauge that stands out from all others over a gap,
+// by how far it is away from where it was: they tell what creep and weather did
+// meanwhile, where its own short lines beside the gap do not.
+func (r *run) outstanding(c *cluster) {
+	for g := range r.gauges {
+		if !c.known[g] || c.moved[g] {
+			continue
+		}
+		var others []float64
+		for o := range r.gauges {
+			if o != g && c.known[o] {
+				others = append(others, c.near[o].MM)
+			}
+		}
+		if len(others) < 3 {
+			return
+		}
+		mid, off := Median(others), 0.0
+		for _, v := range others {
+			off = max(off, math.Abs(v-mid))
+		}
+		d, res := c.near[g].MM-mid, r.gauges[g].res
+		if math.Abs(d) > max(2*off+4*c.near[g].U, jumpCounts*res) {
+			c.moved[g] = true
+			c.jump[g] = Value{d, hypot(c.near[g].U, off/math.Sqrt(3))}
+			return
 		}
 	}
 }

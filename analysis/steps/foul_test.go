@@ -141,17 +141,13 @@ func (m *month) reach(g int) (lo, hi float64) {
 func (m *month) judge(f *Findings) (found, right, open bool, others int) {
 	// What has no sharp beginning may be told some time later.
 	slack := 600.0
-	switch {
-	case m.kind == Frozen || m.kind == EndOfTravel:
-		slack = 86400
-	case m.kind == SupportShift && m.to > 0:
-		slack = m.to - m.from + 86400
-	case m.kind == GaugeKnock && m.to > 0:
+	if m.kind == GaugeKnock && m.to > 0 {
 		slack += m.to - m.from
 	}
 	for _, d := range f.Disturbances {
-		from := seconds(d.From - epoch)
-		if from < m.from-max(slack, 3*m.every)/4-60 || from > m.from+slack {
+		from, to := seconds(d.From-epoch), seconds(d.To-epoch)
+		slow := m.kind == SupportShift && m.to > 0 || m.kind == Frozen || m.kind == EndOfTravel
+		if apart := from > m.to || d.To != 0 && to < m.from; slow && apart || !slow && (from < m.from-max(slack, 3*m.every)/4-60 || from > m.from+slack) {
 			others++
 			continue
 		}

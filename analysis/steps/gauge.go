@@ -29,15 +29,14 @@ type point struct {
 
 // gauge is what the finder knows of one gauge.
 type gauge struct {
-	cfg          *config.Gauge
-	index        int
-	sign         float64
-	gain, offset float64
-	res          float64
-	noise        float64 // sd of one reading, mm
-	interval     float64 // typical spacing of readings, s
-	seq          []point // the whole run in bins
-	scales       []scale
+	cfg      *config.Gauge
+	index    int
+	lines    []line // its calibrations, the one from the beginning first
+	res      float64
+	noise    float64 // sd of one reading, mm
+	interval float64 // typical spacing of readings, s
+	seq      []point // the whole run in bins
+	scales   []scale
 }
 
 // scale is a stretch in which the indication must be multiplied, a unit key
@@ -49,16 +48,8 @@ type scale struct {
 
 func newGauge(h *history.History, i int) gauge {
 	cfg := &h.Rig.Gauges[i]
-	g := gauge{cfg: cfg, index: i, sign: 1, gain: 1, res: cfg.Resolution.Value}
-	if cfg.Sense == "up" {
-		g.sign = -1
-	}
-	if c := cfg.Calibration; c != nil {
-		g.offset = c.Offset.Value
-		if c.Gain.Value != 0 {
-			g.gain = c.Gain.Value
-		}
-	}
+	g := gauge{cfg: cfg, index: i, lines: []line{newLine(cfg)}, res: cfg.Resolution.Value}
+	g.recalibrate(h)
 	g.refresh(h)
 	return g
 }
@@ -77,9 +68,10 @@ func (g *gauge) fromBin(b history.Bin) point {
 	p := point{t: b.Time, raw: b.Median, n: b.N, from: b.From, to: b.LastTime}
 	f := g.factor(b.Time)
 	p.f = max(f, 1)
-	p.y = g.sag(b.Median * f)
-	p.mad, p.sd = b.MAD*f/math.Abs(g.gain), b.SD*f/math.Abs(g.gain)
-	p.min, p.max = g.sag(b.Min*f), g.sag(b.Max*f)
+	p.y = g.sag(b.Median*f, b.Time)
+	gain := math.Abs(g.line(b.Time).gain)
+	p.mad, p.sd = b.MAD*f/gain, b.SD*f/gain
+	p.min, p.max = g.sag(b.Min*f, b.Time), g.sag(b.Max*f, b.Time)
 	if p.min > p.max {
 		p.min, p.max = p.max, p.min
 	}
@@ -91,7 +83,7 @@ func (g *gauge) fromBin(b history.Bin) point {
 
 func (g *gauge) fromSample(s history.Sample) point {
 	f := g.factor(s.Time)
-	y := g.sag(s.MM * f)
+	y := g.sag(s.MM*f, s.Time)
 	return point{t: s.Time, y: y, raw: s.MM, n: 1, from: s.Time, to: s.Time, min: y, max: y, f: max(f, 1)}
 }
 
@@ -103,10 +95,6 @@ func (g *gauge) factor(t int64) float64 {
 	}
 	return 1
 }
-
-// sag turns an indication into downward movement, mm, from where the
-// calibrated gauge would read 0.
-func (g *gauge) sag(mm float64) float64 { return g.sign * (mm - g.offset) / g.gain }
 
 // scatter estimates the standard deviation of one reading and the typical
 // interval. Within bins of several readings it is their standard deviation, of

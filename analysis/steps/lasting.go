@@ -11,6 +11,7 @@ import (
 // leave it out.
 func (r *run) lasting() {
 	r.reportKeys()
+	r.toldKeys()
 	for _, s := range r.stuckRuns {
 		d := Disturbance{Kind: s.kind, Gauges: []int{s.gauge}, From: s.from, To: s.to,
 			Treated: "the gauge's readings between left out", Evidence: s.evidence}

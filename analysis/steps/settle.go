@@ -94,6 +94,9 @@ func (r *run) sinkingIn(k int) *sinking {
 	st := r.out.Steps[k]
 	s := &sinking{r: r, fits: map[uint64]*mat.Dense{}, common: -1}
 	from := max(st.From, st.Full)
+	if st.Full != 0 {
+		from += max(60*second, 3*nanos(r.spacing(from))) // the load is surely on by then
+	}
 	width := history.BinWidth(r.h.First, r.h.Last)
 	first := from/width + 1
 	n := int(st.To/width - first)
@@ -256,7 +259,7 @@ func (s *sinking) invert(rows []int) *mat.Dense {
 
 // finest is the least movement that readings of a gauge can show at all, mm.
 func (s *sinking) finest(g int) float64 {
-	return max(2.05*s.r.gauges[g].res, 6*s.r.gauges[g].noise)
+	return max(2.5*s.r.gauges[g].res, 6*s.r.gauges[g].noise)
 }
 
 // sank looks at the whole step: a settlement is greater than all that the
@@ -285,7 +288,7 @@ func (s *sinking) sank(side int, b []float64, g int) (slowly, bool) {
 	}
 	v := slowly{support: side, mm: total, u: hypot(weather/math.Sqrt(12), floorU(s.r.gauges[g].res)), why: "more than the stand's own movement in all that time"}
 	v.from, v.to = s.passed(b, level(b[:min(edge, 3)]), total)
-	return v, true
+	return v, v.to-v.from > s.t[leastBins/3]-s.t[0]
 }
 
 // straight says that what a linear statistic makes of every gauge's bins lies
@@ -349,8 +352,34 @@ func (s *sinking) sankWithinDays(side int, b []float64, g int) (slowly, bool) {
 		return slowly{}, false
 	}
 	v := slowly{support: side, mm: d[best], u: hypot(sigma, floorU(s.r.gauges[g].res)), why: "the means of the days before and behind it differ by more than those of other days"}
-	v.from, v.to = s.t[best]-day/2, s.t[best]+day/2
+	v.from, v.to = s.within(b, best, n, d[best])
 	return v, true
+}
+
+// within narrows a settlement of mm down that the days about bin i show: less
+// the same hour two days before and two days later, in which the daily
+// temperature falls out, the movement rises from half of it below nought to
+// half of it above.
+func (s *sinking) within(b []float64, i, n int, mm float64) (from, to int64) {
+	var c []float64
+	first := max(i-n, 2*n)
+	for k := first; k <= i+n && k+2*n < len(b); k++ {
+		c = append(c, (b[k]-(b[k-2*n]+b[k+2*n])/2)/mm)
+	}
+	from, to = s.t[i]-day/2, s.t[i]+day/2
+	half := max(1, n/48)
+	smooth := func(k int) float64 { return level(c[max(0, k-half):min(len(c), k+half+1)]) }
+	began := -1
+	for k := range c {
+		v := smooth(k)
+		if v < -0.4 {
+			began, from = k, s.t[first+k] // the last time it had not begun
+		}
+		if v > 0.4 && began >= 0 {
+			return from, max(from, s.t[first+k])
+		}
+	}
+	return from, to
 }
 
 // dayShift returns the mean of the day behind an index, half a day away, less

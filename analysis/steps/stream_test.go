@@ -94,6 +94,11 @@ func (s *stream) reading(g, k int, t, level float64) float64 {
 // minutes; 0 where it may bend within.
 func (s *stream) smooth(g int, t float64) float64 {
 	span := 600.0
+	for _, q := range s.silent {
+		if q[0] >= t {
+			span = min(span, q[0]-t)
+		}
+	}
 	for _, list := range [][]float64{s.sharp, s.gauges[g].sharp} {
 		for _, q := range list {
 			if q >= t {
@@ -156,7 +161,7 @@ func (s *stream) bin(g int, from, to int64, c *tally) (history.Bin, bool) {
 	}
 	gg := &s.gauges[g]
 	*c = tally{res: gg.res, lo: len(c.table), values: c.values[:0]}
-	base := counts(gg.sign*gg.level(s.when(g, lo))*gg.per) - len(c.table)/2
+	base := counts(s.reading(g, lo, s.when(g, lo), gg.level(s.when(g, lo)))*gg.per) - len(c.table)/2
 	c.base = float64(base) * gg.res
 	for k := lo; k < hi; {
 		t := s.when(g, k)
@@ -165,7 +170,7 @@ func (s *stream) bin(g int, from, to int64, c *tally) (history.Bin, bool) {
 			continue
 		}
 		span := s.smooth(g, t)
-		if span == 0 || gg.shows != nil || len(s.silent) > 0 {
+		if span == 0 {
 			v := s.reading(g, k, t, gg.level(t))
 			c.at(t, v)
 			c.values = append(c.values, v)
@@ -200,18 +205,28 @@ func (s *stream) even(g, k, end, base int, c *tally) int {
 	p, q := (4*lm-3*la-lb)*unit, (2*la+2*lb-4*lm)*unit
 	la *= unit
 	sd, step := gg.noise*unit, 1/max(float64(len(list)-1), 1)
-	i := 0
+	shown := 0.0
 	for j, e := range list {
 		f := float64(j) * step
-		i = counts(la + f*(p+f*q) + sd*float64(e))
-		if !c.count(i - base) {
-			c.values = append(c.values, float64(i)*gg.res)
+		x := la + f*(p+f*q) + sd*float64(e)
+		whole := false
+		if gg.shows != nil {
+			x, whole = gg.shows(t+float64(j)*s.every, x*gg.res)
+			shown = x
+			x *= gg.per
+		}
+		if i := counts(x); !whole {
+			shown = float64(i) * gg.res
+			whole = !c.count(i - base)
+		}
+		if whole {
+			c.values = append(c.values, shown)
 		}
 		if c.n == 0 && j == 0 {
-			c.first, c.a = t, float64(i)*gg.res
+			c.first, c.a = t, shown
 		}
 	}
-	c.last, c.b = t+span, float64(i)*gg.res
+	c.last, c.b = t+span, shown
 	c.n += len(list)
 	c.sum += float64(len(list)) * (t + span/2)
 	return k + len(list)
@@ -306,7 +321,7 @@ func (s *stream) Bins(g int) []history.Bin {
 func (s *stream) Window(from, to int64) ([][]history.Sample, error) {
 	out := make([][]history.Sample, len(s.gauges))
 	for g := range s.gauges {
-		lo, hi := s.numbers(g, seconds(from-epoch), seconds(to-epoch)+1e-9)
+		lo, hi := s.numbers(g, seconds(from-epoch), seconds(to-epoch)+1e-6)
 		step := max(1, (hi-lo)/(2*history.WindowMost)+1)
 		for k := lo; k < hi; k += step {
 			if t := s.when(g, k); !s.lost(t) {
