@@ -1,6 +1,8 @@
 package analysis
 
 import (
+	"math"
+
 	"gaugelog/analysis/history"
 	"gaugelog/analysis/steps"
 	"gaugelog/analysis/stiffness"
@@ -31,14 +33,20 @@ func stiffnessInput(h *history.History, f *steps.Findings, gravity float64) stif
 func increments(rig *config.Rig, s steps.Step) []stiffness.Obs {
 	var out []stiffness.Obs
 	for g, figures := range s.Gauges {
-		inc := figures.Gross.Increment
+		of := figures.Gross
 		if len(rig.Gauges[g].Bar) == 2 {
-			inc = figures.Net.Increment
+			of = figures.Net
 		}
-		if inc == nil || rig.Gauges[g].Sees == "reference" {
+		if of.Increment == nil || rig.Gauges[g].Sees == "reference" {
 			continue
 		}
-		out = append(out, stiffness.Obs{Gauge: g, MM: inc.MM, U: inc.U})
+		u := math.Sqrt(math.Max(0, of.Increment.U*of.Increment.U-of.Carried*of.Carried))
+		out = append(out, stiffness.Obs{
+			Gauge: g, MM: of.Increment.MM, U: u, Carried: of.Carried,
+			// Scatter differs before and after; what a plateau leaves in both its
+			// increments is where it lies within a step of the resolution.
+			UBefore: math.Min(u/math.Sqrt2, rig.Gauges[g].Resolution.Value/math.Sqrt(12)),
+		})
 	}
 	return out
 }

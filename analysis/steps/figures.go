@@ -39,7 +39,7 @@ func (r *run) baseline() error {
 		var y []float64
 		for _, p := range raw[g] {
 			if !r.excluded(g, p.Time, p.Time+1) {
-				y = append(y, gg.sag(p.MM*gg.factor(p.Time), p.Time)-t.shift(p.Time))
+				y = append(y, gg.sag(p.MM*gg.factor(p.Time))-t.shift(p.Time))
 			}
 		}
 		if len(y) < baselineLeast {
@@ -153,8 +153,8 @@ func (r *run) read(g, k int, by [][]Point, of side, common float64) Figures {
 	if v, ok := r.readAt(g, pts, s.Full, after, of); ok {
 		f.Initial = seal(v)
 		if t, ok := r.trend(g, k, by, s.Full+nanos(after), of); ok {
-			inc := Value{v.MM - t.MM, hypot(max(v.U, floor), max(t.U, floor))}
-			f.Increment = &inc
+			inc := Value{v.MM - t.MM, hypot(max(v.U, floor), max(t.U, floor), t.model)}
+			f.Increment, f.Carried = &inc, -t.model
 		}
 	} else if firstAt > after {
 		y, u := of(pts[0])
@@ -242,24 +242,34 @@ func tail(pts []Point, full int64, of side) (Value, bool) {
 	return Value{v, s}, true
 }
 
-// trend carries the former steps' creep forward: the former step's last half,
-// a straight line in the logarithm of its time, continued to t. What a longer
-// stretch would have said differently widens the uncertainty.
-func (r *run) trend(g, k int, by [][]Point, t int64, of side) (Value, bool) {
+// carried is a trend carried forward: its value with the readings' own
+// uncertainty, and with its sign what the choice of the curve may err by.
+type carried struct {
+	Value
+	model float64
+}
+
+// trend carries the former steps' creep forward to t: a straight line in the
+// logarithm of the former step's time through its last half, bent where there
+// are readings enough to tell how it bends. Half of what bending changed, as a
+// rectangle, stays as the doubt about the curve; where nothing could be bent,
+// all that a longer stretch would have said differently.
+func (r *run) trend(g, k int, by [][]Point, t int64, of side) (carried, bool) {
 	prev := r.out.Steps[k-1]
 	pts := by[k-1]
 	if k-1 == r.out.Baseline {
-		return Value{0, r.commonGross(g, k-1)}, len(pts) > 0
+		return carried{Value{0, r.commonGross(g, k-1)}, 0}, len(pts) > 0
 	}
 	if len(pts) == 0 {
-		return Value{}, false
+		return carried{}, false
 	}
+	end := pts[len(pts)-1]
 	if prev.Full == 0 {
-		v, u := of(pts[len(pts)-1])
-		return Value{v, u}, true
+		v, u := of(end)
+		return carried{Value{v, u}, 0}, true
 	}
-	line := func(share float64) (Value, bool) {
-		last := seconds(pts[len(pts)-1].Time - prev.Full)
+	last, at := seconds(end.Time-prev.Full), math.Log(seconds(t-prev.Full))
+	line := func(share float64, degree int) (Value, bool) {
 		var x, y, u []float64
 		for _, p := range pts {
 			if s := seconds(p.Time - prev.Full); s >= last*share && s > 0 {
@@ -267,23 +277,28 @@ func (r *run) trend(g, k int, by [][]Point, t int64, of side) (Value, bool) {
 				x, y, u = append(x, math.Log(s)), append(y, v), append(u, w)
 			}
 		}
-		if len(x) < 3 {
+		if len(x) < 3 || degree > 1 && len(x) < enoughToBend {
 			return Value{}, false
 		}
-		f, ok := fitPoly(x, y, u, 1)
-		at := math.Log(seconds(t - prev.Full))
+		f, ok := fitPoly(x, y, u, degree)
 		return Value{f.at(at), f.u(at)}, ok
 	}
-	near, ok := line(0.5)
+	near, ok := line(0.5, 1)
 	if !ok {
-		v, u := of(pts[len(pts)-1])
-		return Value{v, u}, true
+		v, u := of(end)
+		return carried{Value{v, u}, 0}, true
 	}
-	if far, ok := line(0.25); ok {
-		near.U = hypot(near.U, (far.MM-near.MM)/math.Sqrt(3))
+	if bent, ok := line(0.25, 2); ok && bent.U < math.Abs(bent.MM-near.MM) {
+		return carried{bent, (bent.MM - near.MM) / 2 / math.Sqrt(3)}, true
 	}
-	return near, true
+	if far, ok := line(0.25, 1); ok {
+		return carried{near, (near.MM - far.MM) / math.Sqrt(3)}, true
+	}
+	return carried{near, 0}, true
 }
+
+// enoughToBend is how many readings of a step tell how its trend bends.
+const enoughToBend = 20
 
 // settlements reports how far each support went down.
 func (r *run) settlements() {

@@ -32,6 +32,10 @@ type Figures struct {
 	Initial *Value
 	// Increment is Initial less the former step's trend carried to that instant.
 	Increment *Value
+	// Carried is the part of Increment's uncertainty, mm, that comes from the
+	// choice of the curve by which the trend was carried forward. It has a sign:
+	// all gauges of a step err by it together, one way or the other.
+	Carried float64
 	// Final is the sag at the step's end.
 	Final *Value
 	// SagAt holds the rig's read.times that lie within the step, or the first

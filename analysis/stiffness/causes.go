@@ -48,6 +48,12 @@ func causes(in *Input, m *model, gravity Value, gravitySource string) []cause {
 		}
 	}
 	gaugeCauses(in, m, add)
+	for k, step := range in.Steps {
+		if m.carries(k) {
+			out = append(out, cause{name: "creep carried into step " + step.Name, kind: "B", unit: "1", u: 1, rectangular: true,
+				source: "what another curve through the trend before would have said, in units of its u", move: func(s *state, v float64) { s.carried(k, v) }})
+		}
+	}
 	switch m.mode {
 	case shearRatio:
 		ratio, spread := assumedRatio(in.Rig)
@@ -62,7 +68,7 @@ func causes(in *Input, m *model, gravity Value, gravitySource string) []cause {
 	}
 	for i := range out {
 		// Friction and gravity somewhere on the globe are known as ranges only.
-		out[i].rectangular = out[i].unit == "N" || (out[i].name == "gravity" && gravity.U == unplacedGravity)
+		out[i].rectangular = out[i].rectangular || out[i].unit == "N" || (out[i].name == "gravity" && gravity.U == unplacedGravity)
 	}
 	return out
 }
@@ -150,13 +156,6 @@ func gaugeCauses(in *Input, m *model, add adder) {
 	}
 }
 
-func (s *state) nudge(stand string, k int, v float64) {
-	for len(s.offset[stand]) <= k {
-		s.offset[stand] = append(s.offset[stand], 0)
-	}
-	s.offset[stand][k] += v
-}
-
 func (m *model) hangs(load int) bool {
 	for _, k := range m.changes {
 		for _, c := range k {
@@ -177,6 +176,23 @@ func (m *model) weighed() bool {
 		}
 	}
 	return false
+}
+
+// carries reports whether a trend was carried forward into step k.
+func (m *model) carries(k int) bool {
+	for _, r := range m.rows {
+		if r.step == k && r.carried != 0 {
+			return true
+		}
+	}
+	return false
+}
+
+func (s *state) carried(k int, v float64) {
+	for len(s.carry) <= k {
+		s.carry = append(s.carry, 0)
+	}
+	s.carry[k] += v
 }
 
 func (m *model) reads(gauge int) bool {

@@ -46,7 +46,7 @@ func (m *model) linear(st *state, theta []float64) ([]float64, *mat.Dense, error
 			f[r] += gamma * m.see(st, o.gauge, shear[o.step], none)
 		}
 		x.Set(r, 0, b)
-		f[r] += st.moved(m.rig.Gauges[o.gauge].Stand, o.step)
+		f[r] += st.moved(m.rig.Gauges[o.gauge].Stand, o)
 	}
 	for s := range m.rig.Supports {
 		if err := m.supportColumns(st, s, sets, f, x); err != nil {
@@ -59,13 +59,6 @@ func (m *model) linear(st *state, theta []float64) ([]float64, *mat.Dense, error
 		}
 	}
 	return f, x, nil
-}
-
-func (s *state) moved(stand string, k int) float64 {
-	if o := s.offset[stand]; k < len(o) {
-		return o[k]
-	}
-	return 0
 }
 
 // supportColumns adds what support s of a determinate beam does by yielding.

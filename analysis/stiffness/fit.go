@@ -70,9 +70,11 @@ func (m *model) readingCovariance() *mat.SymDense {
 const rounds = 2
 
 func (f *fitted) solve() error {
+	f.m.margin = 0 // what is stated must lie on the beam
 	if err := f.start(); err != nil {
 		return err
 	}
+	f.m.margin = margins(f.m.rig)
 	f.cov = f.read
 	for range rounds {
 		if err := f.converge(); err != nil {

@@ -64,6 +64,10 @@ type Obs struct {
 	// UBefore is the part of U that comes from the plateau before the change,
 	// which the increment before shares with the opposite sign; 0: U/sqrt2.
 	UBefore float64
+	// Carried is by how much, in mm and with its sign, MM may be wrong (one
+	// standard uncertainty, beside U) because the trend before the change was
+	// carried forward by the wrong curve. All gauges of a step err so together.
+	Carried float64
 	// DOF are the degrees of freedom behind U; 0 for many.
 	DOF float64
 }
@@ -78,7 +82,7 @@ func (in *Input) check() error {
 			if o.Gauge < 0 || o.Gauge >= len(in.Rig.Gauges) {
 				return fmt.Errorf("stiffness: step %s has a reading of gauge number %d; mend: the rig has %d gauges", s.Name, o.Gauge, len(in.Rig.Gauges))
 			}
-			for _, v := range []float64{o.MM, o.U, o.UBefore, o.DOF} {
+			for _, v := range []float64{o.MM, o.U, o.UBefore, o.DOF, o.Carried} {
 				if math.IsNaN(v) || math.IsInf(v, 0) {
 					return fmt.Errorf("stiffness: step %s, gauge %s: a figure is not a number; mend: leave the gauge out of this step", s.Name, in.Rig.Gauges[o.Gauge].Name)
 				}

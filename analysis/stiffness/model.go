@@ -13,7 +13,7 @@ import (
 type observation struct {
 	step, gauge    int
 	mm, u, uBefore float64
-	dof            float64
+	carried, dof   float64
 }
 
 // change is how one load's force changed in one step.
@@ -47,6 +47,10 @@ type model struct {
 	yields      []int // supports fitted
 	rigid       bool
 	determinate bool
+	// margin is by how much the beam is taken longer at both ends, mm: its ends
+	// are free, so that it bears the same, and a support or load at an end may
+	// be moved by its uncertainty.
+	margin float64
 }
 
 // determinateLayout reports whether statics alone gives the reactions.
@@ -120,11 +124,34 @@ func (m *model) loads(st *state, k int) []beam.Load {
 
 // beam builds the rig's beam in this state.
 func (m *model) beam(st *state, ei, s float64, compliance []float64) beam.Beam {
-	b := beam.Beam{From: m.rig.Specimen.From.Value, Length: m.rig.Specimen.Length.Value, EI: ei, S: s}
+	b := beam.Beam{From: m.rig.Specimen.From.Value - m.margin, Length: m.rig.Specimen.Length.Value + 2*m.margin, EI: ei, S: s}
 	for i, sup := range m.rig.Supports {
 		b.Supports = append(b.Supports, beam.Support{Name: sup.Name, At: st.support[i], Clamp: sup.Kind == "clamp", Compliance: compliance[i]})
 	}
 	return b
+}
+
+// margins is how far the drawn or shifted places may lie off the beam's ends:
+// ten times the greatest stated uncertainty of a place.
+func margins(rig *config.Rig) float64 {
+	u := 0.0
+	for _, s := range rig.Supports {
+		u = max(u, s.At.U)
+	}
+	for _, g := range rig.Gauges {
+		u = max(u, g.At.U)
+		for _, foot := range g.Bar {
+			u = max(u, foot.U)
+		}
+	}
+	for _, l := range rig.Loads {
+		for _, p := range []*config.Length{l.At, l.From, l.To} {
+			if p != nil {
+				u = max(u, p.U)
+			}
+		}
+	}
+	return 10 * u
 }
 
 // see is what gauge g reads of a line, its gain included.

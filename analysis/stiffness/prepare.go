@@ -96,7 +96,7 @@ func (m *model) take(in *Input, k int, s StepObs) {
 		if u == 0 {
 			u, before = 1e-9, 1e-9/math.Sqrt2
 		}
-		m.rows = append(m.rows, observation{step: k, gauge: o.Gauge, mm: o.MM, u: u, uBefore: before, dof: o.DOF})
+		m.rows = append(m.rows, observation{step: k, gauge: o.Gauge, mm: o.MM, u: u, uBefore: before, carried: o.Carried, dof: o.DOF})
 		if sees(g) == "beam" && len(g.Bar) == 0 {
 			push[o.Gauge] = o.MM
 		}

@@ -24,11 +24,12 @@ type state struct {
 	shear    float64   // shear modulus where stated, MPa
 	dims     dims
 	offset   map[string][]float64 // stand -> movement by step, mm
+	carry    []float64            // by step: how far the trend carried forward is off, in its u
 }
 
 func (s *state) clone() *state {
 	c := *s
-	for _, p := range []*[]float64{&c.support, &c.given, &c.gauge, &c.gain, &c.contact, &c.stuck, &c.loadFrom, &c.loadTo, &c.weight} {
+	for _, p := range []*[]float64{&c.support, &c.given, &c.gauge, &c.gain, &c.contact, &c.stuck, &c.loadFrom, &c.loadTo, &c.weight, &c.carry} {
 		*p = append([]float64(nil), *p...)
 	}
 	c.bar = append([][2]float64(nil), c.bar...)
@@ -70,6 +71,27 @@ func nominal(rig *config.Rig, sec *Section) *state {
 		s.loadFrom, s.loadTo, s.weight = append(s.loadFrom, from), append(s.loadTo, to), append(s.weight, 1)
 	}
 	return s
+}
+
+// nudge adds a stand's movement in step k.
+func (s *state) nudge(stand string, k int, v float64) {
+	for len(s.offset[stand]) <= k {
+		s.offset[stand] = append(s.offset[stand], 0)
+	}
+	s.offset[stand][k] += v
+}
+
+// moved is what has nothing to do with the beam in a row: its stand's movement
+// and the error of the trend carried forward.
+func (s *state) moved(stand string, o observation) float64 {
+	mm := 0.0
+	if by := s.offset[stand]; o.step < len(by) {
+		mm = by[o.step]
+	}
+	if o.step < len(s.carry) {
+		mm += s.carry[o.step] * o.carried
+	}
+	return mm
 }
 
 func loadPlaces(l config.Load) (from, to float64) {

@@ -174,6 +174,22 @@ func TestTellsShearApart(t *testing.T) {
 	relative(t, "G", e.ShearModulus.Value, 600, 1e-9)
 }
 
+// A beam that ends at its support: moving the support by its uncertainty must
+// not take it off the beam.
+func TestSupportsAtTheEnds(t *testing.T) {
+	p := newPlank()
+	p.rig.Specimen.From, p.rig.Specimen.Length = length(0, 0), length(2100, 0)
+	p.rig.Supports[0].At.U, p.rig.Supports[1].At.U = 0.5, 0.5
+	p.rig.Gauges = p.rig.Gauges[1:7]
+	e, err := Compute(p.ladder())
+	if err != nil {
+		t.Fatal(err)
+	}
+	if d := math.Abs(e.Bending.Value/p.ei - 1); d > 1e-3 {
+		t.Errorf("EI off by %.2g", d)
+	}
+}
+
 func TestPriorIsSaid(t *testing.T) {
 	p := newPlank()
 	e, err := Compute(p.ladder())
