@@ -58,15 +58,35 @@ func (o Options) Guess(ctx context.Context) ([]guess.Proposal, []guess.Capture, 
 	return guess.Propose(all...), all, err
 }
 
-// hear listens at each setting until one makes sense.
+// hear listens at each setting until one makes sense; where bytes come that
+// make none without parity, it listens with parity as well.
 func (o Options) hear(ctx context.Context) (all []guess.Capture, found bool, err error) {
-	lines := guess.UsualLines()
 	if o.Fixed {
-		lines = []config.Line{o.Line}
+		return o.hearAt(ctx, []config.Line{o.Line})
 	}
-	if len(lines) > 1 {
-		o.say("trying %d line settings (at most %s); Ctrl-C ends it with what was heard so far", len(lines), time.Duration(len(lines))*o.Each)
+	lines := guess.UsualLines()
+	o.say("trying %d line settings (at most %s); Ctrl-C ends it with what was heard so far", len(lines), time.Duration(len(lines))*o.Each)
+	if all, found, err = o.hearAt(ctx, lines); found || err != nil || ctx.Err() != nil || !anything(all) {
+		return all, found, err
 	}
+	lines = parityLines()
+	o.say("something comes that makes no frames without parity; trying %d settings with it (at most %s)", len(lines), time.Duration(len(lines))*o.Each)
+	more, found, err := o.hearAt(ctx, lines)
+	return append(all, more...), found, err
+}
+
+// parityLines are settings with parity at the usual speeds of old instruments
+// (common practice).
+func parityLines() (out []config.Line) {
+	for _, baud := range []int{9600, 4800, 2400, 1200, 19200} {
+		for _, parity := range []string{"even", "odd"} {
+			out = append(out, config.Line{Baud: baud, DataBits: 8, Parity: parity, StopBits: "1"})
+		}
+	}
+	return out
+}
+
+func (o Options) hearAt(ctx context.Context, lines []config.Line) (all []guess.Capture, found bool, err error) {
 	for _, l := range lines {
 		o.Line = l
 		o.say("listening at %s for %s", Words(l), o.Each)

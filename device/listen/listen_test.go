@@ -5,6 +5,7 @@ import (
 	"errors"
 	"strings"
 	"sync"
+	"sync/atomic"
 	"testing"
 	"testing/synctest"
 	"time"
@@ -74,6 +75,45 @@ func TestWatch(t *testing.T) {
 		<-done
 		if err != nil || len(p) == 0 || len(all) != 1 || !strings.Contains(strings.Join(p[0].Sure, ";"), "a sign always stands") {
 			t.Fatalf("%v %+v, %d captures", err, p, len(all))
+		}
+	})
+}
+
+// setOpener knows the setting that its port was last opened with.
+type setOpener struct {
+	*devicetest.Opener
+	line atomic.Pointer[config.Line]
+}
+
+func (o *setOpener) Open(ctx context.Context, name string, l config.Line) (device.Port, error) {
+	o.line.Store(&l)
+	return o.Opener.Open(ctx, name, l)
+}
+
+// A streamer with eight data bits and odd parity makes no frames at a setting
+// without parity, and is found with it.
+func TestHeardWithParity(t *testing.T) {
+	synctest.Test(t, func(t *testing.T) {
+		opener := &setOpener{Opener: &devicetest.Opener{}}
+		wire := opener.Plug("p")
+		ctx, stop := context.WithCancel(t.Context())
+		done := make(chan bool)
+		go func() {
+			defer close(done)
+			for ctx.Err() == nil {
+				if l := opener.line.Load(); l != nil && l.Baud == 4800 && l.Parity == "odd" {
+					wire.Send([]byte("+001.234\r\n"))
+				} else {
+					wire.Send([]byte{0x00, 0xB0, 0x00, 0x96, 0xB1, 0xFF})
+				}
+				time.Sleep(250 * time.Millisecond)
+			}
+		}()
+		p, _, err := listen.Options{Opener: opener, Port: "p"}.Guess(ctx)
+		stop()
+		<-done
+		if err != nil || len(p) == 0 || p[0].Frame.Kind != "text" || p[0].Frame.Line.Parity != "odd" || p[0].Frame.Line.Baud != 4800 {
+			t.Fatalf("%v %+v", err, p)
 		}
 	})
 }
