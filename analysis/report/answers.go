@@ -198,9 +198,22 @@ func (b *builder) answerTrouble(add func(q, a, s string)) {
 		}
 	}
 	for i, k := range kinds {
-		kinds[i] = fmt.Sprintf("%s (%d)", k, counts[k])
+		words, known := disturbanceWords[k]
+		if !known {
+			words = k
+		}
+		if kinds[i] = words; counts[k] > 1 {
+			kinds[i] = fmt.Sprintf("%s (%d times)", words, counts[k])
+		}
 	}
 	add("Was it disturbed?", strings.Join(kinds, ", "), "each is listed with how it was treated")
+}
+
+// disturbanceWords says the result's kinds of disturbance as people do.
+var disturbanceWords = map[string]string{
+	"bench-knock": "the bench knocked", "gauge-knock": "a gauge knocked", "zero-pressed": "a zero pressed",
+	"spike": "a spike", "load-change": "a load changed", "support-shift": "a support shifted", "unit-key": "a unit key pressed",
+	"frozen": "a gauge frozen", "end-of-travel": "a gauge at its end of travel", "gap": "a gap in the readings", "undecided": "something undecided",
 }
 
 // answerRules counts the clauses that were decided.

@@ -126,13 +126,29 @@ func (b *builder) with(q *analysis.Q) string {
 	return f.value + unit
 }
 
+// mostDecimals bounds what is shown of a value that stands without its
+// uncertainty: a sag that is a mean shows one more than the gauges' 0.001 mm, a
+// ratio three.
+var mostDecimals = map[string]int{"mm": 4, "in": 5, "": 3}
+
+// bounded is figure's value with no more decimals than its kind is worth.
+func (b *builder) bounded(q *analysis.Q) figure {
+	f := b.figure(*q)
+	most, known := mostDecimals[f.unit]
+	if _, frac, _ := strings.Cut(f.value, "."); known && len(frac) > most {
+		factor, _ := b.u.convert(q.Unit)
+		f.value = fixed(q.Value*factor, most)
+	}
+	return f
+}
+
 // cell prints a value alone for a table whose head has the unit; "–" where
 // there is none.
 func (b *builder) cell(q *analysis.Q) string {
 	if q == nil {
 		return "–"
 	}
-	return b.figure(*q).value
+	return b.bounded(q).value
 }
 
 // cellU prints the standard uncertainty alone.
@@ -148,7 +164,7 @@ func (b *builder) short(q *analysis.Q) string {
 	if q == nil {
 		return "not measured"
 	}
-	f := b.figure(*q)
+	f := b.bounded(q)
 	if f.unit == "" {
 		return f.value
 	}
