@@ -1,14 +1,12 @@
 package main
 
 import (
-	"bufio"
 	"context"
 	"errors"
 	"fmt"
 	"log/slog"
 	"os"
 	"path/filepath"
-	"strings"
 	"time"
 
 	"github.com/spf13/cobra"
@@ -223,40 +221,4 @@ type lateSink struct {
 func (s *lateSink) Take(d device.Reading) {
 	s.Runner.Take(d)
 	s.beside.take(d)
-}
-
-// openerOf opens the machine's ports, or those a list of "name path" names.
-func openerOf(file string) (device.Opener, error) {
-	if file == "" {
-		return device.SystemOpener{}, nil
-	}
-	f, err := os.Open(file)
-	if err != nil {
-		return nil, wrong(err, "give the list that `gaugelog simulate` printed")
-	}
-	defer f.Close()
-	paths := map[string]string{}
-	lines := bufio.NewScanner(f)
-	for n := 1; lines.Scan(); n++ {
-		fields := strings.Fields(lines.Text())
-		if len(fields) == 0 {
-			continue
-		}
-		if len(fields) != 2 {
-			return nil, wrongf(`write "name path" a line`, "%s:%d: %q is not two words", file, n, lines.Text())
-		}
-		paths[fields[0]] = fields[1]
-	}
-	return listedOpener(paths), lines.Err()
-}
-
-// listedOpener opens ports at the paths of a list, others by their own name.
-type listedOpener map[string]string
-
-// Open opens the port behind a name.
-func (o listedOpener) Open(ctx context.Context, name string, line config.Line) (device.Port, error) {
-	if path, ok := o[name]; ok {
-		name = path
-	}
-	return device.SystemOpener{}.Open(ctx, name, line)
 }

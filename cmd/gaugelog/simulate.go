@@ -121,6 +121,9 @@ func runSimulation(cmd *cobra.Command, rigFiles []string, f simulateFlags) (err 
 			run = "RUN/" + names[e.Rig]
 		}
 		tellEvent(cmd.ErrOrStderr(), e, run, path)
+		if e.Kind == simulators.Plugged {
+			fmt.Fprintf(cmd.OutOrStdout(), "%s %s\n", e.Port, path)
+		}
 	}
 	return live.Run(cmd.Context())
 }

@@ -5,6 +5,7 @@ import (
 	"errors"
 	"fmt"
 	"io"
+	"maps"
 	"slices"
 	"time"
 
@@ -67,12 +68,8 @@ func everySource(ctx context.Context, w io.Writer, rig *config.Rig, opener devic
 // portNames are the machine's ports that nobody holds, or those of a list.
 func portNames(opener device.Opener) ([]string, error) {
 	if listed, ok := opener.(listedOpener); ok {
-		var names []string
-		for n := range listed {
-			names = append(names, n)
-		}
-		slices.Sort(names)
-		return names, nil
+		paths, err := listedPorts(listed.file)
+		return slices.Sorted(maps.Keys(paths)), err
 	}
 	list, err := device.ListPorts("", device.DefaultLockDir())
 	if err != nil {
