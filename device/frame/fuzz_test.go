@@ -9,10 +9,11 @@ import (
 
 // The fuzz targets, one a kind of frame (FuzzText stands with the text
 // tests), hold the decoders' promises on any bytes, any split and any pause.
-// The campaign of 100 million executions in all runs them one after another:
+// TestMutations is the campaign of 100 million executions. These find their own
+// way into the code, a kind after another:
 //
 //	for f in Text Nibbles Binary Modbus SCPI; do
-//	  go test ./device/frame -run '^$' -fuzz "^Fuzz$f\$" -fuzztime 20000000x
+//	  go test ./device/frame -run '^$' -fuzz "^Fuzz$f\$" -fuzztime 1m
 //	done
 
 func FuzzNibbles(f *testing.F) { fuzzKind(f, frame.Nibbles) }
