@@ -155,7 +155,8 @@ func (r *Result) addCreep(h *history.History, f *steps.Findings, gravity, ei, s 
 	}
 	r.Creep = creepOf(h, t, own, shared, f.Steps[t.step].Name, a)
 	r.Drift = driftOf(h, t, a)
-	for _, n := range a.Notes {
+	r.Warnings = append(r.Warnings, driftWarnings(h, t, a)...)
+	for _, n := range append(t.notes, a.Notes...) {
 		r.Warnings = append(r.Warnings, Warning{Code: n.Code, Gauge: r.Creep.Gauge, Text: n.Text})
 	}
 	addLaw(r, h, t, a)

@@ -16,6 +16,7 @@ type creepTask struct {
 	in     creep.Input
 	step   int   // index of the creep step
 	gauge  int   // index of the creep gauge
+	gauges []int // of each series, in the rig's list; the first is gauge
 	origin int64 // instant of hour 0
 	full   int64 // full load of the creep step
 	end    int64 // its end
@@ -23,6 +24,10 @@ type creepTask struct {
 	unload int
 	// below is true where less hung after the creep step than at the baseline.
 	below bool
+	// record says of each of in.Ambient what it is.
+	record []surrounding
+	// notes are what a reader must know of the input, for the warnings.
+	notes []creep.Note
 }
 
 // hours turns an instant into hours from the task's origin.
@@ -97,9 +102,10 @@ func creepTaskOf(h *history.History, f *steps.Findings, shares [][]float64) (*cr
 		return nil, false
 	}
 	t.in = creep.Input{FullH: t.hours(t.full), EndH: t.hours(t.end), LoadN: load, InitialH: h.Rig.Read.InitialAfter.Value / 3600}
-	t.in.Series = []creep.Series{t.series(h, f, shares[gauge], pattern)}
-	t.in.Offsets = t.offsets(f)
-	t.in.Ambient = t.ambient(h)
+	t.addSeries(h, f, shares, pattern)
+	t.addOffsets(f)
+	t.addDrifts(h, f)
+	t.addSurroundings(h, f)
 	return t, true
 }
 
@@ -117,30 +123,6 @@ func patternShare(rig *config.Rig, f *steps.Findings, step int, share []float64)
 		return 0, 0
 	}
 	return sum / total, total
-}
-
-// series is the creep gauge's track, without what was read while a load was
-// being placed. The baseline is in it: it ties the zero and the temperature.
-func (t *creepTask) series(h *history.History, f *steps.Findings, share []float64, pattern float64) creep.Series {
-	s := creep.Series{Name: h.Rig.Gauges[t.gauge].Name}
-	for _, c := range f.Loads {
-		newton := 0.0
-		for j, n := range c.Delta {
-			newton += n * share[j] / pattern
-		}
-		s.Changes = append(s.Changes, creep.Change{AtH: t.hours(c.Full) - c.RampS/3600, RampH: c.RampS / 3600, Newton: newton})
-	}
-	track := f.Tracks[t.gauge]
-	s.ZeroU = track.Baseline.U
-	b := creepBin{floor: h.Rig.Gauges[t.gauge].Resolution.Value / math.Sqrt(12), into: &s}
-	for _, p := range track.Points {
-		if placing(f, p.Time) || !(p.NetU > 0) || math.IsNaN(p.Net) {
-			continue
-		}
-		b.add(t.hours(p.Time), t.hours(changeBefore(f, p.Time)), p)
-	}
-	b.close()
-	return s
 }
 
 // changeBefore is the full load of the last change before an instant; the
@@ -203,38 +185,4 @@ func placing(f *steps.Findings, at int64) bool {
 		}
 	}
 	return false
-}
-
-// offsets hands on the jumps that were taken off the creep gauge's track:
-// what is left of them is 0 with the uncertainty they were found with.
-func (t *creepTask) offsets(f *steps.Findings) []creep.Offset {
-	var out []creep.Offset
-	for _, o := range f.Tracks[t.gauge].Offsets {
-		if o.Value.U > 0 {
-			out = append(out, creep.Offset{Name: string(o.Kind), AtH: t.hours(o.Time), Prior: &creep.Knowledge{U: o.Value.U}})
-		}
-	}
-	return out
-}
-
-// ambient hands over the first probe that reads temperature and covers the
-// creep step with two readings or more.
-func (t *creepTask) ambient(h *history.History) []creep.Ambient {
-	for i, p := range h.Rig.Probes {
-		if p.Temperature == "" {
-			continue
-		}
-		a := creep.Ambient{Name: "temperature"}
-		for _, v := range h.Ambient(i) {
-			at := t.hours(v.Time)
-			if n := len(a.TimeH); math.IsNaN(v.Celsius) || n > 0 && at <= a.TimeH[n-1] {
-				continue
-			}
-			a.TimeH, a.Value = append(a.TimeH, at), append(a.Value, v.Celsius)
-		}
-		if n := len(a.TimeH); n >= 2 && a.TimeH[n-1]-a.TimeH[0] >= 48 {
-			return []creep.Ambient{a}
-		}
-	}
-	return nil
 }

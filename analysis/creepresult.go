@@ -209,29 +209,6 @@ func forecastOf(rig *config.Rig, own instrument, gauge, i int, v creep.Forecast)
 	return f
 }
 
-// driftOf renders what the surroundings did to the creep gauge.
-func driftOf(h *history.History, t *creepTask, a *creep.Analysis) Drift {
-	d := Drift{Gauges: []GaugeDrift{}, Temperature: []AmbientTerm{}, Humidity: []AmbientTerm{}}
-	if a == nil || a.Best == nil {
-		return d
-	}
-	for _, n := range a.Best.Nuisance {
-		name := h.Rig.Gauges[t.gauge].Name
-		switch n.Kind {
-		case "ambient":
-			term := AmbientTerm{Gauge: name, Coefficient: quantity(n.Value, n.U, "mm/K")}
-			if n.Ambient < len(a.Best.Lags) {
-				lag := quantity(a.Best.Lags[n.Ambient].Value, a.Best.Lags[n.Ambient].U, "h")
-				term.LagH = &lag
-			}
-			d.Temperature = append(d.Temperature, term)
-		case "drift":
-			d.Gauges = append(d.Gauges, GaugeDrift{Gauge: name, Rate: quantity(n.Value, n.U, "mm/d")})
-		}
-	}
-	return d
-}
-
 // lawPoints is how many points of the law a plot gets within the data.
 const lawPoints = 120
 

@@ -1,0 +1,99 @@
+package analysis
+
+import (
+	"math"
+
+	"gaugelog/analysis/creep"
+	"gaugelog/analysis/history"
+	"gaugelog/analysis/steps"
+)
+
+// leastShare is the sag, as a share of the creep gauge's, below which a gauge
+// tells nothing of the law: its errors of place weigh too much.
+const leastShare = 0.2
+
+// influenceU is the relative standard uncertainty of each load's effect on a
+// gauge as worked out from places and stiffness: common practice for places
+// known to half a millimetre. The readings fix it far better.
+const influenceU = 0.005
+
+// addSeries hands over the creep gauge, then every other gauge on the beam
+// that sags enough.
+func (t *creepTask) addSeries(h *history.History, f *steps.Findings, shares [][]float64, pattern float64) {
+	t.in.Series, t.gauges = []creep.Series{t.series(h, f, t.gauge, shares[t.gauge], pattern)}, []int{t.gauge}
+	for g, gauge := range h.Rig.Gauges {
+		if g == t.gauge || !touches(gauge) || g >= len(f.Tracks) || g == f.Chord.Left || g == f.Chord.Right {
+			continue
+		}
+		if p, _ := patternShare(h.Rig, f, t.step, shares[g]); math.Abs(p) < leastShare*math.Abs(pattern) {
+			continue
+		}
+		if s := t.series(h, f, g, shares[g], pattern); len(s.TimeH) >= leastBins {
+			t.in.Series, t.gauges = append(t.in.Series, s), append(t.gauges, g)
+		}
+	}
+}
+
+// leastBins is what a gauge beside the creep gauge must have to be of use.
+const leastBins = 20
+
+// series is a gauge's track, without what was read while a load was being
+// placed. The baseline is in it: it ties the zero and the temperature. pattern
+// is the creep gauge's sag per newton, in which the law is told.
+func (t *creepTask) series(h *history.History, f *steps.Findings, g int, share []float64, pattern float64) creep.Series {
+	gauge := h.Rig.Gauges[g]
+	s := creep.Series{Name: gauge.Name, PartU: influenceU}
+	for _, c := range f.Loads {
+		newton := 0.0
+		parts := make([]float64, len(c.Delta))
+		for j, n := range c.Delta {
+			parts[j] = n * share[j] / pattern
+			newton += parts[j]
+		}
+		s.Changes = append(s.Changes, creep.Change{AtH: t.hours(c.Full) - c.RampS/3600, RampH: c.RampS / 3600, Newton: newton})
+		s.Parts = append(s.Parts, parts)
+	}
+	track := f.Tracks[g]
+	s.ZeroU = track.Baseline.U
+	b := creepBin{floor: gauge.Resolution.Value / math.Sqrt(12), into: &s}
+	for _, p := range track.Points {
+		if placing(f, p.Time) || !(p.NetU > 0) || math.IsNaN(p.Net) {
+			continue
+		}
+		b.add(t.hours(p.Time), t.hours(changeBefore(f, p.Time)), p)
+	}
+	b.close()
+	return s
+}
+
+// addOffsets hands on the jumps that were taken off the gauges' tracks: what
+// is left of them is 0 with the uncertainty they were found with.
+func (t *creepTask) addOffsets(f *steps.Findings) {
+	for i, g := range t.gauges {
+		for _, o := range f.Tracks[g].Offsets {
+			if o.Value.U > 0 {
+				t.in.Offsets = append(t.in.Offsets, creep.Offset{Name: string(o.Kind) + " on " + t.in.Series[i].Name, Series: i,
+					AtH: t.hours(o.Time), Prior: &creep.Knowledge{U: o.Value.U}})
+			}
+		}
+	}
+}
+
+// addDrifts gives every gauge a straight drift of its own that over the whole
+// record comes to no more than the standard uncertainty the rig states of one
+// of its indications, gauges over the supports by their share: it is all the
+// rig file says of how steady a gauge is.
+func (t *creepTask) addDrifts(h *history.History, f *steps.Findings) {
+	days := float64(h.Last-h.First) / 86400e9
+	own := instrument{h.Rig, f.Chord}
+	for i, g := range t.gauges {
+		u := own.net(g, 0) / math.Sqrt2
+		if h.Rig.Gauges[g].U == nil {
+			u = h.Rig.Gauges[g].Resolution.Value / math.Sqrt(12)
+		}
+		if days > 0 && u > 0 {
+			t.in.Drifts = append(t.in.Drifts, creep.Drift{Name: "drift of " + t.in.Series[i].Name, Series: i, AtH: t.hours(h.First),
+				Prior: &creep.Knowledge{U: u / days}})
+		}
+	}
+}
