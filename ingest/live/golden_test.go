@@ -18,8 +18,8 @@ import (
 
 var update = flag.Bool("update", false, "write the golden files again")
 
-// html is the whole page of a snapshot.
-func html(t testing.TB, d *desk.Desk, s *desk.Snapshot, known bool) string {
+// wholePage is the whole page of a snapshot.
+func wholePage(t testing.TB, d *desk.Desk, s *desk.Snapshot, known bool) string {
 	t.Helper()
 	v := sectionView{answer.Of(d, s), known, "/r/slat-3/", plotsOf(d, s)}
 	parts := map[string]template.HTML{}
@@ -39,7 +39,7 @@ func html(t testing.TB, d *desk.Desk, s *desk.Snapshot, known bool) string {
 
 func TestGoldenPage(t *testing.T) {
 	d, s := desktest.Morning(t)
-	got := html(t, d, s, true)
+	got := wholePage(t, d, s, true)
 	const golden = "testdata/morning.golden.html"
 	if *update {
 		if err := os.MkdirAll("testdata", 0o755); err != nil {
@@ -62,7 +62,7 @@ func TestGoldenPage(t *testing.T) {
 // uncorrected what is.
 func TestTheQuestionsComeFirst(t *testing.T) {
 	d, s := desktest.Morning(t)
-	page := stdhtml.UnescapeString(html(t, d, s, false))
+	page := stdhtml.UnescapeString(wholePage(t, d, s, false))
 	at := 0
 	for _, want := range []string{
 		"Is it alive?", "Not wholly: 2 of 4 instruments answer", "Was it knocked overnight?", "Yes: 1 disturbance since yesterday 07:14", "02:14: a gauge was knocked (mid), −0.012 mm",
@@ -86,7 +86,7 @@ func TestTheQuestionsComeFirst(t *testing.T) {
 func TestPageOfNothing(t *testing.T) {
 	d, s := desktest.Morning(t)
 	empty := &desk.Snapshot{At: s.At, Status: &ingest.Status{DiskFree: -1}, Curves: &desk.Curves{Series: make([]desk.Curve, 5)}, Loads: desk.Loads{Planned: -1}}
-	page := html(t, d, empty, true)
+	page := wholePage(t, d, empty, true)
 	for _, want := range []string{"The recording is starting", "Not looked at yet", "The rig file states no travel", "Nothing to compare yet", "Too early to say", "No load is entered", "Nothing to draw yet", "not answered yet"} {
 		if !strings.Contains(page, want) {
 			t.Errorf("the page does not say %q", want)
@@ -100,7 +100,7 @@ func TestPageOfNothing(t *testing.T) {
 // Every coloured mark carries a word (IEC 60073: colour never stands alone).
 func TestColoursCarryWords(t *testing.T) {
 	d, s := desktest.Morning(t)
-	for _, m := range regexp.MustCompile(`<span class="tone (\w+)">([^<]*)</span>`).FindAllStringSubmatch(html(t, d, s, true), -1) {
+	for _, m := range regexp.MustCompile(`<span class="tone (\w+)">([^<]*)</span>`).FindAllStringSubmatch(wholePage(t, d, s, true), -1) {
 		if m[2] == "" {
 			t.Errorf("a %s mark has no word", m[1])
 		}
@@ -113,15 +113,15 @@ func TestSizeOfThePlots(t *testing.T) {
 	if len(svg) > 40_000 {
 		t.Errorf("the plots of two gauges take %d bytes", len(svg))
 	}
-	if len(html(t, d, s, true)) > 80_000 {
+	if len(wholePage(t, d, s, true)) > 80_000 {
 		t.Error("the page takes more than 80 kB")
 	}
-	t.Logf("plots %d bytes, page %d bytes", len(svg), len(html(t, d, s, true)))
+	t.Logf("plots %d bytes, page %d bytes", len(svg), len(wholePage(t, d, s, true)))
 }
 
 func BenchmarkPage(b *testing.B) {
 	d, s := desktest.Morning(b)
 	for b.Loop() {
-		html(b, d, s, true)
+		wholePage(b, d, s, true)
 	}
 }
