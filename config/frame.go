@@ -52,7 +52,7 @@ type Checksum struct {
 	// For text frames the default is all bytes before the sum group.
 	From  *int   `mapstructure:"from"`
 	To    *int   `mapstructure:"to"`
-	At    *int   `mapstructure:"at"`    // where the sum stands (binary); negative from the end
+	At    *int   `mapstructure:"at"`    // byte at which the sum stands (binary, nibbles), counted from the frame's first, start included; negative from its end, which lies before end; nibbles: left out where it follows them
 	Form  string `mapstructure:"form"`  // hex (default for text) | binary
 	Order string `mapstructure:"order"` // crc16: low-first (default) | high-first
 }
