@@ -97,13 +97,12 @@ func (c *cluster) clear(n int) {
 }
 
 func (r *run) scanWindow(raw [][]history.Sample) {
-	pts := make([][]point, len(raw))
 	found := make([][]transition, len(r.gauges))
 	var some errgroup.Group
 	some.SetLimit(runtime.GOMAXPROCS(0))
 	for gi := range r.gauges {
 		some.Go(func() error {
-			pts[gi], found[gi] = r.gauges[gi].scan(raw[gi])
+			found[gi] = r.gauges[gi].scan(raw[gi])
 			return nil
 		})
 	}
@@ -112,7 +111,7 @@ func (r *run) scanWindow(raw [][]history.Sample) {
 	sort.SliceStable(all, func(a, b int) bool { return all[a].lo < all[b].lo })
 	first := len(r.events)
 	for i := 0; i < len(all); {
-		c := cluster{lo: all[i].lo, hi: all[i].hi, raw: pts}
+		c := cluster{lo: all[i].lo, hi: all[i].hi}
 		j := i
 		for j < len(all) && all[j].lo <= c.hi+r.join(c.hi) {
 			c.hi = max(c.hi, all[j].hi)
@@ -121,17 +120,22 @@ func (r *run) scanWindow(raw [][]history.Sample) {
 		r.events = append(r.events, c)
 		i = j
 	}
-	r.trim(r.events[first:], pts)
+	r.keep(r.events[first:], raw)
 }
 
 // scan finds the sudden changes in one gauge's single readings.
-func (g *gauge) scan(raw []history.Sample) ([]point, []transition) {
-	pts := make([]point, 0, len(raw))
-	for _, s := range raw {
-		pts = append(pts, g.fromSample(s))
+func (g *gauge) scan(raw []history.Sample) []transition {
+	flat, found := hampel(g, g.points(raw))
+	return append(found, jumps(g, flat, []int{1, 2, 5, 15, 45}, func(p point) float64 { return g.noise * p.f }, 1)...)
+}
+
+// points are a gauge's readings as points, which take five times the memory.
+func (g *gauge) points(raw []history.Sample) []point {
+	pts := make([]point, len(raw))
+	for i, s := range raw {
+		pts[i] = g.fromSample(s)
 	}
-	flat, found := hampel(g, pts)
-	return pts, append(found, jumps(g, flat, []int{1, 2, 5, 15, 45}, func(p point) float64 { return g.noise * p.f }, 1)...)
+	return pts
 }
 
 // Readings that far beside a cluster are held against it, ns and number.
@@ -140,36 +144,49 @@ const (
 	keptReadings           = 30
 )
 
-// trim lets the clusters of a window keep the readings they are timed and
-// measured by, and the window go, where that saves memory.
-func (r *run) trim(events []cluster, pts [][]point) {
+// keep gives the clusters of a window the readings they are timed and measured
+// by, and lets the window go where that saves memory.
+func (r *run) keep(events []cluster, raw [][]history.Sample) {
+	if len(events) == 0 {
+		return
+	}
 	kept, all := 0, 0
-	cut := make([][][]point, len(events))
+	cut := make([][][]history.Sample, len(events))
 	for i := range events {
 		c := &events[i]
-		cut[i] = make([][]point, len(pts))
-		for g, p := range pts {
+		cut[i] = make([][]history.Sample, len(raw))
+		for g, p := range raw {
 			gg := &r.gauges[g]
 			from, to := c.lo-keptBefore-12*nanos(gg.spacing(c.lo)), c.hi+keptBehind+12*nanos(gg.spacing(c.hi))
-			at := func(t int64) int { return sort.Search(len(p), func(k int) bool { return p[k].t > t }) }
+			at := func(t int64) int { return sort.Search(len(p), func(k int) bool { return p[k].Time > t }) }
 			a := max(0, min(at(from-1), at(c.lo)-keptReadings))
 			b := min(len(p), max(at(to), at(c.hi)+keptReadings))
 			cut[i][g] = p[a:b]
 			kept += b - a
 		}
 	}
-	for _, p := range pts {
+	for _, p := range raw {
 		all += len(p)
 	}
-	if 2*kept > all {
-		return
-	}
+	whole := r.pointsOf(raw, 2*kept > all)
 	for i := range events {
-		for g := range cut[i] {
-			cut[i][g] = slices.Clone(cut[i][g])
+		if events[i].raw = whole; whole == nil {
+			events[i].raw = r.pointsOf(cut[i], true)
 		}
-		events[i].raw = cut[i]
 	}
+}
+
+// pointsOf are the readings of every gauge as points; nil where they are not
+// wanted.
+func (r *run) pointsOf(raw [][]history.Sample, wanted bool) [][]point {
+	if !wanted {
+		return nil
+	}
+	out := make([][]point, len(raw))
+	for g := range raw {
+		out[g] = r.gauges[g].points(raw[g])
+	}
+	return out
 }
 
 // forget drops the single readings around the clusters once all are timed.
@@ -234,6 +251,7 @@ func hampel(g *gauge, seq []point) (rest []point, singles []transition) {
 	if !slices.Contains(bad, true) {
 		return seq, nil
 	}
+	rest = make([]point, 0, len(seq))
 	for i := 0; i < len(seq); i++ {
 		if !bad[i] {
 			rest = append(rest, seq[i])
