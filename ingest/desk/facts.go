@@ -2,11 +2,9 @@ package desk
 
 import (
 	"fmt"
-	"math"
 	"strings"
 	"time"
 
-	"gaugelog/config"
 	"gaugelog/ingest"
 	"gaugelog/ingest/alarm"
 )
@@ -78,181 +76,6 @@ func (d *Desk) onButton(l ingest.Last) bool {
 	return false
 }
 
-// stillness is how long a gauge's indication has been the same, and what the
-// others showed when it became so.
-type stillness struct {
-	seen   bool
-	value  float64
-	from   int64 // ns by the wall clock
-	latest int64
-	others []float64
-}
-
-// moved follows the indications for the frozen alarm.
-func (d *Desk) moved(i int, t int64, v float64) {
-	s := &d.still[i]
-	s.latest = t
-	if s.seen && s.value == v {
-		return
-	}
-	if s.others == nil {
-		s.others = make([]float64, len(d.still))
-	}
-	s.seen, s.value, s.from = true, v, t
-	for k := range d.still {
-		s.others[k] = math.NaN()
-		if d.still[k].seen {
-			s.others[k] = d.still[k].value
-		}
-	}
-}
-
-// frozenFacts finds gauges that show the same while others move. Repeats alone
-// are ordinary when creep is slow: the neighbours decide.
-func (d *Desk) frozenFacts() []alarm.Fact {
-	var out []alarm.Fact
-	after := int64(d.o.Rig.Alarms.FrozenAfter.Value * 1e9)
-	for i := range d.still {
-		s := &d.still[i]
-		if !s.seen || !d.shouldMove(i) {
-			continue
-		}
-		f := alarm.Fact{Cause: "frozen", Subject: d.o.Rig.Gauges[i].Name, Wish: alarm.Over}
-		if s.latest-s.from >= after {
-			others := 0
-			for k := range d.still {
-				if k != i && d.shouldMove(k) && math.Abs(d.still[k].value-s.others[k]) > movedCounts*d.o.Rig.Gauges[k].Resolution.Value {
-					others++
-				}
-			}
-			f.Wish = alarm.Leave
-			if others >= fewestOthers {
-				f.Wish = alarm.Raise
-				f.Text = fmt.Sprintf("it has shown %s mm for %s while %d other gauges moved", Fixed(s.value, s.resolution(d, i)), Span(time.Duration(s.latest-s.from)), others)
-			}
-		}
-		out = append(out, f)
-	}
-	return out
-}
-
-func (s *stillness) resolution(d *Desk, i int) float64 { return d.o.Rig.Gauges[i].Resolution.Value }
-
-// shouldMove says whether a gauge sees the beam away from its supports.
-func (d *Desk) shouldMove(i int) bool {
-	g := &d.o.Rig.Gauges[i]
-	if g.Sees != "beam" && g.Sees != "" {
-		return false
-	}
-	for _, s := range d.o.Rig.Supports {
-		if math.Abs(s.At.Value-g.At.Value) < atSupportNear*span(d.o.Rig) {
-			return false
-		}
-	}
-	return true
-}
-
-// span is the distance between the outermost supports, or the beam's length
-// where it has one support only, mm.
-func span(rig *config.Rig) float64 {
-	low, high := math.Inf(1), math.Inf(-1)
-	for _, s := range rig.Supports {
-		low, high = min(low, s.At.Value), max(high, s.At.Value)
-	}
-	if high > low {
-		return high - low
-	}
-	return rig.Specimen.Length.Value
-}
-
-func (d *Desk) travelFacts(now time.Time, gauges []Gauge) []alarm.Fact {
-	var out []alarm.Fact
-	within := time.Duration(d.o.Rig.Alarms.TravelWithin.Value * 1e9)
-	for _, g := range gauges {
-		if g.TravelLeft == nil {
-			continue
-		}
-		least := travelShare * *g.TravelLeft / *g.TravelShare
-		if l := d.o.Rig.Limits.TravelLeft; l != nil {
-			least = l.Value
-		}
-		f := alarm.Fact{Cause: "travel", Subject: g.Name, Wish: alarm.Over}
-		soon := !g.RunsOut.IsZero() && g.RunsOut.Sub(now) < within
-		soonish := !g.RunsOut.IsZero() && g.RunsOut.Sub(now) < time.Duration(runOutBack*float64(within))
-		text := fmt.Sprintf("%s mm of travel are left", Fixed(*g.TravelLeft, g.Resolution))
-		switch {
-		case *g.TravelLeft < least:
-			f.Wish, f.Text = alarm.Raise, text
-		case soon:
-			f.Wish, f.Text = alarm.Raise, text+", at the present rate until "+d.Local(g.RunsOut).Format("2 Jan 2006")
-		case *g.TravelLeft < (1+travelBack)*least, soonish:
-			f.Wish = alarm.Leave
-		}
-		out = append(out, f)
-	}
-	return out
-}
-
-// sagFacts compares the greatest sag with the limits: the analysis's figures
-// where they are fresh, else the uncorrected ones, and says which.
-func (d *Desk) sagFacts(now time.Time, gauges []Gauge) []alarm.Fact {
-	name, sag, kind := d.greatestSag(now, gauges)
-	if name == "" {
-		return nil
-	}
-	l := d.o.Rig.Limits
-	text := fmt.Sprintf("the sag at %s is %.3f mm (%s)", name, sag, kind)
-	var out []alarm.Fact
-	if l.Sag != nil {
-		out = append(out, above("sag", sag, l.Sag.Value, text+fmt.Sprintf(", the limit %s", l.Sag.Shown)))
-	}
-	if l.CatcherGap != nil {
-		out = append(out, above("catcher", sag, catcherShare*l.CatcherGap.Value, text+fmt.Sprintf(", the gap under the load %s", l.CatcherGap.Shown)))
-	}
-	if l.SpanOverSag != nil {
-		most := span(d.o.Rig) / l.SpanOverSag.Value
-		out = append(out, above("span-over-sag", sag, most, text+fmt.Sprintf(", the span over it %.0f, the limit %s", span(d.o.Rig)/max(sag, 1e-9), l.SpanOverSag.Shown)))
-	}
-	return out
-}
-
-func above(cause string, value, limit float64, text string) alarm.Fact {
-	f := alarm.Fact{Cause: cause, Wish: alarm.Over, Text: text}
-	switch {
-	case value >= limit:
-		f.Wish = alarm.Raise
-	case value >= (1-comeBack)*limit:
-		f.Wish = alarm.Leave
-	}
-	return f
-}
-
-func (d *Desk) greatestSag(now time.Time, gauges []Gauge) (name string, sag float64, kind string) {
-	for _, g := range gauges {
-		if g.Sag != nil && (g.Sees == "beam" || g.Sees == "") && (name == "" || *g.Sag > sag) {
-			name, sag, kind = g.Name, *g.Sag, "uncorrected"
-		}
-	}
-	o := d.outlook.outlook
-	if o == nil || now.Sub(time.Unix(0, o.At)) > outlookFor {
-		return name, sag, kind
-	}
-	corrected := false
-	for _, s := range o.Sag {
-		// An uncorrected sag beyond a corrected one is news since the last
-		// look of the analysis, or a disturbance it has taken out.
-		if !corrected || s.MM > sag {
-			name, sag, kind, corrected = s.Gauge, s.MM, "corrected", true
-		}
-	}
-	for _, g := range gauges {
-		if g.Sag != nil && corrected && g.Name == name && *g.Sag > sag && g.Wall > o.At+int64(2*time.Minute) {
-			sag, kind = *g.Sag, "uncorrected"
-		}
-	}
-	return name, sag, kind
-}
-
 // knocks are the kinds of disturbance that somebody or something caused.
 var knocks = map[string]string{
 	"bench-knock": "the bench was knocked", "gauge-knock": "the gauge was knocked",
@@ -296,29 +119,6 @@ func (d *Desk) analysisFacts(now time.Time) []alarm.Fact {
 			}
 		}
 		out = append(out, alarm.Fact{Cause: cause, Subject: subject, Wish: alarm.Raise, Text: text})
-	}
-	return out
-}
-
-func (d *Desk) temperatureFacts(s *ingest.Status) []alarm.Fact {
-	band := d.o.Rig.Limits.Temperature
-	if len(band) != 2 {
-		return nil
-	}
-	var out []alarm.Fact
-	for _, l := range s.Last {
-		if !l.Probe || !l.Seen || l.Silent || math.IsNaN(l.Celsius) {
-			continue
-		}
-		f := alarm.Fact{Cause: "temperature", Subject: l.Name, Wish: alarm.Over,
-			Text: fmt.Sprintf("%.1f °C, wanted %s to %s", l.Celsius, band[0].Shown, band[1].Shown)}
-		switch low, high := band[0].Value, band[1].Value; {
-		case l.Celsius < low || l.Celsius > high:
-			f.Wish = alarm.Raise
-		case l.Celsius < low+kelvinBack || l.Celsius > high-kelvinBack:
-			f.Wish = alarm.Leave
-		}
-		out = append(out, f)
 	}
 	return out
 }
