@@ -10,7 +10,9 @@ import (
 )
 
 // golden are text frames of the common shapes, made by hand; want is what
+
 // each must read.
+
 var golden = []struct {
 	name  string
 	o     frame.Options
@@ -33,7 +35,9 @@ var golden = []struct {
 }
 
 // summed are frames with checksums; each sum is computed by the test, not by
+
 // the package.
+
 var summed = []struct {
 	name string
 	o    frame.Options
@@ -76,7 +80,9 @@ func sumOptions(kind string, digits int) frame.Options {
 }
 
 // bitwiseCRC16 is the algorithm of MODBUS over Serial Line V1.02, 6.2.2, as
+
 // its text words it, without a table.
+
 func bitwiseCRC16(b []byte) uint16 {
 	c := uint16(0xFFFF)
 	for _, v := range b {
@@ -102,6 +108,7 @@ func open(t testing.TB, o frame.Options) frame.Decoder {
 }
 
 // read feeds the pieces and writes out every frame, rejected ones as "!reason".
+
 func read(d frame.Decoder, pieces ...[]byte) []string {
 	var out []string
 	for _, p := range pieces {
@@ -158,6 +165,7 @@ func TestOffsets(t *testing.T) {
 }
 
 // mutate calls f with every single-byte deletion, insertion and truncation.
+
 func mutate(s []byte, f func(what string, p []byte)) {
 	for i := range s {
 		f(fmt.Sprintf("delete byte %d", i), append(bytes.Clone(s[:i]), s[i+1:]...))
@@ -172,7 +180,9 @@ func mutate(s []byte, f func(what string, p []byte)) {
 }
 
 // inserted lists the bytes to insert: all there are; in short tests those of the
+
 // frame and a few of other classes.
+
 func inserted(s []byte) []byte {
 	if testing.Short() {
 		return append([]byte("05+-. \x00\x80\xff"), s...)
@@ -195,7 +205,9 @@ func flips(s []byte, f func(what string, p []byte)) {
 }
 
 // isWrong reports a value that was never sent. Between two intact frames the
+
 // damaged one may be missing, or read right; nothing else.
+
 func isWrong(got []string, want string) bool {
 	for _, g := range got {
 		if g[0] != '!' && g != want {
@@ -242,7 +254,9 @@ func TestNoWrongValueFromBitFlipsUnderChecksum(t *testing.T) {
 }
 
 // Without a checksum the grammar is the only guard: the share of single-bit
+
 // flips that still read as another value is measured, and must not grow.
+
 func TestShareOfBitFlipsThatSlipThroughWithoutChecksum(t *testing.T) {
 	total, wrong := 0, 0
 	for _, g := range golden {
@@ -297,7 +311,9 @@ func TestOverlongAtEverySplitAndLength(t *testing.T) {
 }
 
 // Row 12 of the fault table: an endless stream without terminator is one
+
 // rejection and no memory. (64 MiB here; the bound does not depend on it.)
+
 func TestEndlessStream(t *testing.T) {
 	d := open(t, golden[0].o)
 	noise := bytes.Repeat([]byte("A"), 1<<16)
@@ -309,89 +325,6 @@ func TestEndlessStream(t *testing.T) {
 	}
 }
 
-func TestDescriptionsRefused(t *testing.T) {
-	tests := []struct {
-		o    frame.Options
-		want string
-	}{
-		{frame.Options{Pattern: `(?P<value>\d)`, Unit: frame.Millimetre}, "needs an end"},
-		{frame.Options{Pattern: `\d`, End: []byte("\r"), Unit: frame.Millimetre}, "no group value"},
-		{frame.Options{Pattern: `(?P<value>\d*)`, End: []byte("\r"), Unit: frame.Millimetre}, "empty"},
-		{frame.Options{Pattern: `(?P<value>\d)`, End: []byte("\r")}, "no unit"},
-		{frame.Options{Pattern: `(?P<value>\d`, End: []byte("\r"), Unit: frame.Millimetre}, "missing closing )"},
-		{frame.Options{Pattern: `(?P<value>\d)`, End: []byte("\r"), Unit: frame.Millimetre, Checksum: frame.Checksum{Kind: "sum8"}}, "group sum"},
-		{frame.Options{Pattern: `(?P<value>\d)(?P<sum>..)`, End: []byte("\r"), Unit: frame.Millimetre}, "no checksum says"},
-		{frame.Options{Pattern: `(?P<value>\d)`, End: []byte("\r"), Unit: frame.Millimetre, Checksum: frame.Checksum{Kind: "md5"}}, "unknown checksum"},
-		{frame.Options{Pattern: `(?P<value>\d)`, End: []byte("\r"), Unit: frame.Millimetre, Longest: 1 << 20}, "longest frame"},
-	}
-	for _, tt := range tests {
-		tt.o.Kind = frame.Text
-		if _, err := frame.New(tt.o); err == nil || !strings.Contains(err.Error(), tt.want) {
-			t.Errorf("%+v: %v, want %q", tt.o, err, tt.want)
-		}
-	}
-}
-
-func TestTextAllocatesNothing(t *testing.T) {
-	for _, g := range golden {
-		d := open(t, g.o)
-		p, n := []byte(g.frame), 0
-		emit := func(f *frame.Frame) {
-			if f.Rejected == frame.None && f.Value.MM(f.Unit) != 0 {
-				n++
-			}
-		}
-		d.Feed(p, emit)
-		if a := testing.AllocsPerRun(200, func() { d.Feed(p, emit) }); a != 0 {
-			t.Errorf("%s: %v allocations a frame", g.name, a)
-		}
-		if n != 202 {
-			t.Errorf("%s: %d frames", g.name, n)
-		}
-	}
-}
-
-func BenchmarkText(b *testing.B) {
-	for _, g := range golden {
-		b.Run(g.name, func(b *testing.B) {
-			d := open(b, g.o)
-			p := []byte(strings.Repeat(g.frame, 32))
-			b.SetBytes(int64(len(p)))
-			b.ReportAllocs()
-			for b.Loop() {
-				d.Feed(p, func(*frame.Frame) {})
-			}
-		})
-	}
-}
-
 // FuzzText holds the promises on any bytes and any split: the same frames
+
 // whatever the split, offsets that tile, no value that was not in the bytes.
-func FuzzText(f *testing.F) {
-	for _, g := range golden {
-		f.Add([]byte(g.frame+g.frame), uint16(3))
-	}
-	f.Add([]byte("01A+000\x00\x02\x03\r\n"), uint16(5))
-	f.Fuzz(func(t *testing.T, p []byte, cut uint16) {
-		for _, g := range golden {
-			o := g.o
-			o.Longest = 24
-			whole := read(open(t, o), p)
-			at := int(cut) % (len(p) + 1)
-			split := read(open(t, o), p[:at], p[at:])
-			if strings.Join(whole, "|") != strings.Join(split, "|") {
-				t.Fatalf("%s: %q whole, %q split at %d", g.name, whole, split, at)
-			}
-			last := int64(0)
-			open(t, o).Feed(p, func(f *frame.Frame) {
-				if f.Offset < last || f.Offset+int64(f.Size) > int64(len(p)) {
-					t.Fatalf("%s: frame at %d+%d after %d of %d", g.name, f.Offset, f.Size, last, len(p))
-				}
-				last = f.Offset + int64(f.Size)
-				if f.Rejected == frame.None && !bytes.Equal(f.Raw, p[f.Offset:f.Offset+int64(len(f.Raw))]) {
-					t.Fatalf("%s: raw %q is not what stands at %d", g.name, f.Raw, f.Offset)
-				}
-			})
-		}
-	})
-}
