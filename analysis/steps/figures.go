@@ -39,7 +39,7 @@ func (r *run) baseline() error {
 		var y []float64
 		for _, p := range raw[g] {
 			if !r.excluded(g, p.Time, p.Time+1) {
-				y = append(y, gg.sag(p.MM*gg.factor(p.Time))-t.shift(p.Time))
+				y = append(y, gg.sag(p.MM*gg.factor(p.Time), p.Time)-t.shift(p.Time))
 			}
 		}
 		if len(y) < baselineLeast {

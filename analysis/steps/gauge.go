@@ -104,21 +104,25 @@ func (g *gauge) factor(t int64) float64 {
 func (g *gauge) scatter() (noise, interval float64) {
 	var spread, second, gaps []float64
 	held := g.held()
+	free := 0
 	for i, p := range g.seq {
+		if !held[i] {
+			free++
+		}
 		if p.n >= 5 && !held[i] {
 			spread = append(spread, p.sd)
 		}
 		if i > 0 {
 			gaps = append(gaps, seconds(p.to-g.seq[i-1].to)/float64(p.n))
 		}
-		if i > 1 {
+		if i > 1 && !held[i] {
 			d := g.seq[i-2].y - 2*g.seq[i-1].y + p.y
 			second = append(second, math.Abs(d)*math.Sqrt(float64(p.n)))
 		}
 	}
 	floor := floorU(g.res)
 	interval = Median(gaps)
-	if 4*len(spread) > len(g.seq) {
+	if 2*len(spread) > free && free > 0 {
 		return max(Median(spread), floor), interval
 	}
 	return max(trimmedSigma(second)/math.Sqrt(6), floor), interval

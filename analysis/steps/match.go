@@ -108,7 +108,10 @@ func (r *run) pairCost(i, j int) (float64, bool) {
 	}
 	like := r.alike(e, r.expected(c))
 	if like < 0.6 {
-		return 0, false
+		if like = r.alikeReversed(e, r.expected(c)); like < 0.9 {
+			return 0, false
+		}
+		like -= 0.25 // what fits as it is goes before
 	}
 	// The nearest instant of the cluster counts: it may be a gap of hours.
 	dt := 0.0
@@ -123,4 +126,23 @@ func (r *run) pairCost(i, j int) (float64, bool) {
 		return 0, false
 	}
 	return dt/reach + 2*(1-like), true
+}
+
+// alikeReversed is alike with that one gauge's sense reversed which makes the
+// proportions likest: a gauge entered the wrong way round still answers its
+// loads, and the fit then says which it is. Three gauges must answer at least,
+// or anything could be made to fit.
+func (r *run) alikeReversed(e *cluster, v []float64) float64 {
+	if len(e.movedGauges()) < 3 {
+		return 0
+	}
+	best := 0.0
+	for g := range v {
+		if e.moved[g] && v[g] != 0 {
+			v[g] = -v[g]
+			best = max(best, r.alike(e, v))
+			v[g] = -v[g]
+		}
+	}
+	return best
 }
