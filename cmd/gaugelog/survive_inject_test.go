@@ -99,6 +99,15 @@ func (s *traced) begins() bool {
 	return false
 }
 
+// meets waits until a call met the fault, which on a busy machine may be late,
+// and lets the recorder go on for two seconds.
+func (s *traced) meets() {
+	for began := time.Now(); s.injected() == 0 && time.Since(began) < 15*time.Second; {
+		time.Sleep(20 * time.Millisecond)
+	}
+	time.Sleep(2 * time.Second)
+}
+
 // injected counts the calls that met the fault.
 func (s *traced) injected() int {
 	text, err := os.ReadFile(s.log)
@@ -224,7 +233,7 @@ func TestSurviveFailingCalls(t *testing.T) {
 				if !s.begins() {
 					return
 				}
-				time.Sleep(2500 * time.Millisecond)
+				s.meets()
 				sent := s.feeder.sent()
 				err := s.process.end(t, syscall.SIGTERM)
 				hit := s.injected()
@@ -265,7 +274,7 @@ func TestSurviveADiskThatStaysBroken(t *testing.T) {
 				if !s.begins() {
 					return
 				}
-				time.Sleep(2500 * time.Millisecond)
+				s.meets()
 				sent := s.feeder.sent()
 				err := s.process.end(t, syscall.SIGTERM)
 				if s.injected() == 0 {

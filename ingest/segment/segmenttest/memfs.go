@@ -308,13 +308,25 @@ func (m *FS) SyncDir(dir string) error {
 	if err := m.call("syncdir", dir); err != nil {
 		return err
 	}
-	m.pending = slices.DeleteFunc(m.pending, func(op nameOp) bool {
-		if !slices.Contains(op.dirs, dir) {
-			return false
+	// What a name was before counts with it: a file that was renamed out of a
+	// folder does not come back when that one is synced.
+	done := make([]bool, len(m.pending))
+	before := map[string]bool{}
+	for i, op := range slices.Backward(m.pending) {
+		done[i] = slices.Contains(op.dirs, dir) || before[op.to]
+		if done[i] && op.from != "" {
+			before[op.from] = true
 		}
-		op.apply(m.durable)
-		return true
-	})
+	}
+	var rest []nameOp
+	for i, op := range m.pending {
+		if done[i] {
+			op.apply(m.durable)
+		} else {
+			rest = append(rest, op)
+		}
+	}
+	m.pending = rest
 	return nil
 }
 
