@@ -4,22 +4,12 @@ import (
 	"context"
 	"errors"
 	"io"
-	"io/fs"
 	"math"
 	"slices"
 	"time"
 
 	"gaugelog/ingest/rollup"
 	"gaugelog/ingest/segment"
-)
-
-// bookFile keeps the bins over a restart. It can be made again from the
-// readings, so it stands among the outputs.
-const (
-	reportDir  = "report"
-	bookFile   = "report/live-bins.gob.zst"
-	bookFresh  = "report/live-bins.partial"
-	storeEvery = time.Hour
 )
 
 // Figures of the baseline that the page counts sag from: what the gauges
@@ -42,6 +32,7 @@ type baseline struct {
 // bookResult is what a pass over the folder brought.
 type bookResult struct {
 	whole *rollup.Book // everything before the start; nil from a later pass
+	anew  bool         // whole was read from the readings: nothing was stored
 	since *rollup.Book // what came since its origin
 	base  baseline
 	err   error
@@ -52,36 +43,15 @@ type bookResult struct {
 func (d *Desk) rebuild(ctx context.Context) {
 	names := seriesNames(d.o.Rig)
 	book := d.loadBook(names)
-	if book == nil {
+	found := book != nil
+	if !found {
 		book = rollup.NewBook(names...)
 	}
 	err := d.readFolder(ctx, book, book.Until+1, d.o.Start.Wall-1)
 	select {
-	case d.books <- bookResult{whole: book, err: err}:
+	case d.books <- bookResult{whole: book, anew: !found, err: err}:
 	case <-ctx.Done():
 	}
-}
-
-// loadBook reads the stored book; nil where there is none that fits.
-func (d *Desk) loadBook(names []string) *rollup.Book {
-	f, err := d.o.FS.Open(bookFile)
-	if err != nil {
-		return nil
-	}
-	defer f.Close()
-	info, err := f.Stat()
-	if err != nil {
-		return nil
-	}
-	status := d.o.Status()
-	if status == nil {
-		return nil
-	}
-	book, err := rollup.Load(io.NewSectionReader(f, 0, info.Size()), status.Run, names)
-	if err != nil || book.Until >= d.o.Start.Wall {
-		return nil
-	}
-	return book
 }
 
 // readFolder adds the folder's readings between two instants, both inclusive.
@@ -149,6 +119,9 @@ func (d *Desk) merge(ctx context.Context, r bookResult) {
 	}
 	if r.whole != nil {
 		d.rebuilding = false
+		if r.anew {
+			d.stored = time.Unix(0, 0) // due at once: the next start shall not read everything again
+		}
 		d.adopt(r.whole.Origin)
 		d.setLoads()
 		// Its Since bins count from another load where one was marked meanwhile.
@@ -237,97 +210,4 @@ func (d *Desk) baselineOf(i int) (float64, bool) {
 		return bins[k].Mean(), true
 	}
 	return 0, false
-}
-
-// pendingBook waits until the readings in it are on disk.
-type pendingBook struct {
-	taken time.Time
-	bytes []byte
-}
-
-// storeNow stores the bins once an hour, when a sync has completed that began
-// after they were taken: after a power cut they hold nothing that was lost.
-func (d *Desk) storeNow(now time.Time) {
-	if d.stored.IsZero() {
-		d.stored = now
-	}
-	if d.rebuilding {
-		return
-	}
-	if p := d.pending; p != nil {
-		if s := d.o.Status(); s != nil && now.Add(-s.SyncAge).After(p.taken) {
-			d.pending = nil
-			d.write(p.bytes)
-		}
-		return
-	}
-	if now.Sub(d.stored) >= storeEvery {
-		d.stored = now
-		if b := d.encode(); b != nil {
-			d.pending = &pendingBook{now, b}
-		}
-	}
-}
-
-// end stores the bins when the recording has ended.
-func (d *Desk) end() {
-	for {
-		select {
-		case s := <-d.feed:
-			d.add(s)
-			continue
-		default:
-		}
-		break
-	}
-	if s := d.o.Status(); d.o.Alarms == nil && !d.rebuilding && s != nil && s.Closed && s.Fault == "" {
-		if b := d.encode(); b != nil {
-			d.write(b)
-		}
-	}
-	d.publish(time.Now())
-}
-
-func (d *Desk) encode() []byte {
-	s := d.o.Status()
-	if s == nil {
-		return nil
-	}
-	var b buffer
-	if err := d.book.Save(&b, s.Run); err != nil {
-		d.o.Log.Error("the bins cannot be stored", "error", err)
-		return nil
-	}
-	return b
-}
-
-type buffer []byte
-
-func (b *buffer) Write(p []byte) (int, error) {
-	*b = append(*b, p...)
-	return len(p), nil
-}
-
-// write replaces the stored book in one step.
-func (d *Desk) write(b []byte) {
-	err := func() error {
-		if err := d.o.FS.MkdirAll(reportDir); err != nil {
-			return err
-		}
-		if err := d.o.FS.Remove(bookFresh); err != nil && !errors.Is(err, fs.ErrNotExist) {
-			return err
-		}
-		f, err := d.o.FS.Create(bookFresh)
-		if err != nil {
-			return err
-		}
-		_, err = f.Write(b)
-		if err := errors.Join(err, f.Close()); err != nil {
-			return err
-		}
-		return d.o.FS.Rename(bookFresh, bookFile)
-	}()
-	if err != nil {
-		d.o.Log.Warn("the bins were not stored", "error", err)
-	}
 }
