@@ -4,8 +4,8 @@ import (
 	"errors"
 	"fmt"
 	"io"
-	"strings"
-	"text/tabwriter"
+	"slices"
+	"time"
 
 	"github.com/spf13/cobra"
 
@@ -20,6 +20,8 @@ type checked struct {
 	Problems    []problemJSON         `json:"problems"`
 	Prediction  *stiffness.Prediction `json:"prediction,omitempty"`
 	NotForetold string                `json:"not_foretold,omitempty"`
+	// Calibrations are those that are no longer valid today.
+	Calibrations []lapsed `json:"calibrations_lapsed"`
 }
 
 type problemJSON struct {
@@ -32,22 +34,27 @@ type problemJSON struct {
 
 func checkCommand() *cobra.Command {
 	var asJSON bool
+	var units string
 	c := &cobra.Command{
 		Use:     "check RIG",
 		GroupID: "prepare",
 		Short:   "Checks a rig file and foretells sag, stress share and travel",
 		Long: `Reads a rig file strictly, says what is wrong and where, and foretells for each
 step of the plan the sag and slope at every gauge, the travel it will use, the
-stress as a share of the strength, uplift, and how well the modulus can be known.`,
+stress as a share of the strength, uplift, how well the modulus and the creep can
+be known and what would better that most, and whose calibration has lapsed.`,
 		Example: "  gaugelog check rig.yaml",
 		Args:    cobra.ExactArgs(1),
 		RunE: func(cmd *cobra.Command, args []string) error {
+			if !slices.Contains(report.Units, units) {
+				return wrongf("give --units si or --units us", "units %q are not known", units)
+			}
 			rig, err := config.LoadRig(args[0])
 			if err != nil {
 				return err
 			}
 			problems := append(rig.Check(), rig.CheckPorts()...)
-			out := checked{Rig: args[0], Problems: []problemJSON{}}
+			out := checked{Rig: args[0], Problems: []problemJSON{}, Calibrations: calibrationsAt(rig, time.Now())}
 			for _, p := range problems {
 				out.Problems = append(out.Problems, problemJSON{p.Line, p.Col, p.Severity.String(), p.What, p.Fix})
 			}
@@ -58,12 +65,13 @@ stress as a share of the strength, uplift, and how well the modulus can be known
 			if asJSON {
 				err = printJSON(cmd.OutOrStdout(), out)
 			} else {
-				err = printChecked(cmd.OutOrStdout(), rig, problems, out)
+				err = foreteller{cmd.OutOrStdout(), units}.print(rig, out)
 			}
 			return errors.Join(err, wrongRig(cmd.ErrOrStderr(), problems, asJSON), outside(rig, out.Prediction))
 		},
 	}
 	c.Flags().BoolVar(&asJSON, "json", false, "print what was found as JSON")
+	c.Flags().StringVar(&units, "units", "si", "units of the text: si or us")
 	return c
 }
 
@@ -102,97 +110,4 @@ func outside(rig *config.Rig, p *stiffness.Prediction) error {
 		}
 	}
 	return nil
-}
-
-func printChecked(w io.Writer, rig *config.Rig, problems []config.Problem, c checked) error {
-	fmt.Fprintf(w, "%s: %s, %s, %s, %s\n", c.Rig, count(len(rig.Gauges), "gauge"), count(len(rig.Supports), "support"),
-		count(len(rig.Loads), "load"), count(len(rig.Plan), "planned step"))
-	if c.Prediction == nil {
-		fmt.Fprintf(w, "\nNothing is foretold: %s\n", c.NotForetold)
-	} else {
-		printSteps(w, rig, c.Prediction)
-		printGauges(w, c.Prediction)
-		printReach(w, c.Prediction)
-		for _, warning := range c.Prediction.Warnings {
-			fmt.Fprintf(w, "warning: %s\n", warning.Text)
-		}
-	}
-	fmt.Fprintf(w, "\nCautions\n")
-	for _, text := range report.Cautions {
-		fmt.Fprintf(w, "  - %s\n", text)
-	}
-	return nil
-}
-
-// count prints a number with its noun.
-func count(n int, noun string) string {
-	if n != 1 {
-		noun += "s"
-	}
-	return fmt.Sprintf("%d %s", n, noun)
-}
-
-func printSteps(w io.Writer, rig *config.Rig, p *stiffness.Prediction) {
-	fmt.Fprintf(w, "\nThe plan, foretold with the expected modulus (sag from the baseline)\n")
-	t := tabwriter.NewWriter(w, 0, 8, 2, ' ', tabwriter.AlignRight)
-	fmt.Fprintf(t, "step\tgreatest sag, mm\tat, mm\twith creep, mm\tstress, MPa\tof strength\tlifts off\t\n")
-	for _, s := range p.Steps {
-		share, lifts := "–", "–"
-		if s.StressShare > 0 {
-			share = fmt.Sprintf("%.1f %%", 100*s.StressShare)
-		}
-		if len(s.Uplift) > 0 {
-			lifts = strings.Join(s.Uplift, ", ")
-		}
-		fmt.Fprintf(t, "%s\t%.3f\t%.0f\t%.3f\t%.2f\t%s\t%s\t\n", s.Step, s.Greatest.Value, s.Greatest.At, s.WithCreep, s.Stress, share, lifts)
-	}
-	t.Flush()
-	if rig.Limits.CatcherGap != nil {
-		fmt.Fprintf(w, "The catcher is %s below the load.\n", rig.Limits.CatcherGap.Shown)
-	}
-}
-
-func printGauges(w io.Writer, p *stiffness.Prediction) {
-	fmt.Fprintf(w, "\nEach gauge at its farthest\n")
-	t := tabwriter.NewWriter(w, 0, 8, 2, ' ', tabwriter.AlignRight)
-	fmt.Fprintf(t, "gauge\tat, mm\tstep\tsag, mm\twith creep, mm\tslope, mm/m\ttravel used\t\n")
-	if len(p.Steps) == 0 {
-		return
-	}
-	for i := range p.Steps[0].Gauges {
-		far := 0
-		for k, s := range p.Steps {
-			if abs(s.Gauges[i].WithCreep) > abs(p.Steps[far].Gauges[i].WithCreep) {
-				far = k
-			}
-		}
-		g := p.Steps[far].Gauges[i]
-		used := "–"
-		if g.TravelUsed > 0 {
-			used = fmt.Sprintf("%.0f %%", 100*g.TravelUsed)
-		}
-		fmt.Fprintf(t, "%s\t%.0f\t%s\t%.3f\t%.3f\t%.2f\t%s\t\n", g.Gauge, g.AtMM, p.Steps[far].Step, g.Sag, g.WithCreep, 1000*g.Slope, used)
-	}
-	t.Flush()
-}
-
-func abs(v float64) float64 {
-	if v < 0 {
-		return -v
-	}
-	return v
-}
-
-func printReach(w io.Writer, p *stiffness.Prediction) {
-	if p.Unreachable != "" {
-		fmt.Fprintf(w, "\nHow well the modulus can be known: %s\n", p.Unreachable)
-		return
-	}
-	fmt.Fprintf(w, "\nThe modulus can be known to %.2f %% (standard), %.2f %% for 95 %%; scatter and drift come on top\n", 100*p.RelativeU, 100*p.RelativeU95)
-	for _, h := range p.Dominating {
-		fmt.Fprintf(w, "  %.0f %% of it from %s; halve that and it is %.2f %%\n", 100*h.Share, h.Input, 100*h.RelativeU)
-	}
-	if p.CreepU > 0 {
-		fmt.Fprintf(w, "The creep coefficient can be known to %.2g by the gauge alone\n", p.CreepU)
-	}
 }

@@ -105,3 +105,43 @@ func TestCompareSpecimens(t *testing.T) {
 		}
 	}
 }
+
+// The plot of several spans is one SVG with the line and the points, in the
+// units asked for, and no table mixes units.
+func TestComparePlotAndUnits(t *testing.T) {
+	dir := t.TempDir()
+	args := []string{"compare"}
+	for _, span := range []float64{300, 450, 700} {
+		args = append(args, foreignRun(t, dir, "board", span, 10))
+	}
+	file := filepath.Join(dir, "spans.svg")
+	code, out, errOut := gaugelog(append(args, "--units", "us", "--plot", file)...)
+	if code != Done {
+		t.Fatalf("compare ended with %d: %s", code, errOut)
+	}
+	for _, want := range []string{"span, in", "psi", "1/Mpsi"} {
+		if !strings.Contains(out, want) {
+			t.Errorf("no %q in\n%s", want, out)
+		}
+	}
+	for _, no := range []string{"MPa", " mm", "1/GPa", "N/mm"} {
+		if strings.Contains(out, no) {
+			t.Errorf("%q in US units:\n%s", no, out)
+		}
+	}
+	svg, err := os.ReadFile(file)
+	if err != nil {
+		t.Fatal(err)
+	}
+	for _, want := range []string{"<svg", "(h/L)", "1/Mpsi"} {
+		if !strings.Contains(string(svg), want) {
+			t.Errorf("no %q in the plot", want)
+		}
+	}
+	if code, _, errOut = gaugelog(append(args, "--plot", file)...); code == Done || !strings.Contains(errOut, "exists already") {
+		t.Errorf("an existing plot was overwritten: %d %s", code, errOut)
+	}
+	if code, _, errOut = gaugelog(append(args, "--units", "furlongs")...); code == Done || !strings.Contains(errOut, "mend:") {
+		t.Errorf("odd units were taken: %d %s", code, errOut)
+	}
+}
