@@ -9,6 +9,7 @@ import (
 	"path/filepath"
 	"strconv"
 	"strings"
+	"sync"
 	"testing"
 	"time"
 
@@ -36,25 +37,40 @@ const testToken = "a-token-for-tests-only"
 type served struct {
 	*desktest.World
 	*Server
+	// leave ends the page, not the recording.
+	leave func()
 }
 
 // serve puts a page before a world, until the test ends.
 func serve(t testing.TB, w *desktest.World, open bool) served {
 	t.Helper()
-	s, err := Listen(Options{Desks: []*desk.Desk{w.Desk}, Address: "127.0.0.1:0", Token: testToken, Open: open})
+	return serveAt(t, w, "127.0.0.1:0", open)
+}
+
+func serveAt(t testing.TB, w *desktest.World, address string, open bool) served {
+	t.Helper()
+	s, err := Listen(Options{Desks: []*desk.Desk{w.Desk}, Address: address, Token: testToken, Open: open})
+	for range 100 { // the port may still be held by the page before
+		if err == nil {
+			break
+		}
+		time.Sleep(20 * time.Millisecond)
+		s, err = Listen(Options{Desks: []*desk.Desk{w.Desk}, Address: address, Token: testToken, Open: open})
+	}
 	if err != nil {
 		t.Fatal(err)
 	}
 	ctx, stop := context.WithCancel(context.Background())
 	ended := make(chan error, 1)
 	go func() { ended <- s.Run(ctx) }()
-	t.Cleanup(func() {
+	leave := sync.OnceFunc(func() {
 		stop()
 		if err := <-ended; err != nil {
 			t.Errorf("the page: %v", err)
 		}
 	})
-	return served{w, s}
+	t.Cleanup(leave)
+	return served{w, s, leave}
 }
 
 // outlookOf is an analysis's answer about the test world.
@@ -176,18 +192,24 @@ func wide(s screen) step {
 }
 
 // until waits until a section's text holds what is wanted.
-func until(id, want string) step {
+func until(id, want string) step { return untilText(id, want, 15*time.Second) }
+
+// untilText waits for so long; an id with ":hidden" is waited for to be hidden.
+func untilText(id, want string, within time.Duration) step {
 	return chromedp.Func(func(ctx context.Context, t *chromedp.Target) error {
+		ask := `document.getElementById("` + id + `")?.textContent ?? ""`
+		if name, hidden := strings.CutSuffix(id, ":hidden"); hidden {
+			ask, want = `document.getElementById("`+name+`").hidden ? "hidden" : "shown"`, "hidden"
+		}
 		text := ""
-		for range 150 {
+		for began := time.Now(); time.Since(began) < within; time.Sleep(100 * time.Millisecond) {
 			var err error
-			if text, err = chromedp.Evaluate[string](`document.getElementById("`+id+`")?.textContent ?? ""`)(ctx, t); err != nil {
+			if text, err = chromedp.Evaluate[string](ask)(ctx, t); err != nil {
 				return err
 			}
 			if strings.Contains(text, want) {
 				return nil
 			}
-			time.Sleep(100 * time.Millisecond)
 		}
 		return fmt.Errorf("section %s never said %q; it says: %s", id, want, text)
 	})
@@ -262,8 +284,39 @@ func TestInABrowser(t *testing.T) {
 			run(script(`for (const c of document.querySelectorAll('#alarms .card')) if (c.textContent.includes('silent')) { c.querySelector('input[name=by]').value = 'mo'; c.querySelector('button').click() }`),
 				chromedp.WaitVisible(`.done`), until("alarms", "by mo"), wide(s))
 
+			if s.mobile { // once is enough
+				address := strings.TrimSuffix(strings.TrimPrefix(w.URL(), "http://"), "/")
+				w.leave()
+				run(untilText("link", "No connection to the recorder", 40*time.Second), shoot(s.name+"-lost"))
+				w = serveAt(t, w.World, address, false)
+				run(untilText("link:hidden", "", 40*time.Second))
+				w.Move("mid", 0.5)
+				run(until("gauges", strconv.FormatFloat(shown+0.75, 'f', 3, 64)[:4]))
+			}
+
 			w.World.Stop()
 			run(until("alive", "the recording has ended"), shoot(s.name+"-ended"))
 		})
+	}
+}
+
+// A test that has just begun, with a gauge that never spoke: nothing is made up,
+// and nothing sticks out.
+func TestFreshInABrowser(t *testing.T) {
+	ctx := browser(t)
+	world := desktest.New(t, desktest.Options{Title: "Fresh test, ten readings"})
+	world.Hush("quarter", true)
+	w := serve(t, world, false)
+	if err := chromedp.Do(ctx, phone.set()); err != nil {
+		t.Fatal(err)
+	}
+	within, stop := context.WithTimeout(ctx, 90*time.Second)
+	defer stop()
+	for i, s := range []step{phone.set(), chromedp.Navigate(w.URL()), until("alive", "3 of 4 instruments"), until("alive", "quarter"),
+		until("yesterday", "No load is entered yet"), until("speed", "Too early to say"), wide(phone), shoot("fresh-phone"),
+		laptop.set(), wide(laptop), shade(true), shoot("fresh-laptop-dark")} {
+		if err := chromedp.Do(within, s); err != nil {
+			t.Fatalf("step %d: %v", i+1, err)
+		}
 	}
 }

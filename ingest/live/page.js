@@ -30,17 +30,25 @@
     const lost = seconds > 20;
     link.hidden = !lost;
     link.className = lost ? "lost" : "quiet";
-    if (lost) link.textContent = "No connection to the recorder for " + seconds + " s: what stands below is old.";
+    const since = seconds < 120 ? seconds + " s" : Math.round(seconds / 60) + " min";
+    if (lost) link.textContent = "ABNORMAL: No connection to the recorder for " + since + ": what stands below is old.";
   };
 
-  const source = new EventSource(path + "stream");
-  source.addEventListener("sections", (event) => {
-    heard = Date.now();
-    for (const part of JSON.parse(event.data)) put(part.id, part.html);
-    tell();
-  });
+  let source;
+  const listen = () => {
+    source = new EventSource(path + "stream");
+    source.addEventListener("sections", (event) => {
+      heard = Date.now();
+      for (const part of JSON.parse(event.data)) put(part.id, part.html);
+      tell();
+    });
+  };
+  listen();
   setInterval(() => {
     for (const [id, html] of [...waiting]) put(id, html);
     tell();
+    // A browser gives up for good where the answer was a refusal, as while too
+    // many people are looking.
+    if (source.readyState === EventSource.CLOSED && Math.round(Date.now() / 1000) % 5 === 0) listen();
   }, 1000);
 })();
