@@ -221,16 +221,26 @@ func TestMeasure(t *testing.T) {
 			busy[i] = append(busy[i], last(got[i].busy)/last(got[0].busy))
 		}
 	}
-	fmt.Printf("%d readings of 8 gauges in 30 days, 12 load changes, from the page cache; median of %d\n", rows, *repeat)
-	fmt.Printf("%-26s %-5s %5s | %12s %6s %14s | %12s %6s %14s | %8s\n", "", "files", "cores", "M readings/s", "ratio", "(least, most)",
-		"per CPU s", "ratio", "(least, most)", "peak MiB")
+	fmt.Printf("%d readings of 8 gauges in 30 days, 12 load changes, from the page cache; median of %d; load of the machine %s\n", rows, *repeat, load())
+	fmt.Printf("%-26s %-5s %5s | %12s %6s %14s | %12s %6s %14s | %13s | %8s\n", "", "files", "cores", "M readings/s", "ratio", "(least, most)",
+		"per CPU s", "ratio", "(least, most)", "best CPU s/M", "peak MiB")
 	for i, k := range kinds {
-		fmt.Printf("%-26s %-5s %5d | %12.2f %s | %12.2f %s | %8.1f\n", k.does, k.folder, k.cores,
-			median(got[i].rate)/1e6, ratioText(ratios[i]), median(got[i].busy)/1e6, ratioText(busy[i]), float64(got[i].peak)/(1<<20))
+		fmt.Printf("%-26s %-5s %5d | %12.2f %s | %12.2f %s | %13.4f | %8.1f\n", k.does, k.folder, k.cores,
+			median(got[i].rate)/1e6, ratioText(ratios[i]), median(got[i].busy)/1e6, ratioText(busy[i]), 1e6/slices.Max(got[i].busy), float64(got[i].peak)/(1<<20))
 	}
 	if *large > 0 {
 		compareMemory(t, got)
 	}
+}
+
+// load is the machine's load average over the last minute.
+func load() string {
+	text, err := os.ReadFile("/proc/loadavg")
+	if err != nil {
+		return "unknown"
+	}
+	first, _, _ := strings.Cut(string(text), " ")
+	return first
 }
 
 func ratioText(x []float64) string {
