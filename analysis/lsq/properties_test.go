@@ -292,15 +292,36 @@ func TestRobust(t *testing.T) {
 			Y     []number
 			Slope float64 `json:"median_slope_float"`
 		} `json:"theil_sen_exact_example"`
+		Constant struct {
+			Value float64 `json:"1/Phi^-1(3/4)"`
+		} `json:"mad_constant"`
+		Tuning struct {
+			K float64 `json:"k_95pct_efficiency"`
+		} `json:"huber_tuning"`
+		MAD struct {
+			Data   []float64
+			Median float64
+			Raw    float64 `json:"MAD_raw"`
+		} `json:"mad_example"`
 		Chem struct {
 			Data       []float64
 			Recomputed struct {
-				Huber float64 `json:"huber_mu_converged"`
-				S     float64
+				Median float64
+				Huber  float64 `json:"huber_mu_converged"`
+				S      float64
 			}
 		} `json:"huber_location_chem"`
 	}
 	load(t, "robust_checks.json", &c)
+	if math.Abs(MADScale-c.Constant.Value) > 1e-15 || HuberK != c.Tuning.K {
+		t.Errorf("constants %g and %g, published %g and %g", MADScale, HuberK, c.Constant.Value, c.Tuning.K)
+	}
+	if m, d := Median(c.MAD.Data), MAD(c.MAD.Data); m != c.MAD.Median || d != c.MAD.Raw {
+		t.Errorf("median %g and MAD %g, published %g and %g", m, d, c.MAD.Median, c.MAD.Raw)
+	}
+	if m := Median(c.Chem.Data); math.Abs(m-c.Chem.Recomputed.Median) > 1e-12 {
+		t.Errorf("median of the copper data %g, published %g", m, c.Chem.Recomputed.Median)
+	}
 	// Sen, J. Am. Stat. Assoc. 63 (1968) 1379, section 6: slope 4, 93 %
 	// interval 3.71 to 4.38.
 	l, err := TheilSen(c.Sen.X, c.Sen.Y, 1.8119106729525978)

@@ -3,6 +3,8 @@ package steps
 import (
 	"fmt"
 	"math"
+
+	"gaugelog/analysis/lsq"
 )
 
 // inch is the factor between millimetres and inches, exact.
@@ -43,24 +45,39 @@ func (r *run) unitFactor(e *cluster, g int) float64 {
 	}
 	pressed := gg.factor(e.lo) // pressed back: less proof is needed
 	// Right beside the cluster, so that creep does not spoil the ratio.
-	b, a := Median(before[max(0, len(before)-3):]), Median(after[:min(3, len(after))])
+	b, a := lsq.Median(before[max(0, len(before)-3):]), lsq.Median(after[:min(3, len(after))])
 	for _, f := range []float64{inch, 1 / inch} {
 		// The coarser side's half count, in the unit of the finer.
 		small := math.Abs(a)
 		if f < 1 {
 			small = math.Abs(b)
 		}
-		tol := inch*gg.res*1.01 + 4*gg.noise*math.Sqrt(2) + slack
+		res := gg.res
+		if shownFiner(after, res) && f > 1 || shownFiner(before, res) && f < 1 {
+			res /= 10 // an inch display shows about the count of the other one
+		}
+		tol := inch*res*1.01 + 4*gg.noise*math.Sqrt(2) + slack
 		diff := math.Abs(a*f - b)
 		if f < 1 {
 			diff = math.Abs(a - b*inch)
 		}
 		back := math.Abs(pressed*f-1) < 1e-9 && pressed != 1
-		if (small > 12*gg.res && small*inch > 10*tol || back && small*inch > 3*tol) && diff <= tol {
+		if (small > 12*res && small*inch > 10*tol || back && small*inch > 3*tol) && diff <= tol {
 			return f
 		}
 	}
 	return 0
+}
+
+// shownFiner says that indications are no multiples of the gauge's count in mm:
+// they are shown in another unit.
+func shownFiner(mm []float64, res float64) bool {
+	for _, v := range mm {
+		if n := v / res; math.Abs(n-math.Round(n)) > 0.02 {
+			return true
+		}
+	}
+	return false
 }
 
 // others is the greatest movement of any other gauge in a cluster, mm.

@@ -6,6 +6,9 @@ import "testing"
 func TestCalm(t *testing.T) {
 	alarms, years := 0, 0.0
 	for i := range *calmDrawn {
+		if i > 0 && i%50 == 0 {
+			t.Logf("%d so far: %d alarms", i, alarms)
+		}
 		m := drawMonth(seedOf(5000, i), calmDays)
 		f := m.find(t)
 		years += calmDays / 365.25 * float64(len(m.gauges))
@@ -26,6 +29,9 @@ func TestFoul(t *testing.T) {
 	found, named, undecided, beside := 0, 0, 0, 0
 	kinds := map[Kind][3]int{}
 	for i := range *foulDrawn {
+		if i > 0 && i%50 == 0 {
+			t.Logf("%d so far: %d found, %d named right, %d undecided, %d with another beside", i, found, named, undecided, beside)
+		}
 		m := foul(seedOf(9000, i), calmDays)
 		f := m.find(t)
 		hit, right, open, others := m.judge(f)

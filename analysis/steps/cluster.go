@@ -4,6 +4,8 @@ import (
 	"fmt"
 	"math"
 	"sort"
+
+	"gaugelog/analysis/lsq"
 )
 
 // cluster is one happening: what several gauges did at the same time.
@@ -201,7 +203,7 @@ func (r *run) outstanding(c *cluster) {
 		if len(others) < 3 {
 			return
 		}
-		mid, off := Median(others), 0.0
+		mid, off := lsq.Median(others), 0.0
 		for _, v := range others {
 			off = max(off, math.Abs(v-mid))
 		}

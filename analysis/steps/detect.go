@@ -4,6 +4,8 @@ import (
 	"math"
 	"slices"
 	"sort"
+
+	"gaugelog/analysis/lsq"
 )
 
 // transition is a sudden change of one gauge between two of its points.
@@ -198,7 +200,7 @@ func place(seq []point, i, k int, sigma float64) (lo, hi int) {
 	for _, p := range seq[b+1-(k+1)/2 : b+1] {
 		inner = append(inner, p.y)
 	}
-	left, right := Median(outer), Median(inner)
+	left, right := lsq.Median(outer), lsq.Median(inner)
 	cost := 0.0
 	for _, p := range seq[a : b+1] {
 		cost += math.Abs(p.y - right)

@@ -4,6 +4,8 @@ import (
 	"fmt"
 	"math"
 	"strings"
+
+	"gaugelog/analysis/lsq"
 )
 
 // scaleU is the relative uncertainty of a load estimated from sags: what
@@ -154,7 +156,7 @@ func (r *run) influenceScale() float64 {
 			k = append(k, num/den)
 		}
 	}
-	return Median(k)
+	return lsq.Median(k)
 }
 
 // shareOut improves the estimates of unmarked changes of a load by its next

@@ -5,6 +5,7 @@ import (
 	"slices"
 
 	"gaugelog/analysis/history"
+	"gaugelog/analysis/lsq"
 	"gaugelog/config"
 )
 
@@ -121,9 +122,9 @@ func (g *gauge) scatter() (noise, interval float64) {
 		}
 	}
 	floor := floorU(g.res)
-	interval = Median(gaps)
+	interval = lsq.Median(gaps)
 	if 2*len(spread) > free && free > 0 {
-		return max(Median(spread), floor), interval
+		return max(lsq.Median(spread), floor), interval
 	}
 	return max(trimmedSigma(second)/math.Sqrt(6), floor), interval
 }
@@ -172,7 +173,7 @@ func trimmedSigma(abs []float64) float64 {
 func (g *gauge) pointU(p point) float64 {
 	s := g.noise * p.f
 	if p.n >= 5 {
-		s = max(s, madScale*p.mad)
+		s = max(s, lsq.MADScale*p.mad)
 	}
 	return max(1.253*s/math.Sqrt(float64(p.n)), floorU(g.res*p.f))
 }

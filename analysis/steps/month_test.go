@@ -198,12 +198,16 @@ func (m *month) stream() *stream {
 	return s
 }
 
+// given is the test as the finder gets it.
+func (m *month) given() (*history.History, Options) {
+	rig := m.rig()
+	return history.FromSource(history.Given{Rig: rig, Marks: m.marked(rig)}, m.stream()), Options{Influence: m.influence()}
+}
+
 // find lets the finder at it.
 func (m *month) find(t *testing.T) *Findings {
 	t.Helper()
-	rig := m.rig()
-	h := history.FromSource(history.Given{Rig: rig, Marks: m.marked(rig)}, m.stream())
-	f, err := Find(h, Options{Influence: m.influence()})
+	f, err := Find(m.given())
 	if err != nil {
 		t.Fatal(err)
 	}

@@ -3,6 +3,8 @@ package steps
 import (
 	"fmt"
 	"math"
+
+	"gaugelog/analysis/lsq"
 )
 
 // nature tells what a lasting cluster was, from which gauges moved and in
@@ -119,7 +121,7 @@ func (r *run) becameZero(e *cluster, g int) bool {
 	if len(after) > 5 {
 		after = after[:5]
 	}
-	return math.Abs(Median(after)) <= gg.res*1.01+2*gg.noise && math.Abs(Median(before)) > 3*gg.res+6*gg.noise
+	return math.Abs(lsq.Median(after)) <= gg.res*1.01+2*gg.noise && math.Abs(lsq.Median(before)) > 3*gg.res+6*gg.noise
 }
 
 // rawEdges returns the indications just before and just behind a cluster.

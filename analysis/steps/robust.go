@@ -5,34 +5,9 @@ import (
 	"slices"
 
 	"gonum.org/v1/gonum/mat"
+
+	"gaugelog/analysis/lsq"
 )
-
-// madScale makes the median absolute deviation estimate the standard
-// deviation of normal scatter: 1/Phi^-1(3/4).
-const madScale = 1.482602218505602
-
-// huberK is Huber's tuning constant for 95 % efficiency at the normal.
-const huberK = 1.345
-
-// Median returns the median of x, 0 for none. It does not change x.
-func Median(x []float64) float64 {
-	if len(x) == 0 {
-		return 0
-	}
-	s := slices.Clone(x)
-	slices.Sort(s)
-	return (s[(len(s)-1)/2] + s[len(s)/2]) / 2
-}
-
-// MAD returns the median absolute deviation of x about its median, unscaled.
-func MAD(x []float64) float64 {
-	m := Median(x)
-	d := make([]float64, len(x))
-	for i, v := range x {
-		d[i] = math.Abs(v - m)
-	}
-	return Median(d)
-}
 
 // Location returns the median of x and its standard uncertainty: 1.253 s/sqrt(n)
 // with s the scaled median absolute deviation, and never less than the
@@ -41,48 +16,11 @@ func Location(x []float64, resolution float64) Value {
 	if len(x) == 0 {
 		return Value{}
 	}
-	u := 1.253 * madScale * MAD(x) / math.Sqrt(float64(len(x)))
-	return Value{Median(x), max(u, floorU(resolution))}
+	u := 1.253 * lsq.MADScale * lsq.MAD(x) / math.Sqrt(float64(len(x)))
+	return Value{lsq.Median(x), max(u, floorU(resolution))}
 }
 
 func floorU(resolution float64) float64 { return resolution / math.Sqrt(12) }
-
-// TheilSen returns the median of the slopes between all pairs of points
-// (Sen 1968) and the intercept median(y) - slope median(x).
-func TheilSen(x, y []float64) (slope, intercept float64) {
-	var s []float64
-	for i := range x {
-		for j := i + 1; j < len(x); j++ {
-			if x[j] != x[i] {
-				s = append(s, (y[j]-y[i])/(x[j]-x[i]))
-			}
-		}
-	}
-	slope = Median(s)
-	return slope, Median(y) - slope*Median(x)
-}
-
-// HuberLocation returns Huber's M-estimate of location with tuning k and the
-// scaled median absolute deviation as a fixed scale.
-func HuberLocation(x []float64, k float64) float64 {
-	s := madScale * MAD(x)
-	m := Median(x)
-	if s == 0 {
-		return m
-	}
-	for range 100 {
-		sum := 0.0
-		for _, v := range x {
-			sum += math.Max(m-k*s, math.Min(m+k*s, v))
-		}
-		next := sum / float64(len(x))
-		if math.Abs(next-m) < 1e-9*s {
-			return next
-		}
-		m = next
-	}
-	return m
-}
 
 // polyFit is a local polynomial in x, fitted by Huber-weighted least squares.
 type polyFit struct {
@@ -146,8 +84,8 @@ func fitPoly(x, y, u []float64, degree int) (polyFit, bool) {
 		for i := range r {
 			abs[i] = math.Abs(r[i])
 		}
-		p.sigma = madScale * Median(abs) * math.Sqrt(float64(n)/float64(n-k))
-		cut := huberK * max(p.sigma, 1)
+		p.sigma = lsq.MADScale * lsq.Median(abs) * math.Sqrt(float64(n)/float64(n-k))
+		cut := lsq.HuberK * max(p.sigma, 1)
 		change := 0.0
 		for i := range r {
 			next := 1.0

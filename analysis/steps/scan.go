@@ -10,6 +10,7 @@ import (
 	"golang.org/x/sync/errgroup"
 
 	"gaugelog/analysis/history"
+	"gaugelog/analysis/lsq"
 )
 
 // scan looks at the single readings of every hot stretch and gathers what
@@ -142,13 +143,13 @@ func hampel(g *gauge, seq []point) (rest []point, singles []transition) {
 			continue // as nearly all: the rest need not be worked out
 		}
 		// Both sides must agree with each other: a step is no spike.
-		left, right := Median(w[:half-1]), Median(w[half+2:])
-		spread := MAD(w)
+		left, right := lsq.Median(w[:half-1]), lsq.Median(w[half+2:])
+		spread := lsq.MAD(w)
 		if spread <= g.res*seq[i].f {
 			// Of two counts the median deviation tells nothing.
-			spread = min(spread, g.noise*seq[i].f/madScale)
+			spread = min(spread, g.noise*seq[i].f/lsq.MADScale)
 		}
-		need := max(5*madScale*spread, 3*g.res*seq[i].f, 6*g.noise*seq[i].f)
+		need := max(5*lsq.MADScale*spread, 3*g.res*seq[i].f, 6*g.noise*seq[i].f)
 		bad[i] = off > need && math.Abs(left-right) < off/3
 	}
 	if !slices.Contains(bad, true) {

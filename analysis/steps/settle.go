@@ -9,6 +9,7 @@ import (
 	"gonum.org/v1/gonum/mat"
 
 	"gaugelog/analysis/history"
+	"gaugelog/analysis/lsq"
 )
 
 // A support may sink over hours or weeks: no reading jumps then. What tells is
@@ -340,7 +341,7 @@ func (s *sinking) sankWithinDays(side int, b []float64, g int) (slowly, bool) {
 	if len(abs) < 4*n {
 		return slowly{}, false
 	}
-	sigma := madScale * Median(abs)
+	sigma := lsq.MADScale * lsq.Median(abs)
 	best := -1
 	for i := range d {
 		if !math.IsNaN(d[i]) && (best < 0 || math.Abs(d[i]) > math.Abs(d[best])) {
@@ -413,7 +414,7 @@ func level(v []float64) float64 {
 	if len(known) == 0 {
 		return math.NaN()
 	}
-	return Median(known)
+	return lsq.Median(known)
 }
 
 // spreadOf is the range that holds the middle nine tenths of what is known.

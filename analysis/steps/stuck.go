@@ -4,6 +4,8 @@ import (
 	"fmt"
 	"math"
 	"sort"
+
+	"gaugelog/analysis/lsq"
 )
 
 // stuck is a stretch in which a gauge's indication did not move at all though
@@ -79,7 +81,8 @@ func (r *run) judgeStill(s stuck) (stuck, bool) {
 	gg := &r.gauges[g]
 	s.kind = Frozen
 	want, by := r.shouldHave(g, v)
-	if want <= 6*gg.res*max(gg.factor(v.from+1), 1) || r.oftenStill(g, v, want) {
+	count := gg.res * max(gg.factor(v.from+1), 1)
+	if (want <= 6*count || r.oftenStill(g, v, want)) && (want <= 2*count || !r.unlikeItself(s)) {
 		return s, false
 	}
 	s.evidence = fmt.Sprintf("gauge %s showed the same value for %.0f s while %s moved: it should have moved %.3g mm", r.name(g), seconds(v.to-v.from), r.names(by), want)
@@ -92,6 +95,30 @@ func (r *run) judgeStill(s stuck) (stuck, bool) {
 		}
 	}
 	return s, true
+}
+
+// unlikeItself says that a gauge which otherwise scatters from count to count
+// stood still five times longer than ever else.
+func (r *run) unlikeItself(s stuck) bool {
+	seq := r.gauges[s.gauge].seq
+	longest, bins, rest := 0, 0, 0
+	for i := 0; i < len(seq); {
+		j := i + 1
+		for j < len(seq) && seq[i].min == seq[i].max && seq[j].min == seq[i].min && seq[j].max == seq[i].min {
+			j++
+		}
+		switch {
+		case seq[i].from >= s.from && seq[i].to <= s.to:
+			bins += j - i
+		case seq[i].min == seq[i].max && seq[i].n > 1:
+			longest = max(longest, j-i)
+			fallthrough
+		default:
+			rest += j - i
+		}
+		i = j
+	}
+	return bins >= heldBins && rest >= 3*heldBins && bins >= 5*max(longest, 1)
 }
 
 // oftenStill says that a gauge is still at other times too, as long, while the
@@ -154,7 +181,7 @@ func (r *run) shouldHave(g int, v interval) (float64, []int) {
 	if len(want) == 0 {
 		return 0, nil
 	}
-	return Median(want), by
+	return lsq.Median(want), by
 }
 
 // ratio is how far gauge g moves while gauge o moves 1, as a magnitude.

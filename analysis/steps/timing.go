@@ -4,6 +4,8 @@ import (
 	"math"
 	"slices"
 	"sort"
+
+	"gaugelog/analysis/lsq"
 )
 
 // timing is when a change began and was complete.
@@ -126,10 +128,9 @@ func (r *run) ramped(s []share, first, done int, lo, hi, mark int64) timing {
 			}
 		}
 		if len(x) >= 3 {
-			slope, at0 := TheilSen(x, y)
-			if slope > 0 {
-				t.start = clamp(hi+nanos(-at0/slope), lo, hi)
-				t.full = clamp(hi+nanos((1-at0)/slope), s[done-1].t, s[done].t)
+			if l, err := lsq.TheilSen(x, y, 1.96); err == nil && l.Slope > 0 {
+				t.start = clamp(hi+nanos(-l.Intercept/l.Slope), lo, hi)
+				t.full = clamp(hi+nanos((1-l.Intercept)/l.Slope), s[done-1].t, s[done].t)
 			}
 		}
 		t.ramp = seconds(t.full - t.start)
@@ -214,7 +215,7 @@ func levelBefore(pts []point, lo int64, g *gauge) (func(int64) float64, bool) {
 		x, y, u = append(x, seconds(p.t-lo)), append(y, p.y), append(u, g.noise)
 	}
 	if len(x) < 8 {
-		m := Median(y)
+		m := lsq.Median(y)
 		return func(int64) float64 { return m }, true
 	}
 	fit, ok := fitPoly(x, y, u, 1)

@@ -6,6 +6,7 @@ import (
 	"sort"
 
 	"gaugelog/analysis/history"
+	"gaugelog/analysis/lsq"
 )
 
 // perDecade is how many cells of a track a decade of time after full load has.
@@ -220,7 +221,7 @@ func joined(in []point) point {
 		sum += seconds(b.t-in[0].t) * float64(b.n)
 	}
 	p.t = in[0].t + nanos(sum/float64(p.n))
-	p.y, p.raw, p.mad = Median(y), Median(raw), Median(mad)
+	p.y, p.raw, p.mad = lsq.Median(y), lsq.Median(raw), lsq.Median(mad)
 	p.from, p.to, p.f = in[0].from, in[len(in)-1].to, in[0].f
 	return p
 }
