@@ -6,7 +6,7 @@ import "testing"
 
 // The full coverage campaign; see coverage_test.go. Run with
 //
-//	go test -tags campaign -run Campaign -v -timeout 60m ./analysis/creep
+//	go test -tags campaign -run TestCoverageCampaign -v -timeout 60m ./analysis/creep
 func TestCoverageCampaign(t *testing.T) {
 	c := coverage(t, 30000, 1000, true)
 	c.log(t)
@@ -23,15 +23,23 @@ func TestCoverageCampaign(t *testing.T) {
 	}
 }
 
-// The full acceleration campaign; see watch_test.go.
+// The full acceleration campaign; see watch_test.go. Run with
+//
+//	go test -tags campaign -run TestAccelerationCampaign -v -timeout 60m ./analysis/creep
 func TestAccelerationCampaign(t *testing.T) {
-	w := failures(t, 500)
-	t.Logf("clear-area in time in %d of %d, median lead %.1f h; missed: %v", w.inTime, w.tests, w.medianLead, w.missed)
+	w := failures(t, 60000, 500)
+	t.Logf("clear-area in time in %d of %d, median lead %.1f h", w.inTime, w.tests, w.medianLead)
+	for _, m := range w.missed {
+		t.Log(m)
+	}
 	if w.inTime < 495 {
 		t.Errorf("clear-area in time in %d of 500, want 495", w.inTime)
 	}
-	sound := soundTests(t, 500)
-	t.Logf("warned: %v", sound)
+	sound := soundTests(t, 60000, 500)
+	t.Logf("%d of 500 sound tests raised a warning", len(sound))
+	for _, m := range sound {
+		t.Log(m)
+	}
 	if len(sound) > 2 {
 		t.Errorf("%d sound tests of 500 raised a warning, want at most 2", len(sound))
 	}

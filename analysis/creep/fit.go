@@ -50,8 +50,8 @@ type Fit struct {
 	// the factor on the bins' stated u.
 	SlowMM, FadeH, Scale float64
 	// K is the number of parameters; DOF the degrees of freedom behind the
-	// intervals: bins less parameters where the noise was averaged over, which
-	// counts what correlation takes, else NEffective - K; at least 1.
+	// intervals: what the bins of all gauges are worth less the parameters that
+	// no prior pays for, at least 1.
 	K, DOF float64
 	AICc   float64
 	Status lsq.Status

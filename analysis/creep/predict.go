@@ -179,7 +179,6 @@ func (f *Fit) averagedCovariance(known *Fit) (*mat.SymDense, [][]float64) {
 		return scaled, f.sol.ownU
 	}
 	f.widening *= mean.factor
-	f.DOF = max((float64(s.rows())-f.K)/f.shared, 1)
 	place := make([]int, 0, l.n)
 	for j := range n {
 		place = append(place, j)

@@ -39,21 +39,32 @@ func (a *Analysis) stage(in *Input) {
 		}
 	}
 	a.Stage = stageOf(age, sag, f, in)
+	a.Acceleration = in.watch()
+	if a.Acceleration.CautionH != nil {
+		a.Stage = Tertiary
+	}
+}
+
+// watch looks for acceleration in the creep gauge under the creep step's
+// load; its times are counted from the caller's origin.
+func (in *Input) watch() Acceleration {
+	age, sag := in.calm()
 	var changes []float64
 	for _, c := range in.Series[0].Changes {
 		if c.AtH > in.FullH && c.AtH < in.EndH {
 			changes = append(changes, c.AtH+c.RampH-in.FullH)
 		}
 	}
-	a.Acceleration = Watch(age, sag, Limits{ChangesH: changes})
-	for _, p := range []*float64{a.Acceleration.MinimumH, a.Acceleration.CautionH, a.Acceleration.ClearAreaH} {
+	if len(age) == 0 {
+		return Acceleration{}
+	}
+	out := Watch(age, sag, Limits{ChangesH: changes})
+	for _, p := range []*float64{out.MinimumH, out.CautionH, out.ClearAreaH} {
 		if p != nil {
 			*p += in.FullH
 		}
 	}
-	if a.Acceleration.CautionH != nil {
-		a.Stage = Tertiary
-	}
+	return out
 }
 
 // localRate is the slope of sag over the last tenth of the time (at least a

@@ -12,8 +12,9 @@ import (
 type Acceleration struct {
 	// MinimumH is when the rate was least, given only where it rose since.
 	MinimumH *float64
-	// CautionH is when two windows in succession ran at 1.25 times the least
-	// rate or more, ClearAreaH at 1.5 times or with the sag limit a day away.
+	// CautionH is when a window of time ran at 1.25 times the least rate or
+	// more, ClearAreaH when at 1.5 times by its end, or with the sag limit a
+	// day away.
 	CautionH, ClearAreaH *float64
 }
 
@@ -25,20 +26,24 @@ type Limits struct {
 	ChangesH []float64
 }
 
-// The rules of the two levels. Two windows in succession must agree, so that
-// a knock, which falls into one window, raises nothing; z is in units of the
-// scatter that windows of the same length had before, which counts what is
-// left of daily cycles.
+// The rules of the two levels. A window must stand out from the least rate
+// before by standOut times the scatter that windows of its length had, which
+// counts what is left of daily cycles and weather, and the window before it
+// must have begun to rise. One knock in a window is taken out of it, so none
+// raises anything.
 const (
 	cautionRatio = 1.25
 	clearRatio   = 1.5
-	firstZ       = 3 // of the first of two windows, then of the second
-	secondZ      = 5
-	leastHistory = 8 // windows before a rate can be judged
+	standOut     = 6.5
+	begun        = 0.5
+	leastHistory = 4 // windows before a rate can be judged
+	// beforeEnd parts the time watched: what came before the end over this
+	// tells the steady course.
+	beforeEnd = 1.4
 )
 
 // Watch looks for acceleration in the temperature-compensated sag (mm) of
-// one load, at ages in h (rising), with windows of 3 h and its doublings.
+// one load, at ages in h (rising), with windows from 6 h on, each longer by half.
 // Jumps that stay are taken out first: a knock is no acceleration.
 func Watch(ageH, sagMM []float64, l Limits) Acceleration {
 	var out Acceleration
@@ -68,10 +73,13 @@ func watchSegment(age, sag []float64, origin float64, l Limits, out *Acceleratio
 		return
 	}
 	var own Acceleration
-	for w := 3.0; w <= age[len(age)-1]/float64(leastHistory); w *= 2 {
-		// Windows at several phases, so that none waits long for its end.
-		for phase := 0.0; phase < w; phase += max(w/8, 3) {
-			watchScale(age, sag, w, phase, l, &own)
+	course := courseOf(age, sag)
+	for w := 6.0; w <= age[len(age)-1]/float64(leastHistory); w *= 2 {
+		for _, v := range []float64{w, 1.5 * w} {
+			// Windows at several phases, so that none waits long for its end.
+			for phase := 0.0; phase < v; phase += max(v/8, 3) {
+				watchScale(age, sag, v, phase, course, l, &own)
+			}
 		}
 	}
 	for _, p := range []struct{ from, to **float64 }{{&own.MinimumH, &out.MinimumH}, {&own.CautionH, &out.CautionH}, {&own.ClearAreaH, &out.ClearAreaH}} {
@@ -131,11 +139,42 @@ func windows(age, sag []float64, w, phase float64) []window {
 			continue // the first window holds the fast begin
 		}
 		x, y = thin(x, y, 24)
+		withoutExtremes(x, y)
 		if s, ok := slope(x, y); ok {
 			out = append(out, window{x[len(x)-1], s, y[len(y)-1]})
 		}
 	}
 	return out
+}
+
+// withoutExtremes takes the steepest rise and the steepest fall between
+// neighbours out of y, down to the middle of all: whatever a single knock did
+// is in one of them, and leaving both out favours neither side.
+func withoutExtremes(x, y []float64) {
+	n := len(y) - 1
+	if n < 5 {
+		return
+	}
+	d := make([]float64, n)
+	for i := range d {
+		d[i] = (y[i+1] - y[i]) / (x[i+1] - x[i])
+	}
+	middle := lsq.Median(d)
+	up, down := 0, 0
+	for i, v := range d {
+		if v > d[up] {
+			up = i
+		}
+		if v < d[down] {
+			down = i
+		}
+	}
+	for _, k := range []int{up, down} {
+		shift := (d[k] - middle) * (x[k+1] - x[k])
+		for i := k + 1; i <= n; i++ {
+			y[i] -= shift
+		}
+	}
 }
 
 // slope is Theil and Sen's.
@@ -145,35 +184,33 @@ func slope(x, y []float64) (float64, bool) {
 }
 
 // watchScale looks at one window length and keeps the earliest findings.
-func watchScale(age, sag []float64, w, phase float64, l Limits, out *Acceleration) {
+func watchScale(age, sag []float64, w, phase float64, course *course, l Limits, out *Acceleration) {
 	win := windows(age, sag, w, phase)
-	least, leastAt := math.Inf(1), 0.0
-	for i := range win {
-		if i < leastHistory+1 {
+	for i := 3; i < len(win); i++ {
+		end := win[i].endH
+		// What the sag did until then tells what it would go on to do: judged
+		// windows are no part of it.
+		steady, ok := course.until(min(end/beforeEnd, win[i-2].endH))
+		if !ok {
 			continue
 		}
-		// The reference ends two windows before those judged.
-		ref := median5(win, i-4)
-		if ref < least {
-			least, leastAt = ref, win[i-4].endH
-		}
-		u := scatter(win[:i-1])
+		u := scatter(win[:i-1], steady, w)
 		a, b := win[i-1].rate, win[i].rate
-		low := min(a, b)
-		base := max(least, 0)
-		if a-base < firstZ*u || b-base < secondZ*u {
+		least, leastAt := course.least(win[i-2].endH)
+		base := max(steady.rate(win[i-2].endH-w, win[i-2].endH), least, 0)
+		if b-base < standOut*u || a-base < begun*u || b < cautionRatio*base {
 			continue
 		}
-		if low > cautionRatio*base {
-			earliest(&out.CautionH, win[i].endH)
-			if out.MinimumH == nil || leastAt < *out.MinimumH {
-				m := leastAt
-				out.MinimumH = &m
-			}
-			soon := l.SagMM > 0 && win[i].last+24*b > l.SagMM
-			if b > clearRatio*base && a > cautionRatio*base || soon {
-				earliest(&out.ClearAreaH, win[i].endH)
-			}
+		earliest(&out.CautionH, end)
+		if out.MinimumH == nil || leastAt < *out.MinimumH {
+			m := leastAt
+			out.MinimumH = &m
+		}
+		// The rate at the window's end, were it to rise on as it did.
+		last := b + max(b-a, 0)/2
+		soon := l.SagMM > 0 && win[i].last+24*b > l.SagMM
+		if last > clearRatio*base || soon {
+			earliest(&out.ClearAreaH, end)
 		}
 	}
 }
@@ -184,27 +221,19 @@ func earliest(p **float64, v float64) {
 	}
 }
 
-// median5 is the median rate of the five windows up to i.
-func median5(win []window, i int) float64 {
-	var v []float64
-	for k := max(0, i-4); k <= i; k++ {
-		v = append(v, win[k].rate)
+// scatter is the standard deviation by which windows' rates left the steady
+// course while it was found: what daily cycles, weather and noise do. By the
+// median, so that knocks do not hide an acceleration; infinite where too few
+// windows tell.
+func scatter(win []window, steady *steady, w float64) float64 {
+	var d []float64
+	for i := len(win) - 1; i >= 0 && len(d) < 60; i-- {
+		if win[i].endH <= steady.endH {
+			d = append(d, math.Abs(win[i].rate-steady.rate(win[i].endH-w, win[i].endH)))
+		}
 	}
-	return lsq.Median(v)
-}
-
-// scatter is the standard deviation of a window's rate from window to
-// window over the last forty, by second differences, which a steady trend
-// leaves at 0: what daily cycles and noise do. The sum of squares is not
-// robust on purpose: where windows scatter wildly nothing can be said.
-func scatter(win []window) float64 {
-	var s, n float64
-	for i := max(1, len(win)-40); i+1 < len(win); i++ {
-		d := win[i+1].rate - 2*win[i].rate + win[i-1].rate
-		s, n = s+d*d, n+1
-	}
-	if n < 3 {
+	if len(d) < leastHistory {
 		return math.Inf(1)
 	}
-	return math.Sqrt(s/(6*n)) * (1 + 4/n)
+	return lsq.MADScale * lsq.Median(d) * (1 + 2/float64(len(d)))
 }
