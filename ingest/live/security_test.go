@@ -13,6 +13,8 @@ import (
 	"path/filepath"
 	"regexp"
 	"strings"
+	"sync"
+	"sync/atomic"
 	"testing"
 	"time"
 
@@ -145,7 +147,7 @@ func TestLookingChangesNothing(t *testing.T) {
 func TestTheTokenOpensTheDoor(t *testing.T) {
 	t.Parallel()
 	w := serve(t, desktest.New(t, desktest.Options{}), true)
-	for _, path := range []string{"/", home, home + "stream"} {
+	for _, path := range []string{"/", home, home + "stream", home + "follow"} {
 		if a, body := w.visit(t, "GET", path, nil, nil); a.StatusCode != http.StatusUnauthorized || strings.Contains(body, "larch") {
 			t.Errorf("%s without the token on an open page: %d", path, a.StatusCode)
 		}
@@ -408,4 +410,64 @@ func TestStreamsEnd(t *testing.T) {
 	if _, err := io.Copy(io.Discard, lines); err != nil && !errors.Is(err, io.ErrUnexpectedEOF) {
 		t.Logf("the stream ended with %v", err)
 	}
+}
+
+// While many look, load the page again and again, and hold streams open that
+// they never read, no reading is lost and none waits: handing one over only ever
+// puts it into a queue. The longest hand-over is told, with -v.
+func TestReadingsNeverWaitForThePage(t *testing.T) {
+	w := serve(t, desktest.New(t, desktest.Options{Still: true}), false)
+	ctx, stop := context.WithCancel(t.Context())
+	var crowd sync.WaitGroup
+	for range mostStreams {
+		c, err := net.Dial("tcp", strings.TrimSuffix(strings.TrimPrefix(w.URL(), "http://"), "/"))
+		if err != nil {
+			t.Fatal(err)
+		}
+		defer c.Close()
+		fmt.Fprintf(c, "GET %sfollow HTTP/1.1\r\nHost: localhost\r\n\r\n", home)
+	}
+	var pages atomic.Int64
+	for range 4 {
+		crowd.Go(func() {
+			for ctx.Err() == nil {
+				r, err := http.NewRequestWithContext(ctx, "GET", strings.TrimSuffix(w.URL(), "/")+home, nil)
+				if err != nil {
+					t.Error(err)
+					return
+				}
+				a, err := http.DefaultClient.Do(r)
+				if err != nil {
+					continue // the test is over, or there were too many at once
+				}
+				_, _ = io.Copy(io.Discard, a.Body)
+				a.Body.Close()
+				pages.Add(1)
+			}
+		})
+	}
+	const times = 300
+	longest := time.Duration(0)
+	for range times {
+		began := time.Now()
+		w.Feed()
+		longest = max(longest, time.Since(began))
+		time.Sleep(5 * time.Millisecond)
+	}
+	stop()
+	crowd.Wait()
+	http.DefaultClient.CloseIdleConnections()
+	want := int64(4 * times) // three gauges and a probe
+	for deadline := time.Now().Add(10 * time.Second); w.Rec.Status().Stored < want; time.Sleep(50 * time.Millisecond) {
+		if time.Now().After(deadline) {
+			t.Fatalf("%d of %d readings were stored", w.Rec.Status().Stored, want)
+		}
+	}
+	if s := w.Rec.Status(); s.Stored != want || s.Dropped != 0 || w.Desk.Snapshot().Missed != 0 {
+		t.Errorf("%d stored, %d dropped, %d missing on the page", s.Stored, s.Dropped, w.Desk.Snapshot().Missed)
+	}
+	if pages.Load() == 0 {
+		t.Error("no page was loaded meanwhile")
+	}
+	t.Logf("%d pages loaded; four readings were handed over within %s at the longest", pages.Load(), longest)
 }
