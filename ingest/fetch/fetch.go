@@ -41,6 +41,9 @@ type Summary struct {
 // Fetch makes the run folder into, which must not exist, of a run that a server
 // holds. After an error nothing is left behind.
 func Fetch(ctx context.Context, into string, o Options) (s Summary, err error) {
+	if o.Source != nil {
+		defer o.Source.client.CloseIdleConnections()
+	}
 	if _, err := os.Lstat(into); err == nil {
 		return s, config.Problem{What: into + " exists already", Fix: "give a folder that is not there yet"}
 	}

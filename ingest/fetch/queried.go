@@ -21,18 +21,22 @@ func (q *queried) loses() string { return "" }
 type series struct {
 	Columns []string `json:"columns"`
 	Values  [][]any  `json:"values"`
+	Partial bool     `json:"partial"`
 }
 
 // answer is one piece of a chunked answer.
 type answer struct {
 	Results []struct {
-		Series []series `json:"series"`
-		Error  string   `json:"error"`
+		Series  []series `json:"series"`
+		Error   string   `json:"error"`
+		Partial bool     `json:"partial"`
 	} `json:"results"`
 	Error string `json:"error"`
 }
 
-// ask runs a query and hands over its tables piece by piece.
+// ask runs a query and hands over its tables piece by piece. A piece says
+// whether more follow, so that an answer cut off between two pieces is known
+// for one even where whoever stands between ends it properly.
 func (q *queried) ask(ctx context.Context, query string, take func(*series) error) error {
 	body, err := q.s.get(ctx, "", "", url.Values{"q": {query}, "epoch": {"ns"}, "chunked": {"true"}, "chunk_size": {"10000"}})
 	if err != nil {
@@ -41,21 +45,24 @@ func (q *queried) ask(ctx context.Context, query string, take func(*series) erro
 	defer body.Close()
 	d := json.NewDecoder(body)
 	d.UseNumber()
-	for pieces := 0; ; pieces++ {
+	for more := true; ; {
 		var a answer
-		if err := d.Decode(&a); errors.Is(err, io.EOF) && pieces > 0 {
+		if err := d.Decode(&a); errors.Is(err, io.EOF) && !more {
 			return nil
 		} else if err != nil {
 			return fmt.Errorf("%s: the answer to %q breaks off or is no answer of such a server: %w", q.s, query, err)
 		}
 		if a.Error != "" {
-			return fmt.Errorf("%s: the server says: %s", q.s, a.Error)
+			return q.s.says(a.Error)
 		}
+		more = len(a.Results) == 0
 		for i := range a.Results {
 			if e := a.Results[i].Error; e != "" {
-				return fmt.Errorf("%s: the server says: %s", q.s, e)
+				return q.s.says(e)
 			}
+			more = more || a.Results[i].Partial
 			for j := range a.Results[i].Series {
+				more = more || a.Results[i].Series[j].Partial
 				if err := take(&a.Results[i].Series[j]); err != nil {
 					return err
 				}

@@ -29,6 +29,9 @@ func ParseSource(address, token string, plain bool) (*Source, error) {
 	if err != nil || u.Host == "" || u.Scheme != "http" && u.Scheme != "https" {
 		return nil, errors.New("the address is no http or https URL")
 	}
+	if err := forward.ShowsNothing(u); err != nil {
+		return nil, err
+	}
 	s := &Source{address: u, client: &http.Client{
 		Transport:     &http.Transport{Proxy: http.ProxyFromEnvironment, ResponseHeaderTimeout: 2 * time.Minute, IdleConnTimeout: time.Minute},
 		CheckRedirect: func(*http.Request, []*http.Request) error { return http.ErrUseLastResponse },
@@ -78,7 +81,12 @@ func (s *Source) get(ctx context.Context, cut, path string, q url.Values) (io.Re
 	}
 	words, _ := io.ReadAll(io.LimitReader(resp.Body, 500))
 	resp.Body.Close()
-	return nil, fmt.Errorf("%s: the server says %s %s", s, resp.Status, strings.ToValidUTF8(strings.TrimSpace(string(words)), "\uFFFD"))
+	return nil, s.says(resp.Status + " " + string(words))
+}
+
+// says tells the server's words, without the token that they may repeat.
+func (s *Source) says(words string) error {
+	return fmt.Errorf("%s: the server says %s", s, forward.Clean(words, s.auth))
 }
 
 // point is one point of the run, without the tags run and rig.

@@ -99,10 +99,16 @@ func (f *Forwarder) post(ctx context.Context, lines []byte) answer {
 	return a
 }
 
-// clean makes a server's words fit to be printed, without the token.
-func (f *Forwarder) clean(s string) string {
-	if _, secret, ok := strings.Cut(f.o.Target.auth, " "); ok {
+func (f *Forwarder) clean(s string) string { return Clean(s, f.o.Target.auth) }
+
+// Clean makes a server's words fit to be printed: on one line, without the
+// secret of the Authorization header, which they may repeat.
+func Clean(s, authorization string) string {
+	if kind, secret, ok := strings.Cut(authorization, " "); ok {
 		s = strings.ReplaceAll(s, secret, "(token)")
+		if plain, err := base64.StdEncoding.DecodeString(secret); err == nil && kind == "Basic" {
+			s = strings.ReplaceAll(s, string(plain), "(token)")
+		}
 	}
 	return strings.Join(strings.Fields(strings.Map(func(r rune) rune {
 		if r < ' ' || r == 0x7f {

@@ -25,15 +25,10 @@ func ParseTarget(address, token string, plain bool) (*Target, error) {
 	if err != nil || u.Host == "" || u.Scheme != "http" && u.Scheme != "https" {
 		return nil, errors.New("the address is no http or https URL")
 	}
-	if u.User != nil {
-		return nil, errors.New("the address holds a user or password, which logs would show: put user:password into a token file")
+	if err := ShowsNothing(u); err != nil {
+		return nil, err
 	}
 	q := u.Query()
-	for _, key := range []string{"p", "u", "token"} {
-		if q.Has(key) {
-			return nil, fmt.Errorf("the address holds %s=, which logs would show: put it into a token file", key)
-		}
-	}
 	v2 := strings.HasSuffix(u.Path, "/api/v2/write")
 	switch {
 	case v2 && !q.Has("bucket"):
@@ -46,6 +41,21 @@ func ParseTarget(address, token string, plain bool) (*Target, error) {
 	t := &Target{URL: u}
 	t.auth, err = Authorization(u, token, plain)
 	return t, err
+}
+
+// ShowsNothing refuses an address with a user, a password or a token in it,
+// which whatever prints the address would show.
+func ShowsNothing(u *url.URL) error {
+	if u.User != nil {
+		return errors.New("the address holds a user or password, which logs would show: put user:password into a token file")
+	}
+	q := u.Query()
+	for _, key := range []string{"p", "u", "token"} {
+		if q.Has(key) {
+			return fmt.Errorf("the address holds %s=, which logs would show: put it into a token file", key)
+		}
+	}
+	return nil
 }
 
 // Authorization is the value of the header of that name for a token at an
