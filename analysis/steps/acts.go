@@ -80,12 +80,13 @@ func shownFiner(mm []float64, res float64) bool {
 	return false
 }
 
-// others is the greatest movement of any other gauge in a cluster, mm.
+// others is how far any other gauge got away from where it was, over a cluster,
+// mm.
 func (c *cluster) others(g int) float64 {
 	most := 0.0
 	for o := range c.jump {
 		if o != g && c.known[o] {
-			most = max(most, math.Abs(c.jump[o].MM))
+			most = max(most, math.Abs(c.near[o].MM))
 		}
 	}
 	return most

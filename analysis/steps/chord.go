@@ -111,17 +111,41 @@ func (r *run) net(g int, gross Value, left, right Value) Value {
 		}
 		return Value{gross.MM - a*left.MM - b*right.MM, hypot(gross.U, a*left.U, b*right.U)}
 	case c.Left >= 0:
-		// Unseen movement of the other support: as much again, rectangular.
 		if g == c.Left {
 			return Value{0, gross.U}
 		}
-		return Value{gross.MM - a*left.MM, hypot(gross.U, a*left.U, b*left.MM/math.Sqrt(3))}
+		return Value{gross.MM - a*left.MM, hypot(gross.U, a*left.U)}
 	default:
 		if g == c.Right {
 			return Value{0, gross.U}
 		}
-		return Value{gross.MM - b*right.MM, hypot(gross.U, b*right.U, a*right.MM/math.Sqrt(3))}
+		return Value{gross.MM - b*right.MM, hypot(gross.U, b*right.U)}
 	}
+}
+
+// unseen is what a support without a gauge may have moved a gauge's sag by at
+// the end of step k, mm, as a standard uncertainty: as much again as the one
+// that is measured, rectangular. It is common to all readings of the step; 0
+// where both supports are measured, or none.
+func (r *run) unseen(g, k int) float64 {
+	c := r.out.Chord
+	if c.How != "one-sided" || !r.nets(g) || g == c.Left || g == c.Right {
+		return 0
+	}
+	sup := r.h.Rig.Supports
+	share, right := chordShares(r.gauges[g].cfg.At.Value, sup[0].At.Value, sup[1].At.Value)
+	seen := c.Right
+	if c.Left >= 0 {
+		share, seen = right, c.Left
+	}
+	moved := 0.0
+	for _, p := range r.out.Tracks[seen].Points {
+		if p.Step > k {
+			break
+		}
+		moved = p.Gross
+	}
+	return math.Abs(share*moved) / math.Sqrt(3)
 }
 
 func (r *run) name(g int) string { return r.h.Rig.Gauges[g].Name }

@@ -91,6 +91,9 @@ func (r *run) figures() {
 			f := &r.out.Steps[k].Gauges[g]
 			f.Gross = r.read(g, k, by, grossOf, r.commonGross(g, k))
 			f.Net = r.read(g, k, by, netOf, r.commonNet(g, k))
+			if f.Net.Increment != nil && k > 0 {
+				f.Net.Increment.U = hypot(f.Net.Increment.U, r.unseen(g, k)-r.unseen(g, k-1))
+			}
 		}
 	}
 }
@@ -120,7 +123,7 @@ func (r *run) commonNet(g, k int) float64 {
 	if c.Right >= 0 {
 		rt.U = r.commonGross(c.Right, k)
 	}
-	return r.net(g, Value{0, own}, l, rt).U
+	return hypot(r.net(g, Value{0, own}, l, rt).U, r.unseen(g, k))
 }
 
 // read takes one gauge's figures in one step.
