@@ -53,11 +53,11 @@ func (c *tally) String() string {
 func coverage(t *testing.T, tests int, seed uint64) float64 {
 	t.Helper()
 	var (
-		all    tally
-		by     = map[string]*tally{}
-		lock   sync.Mutex
-		group  sync.WaitGroup
-		next   = make(chan uint64)
+		all     tally
+		by      = map[string]*tally{}
+		lock    sync.Mutex
+		group   sync.WaitGroup
+		next    = make(chan uint64)
 		widened int
 	)
 	for range runtime.GOMAXPROCS(0) {

@@ -25,8 +25,10 @@ type Drawn struct {
 	Hi95           float64 `json:"hi95"`
 	PropagatedLo95 float64 `json:"propagated_lo95"`
 	PropagatedHi95 float64 `json:"propagated_hi95"`
-	// Tolerance is how far the ends may differ (JCGM 101, 8.1), Noise how far
+	// Digits of u to which the ends agree (JCGM 101, clause 8): 2, 1, or 0 where
+	// they do not. Tolerance is how far they may differ at that, Noise how far
 	// this many draws know them.
+	Digits    int     `json:"digits"`
 	Tolerance float64 `json:"tolerance"`
 	Noise     float64 `json:"noise"`
 	Agrees    bool    `json:"agrees"`
@@ -43,6 +45,6 @@ func drawnOf(d stiffness.Drawn, unit string) Drawn {
 	return Drawn{
 		Unit: unit, Mean: d.Mean, SD: d.SD, Lo95: d.Lo, Hi95: d.Hi,
 		PropagatedLo95: d.PropagatedLo, PropagatedHi95: d.PropagatedHi,
-		Tolerance: d.Tolerance, Noise: d.Noise, Agrees: d.Agrees,
+		Digits: d.Digits, Tolerance: d.Tolerance, Noise: d.Noise, Agrees: d.Agrees,
 	}
 }

@@ -99,14 +99,11 @@ func (b *builder) drawsTable(mc *analysis.MonteCarlo) Table {
 		factor, unit := b.u.convert(f.d.Unit)
 		places := decimalsFor(f.d.Tolerance * factor)
 		pair := func(lo, hi float64) string { return fixed(lo*factor, places) + " to " + fixed(hi*factor, places) }
-		verdict := "agree"
-		if !f.d.Agrees {
-			verdict = "DIFFER: use the drawn interval"
-		}
+		verdict := [...]string{"DIFFER: use the drawn interval", "agree to one digit of u", "agree to two digits of u"}[min(2, max(0, f.d.Digits))]
 		t.Rows = append(t.Rows, []string{f.name, unit, pair(f.d.PropagatedLo95, f.d.PropagatedHi95), pair(f.d.Lo95, f.d.Hi95),
 			fixed((f.d.Tolerance+2*f.d.Noise)*factor, places), verdict})
 	}
-	t.Says = fmt.Sprintf("%s draws by JCGM 101, seed %d: every input drawn from its distribution, the fit made anew each time. The ends may differ by half a unit of u's second digit and twice the draws' own noise.",
+	t.Says = fmt.Sprintf("%s draws by JCGM 101, seed %d: every input drawn from its distribution, the fit made anew each time. The ends may differ by half a unit of that digit of u and by twice the draws' own noise.",
 		grouped(fmt.Sprint(mc.Draws)), mc.Seed)
 	if mc.Refused > 0 {
 		t.Says += fmt.Sprintf(" %d draws made no beam and were left out.", mc.Refused)

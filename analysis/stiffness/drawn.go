@@ -18,10 +18,15 @@ func drawn(batches [][]float64, q Quantity) Drawn {
 	}
 	d.SD = math.Sqrt(variance(v))
 	d.Lo, d.Hi = shortest(v, 0.95)
-	d.Tolerance = tolerance(q.U)
 	d.Noise = noise(batches)
-	grant := d.Tolerance + 2*d.Noise
-	d.Agrees = math.Abs(d.Lo-d.PropagatedLo) <= grant && math.Abs(d.Hi-d.PropagatedHi) <= grant
+	apart := math.Max(math.Abs(d.Lo-d.PropagatedLo), math.Abs(d.Hi-d.PropagatedHi))
+	for _, digits := range []int{2, 1} {
+		d.Tolerance = tolerance(q.U, digits)
+		if apart <= d.Tolerance+2*d.Noise {
+			d.Digits, d.Agrees = digits, true
+			break
+		}
+	}
 	return d
 }
 
@@ -66,21 +71,18 @@ func shortest(v []float64, p float64) (lo, hi float64) {
 	return lo, hi
 }
 
-// tolerance is half a unit of the second significant digit of u (JCGM 101,
+// tolerance is half a unit of u's first or second significant digit (JCGM 101,
 // 7.9.2).
-func tolerance(u float64) float64 {
+func tolerance(u float64, digits int) float64 {
 	if !(u > 0) {
 		return 0
 	}
-	return 0.5 * math.Pow(10, math.Floor(math.Log10(u))-1)
+	return 0.5 * math.Pow(10, math.Floor(math.Log10(u))+1-float64(digits))
 }
 
 func (mc *MonteCarlo) words() string {
 	m := mc.Modulus
-	how := "agrees with"
-	if !m.Agrees {
-		how = "differs from"
-	}
+	how := [...]string{"differs from", "agrees to one digit of u with", "agrees to two digits of u with"}[m.Digits]
 	return fmt.Sprintf("%d draws of all inputs (seed %d) give 95 %% of the moduli in %.6g to %.6g MPa, which %s the propagated %.6g to %.6g MPa (tolerance %.2g MPa at each end, beside the draws' own noise of %.2g MPa)",
 		mc.Draws, mc.Seed, m.Lo, m.Hi, how, m.PropagatedLo, m.PropagatedHi, m.Tolerance, m.Noise)
 }

@@ -26,10 +26,12 @@ type Drawn struct {
 	// Lo and Hi are the shortest interval that holds 95 % of the draws;
 	// PropagatedLo and PropagatedHi are value -+ U95.
 	Lo, Hi, PropagatedLo, PropagatedHi float64
-	// Agrees holds JCGM 101 clause 8's criterion: both ends within Tolerance,
-	// half a unit of the second significant digit of u. Noise is the standard
-	// error of Lo and Hi themselves, as far as this many draws know them;
-	// twice that is granted beside the tolerance.
+	// Digits is the number of significant digits of u to which both ends agree
+	// by JCGM 101 clause 8 (half a unit of that digit): 2, 1, or 0 where they do
+	// not agree. Agrees is Digits > 0. Tolerance is that at Digits (at 1 where
+	// they do not agree). Noise is the standard error of Lo and Hi themselves,
+	// as far as this many draws know them; twice that is granted beside it.
+	Digits    int
 	Agrees    bool
 	Tolerance float64
 	Noise     float64
