@@ -128,8 +128,8 @@ func (b *builder) with(q *analysis.Q) string {
 
 // mostDecimals bounds what is shown of a value that stands without its
 // uncertainty: a sag that is a mean shows one more than the gauges' 0.001 mm, a
-// ratio three.
-var mostDecimals = map[string]int{"mm": 4, "in": 5, "": 3}
+// ratio three, a percentage one.
+var mostDecimals = map[string]int{"mm": 4, "in": 5, "": 3, "%": 1}
 
 // bounded is figure's value with no more decimals than its kind is worth.
 func (b *builder) bounded(q *analysis.Q) figure {
