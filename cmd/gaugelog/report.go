@@ -41,7 +41,7 @@ RUN/report/report.html (or .pdf and so on) unless --output names another place.
 What lies in RUN/report/ can always be made again and is replaced.
 
   html   one self-contained page, for screens of any size and for print
-  pdf    for print, on A4 or Letter
+  pdf    for print, on A4 or Letter; not tagged for those who listen: take html
   md     Markdown, plots by their captions
   json   the result as ` + "`analyse --json`" + ` prints it
   csv    the tables, one block each, for spreadsheets

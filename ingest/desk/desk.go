@@ -12,6 +12,7 @@ import (
 	"gaugelog/device"
 	"gaugelog/ingest"
 	"gaugelog/ingest/alarm"
+	"gaugelog/ingest/forward"
 	"gaugelog/ingest/rollup"
 	"gaugelog/ingest/segment"
 )
@@ -30,6 +31,9 @@ type Options struct {
 	Ports func() []device.PortStats
 	// Queued counts the readings before the recorder; nil: not known.
 	Queued func() int
+	// Forward tells how far sending to a server is, nil for none; a nil
+	// function: the run is sent nowhere.
+	Forward func() *forward.State
 	// Happen writes an event; see [ingest.Runner.Happen].
 	Happen func(ingest.Happening) bool
 	// Mark enters a mark; see [ingest.Dir.AppendMark].
@@ -190,7 +194,8 @@ func (d *Desk) Run(ctx context.Context) {
 	if d.o.Analyse != nil {
 		d.background.Go(func() { d.watchOutlook(ctx) })
 	}
-	d.background.Go(func() { d.rebuild(ctx) })
+	origin := d.book.Origin
+	d.background.Go(func() { d.rebuild(ctx, origin) })
 	ticker := time.NewTicker(time.Second)
 	defer ticker.Stop()
 	for {

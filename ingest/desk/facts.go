@@ -37,7 +37,18 @@ func (d *Desk) facts(now time.Time, s *ingest.Status) []alarm.Fact {
 	f = append(f, d.sagFacts(now, snapshot.Gauges)...)
 	f = append(f, d.analysisFacts(now)...)
 	f = append(f, d.temperatureFacts(s)...)
-	return append(f, d.machineFacts(s)...)
+	f = append(f, d.machineFacts(s)...)
+	return append(f, d.forwardFact(snapshot))
+}
+
+// forwardFact asks for an alarm where the sending to a server waits for a
+// person. A server that is merely absent is tried for ever and needs none.
+func (d *Desk) forwardFact(s *Snapshot) alarm.Fact {
+	f := alarm.Fact{Cause: "forward", Wish: alarm.Over}
+	if s.Forward != nil && s.Forward.Held {
+		f.Wish, f.Text = alarm.Raise, "the readings do not reach the server: "+s.Forward.Words
+	}
+	return f
 }
 
 func (d *Desk) silentFacts(s *ingest.Status) []alarm.Fact {

@@ -43,6 +43,9 @@ func (d *Desk) publish(now time.Time) {
 	if d.o.Ports != nil {
 		s.Ports = d.o.Ports()
 	}
+	if d.o.Forward != nil {
+		s.Forward = d.o.Forward()
+	}
 	if d.o.Queued != nil {
 		s.Queued = d.o.Queued()
 	}

@@ -40,12 +40,13 @@ type bookResult struct {
 
 // rebuild brings back what was recorded before this process began: the stored
 // book, and from the folder what is newer than it.
-func (d *Desk) rebuild(ctx context.Context) {
+func (d *Desk) rebuild(ctx context.Context, origin int64) {
 	names := seriesNames(d.o.Rig)
 	book := d.loadBook(names)
 	found := book != nil
 	if !found {
 		book = rollup.NewBook(names...)
+		book.SetOrigin(origin) // one pass brings everything
 	}
 	err := d.readFolder(ctx, book, book.Until+1, d.o.Start.Wall-1)
 	select {
@@ -122,7 +123,9 @@ func (d *Desk) merge(ctx context.Context, r bookResult) {
 		if r.anew {
 			d.stored = time.Unix(0, 0) // due at once: the next start shall not read everything again
 		}
-		d.adopt(r.whole.Origin)
+		if !r.anew { // then it may have been found in the readings
+			d.adopt(r.whole.Origin)
+		}
 		d.setLoads()
 		// Its Since bins count from another load where one was marked meanwhile.
 		d.baseline.reread = d.baseline.reread || d.book.Origin != 0 && r.whole.Origin != d.book.Origin

@@ -6,6 +6,7 @@ import (
 	"gaugelog/device"
 	"gaugelog/ingest"
 	"gaugelog/ingest/alarm"
+	"gaugelog/ingest/forward"
 	"gaugelog/ingest/rollup"
 )
 
@@ -20,9 +21,12 @@ type Snapshot struct {
 	// the bins (not the recording) lost because they came too fast.
 	Queued int
 	Missed int64
-	Gauges []Gauge
-	Probes []ingest.Last
-	Loads  Loads
+	// Forward is how far sending to a server is; nil where the run is sent
+	// nowhere, or where that is not known yet.
+	Forward *forward.State
+	Gauges  []Gauge
+	Probes  []ingest.Last
+	Loads   Loads
 	// Marks are all marks in the order entered; Withdrawn says why one does
 	// not count, by id.
 	Marks     []ingest.Mark
