@@ -31,6 +31,7 @@ type feeder struct {
 type fedGauge struct {
 	name          string
 	master, slave *os.File
+	fd            int // of master; its Fd would make it block again
 	next          atomic.Int64
 	pending       []byte
 }
@@ -65,10 +66,11 @@ func openFeeder(gauges, rate int, base int64) (*feeder, error) {
 		if _, err := term.MakeRaw(int(slave.Fd())); err != nil {
 			return nil, err
 		}
-		if err := unix.SetNonblock(int(master.Fd()), true); err != nil {
+		fd := int(master.Fd())
+		if err := unix.SetNonblock(fd, true); err != nil {
 			return nil, err
 		}
-		g := &fedGauge{name: fmt.Sprintf("g%d", i), master: master, slave: slave}
+		g := &fedGauge{name: fmt.Sprintf("g%d", i), master: master, slave: slave, fd: fd}
 		g.next.Store(base)
 		f.gauges = append(f.gauges, g)
 	}
@@ -102,7 +104,7 @@ func (g *fedGauge) send() {
 	if len(g.pending) == 0 {
 		g.pending = fmt.Appendf(g.pending, "%+09.3f\r\n", float64(g.next.Add(1))/1000)
 	}
-	n, err := unix.Write(int(g.master.Fd()), g.pending)
+	n, err := unix.Write(g.fd, g.pending)
 	if err != nil && !errors.Is(err, unix.EAGAIN) {
 		return
 	}
