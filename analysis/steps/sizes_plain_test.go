@@ -3,8 +3,8 @@
 package steps
 
 const (
-	stepsUsual = 60
-	calmUsual  = 4
-	foulUsual  = 12
+	stepsUsual = 40
+	calmUsual  = 3
+	foulUsual  = 8
 	calmDays   = 3
 )

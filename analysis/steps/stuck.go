@@ -98,27 +98,27 @@ func (r *run) judgeStill(s stuck) (stuck, bool) {
 }
 
 // unlikeItself says that a gauge which otherwise scatters from count to count
-// stood still five times longer than ever else.
+// stood still for five times more readings than ever else.
 func (r *run) unlikeItself(s stuck) bool {
 	seq := r.gauges[s.gauge].seq
-	longest, bins, rest := 0, 0, 0
+	longest, held, rest := 0, 0, 0
 	for i := 0; i < len(seq); {
-		j := i + 1
+		j, n := i+1, seq[i].n
 		for j < len(seq) && seq[i].min == seq[i].max && seq[j].min == seq[i].min && seq[j].max == seq[i].min {
+			n += seq[j].n
 			j++
 		}
-		switch {
-		case seq[i].from >= s.from && seq[i].to <= s.to:
-			bins += j - i
-		case seq[i].min == seq[i].max && seq[i].n > 1:
-			longest = max(longest, j-i)
-			fallthrough
-		default:
-			rest += j - i
+		if seq[i].from >= s.from && seq[i].to <= s.to {
+			held += n
+		} else {
+			rest += n
+			if seq[i].min == seq[i].max {
+				longest = max(longest, n)
+			}
 		}
 		i = j
 	}
-	return bins >= heldBins && rest >= 3*heldBins && bins >= 5*max(longest, 1)
+	return held >= 10*stillReadings && rest >= 3*held/10 && held >= 5*longest
 }
 
 // oftenStill says that a gauge is still at other times too, as long, while the
