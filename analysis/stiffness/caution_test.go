@@ -99,6 +99,28 @@ func TestApparentModulusOfLoopOfLoads(t *testing.T) {
 	relative(t, "apparent modulus", e.ApparentModulus.Value, 11800, 1e-4)
 }
 
+// The factor for large sags against the exact shape of a beam on two fixed
+// knives with vertical reactions under a centre load: the curvature is M/EI, so
+// the sine of its angle is the straight-beam slope, integrated here by
+// trapezoids.
+func TestLargeDeflectionFactor(t *testing.T) {
+	for _, steep := range []float64{0.02, 0.06, 0.12} { // slope at the knives
+		const n = 200_000
+		bent, straight := 0.0, 0.0
+		slope := func(i int) float64 { // P (L^2 - 4 x^2)/(16 EI), x to the middle
+			x := float64(i) / n
+			return steep * (1 - x*x)
+		}
+		for i := range n {
+			a, b := slope(i), slope(i+1)
+			straight += (a + b) / 2 / (2 * n)
+			bent += (math.Tan(math.Asin(a)) + math.Tan(math.Asin(b))) / 2 / (2 * n)
+		}
+		got, want := LargeDeflection(straight), bent/straight-1
+		relative(t, "factor", got, want, 2*steep*steep)
+	}
+}
+
 func scale(in *Input, step int, by float64) {
 	for i := range in.Steps[step].Gauges {
 		in.Steps[step].Gauges[i].MM *= by

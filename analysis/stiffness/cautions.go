@@ -120,7 +120,12 @@ func (e *Estimate) shapeCautions() {
 		}
 	}
 	if worst > l/50 {
-		e.warn("large-deflection", "", "the sag of step %s is 1/%.0f of the span: under a centre load it would be %.2f %% greater than straight-beam theory has it; not corrected", name, l/worst, 100*LargeDeflection(worst/l))
+		text := "not corrected, because it hangs on how the supports let the beam slide"
+		if worst > l/20 {
+			text = "beyond 1/20 of the span the modulus is not to be used: load less, or take a shorter span"
+		}
+		e.warn("large-deflection", "", "the sag of step %s is 1/%.0f of the span: under a centre load on fixed knives it would be %.2f %% greater than straight-beam theory has it, and the modulus up to as much too low; %s",
+			name, l/worst, 100*LargeDeflection(worst/l), text)
 	}
 }
 
