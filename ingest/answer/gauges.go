@@ -84,6 +84,8 @@ func (w speaker) gauges() []GaugeRow {
 			r.At += ", sees a " + g.Sees
 		}
 		switch {
+		case g.Seen && w.s.Status.Closed:
+			r.Tone = Tone{Unknown.Class, "ended"}
 		case g.Silent:
 			r.Tone = Tone{Abnormal.Class, "silent"}
 		case !g.Seen:
@@ -107,6 +109,9 @@ func (w speaker) gauges() []GaugeRow {
 		}
 		if !g.RunsOut.IsZero() {
 			r.Until = w.date(g.RunsOut)
+		}
+		if w.s.Status.Closed {
+			r.Until = ""
 		}
 		if o := w.s.Outlook; o != nil {
 			for _, s := range o.Sag {

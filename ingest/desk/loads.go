@@ -37,7 +37,7 @@ func (d *Desk) setLoads() {
 		l.Since, l.Found = time.Unix(0, d.found), true
 	}
 	if !d.book.SetOrigin(unix(l.Since)) {
-		d.baseline.reread = true
+		d.baseline.since = true
 	}
 	if first := unix(l.First); first != d.baseline.before || !d.baseline.asked {
 		d.baseline.before, d.baseline.reread = first, true

@@ -31,7 +31,7 @@ func (d *Desk) publish(now time.Time) {
 		Outlook: d.outlook.outlook, OutlookTried: d.outlook.at,
 		Rebuilding: d.rebuilding, Onlooking: d.o.Alarms != nil,
 	}
-	s.Whole = !d.rebuilding && !d.baseline.reread && !d.baseline.busy && (d.o.Analyse == nil || !d.outlook.at.IsZero())
+	s.Whole = !d.rebuilding && !d.baseline.reread && !d.baseline.since && !d.baseline.busy && (d.o.Analyse == nil || !d.outlook.at.IsZero())
 	if s.Onlooking {
 		s.Alarms, s.PastAlarms = d.o.Alarms()
 	} else {

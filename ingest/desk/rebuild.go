@@ -25,7 +25,8 @@ type baseline struct {
 	values []float64
 	known  []bool
 	asked  bool // it was looked for in the folder
-	reread bool // it, or the readings since the last load, must be read
+	reread bool // it must be read
+	since  bool // the readings since the last load must be read, all of them
 	busy   bool
 }
 
@@ -123,12 +124,12 @@ func (d *Desk) merge(ctx context.Context, r bookResult) {
 		if r.anew {
 			d.stored = time.Unix(0, 0) // due at once: the next start shall not read everything again
 		}
-		if !r.anew { // then it may have been found in the readings
+		if !r.anew && r.whole.Origin != unix(d.loads.Since) { // it was found in the readings
 			d.adopt(r.whole.Origin)
 		}
 		d.setLoads()
 		// Its Since bins count from another load where one was marked meanwhile.
-		d.baseline.reread = d.baseline.reread || d.book.Origin != 0 && r.whole.Origin != d.book.Origin
+		d.baseline.since = d.baseline.since || d.book.Origin != 0 && r.whole.Origin != d.book.Origin
 		if err := d.book.Merge(r.whole); err != nil {
 			d.o.Log.Error("the stored bins do not fit", "error", err)
 		}
@@ -147,20 +148,21 @@ func (d *Desk) merge(ctx context.Context, r bookResult) {
 
 // readAgain starts a pass over the folder where one is due.
 func (d *Desk) readAgain(ctx context.Context) {
-	if !d.baseline.reread || d.baseline.busy || d.rebuilding {
+	if !d.baseline.reread && !d.baseline.since || d.baseline.busy || d.rebuilding {
 		return
 	}
-	d.baseline.reread, d.baseline.busy = false, true
+	since := d.baseline.since
+	d.baseline.reread, d.baseline.since, d.baseline.busy = false, false, true
 	origin, before := d.book.Origin, d.baseline.before
-	d.background.Go(func() { d.reread(ctx, origin, before) })
+	d.background.Go(func() { d.reread(ctx, origin, before, since) })
 }
 
 // reread brings the readings since an origin, and the baseline before the
 // first load, from the folder.
-func (d *Desk) reread(ctx context.Context, origin, before int64) {
+func (d *Desk) reread(ctx context.Context, origin, before int64, since bool) {
 	out := bookResult{base: baseline{before: before, asked: true}}
 	now := time.Now().UnixNano()
-	if origin != 0 {
+	if since && origin != 0 {
 		out.since = rollup.NewBook(seriesNames(d.o.Rig)...)
 		out.since.SetOrigin(origin)
 		out.err = d.readFolder(ctx, out.since, origin, now)
