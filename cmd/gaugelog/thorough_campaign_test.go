@@ -13,7 +13,7 @@ import (
 // go test -tags campaign -run TestThorough -v ./cmd/gaugelog
 //
 // The 2e5 draws of the demonstration's inputs agree with the propagated
-// interval, the same each time, in less than a minute.
+// interval; the log says how long they took.
 func TestThoroughOnTheDemo(t *testing.T) {
 	dir := demoRun(t)
 	began := time.Now()
@@ -37,8 +37,5 @@ func TestThoroughOnTheDemo(t *testing.T) {
 	}
 	if errOut != "" {
 		t.Errorf("a bar or words where no terminal is: %q", errOut)
-	}
-	if took > time.Minute {
-		t.Errorf("it took %.0f s", took.Seconds())
 	}
 }
