@@ -9,7 +9,7 @@ import (
 // AlarmCauses lists what an alarm can be raised for, gravest first.
 var AlarmCauses = []string{
 	"clear-area", "sag", "catcher", "span-over-sag", "caution", "load-changed", "knock",
-	"travel", "silent", "frozen", "temperature", "disk", "clock",
+	"travel", "silent", "frozen", "temperature", "disk", "clock", "forward",
 }
 
 // Alarms says which alarms are wanted, where their thresholds lie and who is

@@ -62,11 +62,6 @@ func (r *recording) openBeside(f pageFlags, logger *slog.Logger, out io.Writer) 
 		if names[name]++; names[name] > 1 {
 			name = fmt.Sprintf("%s-%d", name, names[name])
 		}
-		d, err := b.openDesk(r, i, name, logger)
-		if err != nil {
-			return nil, err
-		}
-		b.desks = append(b.desks, d)
 		s, err := openSending(rig, r.runs[i], r.dirs[i].FS(), logger)
 		if err != nil {
 			return nil, err
@@ -74,6 +69,11 @@ func (r *recording) openBeside(f pageFlags, logger *slog.Logger, out io.Writer) 
 		if s != nil {
 			b.sendings = append(b.sendings, s)
 		}
+		d, err := b.openDesk(r, i, name, logger, s)
+		if err != nil {
+			return nil, err
+		}
+		b.desks = append(b.desks, d)
 	}
 	if f.address == "" {
 		if f.open || f.tokenFile != "" {
@@ -107,7 +107,7 @@ func (r *recording) openBeside(f pageFlags, logger *slog.Logger, out io.Writer) 
 	return b, nil
 }
 
-func (b *beside) openDesk(r *recording, i int, name string, logger *slog.Logger) (*desk.Desk, error) {
+func (b *beside) openDesk(r *recording, i int, name string, logger *slog.Logger, s *sending) (*desk.Desk, error) {
 	rig, dir, rec, run := r.rigs[i], r.dirs[i], r.recs[i], r.runs[i]
 	g, _, err := stiffness.GravityOf(rig.Gravity)
 	if err != nil {
@@ -120,6 +120,7 @@ func (b *beside) openDesk(r *recording, i int, name string, logger *slog.Logger)
 		Happen:  func(h ingest.Happening) bool { return b.runner.Happen(i, h) },
 		Mark:    func(m ingest.Mark) (string, error) { return dir.AppendMark(m, ingest.SystemClock{}) },
 		Queued:  b.queued,
+		Forward: s.state,
 		Ports:   func() []device.PortStats { return b.portsOf(rig) },
 		Analyse: outlookOf(run), AnalyseFirst: firstAnalysis,
 		Outbox: outbox, Start: r.start, Log: logger,

@@ -89,7 +89,7 @@ func runForward(cmd *cobra.Command, run string, f forwardFlags) error {
 	}
 	began := time.Now()
 	fw, err := forward.Open(forward.Options{FS: dir.FS(), State: f.state, Target: target, Rig: f.rig, Run: f.run,
-		Program: "gaugelog", Lines: f.lines, Tell: tellForward(cmd.ErrOrStderr())})
+		Program: "gaugelog", Token: func() (string, error) { return tokenOf(f.tokenFile) }, Lines: f.lines, Tell: tellForward(cmd.ErrOrStderr())})
 	if err != nil {
 		return err
 	}

@@ -65,6 +65,8 @@ type recording struct {
 	start device.Instant
 	// syncs measures how long the disk takes.
 	syncs *metrics.Syncs
+	// clock is nil for the machine's own.
+	clock ingest.Clock
 }
 
 func runRecord(cmd *cobra.Command, rigFiles []string, f recordFlags) (err error) {
@@ -141,7 +143,7 @@ func (r *recording) openOne(rig *config.Rig, text []byte, run string) error {
 	rec, err := ingest.Open(ingest.Options{
 		FS: r.syncs.Over(dir.FS(), rig.Specimen.Name), Lock: dir.Lock(fmt.Sprintf("gaugelog record, process %d", os.Getpid())),
 		Rig: rig, RigBytes: text, Amendments: len(amendments), Program: version(),
-		Clock: ingest.SystemClock{}, Start: ingest.SystemClock{}.Now(), Live: true, Compress: true,
+		Clock: r.clocks(), Start: ingest.SystemClock{}.Now(), Live: true, Compress: true,
 		DiskFree: dir.DiskFree, LeastFree: leastFree,
 	})
 	if err != nil {
@@ -149,6 +151,13 @@ func (r *recording) openOne(rig *config.Rig, text []byte, run string) error {
 	}
 	r.rigs, r.recs, r.runs = append(r.rigs, rig), append(r.recs, rec), append(r.runs, run)
 	return nil
+}
+
+func (r *recording) clocks() ingest.Clock {
+	if r.clock == nil {
+		return ingest.SystemClock{}
+	}
+	return r.clock
 }
 
 // leastFree is the room a recording needs before it begins, bytes: a few
@@ -175,7 +184,7 @@ func (r *recording) run(ctx context.Context, cmd *cobra.Command, opener device.O
 		return wrong(err, mendOf(err))
 	}
 	runner, err := ingest.NewRunner(ingest.RunnerOptions{
-		Recorders: r.recs, Clock: ingest.SystemClock{}, PortsTried: bank.Tried(),
+		Recorders: r.recs, Clock: r.clocks(), PortsTried: bank.Tried(),
 		Ready: func() {
 			for _, run := range r.runs {
 				fmt.Fprintf(cmd.OutOrStdout(), "recording %s\n", run)

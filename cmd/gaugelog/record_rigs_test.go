@@ -150,11 +150,17 @@ func ending(t *testing.T, args ...string) Code {
 // recordFor records as the command does until the context ends, as Ctrl-C has it.
 func recordFor(t *testing.T, ctx context.Context, files []string, into string, opener device.Opener) string {
 	t.Helper()
+	return recordBy(t, ctx, nil, files, into, opener)
+}
+
+// recordBy does so by a clock, nil for the machine's own.
+func recordBy(t *testing.T, ctx context.Context, clock ingest.Clock, files []string, into string, opener device.Opener) string {
+	t.Helper()
 	cmd := recordCommand()
 	var out, errOut bytes.Buffer
 	cmd.SetOut(&out)
 	cmd.SetErr(&errOut)
-	r := &recording{start: ingest.SystemClock{}.Now(), syncs: metrics.NewSyncs()}
+	r := &recording{start: ingest.SystemClock{}.Now(), syncs: metrics.NewSyncs(), clock: clock}
 	defer func() {
 		if err := r.close(); err != nil {
 			t.Error(err)

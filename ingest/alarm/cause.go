@@ -47,6 +47,7 @@ var rules = map[string]rule{
 	"temperature":   {Abnormal, 5 * time.Minute, 5 * time.Minute, "Look at the room's heating and windows."},
 	"disk":          {Abnormal, 5 * time.Second, time.Minute, "Free space on the disk or replace it; readings wait in memory for a time only."},
 	"clock":         {Abnormal, 10 * time.Minute, time.Minute, "Connect the time server; stamps are put right later if the clock is set in this boot."},
+	"forward":       {Abnormal, 10 * time.Second, time.Minute, "Mend the address, the token or the rights at the server; nothing is lost, and what waits is sent then."},
 }
 
 // LevelOf is how grave a cause is.

@@ -7,6 +7,7 @@ import (
 
 	"gaugelog/ingest/alarm"
 	"gaugelog/ingest/desk"
+	"gaugelog/ingest/forward"
 )
 
 // AlarmRow is one alarm of the list. Seen and Over are empty until it was seen,
@@ -38,6 +39,23 @@ func (w speaker) alarm(a alarm.Alarm) AlarmRow {
 
 // oldSync is when the last completed sync is called old.
 const oldSync = time.Minute
+
+// sending says how far the run is at the server it is sent to.
+func (w speaker) sending(f *forward.State) Fact {
+	switch {
+	case f.Held:
+		return Fact{"Sent to the server", "held: " + f.Words, Abnormal}
+	case f.Words != "":
+		return Fact{"Sent to the server", "the server is not there or busy; what waits is sent later", Tone{}}
+	case f.Refused > 0:
+		return Fact{"Sent to the server", count(f.Refused) + " lines refused and set aside", Abnormal}
+	case f.Newest == 0 && f.Count.Held > 0:
+		return Fact{"Sent to the server", count(f.Count.Held) + " readings wait until the machine's clock is set", Abnormal}
+	case f.Newest == 0:
+		return Fact{"Sent to the server", "nothing since this start", Tone{}}
+	}
+	return Fact{"Sent to the server", "up to " + w.day(time.Unix(0, f.Newest)), Normal}
+}
 
 func (w speaker) machine() []Fact {
 	s := w.s.Status
@@ -76,6 +94,9 @@ func (w speaker) machine() []Fact {
 	}
 	if s.Waiting > 0 {
 		out = append(out, Fact{"Waiting for the disk", count(int64(s.Waiting)) + " readings", Normal})
+	}
+	if f := w.s.Forward; f != nil {
+		out = append(out, w.sending(f))
 	}
 	if m := w.lastMark(); m != nil {
 		out = append(out, Fact{"Last mark", MarkWords(*m) + ", " + w.day(time.Unix(0, m.Time)), Tone{}})

@@ -42,6 +42,9 @@ type Options struct {
 	// State is the folder that holds the cursor and the refused lines.
 	State  string
 	Target *Target
+	// Token reads the token anew where access is refused, so that one that was
+	// put right is taken up; nil: it stays.
+	Token func() (string, error)
 	// Rig and Run are the tags added to each line; Run "" is the run's id.
 	Rig, Run string
 	Program  string
@@ -85,6 +88,8 @@ type Forwarder struct {
 	refusals int // in a row
 	count    Count
 	board    board
+	// whole are the segments sent to their end, to which nothing is added.
+	whole map[string]bool
 }
 
 // Open takes up where an earlier forwarding of the run to this server ended.
@@ -105,7 +110,7 @@ func Open(o Options) (*Forwarder, error) {
 	if o.Wait == nil {
 		o.Wait = sleep
 	}
-	f := &Forwarder{o: o, client: o.Client, bytes: o.Bytes, zip: newZip(), pause: backoff.NewExponentialBackOff()}
+	f := &Forwarder{o: o, client: o.Client, bytes: o.Bytes, zip: newZip(), pause: backoff.NewExponentialBackOff(), whole: map[string]bool{}}
 	if f.client == nil {
 		f.client = newClient()
 	}

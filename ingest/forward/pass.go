@@ -50,11 +50,22 @@ func (f *Forwarder) pass(ctx context.Context) error {
 	names := d.Names()
 	n := &newest{f: f}
 	for i, name := range names {
-		f.board.change(func(s *State) { s.Segments = len(names) - i })
+		if f.whole[name] {
+			continue
+		}
+		f.behind()
 		n.instead = name
-		if err := f.file(ctx, d, name, n.share); err != nil {
+		err := f.file(ctx, d, name, n.share)
+		if errors.Is(err, fs.ErrNotExist) { // it was compressed since the folder was opened
+			if d, err = segment.OpenFolder(f.o.FS); err == nil {
+				err = f.file(ctx, d, name, n.share)
+			}
+		}
+		if err != nil {
 			return err
 		}
+		// A segment is closed before the next begins.
+		f.whole[name] = i < len(names)-1
 	}
 	f.board.change(func(s *State) { s.Segments = 0 })
 	return nil
@@ -75,7 +86,9 @@ func (f *Forwarder) logs(ctx context.Context, d *segment.Folder) error {
 type newest struct {
 	f       *Forwarder
 	instead string // the segment being sent
-	signed  string
+	signed  string // all was sent when the folder looked like this
+	folder  *segment.Folder
+	opened  string // the folder looked like this when it was opened
 }
 
 // errEnough ends the sending of a file that has had its turn.
@@ -90,18 +103,24 @@ func (n *newest) share(ctx context.Context) error {
 	if now == n.signed {
 		return nil // all of it was sent, and nothing has come since
 	}
-	d, err := segment.OpenFolder(n.f.o.FS)
-	if err != nil {
-		return err
+	if n.folder == nil || now != n.opened {
+		if n.folder, err = segment.OpenFolder(n.f.o.FS); err != nil {
+			return err
+		}
+		n.opened = now
+		if err := n.f.logs(ctx, n.folder); err != nil {
+			return err
+		}
 	}
-	if err := n.f.logs(ctx, d); err != nil {
-		return err
-	}
-	names := d.Names()
+	names := n.folder.Names()
 	if last := names[len(names)-1]; last != n.instead {
-		err = n.f.file(ctx, d, last, func(context.Context) error { return errEnough })
+		err = n.f.file(ctx, n.folder, last, func(context.Context) error { return errEnough })
 	}
-	if errors.Is(err, errEnough) {
+	switch {
+	case errors.Is(err, errEnough):
+		return nil
+	case errors.Is(err, fs.ErrNotExist):
+		n.folder = nil // it was compressed since
 		return nil
 	}
 	n.signed = now

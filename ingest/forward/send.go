@@ -88,7 +88,14 @@ func (f *Forwarder) wait(ctx context.Context, a answer) error {
 	if a.verdict == busy && a.after > 0 {
 		d = a.after
 	}
-	f.count.Retries++
+	if f.count.Retries++; a.verdict == refused && f.o.Token != nil {
+		if token, err := f.o.Token(); err != nil {
+			a.words += "; the token cannot be read again: " + err.Error()
+		} else if err := f.o.Target.Renew(token); err != nil {
+			a.words += "; the token as it is now: " + err.Error()
+		}
+	}
+	f.behind()
 	f.tell(Notice{Held: a.verdict == refused, Words: a.words, Wait: d})
 	return f.o.Wait(ctx, d)
 }

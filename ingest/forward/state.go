@@ -1,6 +1,12 @@
 package forward
 
-import "sync"
+import (
+	"path"
+	"strings"
+	"sync"
+
+	"gaugelog/ingest/segment"
+)
 
 // State is how far forwarding is, for those who look on.
 type State struct {
@@ -34,6 +40,22 @@ func (f *Forwarder) State() State {
 	f.board.mu.Lock()
 	defer f.board.mu.Unlock()
 	return f.board.s
+}
+
+// behind counts the segments that are not known to be sent to their end.
+func (f *Forwarder) behind() {
+	entries, err := f.o.FS.ReadDir(segment.ReadingsDir)
+	if err != nil {
+		return // the pass says so
+	}
+	left := map[string]bool{}
+	for _, e := range entries {
+		name := path.Join(segment.ReadingsDir, strings.TrimSuffix(e.Name(), ".zst"))
+		if strings.HasSuffix(name, ".lp") && !f.whole[name] {
+			left[name] = true
+		}
+	}
+	f.board.change(func(s *State) { s.Segments = len(left) })
 }
 
 // noted keeps what a notice says.

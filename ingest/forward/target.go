@@ -14,6 +14,18 @@ type Target struct {
 	URL *url.URL
 	// auth is the value of the Authorization header, "" for none.
 	auth string
+	// plain allows a token over plain http to anywhere.
+	plain bool
+}
+
+// Renew takes another token, by the rules of ParseTarget; what it refuses
+// leaves the old one. Not safe while a Forwarder of another goroutine sends.
+func (t *Target) Renew(token string) error {
+	auth, err := Authorization(t.URL, token, t.plain)
+	if err == nil {
+		t.auth = auth
+	}
+	return err
 }
 
 // ParseTarget reads a write address, such as http://host:8086/write?db=lab or
@@ -38,9 +50,8 @@ func ParseTarget(address, token string, plain bool) (*Target, error) {
 	}
 	q.Set("precision", "ns")
 	u.RawQuery = q.Encode()
-	t := &Target{URL: u}
-	t.auth, err = Authorization(u, token, plain)
-	return t, err
+	t := &Target{URL: u, plain: plain}
+	return t, t.Renew(token)
 }
 
 // ShowsNothing refuses an address with a user, a password or a token in it,

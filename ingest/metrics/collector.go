@@ -9,6 +9,7 @@ import (
 	"github.com/prometheus/client_golang/prometheus/promhttp"
 
 	"gaugelog/ingest/desk"
+	"gaugelog/ingest/forward"
 )
 
 func describe(name, help string, labels ...string) *prometheus.Desc {
@@ -36,8 +37,16 @@ var (
 	dropped       = describe("dropped_readings_total", "Readings lost for want of room since the start.")
 	clockSynced   = describe("clock_synchronized", "1 where a time source keeps the wall clock.")
 	alarms        = describe("alarms", "Raised alarms by cause.", "cause", "level")
+	sendBehind    = describe("forward_segments_behind", "Segments of which something is still to be sent to the server.")
+	sendAge       = describe("forward_newest_age_seconds", "Age of the newest reading that the server took since the start.")
+	sendLines     = describe("forward_sent_lines_total", "Lines that the server took, those sent again counted again.")
+	sendRefused   = describe("forward_refused_lines_total", "Lines that the server refused and that were set aside.")
+	sendHeldBack  = describe("forward_unset_readings_total", "Readings kept back until their clock is known.")
+	sendRetries   = describe("forward_retries_total", "Times that the sending waited to try again.")
+	sendHeld      = describe("forward_held", "1 while the sending waits for a person: the server refuses access.")
 	all           = []*prometheus.Desc{gaugeAge, gaugeShows, gaugeSilent, gaugeTravel, probeCelsius, probeHumidity, portOpen, portFrames,
-		portRejects, portReconnect, portBytes, diskFree, diskFault, syncAge, queueLength, waiting, stored, dropped, clockSynced, alarms}
+		portRejects, portReconnect, portBytes, diskFree, diskFault, syncAge, queueLength, waiting, stored, dropped, clockSynced, alarms,
+		sendBehind, sendAge, sendLines, sendRefused, sendHeldBack, sendRetries, sendHeld}
 )
 
 // Collector reads the desks when it is asked.
@@ -76,6 +85,9 @@ func (c *Collector) Collect(out chan<- prometheus.Metric) {
 		e.counter(stored, s.Status.Stored)
 		e.counter(dropped, s.Status.Dropped)
 		e.gauge(clockSynced, truth(s.Status.ClockSynchronised))
+		if s.Forward != nil {
+			e.forward(s.At, s.Forward)
+		}
 		count := map[[2]string]int{}
 		for _, a := range s.Alarms {
 			count[[2]string{a.Cause, a.Level.String()}]++
@@ -98,6 +110,18 @@ func (e emitter) gauge(d *prometheus.Desc, v float64, labels ...string) {
 
 func (e emitter) counter(d *prometheus.Desc, n int64, labels ...string) {
 	e.out <- prometheus.MustNewConstMetric(d, prometheus.CounterValue, float64(n), append([]string{e.rig}, labels...)...)
+}
+
+func (e emitter) forward(now time.Time, f *forward.State) {
+	e.gauge(sendBehind, float64(f.Segments))
+	if f.Newest != 0 {
+		e.gauge(sendAge, max(0, now.Sub(time.Unix(0, f.Newest)).Seconds()))
+	}
+	e.counter(sendLines, f.Sent)
+	e.counter(sendRefused, f.Refused)
+	e.counter(sendHeldBack, f.Count.Held)
+	e.counter(sendRetries, f.Retries)
+	e.gauge(sendHeld, truth(f.Held))
 }
 
 func (e emitter) instruments(s *desk.Snapshot) {
