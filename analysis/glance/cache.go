@@ -58,7 +58,11 @@ func LookAgain(fsys segment.FS, load func([]byte) (*config.Rig, error)) (*Summar
 func keyOf(fsys segment.FS, rig []byte) (string, error) {
 	h := sha256.New()
 	h.Write(rig)
-	entries, err := ends{fsys}.ReadDir(segment.ReadingsDir)
+	names, err := segmentsOf(fsys)
+	if err != nil {
+		return "", err
+	}
+	entries, err := some{fsys, names.ends()}.ReadDir(segment.ReadingsDir)
 	if err != nil && !errors.Is(err, fs.ErrNotExist) {
 		return "", err
 	}
@@ -79,7 +83,7 @@ func keyOf(fsys segment.FS, rig []byte) (string, error) {
 		}
 		fmt.Fprintln(h, name, size)
 	}
-	return "3 " + hex.EncodeToString(h.Sum(nil)), nil
+	return "4 " + hex.EncodeToString(h.Sum(nil)), nil
 }
 
 func read(fsys segment.FS, name string) ([]byte, error) {

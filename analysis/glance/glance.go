@@ -1,9 +1,7 @@
 package glance
 
 import (
-	"io/fs"
 	"slices"
-	"sort"
 	"strings"
 	"time"
 
@@ -38,26 +36,17 @@ type Summary struct {
 // window is how long a stretch of readings a figure is the median of.
 const window = int64(10 * time.Minute)
 
-// ends shows a run folder without the segments in its middle.
-type ends struct{ segment.FS }
-
-// ReadDir lists the first segment and the last two.
-func (e ends) ReadDir(dir string) ([]fs.DirEntry, error) {
-	all, err := e.FS.ReadDir(dir)
-	if err != nil || dir != segment.ReadingsDir || len(all) <= 3 {
-		return all, err
-	}
-	sort.Slice(all, func(i, j int) bool { return all[i].Name() < all[j].Name() })
-	return append(slices.Clone(all[:1]), all[len(all)-2:]...), nil
-}
-
 // Look sums a run up. Its error is a folder that cannot be read.
 func Look(fsys segment.FS, rig *config.Rig) (*Summary, error) {
 	s := &Summary{Title: rig.Title, Specimen: rig.Specimen.Name, Gauge: rig.Read.CreepGauge}
 	if rig.Limits.Sag != nil {
 		s.SagLimitMM = &rig.Limits.Sag.Value
 	}
-	d, err := segment.OpenFolder(ends{fsys})
+	names, err := segmentsOf(fsys)
+	if err != nil {
+		return nil, err
+	}
+	d, err := segment.OpenFolder(some{fsys, names.ends()})
 	if err != nil {
 		return nil, err
 	}
@@ -77,6 +66,9 @@ func Look(fsys segment.FS, rig *config.Rig) (*Summary, error) {
 	}
 	s.First, s.Last = first, last
 	s.toGo(rig, marks)
+	if d, err = names.with(fsys, d, load-window, load, s.dayBefore(load), s.dayBefore(load)+window); err != nil {
+		return nil, err
+	}
 	return s, s.figures(d, rig, load)
 }
 
@@ -199,7 +191,7 @@ func (s *Summary) figures(d *segment.Folder, rig *config.Rig, load int64) error 
 			s.Gauge, s.SagMM = g.Name, &sag
 		}
 	}
-	day := max(s.Last-int64(24*time.Hour), load+window, s.First)
+	day := s.dayBefore(load)
 	n, there := now[s.Gauge]
 	if !there || s.Last-window-day < 3*window {
 		return nil
@@ -213,6 +205,12 @@ func (s *Summary) figures(d *segment.Folder, rig *config.Rig, load int64) error 
 	rate := (n.mm - b.mm) / s.RateOverS * 86400
 	s.RateMMPerDay = &rate
 	return nil
+}
+
+// dayBefore is where the window begins that the end is compared with: a day
+// before it, but after the load and within the run.
+func (s *Summary) dayBefore(load int64) int64 {
+	return max(s.Last-int64(24*time.Hour), load+window, s.First)
 }
 
 // scaleOf turns an indication into sag but for its zero: sense and gain.

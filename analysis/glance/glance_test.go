@@ -6,7 +6,9 @@ import (
 	"os"
 	"strings"
 	"testing"
+	"time"
 
+	"gaugelog/analysis/history/historytest"
 	"gaugelog/config"
 	"gaugelog/ingest/segment"
 )
@@ -109,5 +111,41 @@ func TestEmpty(t *testing.T) {
 	s, err := Look(segment.OSFS(root, segment.OSOptions{}), rig)
 	if err != nil || s.Last != 0 || s.SagMM != nil || s.RateMMPerDay != nil || s.DaysToGo != nil {
 		t.Errorf("%+v, %v", s, err)
+	}
+}
+
+// TestManySegments: a run in many segments shows what it shows in one, wherever
+// its first load and the day before its end lie.
+func TestManySegments(t *testing.T) {
+	var all [2]*Summary
+	for i, roll := range []int64{50_000, 50_000_000} {
+		root, err := os.OpenRoot(t.TempDir())
+		if err != nil {
+			t.Fatal(err)
+		}
+		defer root.Close()
+		fsys := segment.OSFS(root, segment.OSOptions{SyncOnCloseOnly: true})
+		run := historytest.Run{Gauges: 3, Readings: 30_000, Duration: 10 * 24 * time.Hour, Steps: 2, Compress: true, Roll: roll}
+		if err := run.Write(fsys); err != nil {
+			t.Fatal(err)
+		}
+		rig, err := config.Parse("rig.yaml", []byte(run.Rig()))
+		if err != nil {
+			t.Fatal(err)
+		}
+		names, err := segmentsOf(fsys)
+		if err != nil || i == 0 && len(names) < 20 {
+			t.Fatalf("%d segments, %v", len(names), err)
+		}
+		if all[i], err = Look(fsys, rig); err != nil {
+			t.Fatal(err)
+		}
+	}
+	many, one := all[0], all[1]
+	if one.SagMM == nil || one.RateMMPerDay == nil || many.SagMM == nil || many.RateMMPerDay == nil {
+		t.Fatalf("%+v\n%+v", many, one)
+	}
+	if *many.SagMM != *one.SagMM || *many.RateMMPerDay != *one.RateMMPerDay || many.Last != one.Last {
+		t.Errorf("sag %g and %g, rate %g and %g", *many.SagMM, *one.SagMM, *many.RateMMPerDay, *one.RateMMPerDay)
 	}
 }
