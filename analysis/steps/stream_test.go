@@ -30,7 +30,6 @@ type streamGauge struct {
 	// shows is what faults make of an indication; whole where it is not to be
 	// rounded any more.
 	shows func(t, v float64) (shown float64, whole bool)
-	odd   bool      // shows values that are no multiples of res
 	sharp []float64 // instants of its own faults, s
 }
 

@@ -3,9 +3,8 @@ package steps
 import (
 	"fmt"
 	"math"
+	"slices"
 	"sort"
-
-	"gaugelog/analysis/lsq"
 )
 
 // stuck is a stretch in which a gauge's indication did not move at all though
@@ -158,8 +157,8 @@ func (r *run) rawAt(g int, t int64) (float64, bool) {
 
 // shouldHave estimates from the other gauges that see the beam by how much a
 // gauge should have moved within a stretch, from its share of the marked
-// changes. The median over the others is taken, so that one knocked gauge
-// accuses nobody.
+// changes. The (lower) median over the others is taken, so that one knocked
+// gauge accuses nobody.
 func (r *run) shouldHave(g int, v interval) (float64, []int) {
 	var want []float64
 	var by []int
@@ -181,7 +180,8 @@ func (r *run) shouldHave(g int, v interval) (float64, []int) {
 	if len(want) == 0 {
 		return 0, nil
 	}
-	return lsq.Median(want), by
+	slices.Sort(want)
+	return want[(len(want)-1)/2], by // of two the lesser
 }
 
 // ratio is how far gauge g moves while gauge o moves 1, as a magnitude.
