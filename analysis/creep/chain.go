@@ -53,7 +53,7 @@ func (s *system) solveChain() (*solution, error) {
 	if err != nil {
 		return nil, err
 	}
-	s.fam.effective = x.Effective
+	s.fam.effective, s.fam.lambda = x.Effective, x.Lambda
 	sol := &solution{law: x.X[:law], zero: x.Zero[:law], chi2: x.Chi2, cov: mat.NewSymDense(law, nil)}
 	for i := range law {
 		for j := i; j < law; j++ {

@@ -136,9 +136,10 @@ type family struct {
 	logShape  bool
 	// lower and upper bound the search coordinate.
 	lower, upper float64
-	// taus of a chain, h, and the number of parameters its last fit used.
-	taus      []float64
-	effective float64
+	// taus of a chain, h, the number of parameters its last fit used, and its
+	// smoothing.
+	taus              []float64
+	effective, lambda float64
 }
 
 // familyOf returns a family for readings between tMin and tMax hours after a

@@ -1,7 +1,10 @@
 package creep
 
 import (
+	"cmp"
 	"math"
+	"slices"
+	"sort"
 
 	"gaugelog/analysis/lsq"
 )
@@ -34,13 +37,19 @@ type Limits struct {
 const (
 	cautionRatio = 1.25
 	clearRatio   = 1.5
-	standOut     = 6.5
 	begun        = 0.5
 	leastHistory = 4 // windows before a rate can be judged
 	// beforeEnd parts the time watched: what came before the end over this
 	// tells the steady course.
 	beforeEnd = 1.4
 )
+
+// standOut is by how much a window at an age, h, must stand out: the longer a
+// test is watched, the more windows there are one of which may do so by chance.
+func standOut(ageH float64) float64 {
+	const short, long = 400, 1600
+	return 5.5 + 1.5*min(max(math.Log(ageH/short)/math.Log(long/short), 0), 1)
+}
 
 // Watch looks for acceleration in the temperature-compensated sag (mm) of
 // one load, at ages in h (rising), with windows from 6 h on, each longer by half.
@@ -77,8 +86,15 @@ func watchSegment(age, sag []float64, origin float64, l Limits, out *Acceleratio
 	for w := 6.0; w <= age[len(age)-1]/float64(leastHistory); w *= 2 {
 		for _, v := range []float64{w, 1.5 * w} {
 			// Windows at several phases, so that none waits long for its end.
+			var phases [][]window
+			var all []window
 			for phase := 0.0; phase < v; phase += max(v/8, 3) {
-				watchScale(age, sag, v, phase, course, l, &own)
+				win := windows(age, sag, v, phase)
+				phases, all = append(phases, win), append(all, win...)
+			}
+			slices.SortFunc(all, func(a, b window) int { return cmp.Compare(a.endH, b.endH) })
+			for _, win := range phases {
+				watchScale(win, all, v, len(phases), course, l, &own)
 			}
 		}
 	}
@@ -183,9 +199,9 @@ func slope(x, y []float64) (float64, bool) {
 	return l.Slope, err == nil
 }
 
-// watchScale looks at one window length and keeps the earliest findings.
-func watchScale(age, sag []float64, w, phase float64, course *course, l Limits, out *Acceleration) {
-	win := windows(age, sag, w, phase)
+// watchScale looks at windows of one length w that do not overlap, all being
+// those at any of several phases, and keeps the earliest findings.
+func watchScale(win, all []window, w float64, phases int, course *course, l Limits, out *Acceleration) {
 	for i := 3; i < len(win); i++ {
 		end := win[i].endH
 		// What the sag did until then tells what it would go on to do: judged
@@ -194,11 +210,11 @@ func watchScale(age, sag []float64, w, phase float64, course *course, l Limits, 
 		if !ok {
 			continue
 		}
-		u := scatter(win[:i-1], steady, w)
+		u := scatter(all, steady, w, phases)
 		a, b := win[i-1].rate, win[i].rate
 		least, leastAt := course.least(win[i-2].endH)
 		base := max(steady.rate(win[i-2].endH-w, win[i-2].endH), least, 0)
-		if b-base < standOut*u || a-base < begun*u || b < cautionRatio*base {
+		if b-base < standOut(end)*u || a-base < begun*u || b < cautionRatio*base {
 			continue
 		}
 		earliest(&out.CautionH, end)
@@ -221,19 +237,21 @@ func earliest(p **float64, v float64) {
 	}
 }
 
-// scatter is the standard deviation by which windows' rates left the steady
-// course while it was found: what daily cycles, weather and noise do. By the
-// median, so that knocks do not hide an acceleration; infinite where too few
-// windows tell.
-func scatter(win []window, steady *steady, w float64) float64 {
-	var d []float64
-	for i := len(win) - 1; i >= 0 && len(d) < 60; i-- {
-		if win[i].endH <= steady.endH {
-			d = append(d, math.Abs(win[i].rate-steady.rate(win[i].endH-w, win[i].endH)))
-		}
-	}
-	if len(d) < leastHistory {
+// scatter is the standard deviation by which windows' rates, at whatever
+// phase, left the steady course while it was found: what daily cycles, weather
+// and noise do. By the median, so that knocks do not hide an acceleration;
+// infinite where too few windows tell.
+func scatter(all []window, steady *steady, w float64, phases int) float64 {
+	n := sort.Search(len(all), func(i int) bool { return all[i].endH > steady.endH })
+	apart := float64(n) / float64(phases) // windows that do not overlap
+	if apart < leastHistory {
 		return math.Inf(1)
 	}
-	return lsq.MADScale * lsq.Median(d) * (1 + 2/float64(len(d)))
+	from := max(0, n-40*phases)
+	stride := max((n-from)/120, 1)
+	var d []float64
+	for i := from; i < n; i += stride {
+		d = append(d, math.Abs(all[i].rate-steady.rate(all[i].endH-w, all[i].endH)))
+	}
+	return lsq.MADScale * lsq.Median(d) * (1 + 1/apart)
 }
