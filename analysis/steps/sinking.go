@@ -49,6 +49,12 @@ func (r *run) sinkingIn(k int) *sinking {
 				y[i] = p.y - r.shifted(g, p.t, from)
 			}
 		}
+		if absent(y) > n/5 {
+			// A gauge that comes or goes would move what is fitted to the others.
+			for i := range y {
+				y[i] = math.NaN()
+			}
+		}
 		s.y = append(s.y, y)
 	}
 	s.columns = append(s.columns, r.supportPattern(0), r.supportPattern(1))
@@ -68,6 +74,16 @@ func (r *run) sinkingIn(k int) *sinking {
 		s.columns = append(s.columns, v)
 	}
 	return s
+}
+
+// absent counts the bins without a reading.
+func absent(y []float64) (n int) {
+	for _, v := range y {
+		if math.IsNaN(v) {
+			n++
+		}
+	}
+	return n
 }
 
 // shifted is what the offsets found, and the sudden shifts of supports, add to a
