@@ -164,6 +164,9 @@ func overTime(curves []desk.Curve) (lines []Line, x0, x1 float64) {
 		}
 		lines = append(lines, l)
 	}
+	if x1 < x0 {
+		x0, x1 = 0, 0 // there is nothing to draw
+	}
 	return lines, x0, x1
 }
 

@@ -73,6 +73,7 @@ func (s *Server) events(w http.ResponseWriter, r *http.Request, next func() []ev
 		for i, e := range out {
 			b, err := json.Marshal(e.data)
 			if err != nil {
+				s.o.Log.Error("what the page says cannot be sent", "event", e.name, "error", err)
 				return
 			}
 			if i == 0 {

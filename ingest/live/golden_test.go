@@ -2,6 +2,7 @@ package live
 
 import (
 	"bytes"
+	"encoding/json"
 	"flag"
 	stdhtml "html"
 	"html/template"
@@ -123,5 +124,21 @@ func BenchmarkPage(b *testing.B) {
 	d, s := desktest.Morning(b)
 	for b.Loop() {
 		wholePage(b, d, s, true)
+	}
+}
+
+// What is sent to a terminal elsewhere can always be written as JSON, which knows
+// no infinite numbers.
+func TestWhatIsSentIsJSON(t *testing.T) {
+	d, s := desktest.Morning(t)
+	bare := *s
+	bare.Curves = &desk.Curves{Series: s.Curves.Series[:3:3]} // no probe, no load
+	empty := &desk.Snapshot{At: s.At, Status: &ingest.Status{DiskFree: -1}, Curves: &desk.Curves{Series: make([]desk.Curve, 5)}, Loads: desk.Loads{Planned: -1}}
+	for name, s := range map[string]*desk.Snapshot{"morning": s, "without a probe or a load": &bare, "empty": empty} {
+		for _, what := range []any{answer.Of(d, s), answer.Figures(d, s)} {
+			if _, err := json.Marshal(what); err != nil {
+				t.Errorf("%s: %v", name, err)
+			}
+		}
 	}
 }

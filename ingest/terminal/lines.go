@@ -33,7 +33,9 @@ func once(ctx context.Context, s Source, f func(Frame) error) error {
 		if !fr.View.Whole && fr.Lost == "" && time.Since(began) < patience {
 			return nil
 		}
-		failed = f(fr)
+		if failed = errors.New(fr.Lost); fr.View.At != "" {
+			failed = f(fr)
+		}
 		return errOnce
 	})
 	if errors.Is(err, errOnce) {

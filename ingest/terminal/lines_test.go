@@ -116,6 +116,9 @@ func TestOnce(t *testing.T) {
 	if err := Once(t.Context(), &script{frames: frames}, failing{full}); !errors.Is(err, full) {
 		t.Errorf("the error is %v", err)
 	}
+	if err := Once(t.Context(), &script{frames: []Frame{{Lost: "No connection (refused)"}}}, &out); err == nil || err.Error() != "No connection (refused)" {
+		t.Errorf("without any look the error is %v", err)
+	}
 	if err := Once(t.Context(), &script{end: full}, &out); !errors.Is(err, full) {
 		t.Errorf("the error is %v", err)
 	}

@@ -127,10 +127,8 @@ func (p *Page) Run(ctx context.Context, give func(Frame)) error {
 		if errors.As(err, &refused) {
 			return err
 		}
-		lost := f
-		lost.Lost = "No connection to the recorder since " + time.Now().Format("15:04:05")
 		if f.Lost == "" {
-			f.Lost = lost.Lost
+			f.Lost = "No connection to the recorder since " + time.Now().Format("15:04:05") + " (" + err.Error() + ")"
 			give(f)
 		}
 		select {
