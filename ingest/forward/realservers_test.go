@@ -17,7 +17,7 @@ import (
 )
 
 // program finds a server's program, which the continuous checks must have.
-func program(t *testing.T, name string) string {
+func program(t testing.TB, name string) string {
 	t.Helper()
 	path, err := exec.LookPath(name)
 	if err != nil {
@@ -29,7 +29,7 @@ func program(t *testing.T, name string) string {
 	return path
 }
 
-func freePort(t *testing.T) string {
+func freePort(t testing.TB) string {
 	t.Helper()
 	l, err := net.Listen("tcp", "127.0.0.1:0")
 	if err != nil {
@@ -41,7 +41,7 @@ func freePort(t *testing.T) string {
 
 // process is a server that can be killed and started anew on the same data.
 type process struct {
-	t    *testing.T
+	t    testing.TB
 	make func() *exec.Cmd
 	ping string
 	cmd  *exec.Cmd
