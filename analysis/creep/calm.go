@@ -91,14 +91,25 @@ func compensateDaily(at, age, sag []float64, felt []*Ambient) {
 	y := withoutDay(age, withoutJumps(sag))
 	x := make([]lagged, len(felt))
 	lags := make([]float64, len(felt))
+	bounds := func(a *Ambient) (lo, hi float64) {
+		// A longer lag would turn weather into what looks like creep.
+		lo, hi, _ = a.lagBounds()
+		return lo, max(min(hi, math.Log(age[len(age)-1]/6)), lo+0.1)
+	}
 	for j, a := range felt {
-		lo, hi, _ := a.lagBounds()
+		lo, hi := bounds(a)
 		lags[j] = (lo + hi) / 2
 		x[j] = a.through(math.Exp(lags[j]), at, age)
 	}
+	// What creep leaves when a day's mean is gone is no answer to the weather.
+	steep := make([]float64, len(age))
+	for k, t := range age {
+		steep[k] = math.Log(max(t, 1))
+	}
+	x = append(x, lagged{steep, withoutDay(age, steep)})
 	for range 2 {
 		for j, a := range felt {
-			lo, hi, _ := a.lagBounds()
+			lo, hi := bounds(a)
 			lags[j] = lsq.Minimize(func(l float64) float64 {
 				x[j] = a.through(math.Exp(l), at, age)
 				_, left := answer(y, x)
@@ -111,7 +122,7 @@ func compensateDaily(at, age, sag []float64, felt []*Ambient) {
 		}
 	}
 	c, _ := answer(y, x)
-	for j := range c {
+	for j := range min(len(c), len(felt)) {
 		for k := range sag {
 			sag[k] -= c[j] * (x[j].whole[k] - x[j].whole[0])
 		}

@@ -27,7 +27,7 @@ func TestCoverageCampaign(t *testing.T) {
 //
 //	go test -tags campaign -run 'TestFailuresCampaign|TestSoundCampaign' -v -timeout 60m ./analysis/creep
 func TestFailuresCampaign(t *testing.T) {
-	w := failures(t, 70000, 500)
+	w := failures(t, 80000, 500)
 	t.Logf("clear-area in time in %d of %d, median lead %.1f h", w.inTime, w.tests, w.medianLead)
 	for _, m := range w.missed {
 		t.Log(m)
@@ -39,7 +39,7 @@ func TestFailuresCampaign(t *testing.T) {
 
 // TestSoundCampaign is its other half.
 func TestSoundCampaign(t *testing.T) {
-	sound := soundTests(t, 70000, 500)
+	sound := soundTests(t, 80000, 500)
 	t.Logf("%d of 500 sound tests raised a warning", len(sound))
 	for _, m := range sound {
 		t.Log(m)
