@@ -83,7 +83,7 @@ func keyOf(fsys segment.FS, rig []byte) (string, error) {
 		}
 		fmt.Fprintln(h, name, size)
 	}
-	return "4 " + hex.EncodeToString(h.Sum(nil)), nil
+	return "5 " + hex.EncodeToString(h.Sum(nil)), nil
 }
 
 func read(fsys segment.FS, name string) ([]byte, error) {

@@ -59,17 +59,17 @@ func Look(fsys segment.FS, rig *config.Rig) (*Summary, error) {
 		return nil, err
 	}
 	s.alarms(events)
-	load := s.steps(rig, marks)
+	load, changed := s.steps(marks)
 	first, last, ok := d.Span()
 	if !ok {
 		return s, nil
 	}
 	s.First, s.Last = first, last
 	s.toGo(rig, marks)
-	if d, err = names.with(fsys, d, load-window, load, s.dayBefore(load), s.dayBefore(load)+window); err != nil {
+	if d, err = names.with(fsys, d, load-window, load, s.dayBefore(changed), s.dayBefore(changed)+window); err != nil {
 		return nil, err
 	}
-	return s, s.figures(d, rig, load)
+	return s, s.figures(d, rig, load, changed)
 }
 
 // alarms follows what was raised and what is over.
@@ -105,8 +105,9 @@ func (s *Summary) alarms(events []segment.Record) {
 	}
 }
 
-// steps finds the last step marked, and the instant of the first load.
-func (s *Summary) steps(rig *config.Rig, marks []segment.Record) (load int64) {
+// steps finds the last step marked, and the instants of the first load and of
+// the last change of one.
+func (s *Summary) steps(marks []segment.Record) (load, changed int64) {
 	gone := map[string]bool{}
 	for i := range marks {
 		if marks[i].Kind == segment.Withdraw {
@@ -122,6 +123,9 @@ func (s *Summary) steps(rig *config.Rig, marks []segment.Record) (load int64) {
 		if m.Kind == segment.Load && (load == 0 || m.Time < load) {
 			load = m.Time
 		}
+		if m.Kind == segment.Load {
+			changed = max(changed, m.Time)
+		}
 		step := text(m, "step")
 		if m.Kind == segment.StepMark {
 			step = text(m, "name")
@@ -130,7 +134,7 @@ func (s *Summary) steps(rig *config.Rig, marks []segment.Record) (load int64) {
 			s.Step, at = step, m.Time
 		}
 	}
-	return load
+	return load, changed
 }
 
 // toGo sums up the holds of the plan from the present step on.
@@ -167,14 +171,14 @@ func text(r *segment.Record, key string) string {
 // figures reads three windows: before the first load, a day before the end (or
 // as near to it as there is), and the end. Where the rig names no creep gauge
 // it is the one on the beam that sagged most, as in the analysis.
-func (s *Summary) figures(d *segment.Folder, rig *config.Rig, load int64) error {
+func (s *Summary) figures(d *segment.Folder, rig *config.Rig, load, changed int64) error {
 	scale := map[string]float64{}
 	for _, g := range rig.Gauges {
 		if s.Gauge == g.Name || s.Gauge == "" && (g.Sees == "" || g.Sees == "beam") {
 			scale[g.Name] = scaleOf(g)
 		}
 	}
-	now, err := medians(d, scale, max(s.Last-window, load+(s.Last-load)/2), s.Last)
+	now, err := medians(d, scale, max(s.Last-window, changed+(s.Last-changed)/2), s.Last)
 	if err != nil {
 		return err
 	}
@@ -191,7 +195,7 @@ func (s *Summary) figures(d *segment.Folder, rig *config.Rig, load int64) error 
 			s.Gauge, s.SagMM = g.Name, &sag
 		}
 	}
-	day := s.dayBefore(load)
+	day := s.dayBefore(changed)
 	n, there := now[s.Gauge]
 	if !there || s.Last-window-day < 3*window {
 		return nil
@@ -208,9 +212,9 @@ func (s *Summary) figures(d *segment.Folder, rig *config.Rig, load int64) error 
 }
 
 // dayBefore is where the window begins that the end is compared with: a day
-// before it, but after the load and within the run.
-func (s *Summary) dayBefore(load int64) int64 {
-	return max(s.Last-int64(24*time.Hour), load+window, s.First)
+// before it, but after the last change of a load and within the run.
+func (s *Summary) dayBefore(changed int64) int64 {
+	return max(s.Last-int64(24*time.Hour), changed+window, s.First)
 }
 
 // scaleOf turns an indication into sag but for its zero: sense and gain.

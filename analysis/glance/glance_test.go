@@ -149,3 +149,38 @@ func TestManySegments(t *testing.T) {
 		t.Errorf("sag %g and %g, rate %g and %g", *many.SagMM, *one.SagMM, *many.RateMMPerDay, *one.RateMMPerDay)
 	}
 }
+
+// TestRateAfterUnloading: the rate is never taken across a change of loads.
+func TestRateAfterUnloading(t *testing.T) {
+	dir := t.TempDir()
+	root, err := os.OpenRoot(dir)
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer root.Close()
+	var text strings.Builder
+	for s := int64(0); s <= 2*86400; s += 60 {
+		mm := 5.0
+		if s >= 3600 && s < 86400+7200 {
+			mm -= 2
+		}
+		fmt.Fprintf(&text, "indication,gauge=mid mm=%.6f %d\n", mm, t0+s*1e9)
+	}
+	if err := os.Mkdir(dir+"/readings", 0o755); err != nil {
+		t.Fatal(err)
+	}
+	for name, content := range map[string]string{"readings/000001.lp": text.String(),
+		"marks.lp": fmt.Sprintf("load,name=pan newton=9.8 %d\nload,name=pan newton=0 %d\n", t0+3600e9, t0+(86400+7200)*1e9)} {
+		if err := os.WriteFile(dir+"/"+name, []byte(content), 0o644); err != nil {
+			t.Fatal(err)
+		}
+	}
+	rig, err := config.Parse("rig.yaml", []byte(rigText))
+	if err != nil {
+		t.Fatal(err)
+	}
+	s, err := Look(segment.OSFS(root, segment.OSOptions{}), rig)
+	if err != nil || s.RateMMPerDay == nil || math.Abs(*s.RateMMPerDay) > 1e-9 || s.SagMM == nil || math.Abs(*s.SagMM) > 1e-9 {
+		t.Errorf("%+v, %v", s, err)
+	}
+}
