@@ -28,7 +28,7 @@ func (t *creepTask) addSeries(h *history.History, f *steps.Findings, shares [][]
 		if p, _ := patternShare(h.Rig, f, t.step, shares[g]); math.Abs(p) < leastShare*math.Abs(pattern) {
 			continue
 		}
-		if s := t.series(h, f, g, shares[g], pattern); len(s.TimeH) >= leastBins {
+		if s := every(t.series(h, f, g, shares[g], pattern), mostBeside); len(s.TimeH) >= leastBins {
 			t.in.Series, t.gauges = append(t.in.Series, s), append(t.gauges, g)
 		}
 	}
@@ -36,6 +36,26 @@ func (t *creepTask) addSeries(h *history.History, f *steps.Findings, shares [][]
 
 // leastBins is what a gauge beside the creep gauge must have to be of use.
 const leastBins = 20
+
+// mostBeside is how many bins of a gauge beside the creep gauge enter the fit:
+// they tell drift from creep and loads from each other, which needs few.
+const mostBeside = 200
+
+// every keeps at most most bins of a series, evenly. Bins are left out, not
+// merged: a merged one would average the day's temperature away.
+func every(s creep.Series, most int) creep.Series {
+	k := (len(s.TimeH) + most - 1) / most
+	if k < 2 {
+		return s
+	}
+	out := s
+	out.TimeH, out.SagMM, out.U, out.N = nil, nil, nil, nil
+	for i := 0; i < len(s.TimeH); i += k {
+		out.TimeH, out.SagMM = append(out.TimeH, s.TimeH[i]), append(out.SagMM, s.SagMM[i])
+		out.U, out.N = append(out.U, s.U[i]), append(out.N, s.N[i])
+	}
+	return out
+}
 
 // series is a gauge's track, without what was read while a load was being
 // placed. The baseline is in it: it ties the zero and the temperature. pattern
