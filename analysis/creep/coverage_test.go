@@ -113,16 +113,11 @@ func coverage(t *testing.T, first uint64, tests int, averaged bool) tally {
 	return c
 }
 
-// heldLeast and heldMost are the counts between which a share of right
-// intervals falls but for three binomial standard deviations.
+// heldLeast is the count that a share of right intervals reaches but for three
+// binomial standard deviations.
 func heldLeast(share float64, tests int) int {
 	n := float64(tests)
 	return int(math.Floor(n*share - 3*math.Sqrt(n*share*(1-share))))
-}
-
-func heldMost(share float64, tests int) int {
-	n := float64(tests)
-	return min(int(math.Ceil(n*share+3*math.Sqrt(n*share*(1-share)))), tests)
 }
 
 // The campaign has the narrow band and a thousand tests; its seeds follow.
