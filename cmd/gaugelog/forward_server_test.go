@@ -72,6 +72,22 @@ func (s *influx) count(t *testing.T, database, run string) int {
 	return int(a.Results[0].Series[0].Values[0][1].(float64))
 }
 
+// newVictoria starts a real VictoriaMetrics on loopback, until the test ends.
+func newVictoria(t *testing.T) (address string) {
+	t.Helper()
+	address = freePort(t)
+	c := exec.Command("victoria-metrics", "-storageDataPath="+t.TempDir(), "-httpListenAddr="+address, "-retentionPeriod=100y")
+	if err := c.Start(); err != nil {
+		t.Fatal(err)
+	}
+	t.Cleanup(func() {
+		_ = c.Process.Kill()
+		_ = c.Wait()
+	})
+	waitForServer(t, "http://"+address+"/health")
+	return address
+}
+
 // cutter is a network between a client and a server, in which something happens
 // when a number of bytes has passed.
 type cutter struct {

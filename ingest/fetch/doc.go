@@ -7,6 +7,13 @@
 // and no words: loads, readings and the kinds of events come back, the names of
 // steps, notes, and what was withdrawn do not.
 //
+// What that costs, measured on the demo's run by TestSurviveFromServers
+// (go test -tags campaign -run SurviveFromServers ./cmd/gaugelog): by InfluxQL
+// every figure of the analysis is the folder's; from whole milliseconds every
+// quantity lies within a fiftieth of its standard uncertainty. The boot ids of
+// the recording are no points, so that of a gap is said that the recording broke
+// off, and not that the machine was started anew.
+//
 // It promises: every point of the run is in the folder once, in order of time;
 // what the server does not hold is said in Summary.Lost; a run in which
 // something was withdrawn or done to a gauge is refused where the server cannot
