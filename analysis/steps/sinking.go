@@ -49,13 +49,19 @@ func (r *run) sinkingIn(k int) *sinking {
 				y[i] = p.y - r.shifted(g, p.t, from)
 			}
 		}
-		if absent(y) > n/5 {
-			// A gauge that comes or goes would move what is fitted to the others.
+		s.y = append(s.y, y)
+	}
+	// A gauge that comes or goes would move what is fitted to the others.
+	fewest := n
+	for _, y := range s.y {
+		fewest = min(fewest, absent(y))
+	}
+	for _, y := range s.y {
+		if absent(y) > fewest+n/5 {
 			for i := range y {
 				y[i] = math.NaN()
 			}
 		}
-		s.y = append(s.y, y)
 	}
 	s.columns = append(s.columns, r.supportPattern(0), r.supportPattern(1))
 	for _, g := range r.gauges {
