@@ -79,14 +79,17 @@ func Analyse(in Input, o Options) (*Analysis, error) {
 	}
 	in.compact()
 	a := &Analysis{}
-	whole := a.fitAll(&in)
-	loading := whole
 	unload := in.unloading()
+	var whole, loading []*Fit
+	var both sync.WaitGroup
 	if unload != nil {
 		part := in.until(unload.AtH)
-		b := &Analysis{}
-		loading = b.fitAll(&part)
-	} else {
+		both.Go(func() { loading = new(Analysis).fitAll(&part) })
+	}
+	whole = a.fitAll(&in)
+	both.Wait()
+	if unload == nil {
+		loading = whole
 		a.note("no-unloading", "the beam was not unloaded: no recovery, no permanent set, and the law is not checked against a recovery")
 	}
 	a.choose(whole)

@@ -86,9 +86,13 @@ func (p *seriesPart) noiseBounds() (lo, hi lnNoise) {
 	return lo, hi
 }
 
+// wideStep and fineStep begin the search for noise far from it and near it, as
+// factors' logarithms.
+const wideStep, fineStep = 0.8, 0.2
+
 // restricted improves every series' noise by restricted likelihood, one
-// series after the other, by a pattern search.
-func (s *system) restricted(sol *solution) {
+// series after the other, by a pattern search that begins with step.
+func (s *system) restricted(sol *solution, step float64) {
 	l, _ := s.linearise(sol)
 	reduced := make([]lsq.Reduced, len(s.parts))
 	for i := range s.parts {
@@ -111,7 +115,7 @@ func (s *system) restricted(sol *solution) {
 			return n.logDet + sol.LogDet + sol.Chi2
 		}
 		at := lnNoise{math.Log(p.noise.scale), math.Log(max(p.noise.slow, 0.3*rms(p.U))), math.Log(p.noise.fadeH)}
-		at = patternSearch(cost, at, lo, hi)
+		at = patternSearch(cost, at, lo, hi, step)
 		p.noise = at.noise(p)
 		reduced[i] = l.reduce(i, p.noise)
 	}
@@ -122,12 +126,12 @@ const leastForSlow = 8
 
 // patternSearch goes downhill along the axes with steps halved where none
 // helps (Hooke and Jeeves 1961, without its longer moves).
-func patternSearch(cost func(lnNoise) float64, at, lo, hi lnNoise) lnNoise {
+func patternSearch(cost func(lnNoise) float64, at, lo, hi lnNoise, step float64) lnNoise {
 	for k := range at {
 		at[k] = min(max(at[k], lo[k]), hi[k])
 	}
 	best := cost(at)
-	for step := 0.8; step > 0.04; {
+	for step > 0.04 {
 		moved := false
 		for k := range at {
 			for _, d := range []float64{step, -step} {

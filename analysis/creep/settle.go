@@ -31,17 +31,23 @@ const passes = 5
 
 // settle alternates between law and noise until both hold: first with the
 // stated scatter, then with noise from the residuals, last by restricted
-// likelihood.
+// likelihood. A long record is settled on merged bins first, so that only the
+// last rounds go over all of them.
 func (s *system) settle(known *Fit) (*solution, error) {
 	var sol *solution
 	var q []float64
-	if known != nil && len(known.sys.parts) == len(s.parts) {
-		for i := range s.parts {
-			p, n := &s.parts[i], known.sys.parts[i].noise
-			p.noise = newNoise(p.TimeH, p.U, n.scale, n.slow, n.fadeH)
+	if known != nil {
+		s.adopt(known.sys)
+	}
+	first, step := 0, wideStep
+	if c := s.coarse(); c != nil {
+		if near, err := c.settle(known); err == nil {
+			s.adopt(c)
+			s.holdLaw(near.law, c.shape(near))
+			q, first, step = near.q, 2, fineStep
 		}
 	}
-	for pass := range passes {
+	for pass := first; pass < passes; pass++ {
 		next, err := s.solve(q, roughly)
 		if err != nil {
 			return nil, err
@@ -55,14 +61,48 @@ func (s *system) settle(known *Fit) (*solution, error) {
 		if pass == 0 || s.fam.model == KelvinChain || sol.cov == nil {
 			s.learnNoise(sol)
 		} else {
-			s.restricted(sol)
+			s.restricted(sol, step)
 		}
 	}
 	return s.solve(q, exactly)
 }
 
+// adopt takes over the noise of another system of the same series.
+func (s *system) adopt(o *system) {
+	if len(o.parts) != len(s.parts) {
+		return
+	}
+	for i := range s.parts {
+		p, n := &s.parts[i], o.parts[i].noise
+		p.noise = newNoise(p.TimeH, p.U, n.scale, n.slow, n.fadeH)
+	}
+}
+
+// roughBins is about how many bins of a series a first look takes.
+const roughBins = 150
+
+// coarse is the same system over merged bins; nil where it would not be much
+// smaller.
+func (s *system) coarse() *system {
+	in := *s.in
+	in.Series = make([]Series, len(s.in.Series))
+	rows := 0
+	for i := range s.in.Series {
+		in.Series[i] = s.in.Series[i].compacted(roughBins)
+		rows += len(in.Series[i].TimeH)
+	}
+	if 3*rows > s.rows() {
+		return nil
+	}
+	return newSystem(&in, s.fam, s.lag)
+}
+
 // roughly is enough of a search while the noise is still being found.
 const roughly, exactly = 3, 0
+
+// enough are the shares of the misfit below which a step is not worth taking:
+// some hundredths of a standard uncertainty, and some ten-thousandths.
+var enough = map[int]float64{roughly: 1e-6, exactly: 1e-10}
 
 // shape is the shape parameter of a solution.
 func (s *system) shape(sol *solution) float64 {
@@ -117,7 +157,7 @@ func (s *system) solve(q []float64, limit int) (*solution, error) {
 	if q == nil {
 		q = s.start()
 	}
-	g := lsq.Grouped{Groups: len(s.parts), Shared: len(s.fam.names), Names: s.names(), Starts: [][]float64{q}, MaxIterations: limit,
+	g := lsq.Grouped{Groups: len(s.parts), Shared: len(s.fam.names), Names: s.names(), Starts: [][]float64{q}, MaxIterations: limit, Enough: enough[limit], Rough: limit == roughly,
 		Design: func(q []float64, i int) lsq.AngularBlock { return s.block(i, q) },
 		Derivative: func(q []float64, k, i int, law, own []float64) []float64 {
 			v := s.tangent(i, k, q, law, own)

@@ -28,7 +28,16 @@ type Grouped struct {
 	// of q.
 	Names         []string
 	MaxIterations int // 0 means 500
+	// Enough ends the search where a step would lower the misfit by less than
+	// this share of it; 0: where none lowers it. Rough then leaves the last
+	// digits alone: enough while something else is still being found.
+	Enough float64
+	Rough  bool
 }
+
+// nearStep is how short, in standard uncertainties, the last step need be
+// where Enough is given.
+const nearStep = 1e-7
 
 // GroupedSolution is the answer to a Grouped problem.
 type GroupedSolution struct {
@@ -66,14 +75,31 @@ func (p *Grouped) blocksAt(q []float64) []AngularBlock {
 	return out
 }
 
+// cloned copies blocks, which a solution overwrites.
+func cloned(blocks []AngularBlock) []AngularBlock {
+	out := make([]AngularBlock, len(blocks))
+	columns := func(cols [][]float64) [][]float64 {
+		c := make([][]float64, len(cols))
+		for j := range cols {
+			c[j] = append([]float64(nil), cols[j]...)
+		}
+		return c
+	}
+	for g, b := range blocks {
+		out[g] = b
+		out[g].Private, out[g].Shared, out[g].Y = columns(b.Private), columns(b.Shared), append([]float64(nil), b.Y...)
+	}
+	return out
+}
+
 // evaluate projects at q; false where the columns have no full rank.
 func (p *Grouped) evaluate(q []float64) (*trial, bool) {
 	t := &trial{}
 	var err error
-	if t.linear, err = (Angular{Blocks: p.blocksAt(q), Shared: p.Shared}).Solve(); err != nil || math.IsInf(t.linear.LogDet, 0) {
+	blocks := p.blocksAt(q)
+	if t.linear, err = (Angular{Blocks: cloned(blocks), Shared: p.Shared}).Solve(); err != nil || math.IsInf(t.linear.LogDet, 0) {
 		return nil, false
 	}
-	blocks := p.blocksAt(q)
 	for g := range blocks {
 		blocks[g] = p.linearised(blocks[g], q, g, t.linear.Shared, t.linear.Private[g])
 	}
@@ -146,7 +172,10 @@ func (p Grouped) Fit() (*GroupedSolution, error) {
 // search runs one start to its end.
 func (p *Grouped) search(start []float64) (*search, Status) {
 	nq := len(start)
-	s := &search{m: nq + 1, lower: p.Lower, upper: p.Upper, limit: p.MaxIterations}
+	s := &search{m: nq + 1, lower: p.Lower, upper: p.Upper, limit: p.MaxIterations, enough: p.Enough, rough: p.Rough}
+	if p.Enough > 0 {
+		s.near = nearStep
+	}
 	if s.limit == 0 {
 		s.limit = 500
 	}

@@ -14,6 +14,12 @@ type search struct {
 	jacobian     func(p []float64, j *mat.Dense)
 	lower, upper []float64
 	limit        int
+	// enough ends the search where a step is not expected to lower chi2 by
+	// more than this share of it; 0: where none lowers it. near is how small,
+	// in lengths of residual, a last step need be. rough leaves the last
+	// digits alone.
+	enough, near float64
+	rough        bool
 
 	p, r    []float64
 	chi2    float64
@@ -88,6 +94,9 @@ func (s *search) improve(j *mat.Dense) bool {
 	trial, r := make([]float64, len(s.p)), make([]float64, s.m)
 	for range 60 {
 		step, expected := s.step(j, cols, s.damping)
+		if expected <= s.enough*s.chi2 {
+			return false
+		}
 		copy(trial, s.p)
 		var change, size float64
 		for k, c := range cols {
@@ -107,7 +116,7 @@ func (s *search) improve(j *mat.Dense) bool {
 				s.damping *= max(1.0/3, 1-math.Pow(2*gain-1, 3))
 				s.damping = max(s.damping, 1e-15)
 				s.growth = 2
-				small := s.chi2-chi2 <= 1e-15*s.chi2
+				small := s.chi2-chi2 <= max(1e-15, s.enough)*s.chi2
 				copy(s.p, trial)
 				copy(s.r, r)
 				s.chi2 = chi2
@@ -157,6 +166,9 @@ func (s *search) step(j *mat.Dense, cols []int, damping float64) (step []float64
 // polish takes undamped steps as long as they shrink: chi2 is flat to
 // rounding near its minimum, the step is not, so this wins the last digits.
 func (s *search) polish(j *mat.Dense) {
+	if s.rough {
+		return
+	}
 	last := math.Inf(1)
 	trial, r := make([]float64, len(s.p)), make([]float64, s.m)
 	for range 30 {
@@ -173,6 +185,9 @@ func (s *search) polish(j *mat.Dense) {
 			size = max(size, math.Abs(step[k])*s.scale[c])
 		}
 		s.clamp(trial)
+		if size < s.near {
+			return
+		}
 		if !(size < last/2) || size > 0.1*(math.Sqrt(s.chi2)+1e-300) && !math.IsInf(last, 1) || !s.residual(trial, r) {
 			return
 		}
