@@ -41,6 +41,7 @@ analysed up to its last completed sync.
 				return wrongf("give --units si or --units us", "units %q are not known", units)
 			}
 			how.progress = cmd.ErrOrStderr()
+			defer collectSeldom()()
 			return from.on(cmd, args, func(run string) error {
 				r, opt, err := readRun(cmd.Context(), run, how)
 				if err != nil {

@@ -261,7 +261,7 @@ func TestDemoRepeats(t *testing.T) {
 		}
 	}
 	var errOut bytes.Buffer
-	if code := run([]string{"demo", "--into", second, "--seed", "1"}, strings.NewReader(""), &bytes.Buffer{}, &errOut); code != Done {
+	if code := run([]string{"demo", "--into", second, "--seed", "1", "--replace"}, strings.NewReader(""), &bytes.Buffer{}, &errOut); code != Done {
 		t.Fatalf("demo ended with %d: %s", code, &errOut)
 	}
 	if _, err := os.Stat(stale); err == nil {

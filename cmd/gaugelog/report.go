@@ -52,6 +52,7 @@ written to --output, else to report.html (or .pdf and so on) here.`,
 		Args:    from.args,
 		RunE: func(cmd *cobra.Command, args []string) error {
 			o.progress = cmd.ErrOrStderr()
+			defer collectSeldom()()
 			if from.from != "" && from.keep == "" && o.output == "" {
 				o.output = "report." + o.format // the folder does not stay
 			}

@@ -27,7 +27,8 @@ var (
 	small   = flag.Int("small", 5_000_000, "readings of the run that is timed")
 	large   = flag.Int("large", 0, "readings of a run of the same steps and duration for the comparison of memory; 0: none")
 	repeat  = flag.Int("repeat", 5, "how often each is timed")
-	memory  = flag.String("memory", "100MiB", "GOMEMLIMIT of what is measured")
+	memory  = flag.String("memory", "96MiB", "GOMEMLIMIT of what is measured")
+	collect = flag.String("collect", "off", "GOGC of what is measured; `analyse` sets both itself")
 	measure = os.Getenv("HISTORYTEST_MEASURE") // what a child process is to do
 )
 
@@ -167,7 +168,7 @@ type figures struct {
 func (f *figures) run(t *testing.T, kind, dir string, cores int, readings int64) {
 	t.Helper()
 	c := exec.Command(os.Args[0])
-	c.Env = append(os.Environ(), "HISTORYTEST_MEASURE="+kind+":"+dir, "GOMEMLIMIT="+*memory, "GOMAXPROCS="+strconv.Itoa(cores))
+	c.Env = append(os.Environ(), "HISTORYTEST_MEASURE="+kind+":"+dir, "GOMEMLIMIT="+*memory, "GOGC="+*collect, "GOMAXPROCS="+strconv.Itoa(cores))
 	c.Stderr = os.Stderr
 	out, err := c.Output()
 	if err != nil {
