@@ -28,7 +28,7 @@ func (t *creepTask) addSeries(h *history.History, f *steps.Findings, shares [][]
 		if p, _ := patternShare(h.Rig, f, t.step, shares[g]); math.Abs(p) < leastShare*math.Abs(pattern) {
 			continue
 		}
-		if s := every(t.series(h, f, g, shares[g], pattern), mostBeside); len(s.TimeH) >= leastBins {
+		if s := thinned(t.series(h, f, g, shares[g], pattern), mostBeside); len(s.TimeH) >= leastBins {
 			t.in.Series, t.gauges = append(t.in.Series, s), append(t.gauges, g)
 		}
 	}
@@ -41,17 +41,37 @@ const leastBins = 20
 // they tell drift from creep and loads from each other, which needs few.
 const mostBeside = 200
 
-// every keeps at most most bins of a series, evenly. Bins are left out, not
-// merged: a merged one would average the day's temperature away.
-func every(s creep.Series, most int) creep.Series {
-	k := (len(s.TimeH) + most - 1) / most
-	if k < 2 {
+// perDecade is how many bins a decade of time since a change of load keeps.
+const perDecade = 8
+
+// thinned keeps some most bins of a series, and more of each change's early
+// ones. Bins are left out, not merged: a merged one would average the day's
+// temperature away. Which stay depends on the time since the last change
+// alone, so that an instant told a little otherwise leaves the choice as it is.
+func thinned(s creep.Series, most int) creep.Series {
+	n := len(s.TimeH)
+	if n <= most {
 		return s
 	}
+	width := (s.TimeH[n-1] - s.TimeH[0]) / (0.75 * float64(most))
 	out := s
 	out.TimeH, out.SagMM, out.U, out.N = nil, nil, nil, nil
-	for i := 0; i < len(s.TimeH); i += k {
-		out.TimeH, out.SagMM = append(out.TimeH, s.TimeH[i]), append(out.SagMM, s.SagMM[i])
+	last, from := math.Inf(-1), math.Inf(-1)
+	for i, t := range s.TimeH {
+		began := s.TimeH[0]
+		for _, c := range s.Changes {
+			if c.AtH <= t {
+				began = c.AtH
+			}
+		}
+		age := t - began
+		// A third of a cell off, lest boundaries fall on round times.
+		cell := math.Floor(age/width + perDecade*math.Log10(1+60*max(age, 0)) + 1.0/3)
+		if cell == last && began == from {
+			continue
+		}
+		last, from = cell, began
+		out.TimeH, out.SagMM = append(out.TimeH, t), append(out.SagMM, s.SagMM[i])
 		out.U, out.N = append(out.U, s.U[i]), append(out.N, s.N[i])
 	}
 	return out

@@ -100,9 +100,9 @@ func (s *system) coarse() *system {
 // roughly is enough of a search while the noise is still being found.
 const roughly, exactly = 3, 0
 
-// enough are the shares of the misfit below which a step is not worth taking:
-// some hundredths of a standard uncertainty, and some ten-thousandths.
-var enough = map[int]float64{roughly: 1e-6, exactly: 1e-10}
+// enough is the share of the misfit below which a step is not worth taking:
+// far below what a standard uncertainty is to it.
+const enough = 1e-13
 
 // shape is the shape parameter of a solution.
 func (s *system) shape(sol *solution) float64 {
@@ -157,7 +157,7 @@ func (s *system) solve(q []float64, limit int) (*solution, error) {
 	if q == nil {
 		q = s.start()
 	}
-	g := lsq.Grouped{Groups: len(s.parts), Shared: len(s.fam.names), Names: s.names(), Starts: [][]float64{q}, MaxIterations: limit, Enough: enough[limit], Rough: limit == roughly,
+	g := lsq.Grouped{Groups: len(s.parts), Shared: len(s.fam.names), Names: s.names(), Starts: [][]float64{q}, MaxIterations: limit, Enough: enough,
 		Design: func(q []float64, i int) lsq.AngularBlock { return s.block(i, q) },
 		Derivative: func(q []float64, k, i int, law, own []float64) []float64 {
 			v := s.tangent(i, k, q, law, own)

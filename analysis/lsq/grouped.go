@@ -29,10 +29,8 @@ type Grouped struct {
 	Names         []string
 	MaxIterations int // 0 means 500
 	// Enough ends the search where a step would lower the misfit by less than
-	// this share of it; 0: where none lowers it. Rough then leaves the last
-	// digits alone: enough while something else is still being found.
+	// this share of it; 0: where none lowers it.
 	Enough float64
-	Rough  bool
 }
 
 // nearStep is how short, in standard uncertainties, the last step need be
@@ -172,7 +170,7 @@ func (p Grouped) Fit() (*GroupedSolution, error) {
 // search runs one start to its end.
 func (p *Grouped) search(start []float64) (*search, Status) {
 	nq := len(start)
-	s := &search{m: nq + 1, lower: p.Lower, upper: p.Upper, limit: p.MaxIterations, enough: p.Enough, rough: p.Rough}
+	s := &search{m: nq + 1, lower: p.Lower, upper: p.Upper, limit: p.MaxIterations, enough: p.Enough}
 	if p.Enough > 0 {
 		s.near = nearStep
 	}

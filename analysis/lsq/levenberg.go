@@ -16,10 +16,8 @@ type search struct {
 	limit        int
 	// enough ends the search where a step is not expected to lower chi2 by
 	// more than this share of it; 0: where none lowers it. near is how small,
-	// in lengths of residual, a last step need be. rough leaves the last
-	// digits alone.
+	// in lengths of residual, a last step need be.
 	enough, near float64
-	rough        bool
 
 	p, r    []float64
 	chi2    float64
@@ -166,9 +164,6 @@ func (s *search) step(j *mat.Dense, cols []int, damping float64) (step []float64
 // polish takes undamped steps as long as they shrink: chi2 is flat to
 // rounding near its minimum, the step is not, so this wins the last digits.
 func (s *search) polish(j *mat.Dense) {
-	if s.rough {
-		return
-	}
 	last := math.Inf(1)
 	trial, r := make([]float64, len(s.p)), make([]float64, s.m)
 	for range 30 {
