@@ -20,8 +20,9 @@ import (
 
 // TestSurviveMarkOfAnotherUser enters marks from the shell of another user, who
 // shares a group with the run folder, while a recording of root's goes on: each
-// is on disk when the command answers, and the page, which shows what the
-// recorder knows, has it within a second.
+// is on disk when the command answers, and the page has it within two seconds:
+// the recorder looks for marks five times a second, the page is drawn anew
+// every second.
 func TestSurviveMarkOfAnotherUser(t *testing.T) {
 	needRoot(t)
 	const nobody = 65534
@@ -66,8 +67,8 @@ func TestSurviveMarkOfAnotherUser(t *testing.T) {
 	}
 	slices.Sort(waits)
 	t.Logf("on the page after %v", waits)
-	if middle := waits[len(waits)/2]; middle > time.Second {
-		t.Errorf("the recorder saw the mark after %v, want a second", middle)
+	if middle := waits[len(waits)/2]; middle > 2*time.Second {
+		t.Errorf("the page had the mark after %v, want a second and what the page's drawing takes", middle)
 	}
 	if err := p.end(t, syscall.SIGTERM); err != nil {
 		t.Fatalf("%v: %s", err, &p.err)
