@@ -56,9 +56,9 @@ func (f *fromFlags) on(cmd *cobra.Command, args []string, do func(run string) er
 	}
 	run := f.keep
 	if run == "" {
-		work, err := os.MkdirTemp("", "gaugelog-*")
-		if err != nil {
-			return err
+		work, made := os.MkdirTemp("", "gaugelog-*")
+		if made != nil {
+			return made
 		}
 		defer func() { err = errors.Join(err, os.RemoveAll(work)) }()
 		run = filepath.Join(work, "run")

@@ -6,8 +6,7 @@ import (
 	"encoding/hex"
 	"errors"
 	"fmt"
-	"os"
-	"path/filepath"
+	"io/fs"
 	"slices"
 	"strings"
 
@@ -44,34 +43,14 @@ func Fetch(ctx context.Context, into string, o Options) (s Summary, err error) {
 	if o.Source != nil {
 		defer o.Source.client.CloseIdleConnections()
 	}
-	if _, err := os.Lstat(into); err == nil {
-		return s, config.Problem{What: into + " exists already", Fix: "give a folder that is not there yet"}
+	err = segment.MakeFolder(into, func(fsys segment.FS) (err error) {
+		s, err = lay(ctx, fsys, o)
+		return err
+	})
+	if errors.Is(err, fs.ErrExist) {
+		err = config.Problem{What: into + " exists already", Fix: "give a folder that is not there yet"}
 	}
-	into = filepath.Clean(into)
-	if err := os.MkdirAll(filepath.Dir(into), 0o755); err != nil {
-		return s, err
-	}
-	work, err := os.MkdirTemp(filepath.Dir(into), ".fetching-*")
-	if err != nil {
-		return s, err
-	}
-	defer func() {
-		if err != nil {
-			err = errors.Join(err, os.RemoveAll(work))
-		}
-	}()
-	if err := os.Chmod(work, 0o755); err != nil {
-		return s, err
-	}
-	root, err := os.OpenRoot(work)
-	if err != nil {
-		return s, err
-	}
-	s, err = lay(ctx, segment.OSFS(root, segment.OSOptions{SyncOnCloseOnly: true}), o)
-	if err = errors.Join(err, root.Close()); err != nil {
-		return s, err
-	}
-	return s, os.Rename(work, into)
+	return s, err
 }
 
 // choose finds the run that is meant.

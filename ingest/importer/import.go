@@ -7,8 +7,7 @@ import (
 	"errors"
 	"fmt"
 	"io"
-	"os"
-	"path/filepath"
+	"io/fs"
 	"slices"
 	"time"
 
@@ -53,33 +52,14 @@ type Summary struct {
 // config.Problems with the row's number where the file is wrong; then, as after
 // any other error, nothing is left behind.
 func Import(into string, o Options) (s Summary, err error) {
-	if _, err := os.Lstat(into); err == nil {
-		return s, config.Problem{What: into + " exists already", Fix: "give a folder that is not there yet"}
+	err = segment.MakeFolder(into, func(fsys segment.FS) (err error) {
+		s, err = fill(fsys, o)
+		return err
+	})
+	if errors.Is(err, fs.ErrExist) {
+		err = config.Problem{What: into + " exists already", Fix: "give a folder that is not there yet"}
 	}
-	if err := os.MkdirAll(filepath.Dir(filepath.Clean(into)), 0o755); err != nil {
-		return s, err
-	}
-	work, err := os.MkdirTemp(filepath.Dir(filepath.Clean(into)), ".importing-*")
-	if err != nil {
-		return s, err
-	}
-	defer func() {
-		if err != nil {
-			err = errors.Join(err, os.RemoveAll(work))
-		}
-	}()
-	if err := os.Chmod(work, 0o755); err != nil {
-		return s, err
-	}
-	root, err := os.OpenRoot(work)
-	if err != nil {
-		return s, err
-	}
-	s, err = fill(segment.OSFS(root, segment.OSOptions{SyncOnCloseOnly: true}), o)
-	if err = errors.Join(err, root.Close()); err != nil {
-		return s, err
-	}
-	return s, os.Rename(work, into)
+	return s, err
 }
 
 // fill lays the run out in an empty folder.
