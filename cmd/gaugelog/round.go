@@ -36,7 +36,7 @@ there with "gaugelog mark".
 
 A reading that does not fit what the board showed before is questioned at once (a
 misread digit, the wrong board): take it again, or "k" keeps it. "u" takes the last
-reading back, "s" skips a board, "done" or the end of the input ends. A gauge whose
+reading back, "s" skips a board, "done" or the end of the input ends, and Enter behind the last board. A gauge whose
 frame does not say "button: true" is read when Enter is pressed on an empty line.
 
 A reading is on disk once the next one was taken or the walk has ended. The port

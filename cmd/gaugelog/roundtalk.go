@@ -31,9 +31,6 @@ func (t *roundTalk) run(ctx context.Context) error {
 	}
 	t.prompt()
 	for {
-		if b, _ := t.walk.Board(); b == nil {
-			return nil
-		}
 		select {
 		case <-ctx.Done():
 			return nil // what was taken counts
@@ -46,7 +43,7 @@ func (t *roundTalk) run(ctx context.Context) error {
 				return err
 			}
 		case text, open := <-t.lines:
-			if !open || text == "done" {
+			if !open || text == "done" || text == "" && t.finished() {
 				return nil
 			}
 			if err := t.typed(ctx, text); err != nil {
@@ -56,7 +53,17 @@ func (t *roundTalk) run(ctx context.Context) error {
 	}
 }
 
+// finished says that every board had its turn; the last reading can still be
+// taken back.
+func (t *roundTalk) finished() bool {
+	b, _ := t.walk.Board()
+	return b == nil
+}
+
 func (t *roundTalk) prompt() {
+	if t.finished() {
+		fmt.Fprintln(t.out, "every board had its turn: Enter ends, u takes the last reading back")
+	}
 	if b, n := t.walk.Board(); b != nil {
 		last := "not read before"
 		if k := len(b.Before); k > 0 {
@@ -67,6 +74,10 @@ func (t *roundTalk) prompt() {
 }
 
 func (t *roundTalk) take(r device.Reading) error {
+	if t.finished() {
+		t.prompt()
+		return nil
+	}
 	q, err := t.walk.Take(round.Reading{At: r.At.Wall, MM: r.MM}, r)
 	if err != nil {
 		return err
@@ -95,6 +106,9 @@ func (t *roundTalk) typed(ctx context.Context, text string) error {
 			return nil
 		}
 	case "s":
+		if t.finished() {
+			break
+		}
 		if err := t.walk.Skip(); err != nil {
 			return err
 		}
