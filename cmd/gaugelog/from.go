@@ -34,7 +34,7 @@ func (f *fromFlags) add(fl *pflag.FlagSet) {
 
 // fromWords are what a command's help says of --from.
 const fromWords = `With --from and --rig the run is read from a time-series server that "gaugelog forward"
-wrote to, by its query interface (InfluxQL over HTTP: nothing is lost) or its JSON
+wrote to, by its query interface (InfluxQL over HTTP: every figure comes back) or its JSON
 export (whole milliseconds and no words; what is lost is said).`
 
 // args asks for one run folder, or none with --from.
