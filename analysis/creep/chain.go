@@ -12,7 +12,7 @@ import (
 // chainFamily is a Kelvin chain with one element per decade or a little
 // more, from a third of the first time read to three times the last.
 func chainFamily(tMin, tMax float64) family {
-	f := family{model: KelvinChain, names: []string{"d0"}, units: []string{"mm/N"}, terms: []response{instant}}
+	f := family{model: KelvinChain, names: []string{"d0"}, units: []string{"mm/N"}, terms: []term{instant}}
 	lo, hi := math.Log10(0.3*tMin), math.Log10(3*tMax)
 	n := max(int(math.Ceil((hi-lo)*1.2))+1, 3)
 	for i := range n {

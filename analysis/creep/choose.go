@@ -81,13 +81,14 @@ func Analyse(in Input, o Options) (*Analysis, error) {
 	a := &Analysis{}
 	unload := in.unloading()
 	var whole, loading []*Fit
-	var both sync.WaitGroup
+	var apart sync.WaitGroup // what does not wait for a law
 	if unload != nil {
 		part := in.until(unload.AtH)
-		both.Go(func() { loading = new(Analysis).fitAll(&part) })
+		apart.Go(func() { loading = new(Analysis).fitAll(&part) })
 	}
+	apart.Go(func() { a.Acceleration = in.watch() })
 	whole = a.fitAll(&in)
-	both.Wait()
+	apart.Wait()
 	if unload == nil {
 		loading = whole
 		a.note("no-unloading", "the beam was not unloaded: no recovery, no permanent set, and the law is not checked against a recovery")

@@ -3,6 +3,8 @@ package creep
 import (
 	"fmt"
 	"math"
+
+	"gonum.org/v1/gonum/floats"
 )
 
 // layLoads gives every load its own influence on every gauge, near the one
@@ -78,14 +80,11 @@ func (s *system) holdLaw(linear []float64, shape float64) {
 			if n.kind != kindLoad {
 				continue
 			}
-			n.fixed = s.parts[i].column(func(t float64) float64 {
-				s.fam.columns(t, n.load, shape, s.value, s.slope)
-				var sag float64
-				for k, c := range linear {
-					sag += c * s.value[k]
-				}
-				return sag
-			})
+			value, _ := s.fam.columns(s.parts[i].TimeH, n.load, shape)
+			n.fixed = make([]float64, len(s.parts[i].TimeH))
+			for k, c := range linear {
+				floats.AddScaled(n.fixed, c, value[k])
+			}
 		}
 	}
 }

@@ -99,31 +99,31 @@ func TestAnalyticVectors(t *testing.T) {
 // ages present must give the same, and finite differences the derivative.
 func TestRamps(t *testing.T) {
 	for name, c := range map[string]struct {
-		r     response
+		r     term
 		shape float64
 	}{"instant": {instant, 0}, "power": {power, 0.23}, "log": {logarithm, math.Log(0.3)}, "exponential": {exponential, math.Log(4)}, "flow": {flow, 0}} {
 		for _, ramp := range []float64{0, 1e-5, 1.0 / 60, 2} {
-			for _, age := range []float64{1e-6, 0.01, 0.5, 1.9, 2, 3, 50, 9000} {
-				got, slope := c.r(age, ramp, c.shape)
-				want, _ := c.r(age, 0, c.shape)
+			for _, age := range []float64{1e-6, 0.01, 0.5, 1.9, 2, 3, 50, 990, 1010, 9000} {
+				got, slope := c.r(ramp, c.shape)(age)
+				want, _ := c.r(0, c.shape)(age)
 				if ramp > 0 {
 					lo, width := max(age-ramp, 0), min(age, ramp)
 					// Substituting s = lo + width x^8 tames the root at 0.
 					want = quad.Fixed(func(x float64) float64 {
-						v, _ := c.r(lo+width*math.Pow(x, 8), 0, c.shape)
+						v, _ := c.r(0, c.shape)(lo + width*math.Pow(x, 8))
 						return v * 8 * math.Pow(x, 7)
 					}, 0, 1, 200, nil, 0) * width / ramp
 				}
 				if math.Abs(got-want) > 2e-10*(1+math.Abs(want)) {
 					t.Errorf("%s, ramp %g, age %g: %.12g, quadrature %.12g", name, ramp, age, got, want)
 				}
-				d := fd.Derivative(func(s float64) float64 { v, _ := c.r(age, ramp, s); return v }, c.shape, &fd.Settings{Formula: fd.Central})
+				d := fd.Derivative(func(s float64) float64 { v, _ := c.r(ramp, s)(age); return v }, c.shape, &fd.Settings{Formula: fd.Central})
 				if math.Abs(slope-d) > 1e-6*(1+math.Abs(d)) {
 					t.Errorf("%s, ramp %g, age %g: slope %.9g, differences %.9g", name, ramp, age, slope, d)
 				}
 			}
 		}
-		if v, s := c.r(-1, 0.1, c.shape); v != 0 || s != 0 {
+		if v, s := c.r(0.1, c.shape)(-1); v != 0 || s != 0 {
 			t.Errorf("%s answers before its load", name)
 		}
 	}

@@ -22,6 +22,7 @@ type noise struct {
 // newNoise prepares the filter for bins at timeH with u.
 func newNoise(timeH, u []float64, scale, slow, fadeH float64) *noise {
 	n := &noise{scale: scale, slow: slow, fadeH: fadeH}
+	product := 1.0 // of variances whose logarithm is still to be taken
 	n.decay, n.gain, n.sd = make([]float64, len(u)), make([]float64, len(u)), make([]float64, len(u))
 	left := slow * slow
 	for i := range u {
@@ -34,9 +35,15 @@ func newNoise(timeH, u []float64, scale, slow, fadeH float64) *noise {
 		total := left + white
 		n.gain[i] = left / total
 		n.sd[i] = math.Sqrt(total)
-		n.logDet += math.Log(total)
 		left *= white / total
+		// One logarithm for many bins: the product stays far from the ends of
+		// what a float64 holds.
+		if product *= total; product < 1e-200 || product > 1e200 {
+			n.logDet += math.Log(product)
+			product = 1
+		}
 	}
+	n.logDet += math.Log(product)
 	return n
 }
 

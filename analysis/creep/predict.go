@@ -14,15 +14,13 @@ type Value struct{ Value, U float64 }
 // gradient returns the law's sag for the changes at tH and its derivatives by
 // the law's coefficients and, where there is one, the search coordinate.
 func (f *Fit) gradient(tH float64, changes []Change) (sag float64, g []float64) {
-	n := len(f.fam.names)
-	value, slope := make([]float64, n), make([]float64, n)
-	f.fam.columns(tH, changes, f.shape, value, slope)
+	value, slope := f.fam.columns([]float64{tH}, changes, f.shape)
 	var byShape float64
 	for j, c := range f.linear {
-		sag += c * value[j]
-		byShape += c * slope[j]
+		sag += c * value[j][0]
+		byShape += c * slope[j][0]
+		g = append(g, value[j][0])
 	}
-	g = value
 	if f.fam.shape != "" {
 		g = append(g, byShape)
 	}

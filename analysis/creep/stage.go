@@ -16,7 +16,7 @@ const (
 	Tertiary  Stage = "tertiary"
 )
 
-// stage fills Rate, Method, Stage and Acceleration.
+// stage fills Rate, Method and Stage; Acceleration is known.
 func (a *Analysis) stage(in *Input) {
 	f := a.Best
 	var age, sag []float64
@@ -39,7 +39,6 @@ func (a *Analysis) stage(in *Input) {
 		}
 	}
 	a.Stage = stageOf(age, sag, f, in)
-	a.Acceleration = in.watch()
 	if a.Acceleration.CautionH != nil {
 		a.Stage = Tertiary
 	}

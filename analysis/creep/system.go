@@ -53,7 +53,6 @@ type system struct {
 	searched []int
 	notes    []Note
 
-	value, slope []float64
 	// memory holds the last lagged columns of each ambient record, and terms
 	// the law's columns at the last shape: design and derivative ask for the
 	// same ones.
@@ -73,20 +72,9 @@ func (s *system) law(shape float64) lawColumns {
 	if s.terms.value != nil && s.terms.shape == shape {
 		return s.terms
 	}
-	n := len(s.fam.names)
 	m := lawColumns{shape: shape}
 	for i := range s.parts {
-		p := &s.parts[i]
-		value, slope := make([][]float64, n), make([][]float64, n)
-		for j := range n {
-			value[j], slope[j] = make([]float64, len(p.TimeH)), make([]float64, len(p.TimeH))
-		}
-		for r, t := range p.TimeH {
-			s.fam.columns(t, p.Changes, shape, s.value, s.slope)
-			for j := range n {
-				value[j][r], slope[j][r] = s.value[j], s.slope[j]
-			}
-		}
+		value, slope := s.fam.columns(s.parts[i].TimeH, s.parts[i].Changes, shape)
 		m.value, m.slope = append(m.value, value), append(m.slope, slope)
 	}
 	s.terms = m
@@ -96,7 +84,7 @@ func (s *system) law(shape float64) lawColumns {
 // newSystem lays out rows and columns. lags gives ln lag of each ambient
 // record to start from; nil: the middle of its bounds.
 func newSystem(in *Input, fam family, lags []float64) *system {
-	s := &system{in: in, fam: fam, value: make([]float64, len(fam.names)), slope: make([]float64, len(fam.names)), memory: map[int]lagColumns{}}
+	s := &system{in: in, fam: fam, memory: map[int]lagColumns{}}
 	for i := range in.Series {
 		q := &in.Series[i]
 		s.parts = append(s.parts, seriesPart{Series: q, noise: newNoise(q.TimeH, q.U, 1, 0, 1)})

@@ -247,21 +247,9 @@ func merge(list []interval, gap int64) []interval {
 // findHot says where single readings are worth looking at: around the marks,
 // and wherever the bins show a jump or an excursion.
 func (r *run) findHot() {
-	var hot []interval
-	for gi := range r.gauges {
-		g := &r.gauges[gi]
-		sigma := func(p point) float64 { return binSigma(g, p) }
-		for _, t := range jumps(g, g.seq, []int{1, 2, 4, 8}, sigma, 0.75) {
-			pad := 1 + t.scale/2
-			lo, hi := max(0, t.index-pad), min(len(g.seq)-1, t.index+1+pad)
-			hot = append(hot, interval{g.seq[lo].from, g.seq[hi].to})
-		}
-		hot = append(hot, excursions(g)...)
-		_, singles := hampel(g, g.seq)
-		for _, t := range singles {
-			hot = append(hot, interval{t.lo, t.hi})
-		}
-	}
+	shows := make([][]interval, len(r.gauges))
+	r.eachGauge(func(i int) { shows[i] = r.gauges[i].restless() })
+	hot := slices.Concat(shows...)
 	for _, m := range r.h.Marks {
 		if m.Kind != "load" && m.Kind != "touch" {
 			continue
@@ -276,6 +264,22 @@ func (r *run) findHot() {
 		hot[i].from, hot[i].to = hot[i].from-r.pad(hot[i].from), hot[i].to+r.pad(hot[i].to)
 	}
 	r.hot = merge(hot, 0)
+}
+
+// restless says where the bins show a jump or an excursion.
+func (g *gauge) restless() (hot []interval) {
+	sigma := func(p point) float64 { return binSigma(g, p) }
+	for _, t := range jumps(g, g.seq, []int{1, 2, 4, 8}, sigma, 0.75) {
+		pad := 1 + t.scale/2
+		lo, hi := max(0, t.index-pad), min(len(g.seq)-1, t.index+1+pad)
+		hot = append(hot, interval{g.seq[lo].from, g.seq[hi].to})
+	}
+	hot = append(hot, excursions(g)...)
+	_, singles := hampel(g, g.seq)
+	for _, t := range singles {
+		hot = append(hot, interval{t.lo, t.hi})
+	}
+	return hot
 }
 
 // binSigma is the scatter of a bin's median, as a single point's.

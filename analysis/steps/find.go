@@ -3,8 +3,11 @@ package steps
 import (
 	"errors"
 	"fmt"
+	"runtime"
 
 	"gaugelog/analysis/history"
+
+	"golang.org/x/sync/errgroup"
 )
 
 // Find says what happened in a run. It fails only where the run cannot be
@@ -23,8 +26,9 @@ func Find(h *history.History, opt Options) (*Findings, error) {
 		opt.Gravity = standardGravity
 	}
 	r := &run{h: h, opt: opt, out: &Findings{}}
-	for i := range h.Rig.Gauges {
-		r.gauges = append(r.gauges, newGauge(h, i))
+	r.gauges = make([]gauge, len(h.Rig.Gauges))
+	r.eachGauge(func(i int) { r.gauges[i] = newGauge(h, i) })
+	for i := range r.gauges {
 		if len(r.gauges[i].seq) == 0 {
 			r.warn("gauge-without-readings", i, 0, fmt.Sprintf("gauge %s left no reading", r.name(i)))
 		}
@@ -47,6 +51,17 @@ func Find(h *history.History, opt Options) (*Findings, error) {
 	r.finish()
 	r.tooFew()
 	return r.out, nil
+}
+
+// eachGauge does what concerns one gauge alone for all of them, side by side,
+// and waits.
+func (r *run) eachGauge(do func(i int)) {
+	var all errgroup.Group
+	all.SetLimit(runtime.GOMAXPROCS(0))
+	for i := range r.gauges {
+		all.Go(func() error { do(i); return nil })
+	}
+	_ = all.Wait() // none of them fails
 }
 
 // tooFew says so where no gauge left more than one reading, and silences what
