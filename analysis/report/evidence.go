@@ -19,9 +19,9 @@ func (b *builder) corrections() Section {
 		Lead: "The recorded readings are unchanged; every correction below is made in the analysis."}
 	if len(b.r.Disturbances) > 0 {
 		t := Table{Caption: "Disturbances", Columns: []Column{
-			{Name: "Kind", Text: true}, {Name: "Gauges", Text: true}, {Name: "From", Text: true}, {Name: "To", Text: true},
+			{Name: "No."}, {Name: "Kind", Text: true}, {Name: "Gauges", Text: true}, {Name: "From", Text: true}, {Name: "To", Text: true},
 			{Name: "Size", Text: true}, {Name: "Treated", Text: true}, {Name: "Evidence", Text: true}}}
-		for _, d := range b.r.Disturbances {
+		for i, d := range b.r.Disturbances {
 			to, size := "", ""
 			if d.To != nil {
 				to = b.local(*d.To)
@@ -36,7 +36,7 @@ func (b *builder) corrections() Section {
 			if len(d.Candidates) > 0 {
 				kind += ": " + strings.Join(d.Candidates, " or ")
 			}
-			t.Rows = append(t.Rows, []string{kind, strings.Join(d.Gauges, ", "), b.local(d.From), to, size, d.Treated, d.Evidence})
+			t.Rows = append(t.Rows, []string{whole(int64(i + 1)), kind, strings.Join(d.Gauges, ", "), b.local(d.From), to, size, d.Treated, d.Evidence})
 		}
 		t.Says = "Size is the disturbance's own effect on the apparent sag."
 		s.Blocks = append(s.Blocks, t)

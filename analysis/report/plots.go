@@ -146,6 +146,11 @@ func (b *builder) historyFigure() (Figure, bool) {
 	}
 	p := newPlot("time from the first reading, "+unit, "sag, "+b.u.of("mm"))
 	sagDown(p)
+	caption := "Sag of every gauge over the whole run, net of support movement and of disturbances' offsets."
+	if hs := b.disturbed(per); len(hs) > 0 {
+		p.Add(hs)
+		caption += " Grey lines and bands: the disturbances, by their numbers in the table of disturbances."
+	}
 	for i, g := range b.r.Series.Gauges {
 		var line plotter.XYs
 		for j := range g.TimeS {
@@ -158,7 +163,7 @@ func (b *builder) historyFigure() (Figure, bool) {
 		addLine(p, line, lineStyle(i), named(name, i, len(b.r.Series.Gauges)))
 	}
 	return Figure{ID: "history", Width: 170, Height: 66, Plot: p,
-		Caption: "Sag of every gauge over the whole run, net of support movement and of disturbances' offsets.",
+		Caption: caption,
 		Alt:     "Sag of all gauges against time over the whole run."}, len(b.r.Series.Gauges) > 0
 }
 
