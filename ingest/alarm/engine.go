@@ -34,7 +34,7 @@ type Fact struct {
 
 // Alarm is one alarm from its raising on.
 type Alarm struct {
-	// ID names it within one process.
+	// ID names it within the run: no two alarms have had the same.
 	ID      int    `json:"id"`
 	Cause   string `json:"cause"`
 	Subject string `json:"gauge,omitempty"`
@@ -74,6 +74,7 @@ type state struct {
 	alarm      *Alarm
 	asked, let time.Time // since when facts ask for it, or let it go
 	told       time.Time // when the last message went out
+	left       *Alarm    // of an earlier recorder, not over as far as is known
 	visited    bool
 }
 
@@ -83,19 +84,6 @@ func NewEngine(wanted func(cause string) bool) *Engine {
 }
 
 func key(cause, subject string) string { return cause + "\x00" + subject }
-
-// Restore tells the engine of an alarm that an earlier process raised, from
-// its event's gauge and detail, so that it is not told twice within a day.
-func (e *Engine) Restore(subject, detail string, at time.Time) {
-	cause, _, ok := strings.Cut(detail, ":")
-	if _, known := rules[cause]; !ok || !known {
-		return
-	}
-	s := e.state(cause, subject)
-	if at.After(s.told) {
-		s.told = at
-	}
-}
 
 func (e *Engine) state(cause, subject string) *state {
 	k := key(cause, subject)
@@ -127,7 +115,7 @@ func (e *Engine) Step(now time.Time, facts []Fact) Step {
 		e.step(s, r, f, now, &out)
 	}
 	for k, s := range e.states {
-		if s.visited || s.alarm == nil {
+		if s.visited || s.alarm == nil && s.left == nil {
 			continue
 		}
 		cause, subject, _ := strings.Cut(k, "\x00")
@@ -157,7 +145,7 @@ func (e *Engine) step(s *state, r rule, f Fact, now time.Time, out *Step) {
 		if s.let.IsZero() {
 			s.let = now
 		}
-		if s.alarm != nil && now.Sub(s.let) >= r.over {
+		if now.Sub(s.let) >= r.over {
 			e.end(s, now, out)
 		}
 	case Leave:
@@ -166,7 +154,11 @@ func (e *Engine) step(s *state, r rule, f Fact, now time.Time, out *Step) {
 }
 
 func (e *Engine) raise(s *state, r rule, f Fact, now time.Time, out *Step) {
-	s.alarm = &Alarm{ID: e.nextID, Cause: f.Cause, Subject: f.Subject, Level: r.level, Text: f.Text, Advice: r.advice, Raised: now}
+	s.alarm = &Alarm{Cause: f.Cause, Subject: f.Subject, Level: r.level, Advice: r.advice, Raised: now}
+	if s.left != nil {
+		s.alarm, s.left = s.left, nil
+	}
+	s.alarm.ID, s.alarm.Text = e.nextID, f.Text
 	e.nextID++
 	out.Happened = append(out.Happened, happening(ingest.AlarmRaised, s.alarm))
 	if s.told.IsZero() || now.Sub(s.told) >= messageEvery {
@@ -175,14 +167,22 @@ func (e *Engine) raise(s *state, r rule, f Fact, now time.Time, out *Step) {
 	}
 }
 
+// end lets an alarm go, or one that an earlier recorder left and that is no more.
 func (e *Engine) end(s *state, now time.Time, out *Step) {
-	s.alarm.Over = now
-	out.Happened = append(out.Happened, happening(ingest.AlarmOver, s.alarm))
-	e.past = append(e.past, *s.alarm)
+	a := s.alarm
+	if a == nil {
+		a = s.left
+	}
+	if a == nil {
+		return
+	}
+	a.Over = now
+	out.Happened = append(out.Happened, happening(ingest.AlarmOver, a))
+	e.past = append(e.past, *a)
 	if len(e.past) > mostPast {
 		e.past = slices.Clone(e.past[1:])
 	}
-	s.alarm = nil
+	s.alarm, s.left = nil, nil
 }
 
 func happening(kind string, a *Alarm) ingest.Happening {
@@ -202,7 +202,7 @@ func (e *Engine) See(id int, by string, now time.Time) (ingest.Happening, bool, 
 		s.alarm.Seen, s.alarm.SeenBy = now, by
 		h := happening(ingest.AlarmSeen, s.alarm)
 		if by != "" {
-			h.Detail += " (seen by " + by + ")"
+			h.Detail += seenBy + by + ")"
 		}
 		return h, true, nil
 	}

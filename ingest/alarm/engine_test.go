@@ -106,16 +106,6 @@ func TestOneMessageADay(t *testing.T) {
 	}
 }
 
-func TestRestoredAlarmsAreNotToldAgain(t *testing.T) {
-	e := NewEngine(every)
-	e.Restore("mid", "silent: nothing has come", noon.Add(-time.Hour))
-	e.Restore("mid", "no such cause: x", noon)
-	e.Restore("mid", "garbage", noon)
-	if raised, _, told := feed(e, "silent", noon, 10, func(int) Wish { return Raise }); raised != 1 || told != 0 {
-		t.Errorf("raised %d, told %d; want 1, 0", raised, told)
-	}
-}
-
 func TestWhatIsOffIsNotRaised(t *testing.T) {
 	e := NewEngine(func(c string) bool { return c != "knock" })
 	if raised, _, told := feed(e, "knock", noon, 100, func(int) Wish { return Raise }); raised+told != 0 {

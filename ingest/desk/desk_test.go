@@ -14,10 +14,8 @@ import (
 
 	"gaugelog/config"
 	"gaugelog/ingest"
-	"gaugelog/ingest/alarm"
 	"gaugelog/ingest/desk"
 	"gaugelog/ingest/desk/desktest"
-	"gaugelog/ingest/segment"
 )
 
 func TestMain(m *testing.M) { goleak.VerifyTestMain(m) }
@@ -159,92 +157,6 @@ func TestBinsOverARestart(t *testing.T) {
 	if read := count(); kept < read || kept > read+1 || damaged != read || read < 1440 {
 		t.Errorf("%d readings from the stored bins, %d with a damaged file, %d without", kept, damaged, read)
 	}
-}
-
-// Alarms reach the page's look, the run's events and the messengers.
-func TestAlarmsFromARecording(t *testing.T) {
-	t.Parallel()
-	told := &teller{}
-	outbox := alarm.NewOutbox(discard, told)
-	ctx, stop := contextOf(t)
-	var running sync.WaitGroup
-	running.Go(func() { outbox.Run(ctx) })
-	defer func() { stop(); running.Wait() }()
-	w := desktest.New(t, desktest.Options{Past: 2 * time.Hour, Outbox: outbox, Outlook: func(*desktest.World) *desk.Outlook {
-		size := -0.012
-		return &desk.Outlook{At: time.Now().UnixNano(), ClearArea: time.Now().UnixNano(), Caution: time.Now().UnixNano(), Disturbances: []desk.Disturbance{
-			{Kind: "gauge-knock", Gauges: []string{"mid"}, From: time.Now().Add(-time.Hour).UnixNano(), Size: &size},
-			{Kind: "load-change", From: time.Now().Add(-2 * time.Hour).UnixNano()},
-			{Kind: "bench-knock", From: time.Now().Add(-48 * time.Hour).UnixNano()},
-		}}
-	}})
-	s := until(t, w, "the analysis's alarms", func(s *desk.Snapshot) bool {
-		return raised(s, "clear-area") && raised(s, "caution") && raised(s, "knock") && raised(s, "load-changed")
-	})
-	if len(s.Alarms) != 4 || s.Alarms[0].Cause != "clear-area" || s.Alarms[0].Level != alarm.Danger {
-		t.Errorf("the alarms are %+v", s.Alarms)
-	}
-	if raised(s, "clock") {
-		t.Error("an alarm that is off was raised")
-	}
-	w.Hush("seat", true)
-	w.Move("mid", 6) // beyond the limits of sag and of travel
-	s = until(t, w, "silent, sag and travel", func(s *desk.Snapshot) bool {
-		return raised(s, "silent") && raised(s, "sag")
-	})
-	if !raised(s, "clear-area") || s.Alarms[0].Level != alarm.Danger {
-		t.Errorf("the gravest stands not first: %+v", s.Alarms)
-	}
-	var id int
-	for _, a := range s.Alarms {
-		if a.Cause == "silent" {
-			id = a.ID
-		}
-	}
-	if err := w.Desk.See(t.Context(), id, "mo"); err != nil {
-		t.Fatal(err)
-	}
-	if err := w.Desk.See(t.Context(), 12345, "mo"); err == nil {
-		t.Error("an alarm that is not there was seen")
-	}
-	w.Stop()
-	kinds := events(t, w)
-	for _, want := range []string{"alarm-raised clear-area", "alarm-raised knock mid", "alarm-raised silent seat", "alarm-raised sag", "alarm-seen silent seat"} {
-		if !kinds[want] {
-			t.Errorf("events.lp lacks %q; it has %v", want, kinds)
-		}
-	}
-	if text := told.text(); !strings.Contains(text, "DANGER") || !strings.Contains(text, "do not go near to check") || !strings.Contains(text, alarm.Safety) {
-		t.Errorf("told was %q", text)
-	}
-}
-
-// events lists "kind cause gauge" of events.lp.
-func events(t *testing.T, w *desktest.World) map[string]bool {
-	t.Helper()
-	root, err := os.OpenRoot(w.Run)
-	if err != nil {
-		t.Fatal(err)
-	}
-	defer root.Close()
-	folder, err := segment.OpenFolder(segment.OSFS(root, segment.OSOptions{}))
-	if err != nil {
-		t.Fatal(err)
-	}
-	records, _, err := folder.Log(segment.EventsFile)
-	if err != nil {
-		t.Fatal(err)
-	}
-	out := map[string]bool{}
-	for _, r := range records {
-		if r.Point == nil {
-			continue
-		}
-		detail, _ := r.Point.Value("detail")
-		cause, _, _ := strings.Cut(detail.(string), ":")
-		out[strings.TrimSpace(r.Name+" "+cause+" "+r.Point.Tag("gauge"))] = true
-	}
-	return out
 }
 
 // A panic in the analysis ends neither the desk nor the recording.

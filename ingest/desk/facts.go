@@ -7,6 +7,7 @@ import (
 
 	"gaugelog/ingest"
 	"gaugelog/ingest/alarm"
+	"gaugelog/ingest/segment"
 )
 
 // Thresholds of alarms that the rig file does not set. The shares by which a
@@ -60,6 +61,8 @@ func (d *Desk) silentFacts(s *ingest.Status) []alarm.Fact {
 			f.Wish, f.Text = alarm.Raise, "nothing has come from it since "+d.Local(time.Unix(0, l.Wall)).Format("2 Jan 15:04:05")
 		case l.Silent, !l.Seen && !d.onButton(l) && time.Duration(s.At.Boot-d.o.Start.Boot) > quietAtStart:
 			f.Wish, f.Text = alarm.Raise, "nothing has come from it since the recording began"
+		case !l.Seen:
+			f.Wish = alarm.Leave
 		}
 		out = append(out, f)
 	}
@@ -97,7 +100,7 @@ var knocks = map[string]string{
 func (d *Desk) analysisFacts(now time.Time) []alarm.Fact {
 	o := d.outlook.outlook
 	if o == nil {
-		return nil
+		return d.engine.Waiting("clear-area", "caution", "knock", "load-changed")
 	}
 	var out []alarm.Fact
 	if o.ClearArea != 0 {
@@ -152,18 +155,21 @@ func (d *Desk) machineFacts(s *ingest.Status) []alarm.Fact {
 	return []alarm.Fact{disk, clock}
 }
 
-// restoreAlarms tells the engine what was told within the last day.
+// restoreAlarms tells the engine what earlier recorders raised.
 func (d *Desk) restoreAlarms() {
 	records, err := eventsOf(d.o.FS)
 	if err != nil {
+		d.o.Log.Warn("the alarms raised before are not known", "error", err)
 		return
 	}
+	var l alarm.Ledger
 	for _, r := range records {
-		if r.Name != ingest.AlarmRaised || r.Point == nil {
+		if r.Kind != segment.Event || r.Point == nil {
 			continue
 		}
 		detail, _ := r.Point.Value("detail")
 		text, _ := detail.(string)
-		d.engine.Restore(r.Point.Tag("gauge"), text, time.Unix(0, r.Time))
+		l.Take(r.Name, r.Point.Tag("gauge"), text, time.Unix(0, r.Time))
 	}
+	d.engine.Restore(&l)
 }

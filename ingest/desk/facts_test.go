@@ -134,7 +134,7 @@ func TestThresholds(t *testing.T) {
 		{"disk", free, []at{{-1, over}}, ""},
 		{"frozen", still, []at{{29, over}, {30, raise}}, "it has shown 2.000 mm for 30 min while 2 other gauges moved"},
 		{"frozen", others, []at{{4, leave}, {6, raise}}, "while 2 other gauges moved"},
-		{"silent", bootSeconds, []at{{59, over}, {61, raise}}, "nothing has come from it since the recording began"},
+		{"silent", bootSeconds, []at{{59, leave}, {61, raise}}, "nothing has come from it since the recording began"},
 		{"knock", ago("gauge-knock"), []at{{24.1, over}, {23.9, raise}}, "the gauge was knocked at 1 Mar 12:06"},
 		{"knock", ago("spike"), []at{{1, over}}, ""},
 		{"load-changed", ago("load-change"), []at{{24.1, over}, {1, raise}}, "the load changed without a mark at 2 Mar 11:00"},

@@ -13,6 +13,7 @@ import (
 // others showed when it became so.
 type stillness struct {
 	seen   bool
+	turned bool // it has shown something else since the start
 	value  float64
 	from   int64 // ns by the wall clock
 	latest int64
@@ -29,7 +30,7 @@ func (d *Desk) moved(i int, t int64, v float64) {
 	if s.others == nil {
 		s.others = make([]float64, len(d.still))
 	}
-	s.seen, s.value, s.from = true, v, t
+	s.seen, s.turned, s.value, s.from = true, s.seen, v, t
 	for k := range d.still {
 		s.others[k] = math.NaN()
 		if d.still[k].seen {
@@ -45,11 +46,14 @@ func (d *Desk) frozenFacts() []alarm.Fact {
 	after := int64(d.o.Rig.Alarms.FrozenAfter.Value * 1e9)
 	for i := range d.still {
 		s := &d.still[i]
-		if !s.seen || !d.shouldMove(i) {
+		if !d.shouldMove(i) {
 			continue
 		}
 		f := alarm.Fact{Cause: "frozen", Subject: d.o.Rig.Gauges[i].Name, Wish: alarm.Over}
-		if s.latest-s.from >= after {
+		if !s.turned {
+			f.Wish = alarm.Leave // since the start nothing can be said of it
+		}
+		if s.seen && s.latest-s.from >= after {
 			others := 0
 			for k := range d.still {
 				if k != i && d.shouldMove(k) && math.Abs(d.still[k].value-s.others[k]) > movedCounts*d.o.Rig.Gauges[k].Resolution.Value {

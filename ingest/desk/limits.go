@@ -40,6 +40,11 @@ func (d *Desk) travelFacts(now time.Time, gauges []Gauge) []alarm.Fact {
 // sagFacts compares the greatest sag with the limits: the analysis's figures
 // where they are fresh, else the uncorrected ones, and says which.
 func (d *Desk) sagFacts(now time.Time, gauges []Gauge) []alarm.Fact {
+	if d.rebuilding { // the baseline is not known yet
+		if waiting := d.engine.Waiting("sag", "catcher", "span-over-sag"); waiting != nil {
+			return waiting
+		}
+	}
 	name, sag, kind := d.greatestSag(now, gauges)
 	if name == "" {
 		return nil

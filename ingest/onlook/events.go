@@ -11,9 +11,6 @@ import (
 	"gaugelog/ingest/segment"
 )
 
-// mostEnded bounds the ended alarms that are kept.
-const mostEnded = 50
-
 // events is what the run's events say of its present.
 type events struct {
 	fs      segment.FS
@@ -23,7 +20,7 @@ type events struct {
 	started, stopped bool
 	silent           map[string]bool
 	fault            string
-	raised, ended    []alarm.Alarm
+	alarms           alarm.Ledger
 }
 
 // poll reads the events again where the file has grown.
@@ -64,11 +61,9 @@ func (e *events) take(r *segment.Record) {
 	detail, _ := r.Point.Value("detail")
 	text, _ := detail.(string)
 	gauge := r.Point.Tag("gauge")
-	at := time.Unix(0, r.Time)
 	switch r.Name {
 	case ingest.Started:
-		// A recorder begins without alarms and raises them anew.
-		*e = events{fs: e.fs, size: e.size, written: e.written, started: true, silent: map[string]bool{}, ended: e.ended}
+		*e = events{fs: e.fs, size: e.size, written: e.written, started: true, silent: map[string]bool{}, alarms: e.alarms}
 	case ingest.Stopped:
 		e.stopped = true
 	case ingest.NoReading:
@@ -81,42 +76,8 @@ func (e *events) take(r *segment.Record) {
 		e.fault = text
 	case ingest.DiskBack:
 		e.fault = ""
-	case ingest.AlarmRaised, ingest.AlarmSeen, ingest.AlarmOver:
-		e.alarm(r.Name, gauge, text, at)
 	}
-}
-
-// alarm follows an event about an alarm, whose detail is "cause: text".
-func (e *events) alarm(kind, subject, detail string, at time.Time) {
-	cause, text, ok := strings.Cut(detail, ": ")
-	if !ok {
-		return
-	}
-	i := -1
-	for k := range e.raised {
-		if e.raised[k].Cause == cause && e.raised[k].Subject == subject {
-			i = k
-		}
-	}
-	switch {
-	case kind == ingest.AlarmRaised && i < 0:
-		e.raised = append(e.raised, alarm.Alarm{Cause: cause, Subject: subject, Level: alarm.LevelOf(cause),
-			Text: text, Advice: alarm.Advice(cause), Raised: at})
-	case i < 0:
-	case kind == ingest.AlarmSeen:
-		e.raised[i].Seen = at
-		if _, by, ok := strings.Cut(text, " (seen by "); ok {
-			e.raised[i].SeenBy = strings.TrimSuffix(by, ")")
-		}
-	case kind == ingest.AlarmOver:
-		a := e.raised[i]
-		a.Over = at
-		e.raised = append(e.raised[:i], e.raised[i+1:]...)
-		e.ended = append(e.ended, a)
-		if len(e.ended) > mostEnded {
-			e.ended = e.ended[1:]
-		}
-	}
+	e.alarms.Take(r.Name, gauge, text, time.Unix(0, r.Time))
 }
 
 func notThere(err error) bool { return errors.Is(err, fs.ErrNotExist) }

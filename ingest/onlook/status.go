@@ -77,7 +77,7 @@ func (w *Onlooker) publish(now time.Time) {
 		l.Age = ageOf(l, s.At)
 	}
 	w.status.Store(s)
-	raised, ended := slices.Clone(w.events.raised), slices.Clone(w.events.ended)
+	raised, ended := slices.Clone(w.events.alarms.Raised()), slices.Clone(w.events.alarms.Ended())
 	if s.Closed {
 		raised = nil // nobody watches any more
 	}

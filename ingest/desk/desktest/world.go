@@ -77,6 +77,9 @@ type World struct {
 	// Loaded is when the load was hung on; zero in a world without a past.
 	Loaded time.Time
 
+	o    Options
+	text []byte
+
 	mu     sync.Mutex
 	hushed map[string]bool
 	held   map[string]bool
@@ -98,7 +101,7 @@ func New(tb testing.TB, o Options) *World {
 	if err != nil {
 		tb.Fatal(err)
 	}
-	w.Rig = rig
+	w.Rig, w.o, w.text = rig, o, text
 	now := ingest.SystemClock{}.Now()
 	if o.Past > 0 {
 		w.past(tb, o, text, now)
@@ -250,6 +253,14 @@ func (w *World) run(tb testing.TB, still bool) {
 
 // Stop ends the recording, as the end of the program does.
 func (w *World) Stop() { w.stop() }
+
+// Restart ends the recording and begins another in the same folder, as a new
+// start of the program does. Desk, Runner and Rec are new ones then.
+func (w *World) Restart(tb testing.TB) {
+	tb.Helper()
+	w.stop()
+	w.present(tb, w.o, w.text)
+}
 
 // Feed hands over one reading of every instrument that is not silent.
 func (w *World) Feed() {
