@@ -8,6 +8,7 @@ import (
 	"path"
 	"slices"
 	"sync"
+	"time"
 )
 
 // The logs of a run folder beside its segments.
@@ -22,6 +23,7 @@ type segFile struct {
 	number     int // 0: a foreign name
 	compressed bool
 	size       int64 // as stored
+	modified   time.Time
 	own        bool
 	header     header
 	headed     bool // header is valid
@@ -105,7 +107,7 @@ func (d *Folder) look(f *segFile) error {
 	if err != nil {
 		return fmt.Errorf("%s: %w", f.name, err)
 	}
-	f.size = info.Size()
+	f.size, f.modified = info.Size(), info.ModTime()
 	if f.compressed {
 		if f.index = readFrameIndex(file, f.size); f.index != nil {
 			f.own, f.header, f.headed = f.index.own, f.index.header, f.index.headed
