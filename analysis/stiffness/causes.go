@@ -13,6 +13,7 @@ type cause struct {
 	name, kind, unit, source string
 	u, dof                   float64
 	rectangular              bool
+	shear                    bool // the shear's prior
 	move                     func(*state, float64)
 }
 
@@ -54,23 +55,33 @@ func causes(in *Input, m *model, gravity Value, gravitySource string) []cause {
 				source: "what another curve through the trend before would have said, in units of its u", move: func(s *state, v float64) { s.carried(k, v) }})
 		}
 	}
-	switch m.mode {
-	case shearRatio:
-		ratio, spread := assumedRatio(in.Rig)
-		add("E/G", "B", "1", "assumed: "+m.ratioWords(), ratio*spread, func(s *state, v float64) { s.ratio += v })
-	case shearGiven:
-		g := in.Rig.Specimen.Expect.ShearModulus
-		u, source := g.U, "stated in the rig file"
-		if u == 0 {
-			u, source = statedSpread*g.Value, "expect.shear_modulus, taken within 10 %"
-		}
-		add("shear modulus", "B", "MPa", source, u, func(s *state, v float64) { s.shear += v })
+	if c, has := m.shearPrior(); has {
+		out = append(out, c)
 	}
 	for i := range out {
 		// Friction and gravity somewhere on the globe are known as ranges only.
 		out[i].rectangular = out[i].rectangular || out[i].unit == "N" || (out[i].name == "gravity" && gravity.U == unplacedGravity)
 	}
 	return out
+}
+
+// shearPrior is the assumed E/G or the stated shear modulus as a cause.
+func (m *model) shearPrior() (cause, bool) {
+	switch m.mode {
+	case shearRatio:
+		ratio, spread := assumedRatio(m.rig)
+		return cause{name: "E/G", kind: "B", unit: "1", source: "assumed: " + m.ratioWords(), u: ratio * spread, shear: true,
+			move: func(s *state, v float64) { s.ratio += v }}, true
+	case shearGiven:
+		g := m.rig.Specimen.Expect.ShearModulus
+		u, source := g.U, "stated in the rig file"
+		if u == 0 {
+			u, source = statedSpread*g.Value, "expect.shear_modulus, taken within 10 %"
+		}
+		return cause{name: "shear modulus", kind: "B", unit: "MPa", source: source, u: u, shear: true,
+			move: func(s *state, v float64) { s.shear += v }}, true
+	}
+	return cause{}, false
 }
 
 func (m *model) ratioWords() string {

@@ -110,7 +110,7 @@ func (e *Estimate) shapeCautions() {
 	worst, name := 0.0, ""
 	l := span(e.fit.m.rig)
 	for k, s := range e.fit.in.Steps {
-		line, err := e.fit.line(e.fit.theta, e.fit.st, k, false)
+		line, err := e.fit.line(e.fit.theta, e.fit.best, k, false)
 		if err != nil {
 			continue
 		}

@@ -16,7 +16,7 @@ type Peak struct{ At, Sag Quantity }
 // increments it is each load's response at the initial-sag time, free of
 // older creep.
 func (e *Estimate) Curve(step int, places []float64) ([]float64, error) {
-	s, err := e.fit.line(e.fit.theta, e.fit.st, step, true)
+	s, err := e.fit.line(e.fit.theta, e.fit.best, step, true)
 	if err != nil {
 		return nil, err
 	}
@@ -36,7 +36,7 @@ func (e *Estimate) Curve(step int, places []float64) ([]float64, error) {
 // uncertainties.
 func (e *Estimate) Largest(step int) (*Peak, error) {
 	f := e.fit
-	if _, err := f.line(f.theta, f.st, step, false); err != nil {
+	if _, err := f.line(f.theta, f.best, step, false); err != nil {
 		return nil, err
 	}
 	top := func(t []float64, st *state) beam.Extreme {

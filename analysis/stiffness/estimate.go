@@ -1,7 +1,6 @@
 package stiffness
 
 import (
-	"errors"
 	"fmt"
 	"math"
 
@@ -73,13 +72,6 @@ type Residual struct {
 // Warning is something the reader of the figures must know.
 type Warning struct{ Code, Gauge, Text string }
 
-// Shear counts as told by the test if bending and shear are not nearly one
-// (practice: correlation within 0.97) and S is known within 20 %.
-const (
-	greatestCorrelation = 0.97
-	greatestShearU      = 0.20
-)
-
 // Compute fits the beam to all gauges and steps. Errors say what the test
 // cannot give and what would mend it: no readings, fewer readings than
 // unknowns, a layout that does not stand, a section without dimensions.
@@ -88,68 +80,20 @@ func Compute(in Input) (*Estimate, error) {
 	if err != nil {
 		return nil, err
 	}
-	f, from, words, corr, err := chooseShear(&in, m)
+	c, err := chooseShear(&in, m)
 	if err != nil {
 		return nil, err
 	}
-	e := &Estimate{InitialAfterS: in.InitialAfterS, Section: m.sec, Gravity: f.gravity, ShearFrom: from, ShearWords: words, CorrelationBendingShear: corr}
-	f = e.tryRigid(f)
-	e.fit = f
+	e := &Estimate{InitialAfterS: in.InitialAfterS, Section: m.sec, Gravity: c.f.gravity, ShearFrom: c.from, ShearWords: c.words, CorrelationBendingShear: c.corr}
+	if c.apart != "" {
+		e.warn("shear-not-as-expected", "", "%s", c.apart)
+	}
+	e.fit = e.tryRigid(c.f)
 	e.figures()
 	e.supports()
 	e.gauges()
 	e.cautions()
 	return e, nil
-}
-
-// chooseShear fits with the shear free; where the test cannot tell it, with
-// the stated or assumed shear modulus, or none.
-func chooseShear(in *Input, m *model) (f *fitted, from, words string, corr *float64, err error) {
-	free := *m
-	free.mode = shearFree
-	why := "the readings do not fix it"
-	if f, err := newFit(in, &free); err == nil && f.theta[0] > 0 {
-		c := f.sol.Correlation(0, 1)
-		corr = &c
-		u := f.sol.U(1) / f.theta[1]
-		switch {
-		case !(f.theta[1] > 0) || u > greatestShearU:
-			why = fmt.Sprintf("it would be uncertain by %.0f %%", 100*math.Abs(u))
-			if !(f.theta[1] > 0) {
-				why = "the readings show none beyond their uncertainty"
-			}
-		case math.Abs(c) > greatestCorrelation:
-			why = fmt.Sprintf("bending and shear cannot be told apart here (correlation %.2f)", c)
-		default:
-			return f, "test", fmt.Sprintf("told by the test (correlation with bending %.2f)", c), corr, nil
-		}
-	}
-	held := *m
-	exp := in.Rig.Specimen.Expect.ShearModulus
-	from = "prior"
-	switch {
-	case !(m.sec.Area.Value > 0):
-		held.mode, from = shearNone, "none"
-		words = "left out: " + why + ", and the section states no area"
-	case exp != nil && exp.Value > 0:
-		held.mode = shearGiven
-		words = fmt.Sprintf("taken from expect.shear_modulus, %g MPa, because %s", exp.Value, why)
-	default:
-		held.mode = shearRatio
-		words = fmt.Sprintf("taken from E/G = %s, because %s; gauges on overhangs would tell", held.ratioWords(), why)
-	}
-	f, err = newFit(in, &held)
-	if err != nil {
-		return nil, "", "", nil, tooFew(err, len(m.rows), held.unknowns())
-	}
-	return f, from, words, corr, f.rises()
-}
-
-func tooFew(err error, rows, unknowns int) error {
-	if rows < unknowns || errors.Is(err, lsq.ErrRank) {
-		return fmt.Errorf("%d increments cannot give %d unknowns: %w; mend: read more gauges or steps, or state the supports' compliance and take their gauges out", rows, unknowns, err)
-	}
-	return err
 }
 
 // tryRigid lets supports move as they like in each step where yielding in
@@ -207,7 +151,7 @@ func (e *Estimate) figures() {
 		}
 		e.Correlation = append(e.Correlation, row)
 	}
-	y, _, err := m.evaluate(f.st, f.theta)
+	y, _, err := m.evaluate(f.best, f.theta)
 	for r, o := range m.rows {
 		if err == nil {
 			e.Residuals = append(e.Residuals, Residual{Gauge: m.rig.Gauges[o.gauge].Name, Step: f.in.Steps[o.step].Name, MM: o.mm - y[r], U: math.Sqrt(f.cov.At(r, r))})

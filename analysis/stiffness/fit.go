@@ -26,6 +26,9 @@ type fitted struct {
 	gain    *mat.Dense    // unknowns x rows: theta = gain y
 	sol     *lsq.Solution
 	birge   float64
+	best    *state        // st with the shear as the readings and its prior have it
+	shear   *mat.VecDense // change of the shear's best value per unit left over of each reading; nil: no prior
+	learns  cause         // that prior
 }
 
 func newFit(in *Input, m *model) (*fitted, error) {
@@ -34,12 +37,7 @@ func newFit(in *Input, m *model) (*fitted, error) {
 		return nil, err
 	}
 	f := &fitted{in: in, m: m, gravity: g, st: nominal(in.Rig, m.sec), birge: 1}
-	switch m.mode {
-	case shearRatio:
-		f.st.ratio, _ = assumedRatio(in.Rig)
-	case shearGiven:
-		f.st.shear = in.Rig.Specimen.Expect.ShearModulus.Value
-	}
+	m.assume(f.st)
 	f.causes = causes(in, m, g, source)
 	f.read = m.readingCovariance()
 	return f, f.solve()
@@ -230,5 +228,5 @@ func (f *fitted) gains() error {
 	if f.sol.DOF >= 5 && lsq.Chi2P(f.sol.Chi2, f.sol.DOF) < 0.05 {
 		f.birge = math.Sqrt(f.sol.Chi2 / float64(f.sol.DOF))
 	}
-	return nil
+	return f.learn()
 }

@@ -66,13 +66,14 @@ func ThreePoint(l, b, h, slope float64) float64 {
 // its uncertainty: a linear form on all readings, since they give the
 // supports' movement too.
 func (f *fitted) netSag(gauge int, steps map[int]bool) (value, u float64) {
-	l := make([]float64, len(f.m.rows))
+	l, own := make([]float64, len(f.m.rows)), make([]float64, len(f.m.rows))
 	stated := f.statedMovement()
 	for r, o := range f.m.rows {
 		if o.gauge != gauge || !steps[o.step] {
 			continue
 		}
 		l[r]++
+		own[r]++
 		value += o.mm - stated[r]
 		for j := f.m.firstYield(); j < len(f.theta); j++ {
 			value -= f.x.At(r, j) * f.theta[j]
@@ -82,7 +83,17 @@ func (f *fitted) netSag(gauge int, steps map[int]bool) (value, u float64) {
 		}
 	}
 	v := mat.NewVecDense(len(l), l)
-	return value, math.Sqrt(math.Max(0, mat.Inner(v, f.cov, v)))
+	variance := mat.Inner(v, f.cov, v)
+	for c, cs := range f.causes {
+		// What is assumed of the shear is in no reading; it counts through the
+		// supports' movement alone.
+		if cs.shear {
+			all := mat.Dot(v, f.jac.ColView(c))
+			supports := all - mat.Dot(mat.NewVecDense(len(own), own), f.jac.ColView(c))
+			variance += cs.u * cs.u * (supports*supports - all*all)
+		}
+	}
+	return value, math.Sqrt(math.Max(0, variance))
 }
 
 // statedMovement is what supports with a stated compliance and no gauge do to

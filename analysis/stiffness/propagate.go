@@ -39,15 +39,26 @@ type figure func(theta []float64, st *state) float64
 // propagate carries all errors to a figure: through the unknowns and, where
 // the figure uses the input itself (a depth in E = EI/I), directly.
 func (f *fitted) propagate(fig figure) (Quantity, []Line) {
-	value := fig(f.theta, f.st)
+	value := fig(f.theta, f.best)
 	grad := f.gradient(fig)
 	var reach mat.VecDense // change of the figure per unit of each reading
-	reach.MulVec(f.gain.T(), mat.NewVecDense(len(grad), grad))
+	if by := f.learned(fig); by != 0 {
+		// What is learned of the shear is learned from what the fit leaves over.
+		var left mat.VecDense
+		left.MulVec(f.x.T(), f.shear)
+		for j := range grad {
+			grad[j] -= by * left.AtVec(j)
+		}
+		reach.MulVec(f.gain.T(), mat.NewVecDense(len(grad), grad))
+		reach.AddScaledVec(&reach, by, f.shear)
+	} else {
+		reach.MulVec(f.gain.T(), mat.NewVecDense(len(grad), grad))
+	}
 	reading := f.birge * math.Sqrt(math.Max(0, mat.Inner(&reach, f.read, &reach)))
 	lines := []Line{f.readingLine(&reach, reading)}
 	for c, cs := range f.causes {
 		h := cs.u / 10
-		up, down := f.st.clone(), f.st.clone()
+		up, down := f.best.clone(), f.best.clone()
 		cs.move(up, h)
 		cs.move(down, -h)
 		s := (fig(f.theta, up) - fig(f.theta, down)) / (2 * h)
@@ -110,9 +121,9 @@ func (f *fitted) gradient(fig figure) []float64 {
 		}
 		t := append([]float64(nil), f.theta...)
 		t[j] = f.theta[j] + h
-		up := fig(t, f.st)
+		up := fig(t, f.best)
 		t[j] = f.theta[j] - h
-		grad[j] = (up - fig(t, f.st)) / (2 * h)
+		grad[j] = (up - fig(t, f.best)) / (2 * h)
 	}
 	return grad
 }
