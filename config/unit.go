@@ -87,9 +87,12 @@ func allDimensions() []*dimension {
 		complianceDim, stiffnessDim, areaDim, secondMomentDim, sizeDim}
 }
 
+// plainSigns are what plainUnit puts for the typographic signs in a unit.
+var plainSigns = strings.NewReplacer("²", "2", "⁴", "4", "µ", "u", "μ", "u", "°", "")
+
 // plainUnit reduces the typographic spellings of a unit to the plain one.
 func plainUnit(s string) string {
-	s = strings.NewReplacer("²", "2", "⁴", "4", "µ", "u", "μ", "u", "°", "").Replace(s)
+	s = plainSigns.Replace(s)
 	for _, scale := range []string{"C", "F"} {
 		if s == "deg"+scale {
 			return scale

@@ -8,6 +8,7 @@ import (
 	"fmt"
 	"io"
 	"io/fs"
+	"time"
 
 	"gaugelog/config"
 	"gaugelog/ingest/segment"
@@ -17,6 +18,27 @@ import (
 // it can be made again.
 const CacheFile = "report/glance.json"
 
+// AmendmentsFile holds what was learned of the rig after the start.
+const AmendmentsFile = "amendments.yaml"
+
+// Rig reads what a Look needs of a rig file, and applies what was learned since,
+// whatever its date: how a run stands is how it stands now. name stands for the
+// file in messages.
+func Rig(name string, rig, amendments []byte) (*config.Rig, error) {
+	list, err := config.ParseAmendments(AmendmentsFile, amendments)
+	if err != nil {
+		return nil, err
+	}
+	if len(list) == 0 {
+		return config.ParseBrief(name, rig)
+	}
+	whole, err := config.Parse(name, rig)
+	if err != nil {
+		return nil, err
+	}
+	return whole.ApplyAt(list, time.Unix(1<<40, 0))
+}
+
 // kept is a summary with what it was made from.
 type kept struct {
 	Key     string
@@ -25,9 +47,9 @@ type kept struct {
 
 // LookAgain is Look, but for a run that has not grown since the last look it
 // gives what was kept then, without reading the rig file's meaning or any
-// reading. load parses the rig file's bytes. Where the folder may not be
-// written nothing is kept.
-func LookAgain(fsys segment.FS, load func([]byte) (*config.Rig, error)) (*Summary, error) {
+// reading. load makes a rig of the rig file's bytes and those of the amendments,
+// nil for none, as Rig does. Where the folder may not be written nothing is kept.
+func LookAgain(fsys segment.FS, load func(rig, amendments []byte) (*config.Rig, error)) (*Summary, error) {
 	rig, err := read(fsys, segment.RigFile)
 	if err != nil {
 		return nil, err
@@ -42,7 +64,11 @@ func LookAgain(fsys segment.FS, load func([]byte) (*config.Rig, error)) (*Summar
 			return k.Summary, nil
 		}
 	}
-	parsed, err := load(rig)
+	amendments, err := read(fsys, AmendmentsFile)
+	if err != nil && !errors.Is(err, fs.ErrNotExist) {
+		return nil, err
+	}
+	parsed, err := load(rig, amendments)
 	if err != nil {
 		return nil, err
 	}
@@ -73,7 +99,7 @@ func keyOf(fsys segment.FS, rig []byte) (string, error) {
 		}
 		fmt.Fprintln(h, e.Name(), info.Size(), info.ModTime().UnixNano())
 	}
-	for _, name := range []string{segment.MarksFile, segment.EventsFile, "amendments.yaml"} {
+	for _, name := range []string{segment.MarksFile, segment.EventsFile, AmendmentsFile} {
 		size := int64(-1)
 		if f, err := fsys.Open(name); err == nil {
 			if info, err := f.Stat(); err == nil {
@@ -83,7 +109,7 @@ func keyOf(fsys segment.FS, rig []byte) (string, error) {
 		}
 		fmt.Fprintln(h, name, size)
 	}
-	return "5 " + hex.EncodeToString(h.Sum(nil)), nil
+	return "6 " + hex.EncodeToString(h.Sum(nil)), nil
 }
 
 func read(fsys segment.FS, name string) ([]byte, error) {

@@ -168,9 +168,9 @@ func text(r *segment.Record, key string) string {
 	return t
 }
 
-// figures reads three windows: before the first load, a day before the end (or
-// as near to it as there is), and the end. Where the rig names no creep gauge
-// it is the one on the beam that sagged most, as in the analysis.
+// figures reads three windows in one pass: before the first load, a day before
+// the end (or as near to it as there is), and the end. Where the rig names no
+// creep gauge it is the one on the beam that sagged most, as in the analysis.
 func (s *Summary) figures(d *segment.Folder, rig *config.Rig, load, changed int64) error {
 	scale := map[string]float64{}
 	for _, g := range rig.Gauges {
@@ -178,32 +178,30 @@ func (s *Summary) figures(d *segment.Folder, rig *config.Rig, load, changed int6
 			scale[g.Name] = scaleOf(g)
 		}
 	}
-	now, err := medians(d, scale, max(s.Last-window, changed+(s.Last-changed)/2), s.Last)
+	day := s.dayBefore(changed)
+	spans := []segment.Interval{{From: max(s.Last-window, changed+(s.Last-changed)/2), To: s.Last}, {From: day, To: day + window}}
+	if load > 0 {
+		spans = append(spans, segment.Interval{From: load - window, To: load - int64(30*time.Second)})
+	}
+	all, err := medians(d, scale, spans)
 	if err != nil {
 		return err
 	}
-	var base map[string]middle
-	if load > 0 {
-		if base, err = medians(d, scale, load-window, load-int64(30*time.Second)); err != nil {
-			return err
-		}
-	}
+	now, before := all[0], all[1]
 	for _, g := range rig.Gauges {
-		b, known := base[g.Name]
 		n, there := now[g.Name]
-		if sag := n.mm - b.mm; known && there && (s.SagMM == nil || sag > *s.SagMM) {
+		if load == 0 || !there {
+			continue
+		}
+		if b, known := all[2][g.Name]; known && (s.SagMM == nil || n.mm-b.mm > *s.SagMM) {
+			sag := n.mm - b.mm
 			s.Gauge, s.SagMM = g.Name, &sag
 		}
 	}
-	day := s.dayBefore(changed)
 	n, there := now[s.Gauge]
-	if !there || s.Last-window-day < 3*window {
-		return nil
-	}
-	before, err := medians(d, scale, day, day+window)
 	b, known := before[s.Gauge]
-	if err != nil || !known || n.at-b.at < 2*window {
-		return err
+	if !there || !known || s.Last-window-day < 3*window || n.at-b.at < 2*window {
+		return nil
 	}
 	s.RateOverS = float64(n.at-b.at) / 1e9
 	rate := (n.mm - b.mm) / s.RateOverS * 86400
@@ -235,30 +233,49 @@ type middle struct {
 	at int64
 }
 
-// medians are those of the gauges' readings in [from, to]; a gauge without one
-// is not among them.
-func medians(d *segment.Folder, scale map[string]float64, from, to int64) (map[string]middle, error) {
+// medians are those of the gauges' readings in each of the spans; a gauge
+// without one is not among them.
+func medians(d *segment.Folder, scale map[string]float64, spans []segment.Interval) ([]map[string]middle, error) {
+	type values struct {
+		mm []float64
+		at []int64
+	}
 	var only []string
 	for name := range scale {
 		only = append(only, name)
 	}
 	slices.Sort(only)
-	r := d.Read(segment.ReadOptions{Workers: 1, From: from, To: to, Only: only})
+	found := make([]map[string]*values, len(spans))
+	for i := range found {
+		found[i] = map[string]*values{}
+	}
+	r := d.Read(segment.ReadOptions{Workers: 1, Spans: spans, Only: only})
 	defer r.Close()
-	mm, at := map[string][]float64{}, map[string][]int64{}
 	for rec, err := range r.Records() {
 		if err != nil {
 			return nil, err
 		}
-		mm[rec.Name], at[rec.Name] = append(mm[rec.Name], rec.MM), append(at[rec.Name], rec.Time)
+		for i, s := range spans {
+			if rec.Time < s.From || rec.Time > s.To {
+				continue
+			}
+			v := found[i][rec.Name]
+			if v == nil {
+				v = &values{}
+				found[i][rec.Name] = v
+			}
+			v.mm, v.at = append(v.mm, rec.MM), append(v.at, rec.Time)
+		}
 	}
-	out := map[string]middle{}
-	for name, v := range mm {
-		t := at[name]
-		slices.Sort(v)
-		slices.Sort(t)
-		n := len(v)
-		out[name] = middle{scale[name] * (v[n/2] + v[(n-1)/2]) / 2, t[n/2]}
+	out := make([]map[string]middle, len(spans))
+	for i := range found {
+		out[i] = map[string]middle{}
+		for name, v := range found[i] {
+			slices.Sort(v.mm)
+			slices.Sort(v.at)
+			n := len(v.mm)
+			out[i][name] = middle{scale[name] * (v.mm[n/2] + v.mm[(n-1)/2]) / 2, v.at[n/2]}
+		}
 	}
 	return out, nil
 }

@@ -59,9 +59,9 @@ func TestLook(t *testing.T) {
 	}
 	parsed := 0
 	look := func() *Summary {
-		s, err := LookAgain(segment.OSFS(root, segment.OSOptions{}), func(b []byte) (*config.Rig, error) {
+		s, err := LookAgain(segment.OSFS(root, segment.OSOptions{}), func(b, more []byte) (*config.Rig, error) {
 			parsed++
-			return config.Parse("rig.yaml", b)
+			return Rig("rig.yaml", b, more)
 		})
 		if err != nil {
 			t.Fatal(err)
@@ -182,5 +182,21 @@ func TestRateAfterUnloading(t *testing.T) {
 	s, err := Look(segment.OSFS(root, segment.OSOptions{}), rig)
 	if err != nil || s.RateMMPerDay == nil || math.Abs(*s.RateMMPerDay) > 1e-9 || s.SagMM == nil || math.Abs(*s.SagMM) > 1e-9 {
 		t.Errorf("%+v, %v", s, err)
+	}
+}
+
+// TestAmended: what was learned after the start counts at a glance too.
+func TestAmended(t *testing.T) {
+	rig, err := Rig("rig.yaml", []byte(rigText), []byte(`- {path: limits.sag, value: 4 mm, why: new catcher, by: x, entered: 2026-10-01T08:00:00Z}
+- {path: "plan[l1].hold", value: 9 d, since: 2026-10-02T08:00:00Z, why: goes on, by: x, entered: 2026-10-02T08:00:00Z}
+`))
+	if err != nil {
+		t.Fatal(err)
+	}
+	if rig.Limits.Sag.Value != 4 || rig.Plan[1].Hold.Value != 9*86400 {
+		t.Errorf("%v, %+v", rig.Limits.Sag, rig.Plan)
+	}
+	if _, err := Rig("rig.yaml", []byte(rigText), []byte("- {path: nowhere, value: 1}\n")); err == nil {
+		t.Error("a wrong amendment is passed over")
 	}
 }

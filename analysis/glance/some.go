@@ -3,6 +3,8 @@ package glance
 import (
 	"errors"
 	"io/fs"
+	"math"
+	"path"
 	"slices"
 	"sort"
 	"strings"
@@ -58,8 +60,12 @@ func (n names) with(fsys segment.FS, d *segment.Folder, instants ...int64) (*seg
 		return d, nil
 	}
 	want, have := n.ends(), len(n.ends())
+	begun := map[string]int64{} // each is looked at once
+	for _, s := range d.Starts() {
+		begun[plain(path.Base(s.Name))] = s.Time
+	}
 	for _, at := range instants {
-		i, err := n.holding(fsys, at)
+		i, err := n.holding(fsys, d, at, begun)
 		if err != nil {
 			return nil, err
 		}
@@ -74,20 +80,32 @@ func (n names) with(fsys segment.FS, d *segment.Folder, instants ...int64) (*seg
 }
 
 // holding is the last segment that begins at an instant or before it, or the
-// first. Segments begin in order of time; a few are opened, whatever their
+// first. Segments begin in order of time; a few are looked at, whatever their
 // number.
-func (n names) holding(fsys segment.FS, at int64) (i int, err error) {
+func (n names) holding(fsys segment.FS, d *segment.Folder, at int64, begun map[string]int64) (i int, err error) {
 	i = sort.Search(len(n), func(i int) bool {
-		d, openErr := segment.OpenFolder(some{fsys, n[i : i+1]})
-		if openErr != nil {
-			err = openErr
-			return true
+		t, known := begun[n[i]]
+		if !known && err == nil {
+			t, err = begins(fsys, d, n[i])
+			begun[n[i]] = t
 		}
-		if begun := d.Starts(); len(begun) == 1 {
-			return begun[0].Time > at
-		}
-		first, _, ok := d.Span()
-		return ok && first > at
+		return t > at
 	})
 	return max(0, i-1), err
+}
+
+// begins is when a segment begins; a foreign one's readings tell.
+func begins(fsys segment.FS, d *segment.Folder, name string) (int64, error) {
+	if s, ok := d.StartOf(name); ok {
+		return s.Time, nil
+	}
+	one, err := segment.OpenFolder(some{fsys, names{name}})
+	if err != nil {
+		return 0, err
+	}
+	first, _, ok := one.Span()
+	if !ok {
+		first = math.MinInt64
+	}
+	return first, nil
 }

@@ -26,7 +26,7 @@ func BenchmarkFirstLook(b *testing.B) {
 	text := []byte(run.Rig())
 	b.Run("parse the rig file", func(b *testing.B) {
 		for b.Loop() {
-			if _, err := config.Parse("rig.yaml", text); err != nil {
+			if _, err := Rig("rig.yaml", text, nil); err != nil {
 				b.Fatal(err)
 			}
 		}
@@ -44,7 +44,7 @@ func BenchmarkFirstLook(b *testing.B) {
 	})
 	b.Run("look again", func(b *testing.B) {
 		for b.Loop() {
-			if _, err := LookAgain(fsys, func([]byte) (*config.Rig, error) { return rig, nil }); err != nil {
+			if _, err := LookAgain(fsys, func(_, _ []byte) (*config.Rig, error) { return rig, nil }); err != nil {
 				b.Fatal(err)
 			}
 		}

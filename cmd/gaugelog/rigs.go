@@ -56,6 +56,7 @@ The rate is over the last day.`,
 		Example: "  gaugelog rigs runs\n  gaugelog rigs runs --page rigs.html",
 		Args:    cobra.MinimumNArgs(1),
 		RunE: func(cmd *cobra.Command, args []string) error {
+			defer collectSeldom()()
 			rows, err := lookAt(args)
 			if err != nil {
 				return err
@@ -123,8 +124,8 @@ func (r *rigRow) look(run string) (err error) {
 		return err
 	}
 	defer func() { err = errors.Join(err, dir.Close()) }()
-	s, err := glance.LookAgain(dir.FS(), func(b []byte) (*config.Rig, error) {
-		return config.Parse(filepath.Join(run, segment.RigFile), b)
+	s, err := glance.LookAgain(dir.FS(), func(rig, amendments []byte) (*config.Rig, error) {
+		return glance.Rig(filepath.Join(run, segment.RigFile), rig, amendments)
 	})
 	if err != nil {
 		return err

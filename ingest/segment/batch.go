@@ -1,5 +1,10 @@
 package segment
 
+import "bytes"
+
+// indicationWord begins every line that may be an indication.
+var indicationWord = []byte("indication")
+
 // Batch is a stretch of consecutive records. Indications that carry nothing
 // but a value that is a whole number of millionths of a millimetre stand in the
 // columns Gauge, Micro and Time, one a row; everything else (other kinds,
@@ -35,8 +40,9 @@ func (b *Batch) reset() {
 }
 
 // decodeLines appends the records of whole lines. bad is called for each line
-// that is no valid record, with its place in text.
-func (b *Batch) decodeLines(text []byte, names *interner, bad func(from, to int, why string)) {
+// that is no valid record, with its place in text. With only, lines of other
+// measurements than indication are passed over unread.
+func (b *Batch) decodeLines(text []byte, names *interner, only bool, bad func(from, to int, why string)) {
 	cols := columns{b.Gauge, b.Micro, b.Time}
 	for p := 0; p < len(text); {
 		p += fastLines(text[p:], &cols, names)
@@ -46,6 +52,10 @@ func (b *Batch) decodeLines(text []byte, names *interner, bad func(from, to int,
 		n := entryEnd(text[p:])
 		if n < 0 {
 			n = lineEnd(text[p:])
+		}
+		if only && !bytes.HasPrefix(text[p+blankEnd(text[p:p+n], 0):], indicationWord) {
+			p += n
+			continue
 		}
 		rec, ok, err := slowLine(text[p : p+n])
 		switch {

@@ -2,7 +2,7 @@ package segment
 
 // filter keeps what the options ask for.
 func (m *merger) filter(b *Batch) {
-	outside := func(t int64) bool { return t < m.opts.From || t > m.opts.To }
+	outside := func(t int64) bool { return m.opts.Spans != nil && !touches(m.opts.Spans, t, t) }
 	b.drop(func(i int) bool {
 		return outside(b.Time[i]) || m.only != nil && !m.only[b.Gauge[i]]
 	}, func(i int) bool {

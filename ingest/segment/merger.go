@@ -43,7 +43,7 @@ func (m *merger) init(d *Folder, opts ReadOptions) {
 			m.only[m.id(n)] = true
 		}
 	}
-	m.some = opts.Only != nil || opts.From != math.MinInt64 || opts.To != math.MaxInt64
+	m.some = opts.Only != nil || opts.Spans != nil
 }
 
 func (m *merger) id(name string) uint16 {

@@ -16,12 +16,27 @@ type ReadOptions struct {
 	// From and To bound the instants given, both inclusive, in ns since 1970
 	// UTC; both 0 gives all.
 	From, To int64
+	// Spans, where not nil, gives what lies in any of these stretches instead.
+	Spans []Interval
 	// Gauges, where not nil, fixes the first numbers of the gauges: the gauge
 	// Gauges[i] gets number i. Others follow in order of appearance.
 	Gauges []string
 	// Only, where not nil, gives indications of these gauges alone, and no
 	// other lines.
 	Only []string
+}
+
+// Interval is a stretch of time, both ends inclusive, in ns since 1970 UTC.
+type Interval struct{ From, To int64 }
+
+// touches tells whether a wanted instant may lie between first and last.
+func touches(spans []Interval, first, last int64) bool {
+	for _, s := range spans {
+		if last >= s.From && first <= s.To {
+			return true
+		}
+	}
+	return false
 }
 
 // job is one chunk on its way through the reader.
@@ -31,10 +46,12 @@ type job struct {
 	text  []byte
 	packd []byte // stored frame, to be unpacked into text
 	frame *frameInfo
-	limit int64 // of the frame's text; the rest does not count
-	gap   bool  // chunks before it in the file were passed over
-	first bool  // of its file
-	final bool  // of its file
+	limit int64      // of the frame's text; the rest does not count
+	gap   bool       // chunks before it in the file were passed over
+	first bool       // of its file
+	final bool       // of its file
+	spans []Interval // what is wanted of it, nil for all
+	only  bool       // indications alone are wanted
 	batch Batch
 	items []item
 	fail  error    // reading the file failed here
@@ -64,6 +81,9 @@ func (d *Folder) Read(opts ReadOptions) *Reader {
 	}
 	if opts.From == 0 && opts.To == 0 {
 		opts.From, opts.To = math.MinInt64, math.MaxInt64
+	}
+	if opts.Spans == nil && (opts.From != math.MinInt64 || opts.To != math.MaxInt64) {
+		opts.Spans = []Interval{{opts.From, opts.To}}
 	}
 	slots := 2*opts.Workers + 1
 	r := &Reader{
@@ -128,7 +148,7 @@ func (r *Reader) Close() {
 func (r *Reader) take() (*job, bool) {
 	select {
 	case j := <-r.free:
-		*j = job{text: j.text[:0], packd: j.packd[:0], batch: j.batch, items: j.items[:0], done: make(chan struct{})}
+		*j = job{text: j.text[:0], packd: j.packd[:0], batch: j.batch, items: j.items[:0], spans: r.opts.Spans, only: r.opts.Only != nil, done: make(chan struct{})}
 		j.batch.reset()
 		return j, true
 	case <-r.quit:
@@ -198,7 +218,7 @@ func (r *Reader) produceFrames(file File, f *segFile, frames []frameInfo, work c
 		if f.limit >= 0 && fr.at >= f.limit {
 			break
 		}
-		if fr.set && (fr.last < r.opts.From || fr.first > r.opts.To) {
+		if fr.set && r.opts.Spans != nil && !touches(r.opts.Spans, fr.first, fr.last) {
 			gap = true
 			continue
 		}
@@ -266,12 +286,31 @@ func (j *job) decode(names *interner) {
 		if it.kind == itemTail && !j.final {
 			it.kind, it.why = itemLoss, "no whole block"
 		}
-		if it.kind == itemBlock && it.whole {
+		if it.kind == itemBlock && it.whole && !j.passes(i) {
 			j.lines(it.from, it.from+int(it.c.length), names)
 			it = &j.items[i] // lines may have moved them
 		}
 		it.rows, it.more = len(j.batch.Gauge), len(j.batch.Others)
 	}
+}
+
+// passes tells that nothing is wanted of block i, as its comment shows: its
+// stamps stand as written, for the clock was set before it and was not stepped.
+func (j *job) passes(i int) bool {
+	if j.spans == nil || i == 0 {
+		return false
+	}
+	c, before := &j.items[i].c, &j.items[i-1]
+	prev := &before.c.clock
+	switch before.kind {
+	case itemHeader:
+		prev = &before.h.Clock
+	case itemBlock:
+	default:
+		return false
+	}
+	clock := blockClock{now: c.clock, prev: prev}
+	return c.lines > 0 && clock.plainBlock() && !touches(j.spans, c.first, c.last)
 }
 
 // without drops the items that lie in a torn stretch of which the header stands
@@ -309,7 +348,7 @@ func (j *job) decodeForeign(names *interner) {
 }
 
 func (j *job) lines(from, to int, names *interner) {
-	j.batch.decodeLines(j.text[from:to], names, func(a, b int, why string) {
+	j.batch.decodeLines(j.text[from:to], names, j.only, func(a, b int, why string) {
 		j.items = append(j.items, item{kind: itemLine, from: from + a, to: from + b, why: why})
 	})
 }

@@ -3,6 +3,7 @@ package segment
 import (
 	"io"
 	"math"
+	"path"
 )
 
 // Origin says where the segments of a Folder come from.
@@ -47,6 +48,22 @@ func (d *Folder) Starts() []Start {
 	return out
 }
 
+// StartOf is where a segment begins that the folder need not have been opened
+// with; base is its name in readings/ without .zst. False where it is foreign or
+// its header is not whole.
+func (d *Folder) StartOf(base string) (Start, bool) {
+	f := segFile{name: path.Join(ReadingsDir, base), limit: -1}
+	if file, err := d.fs.Open(f.name); err == nil {
+		file.Close()
+	} else {
+		f.name, f.compressed = f.name+".zst", true
+	}
+	if err := d.look(&f); err != nil || !f.headed {
+		return Start{}, false
+	}
+	return Start{f.name, f.header.Boot, d.put(&f, f.header.Clock, f.header.Clock.Wall)}, true
+}
+
 // Span tells about when the records begin and end, in ns since 1970 UTC, from
 // comments and indexes, without decoding what they speak of: for the choice of a
 // scale, not for arithmetic, since a damaged block counts and a late record may
@@ -78,7 +95,10 @@ func (d *Folder) Span() (first, last int64, ok bool) {
 	}
 	for i := range d.files {
 		if f := &d.files[i]; f.own {
-			found := false
+			found := f.index != nil && f.index.begins() // and was noted above
+			if found {
+				break
+			}
 			_ = d.comments(f, func(it item) bool {
 				if it.kind == itemBlock && it.c.lines > 0 {
 					note(d.put(f, it.c.clock, it.c.first), d.put(f, it.c.clock, it.c.last))
@@ -92,6 +112,16 @@ func (d *Folder) Span() (first, last int64, ok bool) {
 		}
 	}
 	return first, last, ok
+}
+
+// begins tells whether the first lines of a segment are dated by its index.
+func (ix *frameIndex) begins() bool {
+	for i := range ix.frames {
+		if fr := &ix.frames[i]; fr.last != 0 || !fr.set {
+			return fr.set
+		}
+	}
+	return false
 }
 
 // endSpan tells of the end of an own segment; false where it holds no block.
@@ -160,7 +190,7 @@ func (d *Folder) foreignSpan(f *segFile, note func(first, last int64)) {
 			text = text[lineEnd(text):]
 		}
 		var b Batch
-		b.decodeLines(text[:lastLineCut(text)], newInterner(nil), func(int, int, string) {})
+		b.decodeLines(text[:lastLineCut(text)], newInterner(nil), false, func(int, int, string) {})
 		if info := b.bounds(); info.first <= info.last {
 			note(info.first, info.last)
 		}
