@@ -174,46 +174,37 @@ func (r *run) acts() {
 			r.warn("unknown-gauge", -1, m.Time, fmt.Sprintf("a mark names gauge %q, which the rig file does not; it was left out", m.Gauge))
 			continue
 		}
-		e := r.nearestMove(g, m.Time)
+		e, own := r.answer(g, m.Time)
 		if e == nil {
-			r.warn("act-without-response", g, m.Time, fmt.Sprintf("gauge %s was marked as %s, but its readings show nothing near that time", m.Gauge, m.Act))
+			r.warn("act-without-response", g, m.Time, fmt.Sprintf("gauge %s was marked as %s, but its readings show nothing near that time%s", m.Gauge, m.Act, r.butLoads(g, m.Time)))
 			continue
 		}
 		kind := GaugeKnock
 		if m.Act == "zeroed" {
 			kind = ZeroPressed
 		}
-		r.act(e, g, kind, m.Act)
+		e.jump[g] = own
+		r.act(e, g, Disturbance{Kind: kind, Marked: true, Evidence: fmt.Sprintf("marked: %s %s", r.name(g), m.Act)})
 	}
 }
 
-// nearestMove returns the cluster nearest to t in which the gauge moved.
-func (r *run) nearestMove(g int, t int64) *cluster {
-	var best *cluster
-	dist := r.near(t)
-	for i := range r.events {
-		e := &r.events[i]
-		d := max(e.lo-t, t-e.hi, 0)
-		if e.moved[g] && !e.taken && d <= dist {
-			best, dist = e, d
-		}
-	}
-	return best
-}
-
-// act takes one gauge's jump out of a cluster and reports it. What the other
-// gauges did in it stays to be explained.
-func (r *run) act(e *cluster, g int, kind Kind, did string) {
-	d := Disturbance{Kind: kind, Gauges: []int{g}, From: e.lo + (e.hi-e.lo)/2, Marked: true,
-		By: []Value{e.jump[g]}, Treated: "offset taken off as a parameter with its uncertainty",
-		Evidence: fmt.Sprintf("marked: %s %s", r.name(g), did)}
+// act takes one gauge's jump out of a cluster and reports it as d says. What
+// the other gauges did in it stays to be explained.
+func (r *run) act(e *cluster, g int, d Disturbance) {
+	d.Gauges, d.From, d.By = []int{g}, e.lo+(e.hi-e.lo)/2, []Value{e.jump[g]}
+	d.Treated = "offset taken off as a parameter with its uncertainty"
 	d.Size = largest(d.By)
 	r.add(d)
-	r.offset(e, []int{g}, kind)
-	r.exclude(g, e.lo, e.hi, string(kind))
-	e.known[g], e.moved[g] = false, false
-	if len(e.movedGauges()) == 0 {
-		e.taken = true
+	r.offset(e, []int{g}, d.Kind)
+	r.exclude(g, e.lo, e.hi, string(d.Kind))
+	e.without(g)
+}
+
+// without takes a gauge out of a cluster: the others' part stays.
+func (c *cluster) without(g int) {
+	c.known[g], c.moved[g], c.peak[g] = false, false, 0
+	if len(c.movedGauges()) == 0 {
+		c.taken = true
 	}
 }
 

@@ -91,8 +91,12 @@ func (r *run) figures() {
 			f := &r.out.Steps[k].Gauges[g]
 			f.Gross = r.read(g, k, by, grossOf, r.commonGross(g, k))
 			f.Net = r.read(g, k, by, netOf, r.commonNet(g, k))
+			if f.Gross.Increment != nil {
+				f.Gross.Increment.U = hypot(f.Gross.Increment.U, r.offsetU(g, k))
+			}
 			if f.Net.Increment != nil && k > 0 {
-				f.Net.Increment.U = hypot(f.Net.Increment.U, r.unseen(g, k)-r.unseen(g, k-1))
+				offsets := r.netU(g, func(g int) float64 { return r.offsetU(g, k) })
+				f.Net.Increment.U = hypot(f.Net.Increment.U, offsets, r.unseen(g, k)-r.unseen(g, k-1))
 			}
 		}
 	}
@@ -114,16 +118,35 @@ func (r *run) commonGross(g, k int) float64 {
 }
 
 func (r *run) commonNet(g, k int) float64 {
-	own := r.commonGross(g, k)
+	return hypot(r.netU(g, func(g int) float64 { return r.commonGross(g, k) }), r.unseen(g, k))
+}
+
+// netU is what uncertainties of the gauges' own sags make of a net one.
+func (r *run) netU(g int, own func(g int) float64) float64 {
 	c := r.out.Chord
-	var l, rt Value
+	var left, right Value
 	if c.Left >= 0 {
-		l.U = r.commonGross(c.Left, k)
+		left.U = own(c.Left)
 	}
 	if c.Right >= 0 {
-		rt.U = r.commonGross(c.Right, k)
+		right.U = own(c.Right)
 	}
-	return hypot(r.net(g, Value{0, own}, l, rt).U, r.unseen(g, k))
+	return r.net(g, Value{0, own(g)}, left, right).U
+}
+
+// offsetU is the uncertainty of the offsets of gauge g that lie between what
+// an increment of step k counts from and the initial sag.
+func (r *run) offsetU(g, k int) float64 {
+	s := r.out.Steps[k]
+	return r.out.Tracks[g].shiftU(s.From, s.Full+nanos(r.initialAfter()))
+}
+
+// initialAfter is the time after full load of the initial sag, s.
+func (r *run) initialAfter() float64 {
+	if after := r.h.Rig.Read.InitialAfter.Value; after != 0 {
+		return after
+	}
+	return 60
 }
 
 // read takes one gauge's figures in one step.
@@ -148,10 +171,7 @@ func (r *run) read(g, k int, by [][]Point, of side, common float64) Figures {
 	if v, ok := tail(pts, s.Full, of); ok {
 		f.Final = seal(v)
 	}
-	after := r.h.Rig.Read.InitialAfter.Value
-	if after == 0 {
-		after = 60
-	}
+	after := r.initialAfter()
 	firstAt := seconds(pts[0].Time - s.Full)
 	if v, ok := r.readAt(g, pts, s.Full, after, of); ok {
 		f.Initial = seal(v)

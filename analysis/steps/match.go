@@ -113,19 +113,18 @@ func (r *run) pairCost(i, j int) (float64, bool) {
 		}
 		like -= 0.25 // what fits as it is goes before
 	}
-	// The nearest instant of the cluster counts: it may be a gap of hours.
-	dt := 0.0
-	switch {
-	case e.lo > c.last:
-		dt = seconds(e.lo - c.last)
-	case e.hi < c.first:
-		dt = seconds(c.first - e.hi)
-	}
-	reach := r.reach(i)
+	dt, reach := r.offMark(i, e), r.reach(i)
 	if dt > reach {
 		return 0, false
 	}
 	return dt/reach + 2*(1-like), true
+}
+
+// offMark is how far a cluster lies off the marks of change i, s. Its nearest
+// instant counts: it may be a gap of hours.
+func (r *run) offMark(i int, e *cluster) float64 {
+	c := r.changes[i]
+	return seconds(max(e.lo-c.last, c.first-e.hi, 0))
 }
 
 // alikeReversed is alike with that one gauge's sense reversed which makes the
