@@ -13,6 +13,7 @@ import (
 	"gaugelog/ingest"
 	"gaugelog/ingest/alarm"
 	"gaugelog/ingest/forward"
+	"gaugelog/ingest/past"
 	"gaugelog/ingest/rollup"
 	"gaugelog/ingest/segment"
 )
@@ -59,7 +60,8 @@ type Options struct {
 type Desk struct {
 	o        Options
 	zone     *time.Location
-	channels map[string]int // gauges, then probes
+	channels *past.Channels
+	past     *past.Past
 	feed     chan sample
 	missed   atomic.Int64
 	snapshot atomic.Pointer[Snapshot]
@@ -81,8 +83,6 @@ type Desk struct {
 	still      []stillness
 	curves     *Curves
 	drawn      time.Time
-	stored     time.Time
-	pending    *pendingBook
 	background sync.WaitGroup
 }
 
@@ -98,7 +98,7 @@ const feedLength = 8192
 // New makes a desk. Run sets it going; Take and Snapshot work before that.
 func New(o Options) (*Desk, error) {
 	d := &Desk{
-		o: o, zone: zoneOf(o.Rig.Timezone), channels: map[string]int{}, feed: make(chan sample, feedLength),
+		o: o, zone: zoneOf(o.Rig.Timezone), channels: past.ChannelsOf(o.Rig), feed: make(chan sample, feedLength),
 		outlooks: make(chan outlookResult), books: make(chan bookResult), asked: make(chan func()),
 		engine: alarm.NewEngine(o.Rig.Alarms.Wants), rebuilding: true,
 		still: make([]stillness, len(o.Rig.Gauges)),
@@ -106,13 +106,8 @@ func New(o Options) (*Desk, error) {
 	if o.Log == nil {
 		d.o.Log = slog.New(slog.DiscardHandler)
 	}
-	d.book = rollup.NewBook(seriesNames(o.Rig)...)
-	for i := range o.Rig.Gauges {
-		d.channels["gauge "+o.Rig.Gauges[i].Name] = i
-	}
-	for i := range o.Rig.Probes {
-		d.channels["probe "+o.Rig.Probes[i].Name] = len(o.Rig.Gauges) + 2*i
-	}
+	d.book = rollup.NewBook(d.channels.Names()...)
+	d.past = &past.Past{FS: o.FS, Channels: d.channels, Keep: o.Alarms == nil, Gentle: true, Log: d.o.Log}
 	var err error
 	if d.tail, err = ingest.NewMarkTail(o.FS); err != nil {
 		return nil, err
@@ -125,19 +120,6 @@ func New(o Options) (*Desk, error) {
 	}
 	d.publish(time.Now())
 	return d, nil
-}
-
-// seriesNames lists the channels of a rig: its gauges, then each probe's
-// temperature and humidity.
-func seriesNames(rig *config.Rig) []string {
-	var names []string
-	for _, g := range rig.Gauges {
-		names = append(names, g.Name)
-	}
-	for _, p := range rig.Probes {
-		names = append(names, p.Name+" temperature", p.Name+" humidity")
-	}
-	return names
 }
 
 // Name is what the run is called in addresses.
@@ -154,11 +136,11 @@ func (d *Desk) Gravity() float64 { return d.o.Gravity }
 func (d *Desk) Take(r device.Reading) {
 	switch r.Kind {
 	case device.Indication:
-		if i, ok := d.channels["gauge "+r.Gauge]; ok {
+		if i, ok := d.channels.Gauge(r.Gauge); ok {
 			d.put(sample{i, r.At.Wall, r.MM})
 		}
 	case device.Ambient:
-		if i, ok := d.channels["probe "+r.Probe]; ok {
+		if i, ok := d.channels.Probe(r.Probe); ok {
 			d.put(sample{i, r.At.Wall, r.Celsius})
 			d.put(sample{i + 1, r.At.Wall, r.HumidityPercent})
 		}
@@ -176,7 +158,7 @@ func (d *Desk) put(s sample) {
 // Give puts a stored record into the bins' queue and waits for room there: for
 // an onlooker, behind whom nobody waits. What is no reading is left out.
 func (d *Desk) Give(ctx context.Context, r *segment.Record) {
-	d.each(r, func(series int, v float64) {
+	d.channels.Each(r, func(series int, v float64) {
 		select {
 		case d.feed <- sample{series, r.Time, v}:
 		case <-ctx.Done():
@@ -187,15 +169,17 @@ func (d *Desk) Give(ctx context.Context, r *segment.Record) {
 // Snapshot is the latest look, about a second old. It waits for nothing.
 func (d *Desk) Snapshot() *Snapshot { return d.snapshot.Load() }
 
-// Run keeps the desk until the context ends, and stores its bins then. It
-// returns when all its goroutines have ended. End the recorder first, so that
-// what is stored is what is on disk.
+// Run keeps the desk until the context ends. It returns when all its goroutines
+// have ended.
 func (d *Desk) Run(ctx context.Context) {
 	if d.o.Analyse != nil {
 		d.background.Go(func() { d.watchOutlook(ctx) })
 	}
 	origin := d.book.Origin
 	d.background.Go(func() { d.rebuild(ctx, origin) })
+	if d.o.Alarms == nil {
+		d.background.Go(func() { d.summarise(ctx) })
+	}
 	ticker := time.NewTicker(time.Second)
 	defer ticker.Stop()
 	for {
@@ -213,7 +197,8 @@ func (d *Desk) Run(ctx context.Context) {
 			f()
 		case <-ctx.Done():
 			d.background.Wait()
-			d.end()
+			d.drain()
+			d.publish(time.Now())
 			return
 		}
 	}
@@ -228,6 +213,18 @@ func (d *Desk) add(s sample) {
 		}
 		select {
 		case s = <-d.feed:
+		default:
+			return
+		}
+	}
+}
+
+// drain takes what is still in the queue.
+func (d *Desk) drain() {
+	for {
+		select {
+		case s := <-d.feed:
+			d.add(s)
 		default:
 			return
 		}
@@ -250,7 +247,6 @@ func (d *Desk) tick(now time.Time) {
 		}
 	}
 	if d.o.Alarms == nil {
-		d.storeNow(now)
 		d.watch(now)
 	}
 	d.publish(now)

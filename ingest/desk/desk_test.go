@@ -1,7 +1,6 @@
 package desk_test
 
 import (
-	"errors"
 	"math"
 	"os"
 	"path/filepath"
@@ -84,78 +83,62 @@ func TestWhatIsKnownAfterARestart(t *testing.T) {
 	}
 }
 
-// The bins survive a restart in a file that can be made again; with it gone or
-// damaged the readings are read instead.
+// After a restart the bins come from the summaries of closed segments, which can
+// be made again: with them, without them and with one damaged they are the same.
 func TestBinsOverARestart(t *testing.T) {
 	t.Parallel()
 	w := desktest.New(t, desktest.Options{Past: 24 * time.Hour})
 	until(t, w, "the past is read", func(s *desk.Snapshot) bool { return !s.Rebuilding && len(s.Curves.Series[0].Whole) > 50 })
 	w.Stop()
-	file := filepath.Join(w.Run, "report", "live-bins.gob.zst")
-	if _, err := os.Stat(file); err != nil {
+	summary := filepath.Join(w.Run, "report", "live-bins", "000001.gob.zst")
+	if _, err := os.Stat(summary); err != nil {
 		t.Fatal(err)
 	}
-	count := func() int64 {
-		t.Helper()
-		dir, err := ingest.OpenDir(w.Run, ingest.DirOptions{})
-		if err != nil {
-			t.Fatal(err)
-		}
-		defer dir.Close()
-		status := &ingest.Status{Run: "run-3"}
-		d, err := desk.New(desk.Options{Name: "x", Rig: w.Rig, FS: dir.FS(), Start: ingest.SystemClock{}.Now(),
-			Status: func() *ingest.Status { return status }, Happen: func(ingest.Happening) bool { return true }})
-		if err != nil {
-			t.Fatal(err)
-		}
-		ctx, stop := contextOf(t)
-		var running sync.WaitGroup
-		running.Go(func() { d.Run(ctx) })
-		defer func() { stop(); running.Wait() }()
-		for deadline := time.Now().Add(10 * time.Second); ; time.Sleep(20 * time.Millisecond) {
-			if s := d.Snapshot(); !s.Rebuilding && s.At.After(time.Now().Add(-3*time.Second)) && len(s.Curves.Series[0].Whole) > 0 {
-				n := int64(0)
-				for _, b := range s.Curves.Series[0].Whole {
-					n += b.N
-				}
-				return n
-			}
-			if time.Now().After(deadline) {
-				t.Fatal("the bins never came back")
-			}
-		}
+	kept := binned(t, w)
+	if err := os.WriteFile(summary, []byte("garbage"), 0o644); err != nil {
+		t.Fatal(err)
 	}
-	kept := count()
-	whole, err := os.ReadFile(file)
+	damaged := binned(t, w)
+	if b, err := os.ReadFile(summary); err != nil || string(b) == "garbage" {
+		t.Errorf("the damaged summary was not made anew: %v", err)
+	}
+	if err := os.RemoveAll(filepath.Join(w.Run, "report")); err != nil {
+		t.Fatal(err)
+	}
+	if read := binned(t, w); kept != read || damaged != read || read < 1440 {
+		t.Errorf("%d readings with summaries, %d with one damaged, %d without", kept, damaged, read)
+	}
+}
+
+// binned starts a desk on the world's folder and counts the readings in its bins.
+func binned(t *testing.T, w *desktest.World) int64 {
+	t.Helper()
+	dir, err := ingest.OpenDir(w.Run, ingest.DirOptions{})
 	if err != nil {
 		t.Fatal(err)
 	}
-	before := filepath.Join(w.Run, "report", "live-bins-before.gob.zst")
-	if err := os.Remove(before); err != nil && !os.IsNotExist(err) {
+	defer dir.Close()
+	status := &ingest.Status{Run: "run-3"}
+	d, err := desk.New(desk.Options{Name: "x", Rig: w.Rig, FS: dir.FS(), Start: ingest.SystemClock{}.Now(),
+		Status: func() *ingest.Status { return status }, Happen: func(ingest.Happening) bool { return true }})
+	if err != nil {
 		t.Fatal(err)
 	}
-	if err := os.WriteFile(file, []byte("garbage"), 0o644); err != nil {
-		t.Fatal(err)
-	}
-	damaged := count()
-	// With a damaged file the one stored before it counts, and the readings are
-	// not needed.
-	readings, aside := filepath.Join(w.Run, "readings"), filepath.Join(w.Run, "aside")
-	if err := errors.Join(os.WriteFile(before, whole, 0o644), os.Rename(readings, aside)); err != nil {
-		t.Fatal(err)
-	}
-	// The last few readings before the stop may have come to the disk after the
-	// bins were stored.
-	if n := count(); n < kept-4 || n > kept {
-		t.Errorf("%d readings from the bins stored before, want %d", n, kept)
-	}
-	if err := errors.Join(os.Rename(aside, readings), os.Remove(before), os.Remove(file)); err != nil {
-		t.Fatal(err)
-	}
-	// The last reading before the stop may reach the desk and no longer the
-	// recorder: the stored bins then count one more than the folder holds.
-	if read := count(); kept < read || kept > read+1 || damaged != read || read < 1440 {
-		t.Errorf("%d readings from the stored bins, %d with a damaged file, %d without", kept, damaged, read)
+	ctx, stop := contextOf(t)
+	var running sync.WaitGroup
+	running.Go(func() { d.Run(ctx) })
+	defer func() { stop(); running.Wait() }()
+	for deadline := time.Now().Add(10 * time.Second); ; time.Sleep(20 * time.Millisecond) {
+		if s := d.Snapshot(); !s.Rebuilding && len(s.Curves.Series[0].Whole) > 0 {
+			n := int64(0)
+			for _, b := range s.Curves.Series[0].Whole {
+				n += b.N
+			}
+			return n
+		}
+		if time.Now().After(deadline) {
+			t.Fatal("the bins never came back")
+		}
 	}
 }
 

@@ -9,8 +9,8 @@
 //
 // The package promises: nothing that reads or records ever waits for it (Take
 // drops what does not fit, and counts it); a Snapshot is never changed once it
-// is out; after a restart the bins come from a stored book and from what was
-// recorded since, not from reading everything on each view. What it says of sag
+// is out; after a restart the bins come from the summaries of closed segments and
+// from what was recorded since, not from reading everything (see package past). What it says of sag
 // is not corrected for anything but the sense of the gauge, and is called so;
 // corrected figures come from the analysis alone.
 package desk

@@ -184,7 +184,7 @@ func waitWhole(b *testing.B, d *desk.Desk) {
 }
 
 // BenchmarkOpening opens the page of a long run, again and again. Beside the time
-// of an opening it tells, from one start without stored bins and one with them:
+// of an opening it tells, from one start without summaries and one with them:
 // how long it takes until everything is on the page, the slowest opening while
 // the run is still being read, and the memory then.
 func BenchmarkOpening(b *testing.B) {
@@ -201,7 +201,7 @@ func BenchmarkOpening(b *testing.B) {
 		time.Sleep(20 * time.Millisecond)
 	}
 	anew := time.Since(began)
-	closing() // stores the bins
+	closing()
 	began = time.Now()
 	d, s, closing = opened(b, run, rig)
 	defer closing()

@@ -90,17 +90,6 @@ func (r *Ring) since(t int64) []Bin {
 	return out
 }
 
-// oldest is the earliest instant held; false where nothing is.
-func (r *Ring) oldest() (int64, bool) {
-	found, t := false, int64(0)
-	for i := range r.Bins {
-		if b := &r.Bins[i]; b.N > 0 && (!found || b.FirstTime < t) {
-			found, t = true, b.FirstTime
-		}
-	}
-	return t, found
-}
-
 func floor(t, width int64) int64 {
 	id := t / width
 	if t < 0 && id*width != t {

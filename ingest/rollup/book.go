@@ -110,8 +110,9 @@ func (b *Book) SetOrigin(t int64) (whole bool) {
 		for _, bin := range s.Recent.since(t) {
 			b.addSince(s, bin)
 		}
-		if oldest, ok := s.Recent.oldest(); ok && oldest > t && len(s.Whole.Bins) > 0 {
-			whole = whole && s.Whole.Bins[0].FirstTime >= oldest
+		// Older bins stay where readings come seldom, but not all of them.
+		if held := b.Until - RecentFor + second; t < held && len(s.Whole.Bins) > 0 && s.Whole.Bins[0].FirstTime < held {
+			whole = false
 		}
 	}
 	return whole

@@ -1,7 +1,6 @@
 package rollup
 
 import (
-	"bytes"
 	"math"
 	"math/rand/v2"
 	"testing"
@@ -135,37 +134,6 @@ func TestNearFindsYesterday(t *testing.T) {
 	}
 	if _, _, ok := b.Series[0].Near(start - 3600*second); ok {
 		t.Error("there is something before the run")
-	}
-}
-
-func TestStoredBooksComeBack(t *testing.T) {
-	b := NewBook("mid", "air °C")
-	b.SetOrigin(start + 3*second)
-	for k := range int64(10_000) {
-		b.Add(int(k%2), start+k*30*second, math.Sin(float64(k)))
-	}
-	b.Add(0, start, math.NaN())
-	var buf bytes.Buffer
-	if err := b.Save(&buf, "run-1"); err != nil {
-		t.Fatal(err)
-	}
-	got, err := Load(bytes.NewReader(buf.Bytes()), "run-1", b.Names())
-	if err != nil {
-		t.Fatal(err)
-	}
-	if d := cmp.Diff(b, got, near); d != "" {
-		t.Error(d)
-	}
-	if _, err := Load(bytes.NewReader(buf.Bytes()), "run-2", b.Names()); err == nil {
-		t.Error("the bins of another run were taken")
-	}
-	if _, err := Load(bytes.NewReader(buf.Bytes()), "run-1", []string{"mid"}); err == nil {
-		t.Error("the bins of other channels were taken")
-	}
-	for n := 0; n < buf.Len(); n += 97 {
-		if _, err := Load(bytes.NewReader(buf.Bytes()[:n]), "run-1", b.Names()); err == nil {
-			t.Errorf("%d of %d bytes were taken for whole", n, buf.Len())
-		}
 	}
 }
 

@@ -1,67 +1,81 @@
 package rollup
 
 import (
+	"bytes"
 	"encoding/gob"
-	"errors"
 	"fmt"
-	"io"
+	"sync"
 
 	"github.com/klauspost/compress/zstd"
 )
 
-// formatName opens a stored book; another layout gets another name.
-const formatName = "gaugelog bins 1"
+// formatName opens a stored summary; another layout gets another name.
+const formatName = "gaugelog summary 1"
 
-// largest bounds what Load unpacks, in bytes: some two hundred channels.
+// largest bounds what Load unpacks, in bytes: some thousand channels of a day.
 const largest = 64 << 20
 
+// stored is a summary with what it was made of.
 type stored struct {
-	Format, Run string
-	Book        *Book
+	Format, Of string
+	Summary    *Summary
 }
 
-// Save writes the book of a run, as gob compressed by Zstandard.
-func (b *Book) Save(w io.Writer, run string) error {
-	z, err := zstd.NewWriter(w, zstd.WithEncoderConcurrency(1))
-	if err != nil {
-		return err
-	}
-	if err := gob.NewEncoder(z).Encode(stored{formatName, run, b}); err != nil {
-		return errors.Join(fmt.Errorf("storing the bins: %w", err), z.Close())
-	}
-	return z.Close()
-}
+var (
+	packer = sync.OnceValues(func() (*zstd.Encoder, error) {
+		return zstd.NewWriter(nil, zstd.WithEncoderConcurrency(1), zstd.WithLowerEncoderMem(true), zstd.WithWindowSize(1<<20))
+	})
+	unpacker = sync.OnceValues(func() (*zstd.Decoder, error) {
+		return zstd.NewReader(nil, zstd.WithDecoderConcurrency(1), zstd.WithDecoderLowmem(true), zstd.WithDecoderMaxMemory(largest))
+	})
+)
 
-// Load reads a book back, and refuses one of another run, other channels or
-// another layout: the run is then read anew.
-func Load(r io.Reader, run string, names []string) (*Book, error) {
-	z, err := zstd.NewReader(r, zstd.WithDecoderConcurrency(1), zstd.WithDecoderMaxMemory(largest))
+// Save gives a summary as bytes, gob compressed by Zstandard with its checksum;
+// of says what it was made of, to the letter.
+func (s *Summary) Save(of string) ([]byte, error) {
+	var b bytes.Buffer
+	if err := gob.NewEncoder(&b).Encode(stored{formatName, of, s}); err != nil {
+		return nil, fmt.Errorf("storing a summary: %w", err)
+	}
+	z, err := packer()
 	if err != nil {
 		return nil, err
 	}
-	defer z.Close()
-	var s stored
-	if err := gob.NewDecoder(io.LimitReader(z, largest)).Decode(&s); err != nil {
-		return nil, fmt.Errorf("the stored bins cannot be read: %w", err)
-	}
-	if s.Format != formatName || s.Run != run || s.Book == nil {
-		return nil, ErrOther
-	}
-	fresh := NewBook(names...)
-	for i := range s.Book.Series {
-		if err := s.Book.Series[i].fits(); err != nil {
-			return nil, err
-		}
-	}
-	fresh.Origin = s.Book.Origin
-	return fresh, fresh.Merge(s.Book)
+	return z.EncodeAll(b.Bytes(), nil), nil
 }
 
-// fits refuses sets of bins of other sizes.
-func (s *Series) fits() error {
-	if s.Recent.Width != second || s.Days.Width != dayWidth || s.Whole.Width < second || s.Whole.Width%second != 0 ||
-		len(s.Whole.Bins) > mostWhole || len(s.Since) > sinceLength {
-		return ErrOther
+// Load reads a summary back, and refuses one that is torn or damaged, was made
+// of something else, or is of other channels or another layout: its readings are
+// then read anew.
+func Load(packed []byte, of string, names []string) (*Summary, error) {
+	z, err := unpacker()
+	if err != nil {
+		return nil, err
 	}
-	return nil
+	plain, err := z.DecodeAll(packed, nil)
+	if err != nil {
+		return nil, fmt.Errorf("the stored summary cannot be unpacked: %w", err)
+	}
+	var s stored
+	if err := gob.NewDecoder(bytes.NewReader(plain)).Decode(&s); err != nil {
+		return nil, fmt.Errorf("the stored summary cannot be read: %w", err)
+	}
+	if s.Format != formatName || s.Of != of || s.Summary == nil || !s.Summary.fits(names) {
+		return nil, ErrOther
+	}
+	return s.Summary, nil
+}
+
+// fits refuses other channels and bins of other sizes.
+func (s *Summary) fits(names []string) bool {
+	if len(s.Names) != len(names) || len(s.Series) != len(names) {
+		return false
+	}
+	for i := range names {
+		w := &s.Series[i].Whole
+		if s.Names[i] != names[i] || w.Width < second || w.Width%second != 0 || len(w.Bins) > mostWhole {
+			return false
+		}
+	}
+	return true
 }

@@ -15,6 +15,12 @@ type Part struct {
 	Counts int64
 	// Own says that it is one of this format's, by name and comments.
 	Own bool
+	// ClockSet says that the clock of its boot is known to have been set;
+	// Offset is the wall clock less the boot-time clock at the earliest such
+	// instant, ns. With Counts they say how its lines are read: while they stay,
+	// the same file gives the same records.
+	ClockSet bool
+	Offset   int64
 }
 
 // Parts lists the segments in the order in which they are read. One whose file
@@ -23,7 +29,9 @@ func (d *Folder) Parts() []Part {
 	out := make([]Part, len(d.files))
 	for i := range d.files {
 		f := &d.files[i]
-		out[i] = Part{plainName(f.name), f.name, f.size, f.modified, f.limit, f.own && f.number > 0}
+		fix, set := d.fixes[f.header.Boot]
+		out[i] = Part{Name: plainName(f.name), File: f.name, Size: f.size, Modified: f.modified, Counts: f.limit,
+			Own: f.own && f.number > 0, ClockSet: set, Offset: fix.offset}
 	}
 	return out
 }
