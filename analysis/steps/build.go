@@ -40,11 +40,21 @@ func (r *run) buildSteps() {
 		r.parts = append(r.parts, part{change: -1, event: r.unmarked[i].event, at: r.unmarked[i].at, un: &r.unmarked[i]})
 	}
 	sort.SliceStable(r.parts[1:], func(a, b int) bool { return r.parts[1+a].at.start < r.parts[1+b].at.start })
+	unnamed := 0
+	for i := range r.parts {
+		if p := &r.parts[i]; p.un != nil {
+			unnamed++
+			r.ruleStep(unmarkedName(unnamed), &p.at)
+		}
+	}
 	r.fillSteps()
 	r.chooseBaseline()
 }
 
-// ruleStep applies what a person decided about a step's instants.
+func unmarkedName(n int) string { return fmt.Sprintf("unmarked-%d", n) }
+
+// ruleStep applies what a person decided about a step's instants. Nobody
+// states how well that person knows them.
 func (r *run) ruleStep(name string, t *timing) {
 	for i := range r.rules {
 		u := &r.rules[i]
@@ -53,7 +63,7 @@ func (r *run) ruleStep(name string, t *timing) {
 		}
 		switch u.field {
 		case "found":
-			t.start, u.used = u.instant, true
+			t.start, t.u, t.ruled, u.used = u.instant, 0, true, true
 		case "full":
 			t.full, u.used = u.instant, true
 		}
@@ -78,7 +88,7 @@ func (r *run) fillSteps() {
 			}
 		case p.un != nil:
 			unnamed++
-			s.Name = fmt.Sprintf("unmarked-%d", unnamed)
+			s.Name = unmarkedName(unnamed)
 			s.Unmarked, s.DeltaKnown = true, false
 			s.Response = truth(true)
 			delta = hung.disturb(p.un)
@@ -126,7 +136,7 @@ func (r *run) openStep(k int, s *Step, delta []float64) {
 	s.From, s.Full = max(p.at.start, former.From), max(p.at.full, former.From)
 	former.To = s.From
 	s.RampS, s.RingingS, s.RingingMM = p.at.ramp, p.at.ringing, p.at.swingMM
-	if p.event != nil {
+	if p.event != nil || p.at.ruled {
 		s.Found, s.StartU = p.at.start, p.at.u
 		if s.Marked != 0 {
 			s.OffsetS = seconds(s.Marked - s.Found)

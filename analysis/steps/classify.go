@@ -31,49 +31,69 @@ func (r *run) classify() {
 			continue
 		}
 		ruling := r.ruling(e)
-		if ruling == "none" {
-			e.taken = true
-			continue
-		}
 		moved := e.movedGauges()
 		if len(moved) == 0 {
 			// What lasts longer, between many readings or over a gap, is creep or
 			// weather: no excursion of a moment.
 			long := max(shortly, 3*nanos(max(r.spacing(e.lo), r.spacing(e.hi))))
-			if ruling == "" && e.hi-e.lo <= long {
-				r.spike(e, e, r.peakGauges(e))
+			if ruling != "none" && (ruling != "" || e.hi-e.lo <= long) {
+				r.spike(e, e, r.peakGauges(e), ruling)
 			}
 			e.taken = true
 			continue
 		}
-		v := r.nature(e, append(pats[:len(pats):len(pats)], r.together(e)...))
-		if ruling != "" {
-			v.kind, v.candidates = Kind(ruling), nil
-			v.evidence = "decided by a person; the readings alone: " + v.evidence
+		all := append(pats[:len(pats):len(pats)], r.together(e)...)
+		v := r.overrule(e, r.nature(e, all), all, ruling)
+		f := r.partner(i, v)
+		alike := f != nil && (r.ruling(f) == "" || r.ruling(f) == ruling)
+		switch {
+		case ruling == "none":
+			e.taken = true
+			if alike {
+				f.taken = true // it goes with what it takes back
+			}
+		case f != nil && ruling == "", alike && (v.kind == Spike || v.kind == LoadChanged):
+			r.temporary(e, f, v, moved, ruling)
+		default:
+			r.report(e, v, moved)
 		}
-		if f := r.partner(i, v); f != nil && ruling == "" {
-			r.temporary(e, f, v, moved)
-			continue
-		}
-		r.report(e, v, moved)
 	}
 }
 
-// spike reports an excursion from one cluster to another (or within one).
-func (r *run) spike(e, f *cluster, gauges []int) {
+// decided goes before the evidence of what a person overruled.
+const decided = "decided by a person; the readings alone: "
+
+// overrule puts a person's word in place of a verdict; "none" leaves it.
+func (r *run) overrule(e *cluster, v verdict, pats []pattern, ruling string) verdict {
+	if ruling == "" || ruling == "none" {
+		return v
+	}
+	v.kind, v.candidates, v.evidence = Kind(ruling), nil, decided+v.evidence
+	if v.kind == LoadChanged && v.fit != nil && v.fit.p.kind != LoadChanged {
+		v.fit = r.best(e, pats, LoadChanged)
+	}
+	return v
+}
+
+// spike reports an excursion from one cluster to another (or within one), by
+// the name a person gave it if that is not empty.
+func (r *run) spike(e, f *cluster, gauges []int, ruling string) {
 	if len(gauges) == 0 {
 		return
 	}
 	d := Disturbance{Kind: Spike, Gauges: gauges, From: e.lo, To: f.hi,
 		Treated:  "readings between left out",
 		Evidence: fmt.Sprintf("%s left their level and came back within %s", r.names(gauges), lasted(seconds(f.hi-e.lo)))}
+	if ruling != "" {
+		d.Kind, d.Evidence = Kind(ruling), decided+d.Evidence
+	}
 	for _, g := range gauges {
 		size := e.peak[g]
 		if e != f {
 			size = e.jump[g].MM
 		}
 		d.By = append(d.By, Value{size, hypot(r.gauges[g].noise, r.gauges[g].res/2)})
-		r.exclude(g, e.lo, f.hi, "spike")
+		r.exclude(g, e.lo, f.hi, string(d.Kind))
 	}
 	d.Size = largest(d.By)
 	r.add(d)
@@ -109,7 +129,7 @@ func (r *run) names(gauges []int) string {
 func (r *run) partner(i int, v verdict) *cluster {
 	e := &r.events[i]
 	limit := shortly
-	if v.kind == LoadChanged {
+	if v.kind == LoadChanged || v.kind == Spike { // the latter is a person's word
 		limit = awhile
 	}
 	for j := i + 1; j < len(r.events) && r.events[j].lo-e.hi <= limit; j++ {
@@ -142,9 +162,9 @@ func (r *run) partner(i int, v verdict) *cluster {
 func (r *run) isMatched(j int) bool { return slices.Contains(r.matched, j) }
 
 // temporary reports what came and went.
-func (r *run) temporary(e, f *cluster, v verdict, moved []int) {
+func (r *run) temporary(e, f *cluster, v verdict, moved []int, ruling string) {
 	if v.kind != LoadChanged {
-		r.spike(e, f, moved)
+		r.spike(e, f, moved, ruling)
 		return
 	}
 	t, back := r.time(e, 0), r.time(f, 0)
@@ -176,12 +196,16 @@ func (r *run) loadDisturbance(e *cluster, v verdict, moved []int) Disturbance {
 func (r *run) report(e *cluster, v verdict, moved []int) {
 	e.taken = true
 	t := r.time(e, 0)
-	if v.kind == LoadChanged && v.fit != nil {
+	if v.kind == LoadChanged {
 		d := r.loadDisturbance(e, v, moved)
 		d.From = t.start
 		d.Treated = "treated as a load step of its own"
 		r.add(d)
-		r.unmarked = append(r.unmarked, unmarkedStep{event: e, at: t, fit: *v.fit, newton: d.Load, told: len(r.out.Disturbances) - 1})
+		fit := fitted{p: pattern{kind: LoadChanged, load: -1}} // a person's word; nobody knows which load
+		if v.fit != nil {
+			fit = *v.fit
+		}
+		r.unmarked = append(r.unmarked, unmarkedStep{event: e, at: t, fit: fit, newton: d.Load, told: len(r.out.Disturbances) - 1})
 		return
 	}
 	d := Disturbance{Kind: v.kind, Gauges: moved, From: t.start, Candidates: v.candidates, Evidence: v.evidence}

@@ -11,13 +11,13 @@ import (
 // "decisions". The grammar, TIME being an instant in RFC 3339:
 //
 //	decisions[disturbance TIME].kind         value: a kind of disturbance, or "none"
-//	decisions[disturbance TIME GAUGE].kind   the same for one gauge's only
-//	decisions[step NAME].found               value: TIME of first movement
+//	decisions[disturbance TIME GAUGE].kind   the same for that gauge's part alone
+//	decisions[step NAME].found               value: TIME of first movement; NAME may be "unmarked-1"
 //	decisions[step NAME].full                value: TIME of full load
 //	decisions[step NAME].response            value: true | false
 //	decisions[exclude GAUGE FROM TO]         value: true; GAUGE "all" for every gauge
 //
-// TIME picks the disturbance that lies within two minutes (or two intervals
+// TIME picks the disturbance that begins within two minutes (or two intervals
 // of readings) of it. "none" leaves the readings as they stand: no offset, no
 // exclusion.
 const grammar = "decisions[disturbance TIME [GAUGE]].kind, decisions[step NAME].found|full|response, decisions[exclude GAUGE FROM TO]"
@@ -140,17 +140,44 @@ func (r *run) ruling(c *cluster) string {
 	return ""
 }
 
-// rulingAt returns what a person decided about a disturbance without a
-// cluster, "" for nothing.
-func (r *run) rulingAt(from, to int64) string {
+// rulingAt returns what a person decided about a disturbance of gauge g
+// without a cluster that began between two instants, "" for nothing.
+func (r *run) rulingAt(g int, from, to int64) string {
+	tol := max(120*second, 2*nanos(r.spacing(from)))
 	for i := range r.rules {
 		u := &r.rules[i]
-		if u.what == "disturbance" && u.at >= from-120*second && u.at <= to+120*second && u.name == "" {
+		if u.what == "disturbance" && u.at >= from-tol && u.at <= to+tol && (u.name == "" || u.name == r.name(g)) {
 			u.used = true
 			return u.value
 		}
 	}
 	return ""
+}
+
+// partRulings takes the gauges out of a cluster whose part in it a person
+// decided by the gauge's name, where others moved too.
+func (r *run) partRulings() {
+	for i := range r.rules {
+		u := &r.rules[i]
+		g := r.gauge(u.name)
+		if u.what != "disturbance" || g < 0 {
+			continue
+		}
+		for j := range r.events {
+			e := &r.events[j]
+			tol := max(120*second, 2*nanos(r.spacing(e.lo)))
+			if e.taken || !e.moved[g] || len(e.movedGauges()) < 2 || u.at < e.lo-tol || u.at > e.hi+tol {
+				continue
+			}
+			u.used = true
+			if u.value == "none" {
+				e.without(g)
+			} else {
+				r.act(e, g, Disturbance{Kind: Kind(u.value), Evidence: decided + fmt.Sprintf("%s moved", r.names(e.movedGauges()))})
+			}
+			break
+		}
+	}
 }
 
 func (r *run) gauge(name string) int {

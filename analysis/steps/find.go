@@ -95,6 +95,7 @@ func (r *run) happenings() error {
 		}
 		r.acts()
 		r.matchChanges()
+		r.partRulings()
 		r.findStuck()
 		r.weakResponses()
 		r.explain()

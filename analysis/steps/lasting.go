@@ -13,6 +13,9 @@ func (r *run) lasting() {
 	r.reportKeys()
 	r.toldKeys()
 	for _, s := range r.stuckRuns {
+		if s.kind == "" {
+			continue // a person let it stand
+		}
 		d := Disturbance{Kind: s.kind, Gauges: []int{s.gauge}, From: s.from, To: s.to,
 			Treated: "the gauge's readings between left out", Evidence: s.evidence}
 		if s.to >= r.h.Last {

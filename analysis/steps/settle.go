@@ -56,7 +56,7 @@ func (r *run) slowSettlements() {
 			if !ok {
 				v, ok = s.sank(side, b, over[side])
 			}
-			if ok && r.rulingAt(v.from, v.to) != "none" {
+			if ok && r.rulingAt(over[side], v.from, v.to) != "none" {
 				r.reportSettling(v, over[side])
 			}
 		}

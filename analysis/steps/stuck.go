@@ -29,13 +29,26 @@ func (r *run) findStuck() {
 	for g := range r.gauges {
 		for _, run := range r.constantRuns(g) {
 			if s, ok := r.judgeStill(run); ok {
-				r.stuckRuns = append(r.stuckRuns, s)
+				r.stuckRuns = append(r.stuckRuns, r.ruleStuck(s))
 			}
 		}
 	}
 	for k := range r.stuckRuns {
 		r.holdBack(&r.stuckRuns[k])
 	}
+}
+
+// ruleStuck applies what a person decided about a stretch: by "none" its kind
+// is empty, and the gauge's readings stand, with its jump at the end.
+func (r *run) ruleStuck(s stuck) stuck {
+	switch k := r.rulingAt(s.gauge, s.from, s.from); k {
+	case "":
+	case "none":
+		s.kind = ""
+	default:
+		s.kind, s.evidence = Kind(k), decided+s.evidence
+	}
+	return s
 }
 
 // holdBack takes a stuck gauge's movements out of the clusters, and those by

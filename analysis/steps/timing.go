@@ -14,6 +14,7 @@ type timing struct {
 	u                float64 // of start, s
 	ramp             float64 // s
 	ringing, swingMM float64
+	ruled            bool // start is a person's word
 }
 
 // share is how much of the whole change had happened at one instant, from all
