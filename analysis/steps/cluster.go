@@ -110,6 +110,7 @@ func dedupe(list []cluster) []cluster {
 func (r *run) measure() {
 	for i := range r.events {
 		c := &r.events[i]
+		c.gap = r.bridges(c)
 		before, after := int64(math.MinInt64), int64(math.MaxInt64)
 		if i > 0 {
 			before = r.events[i-1].hi
@@ -121,11 +122,49 @@ func (r *run) measure() {
 		for gi := range r.gauges {
 			c.measureGauge(&r.gauges[gi], before, after)
 		}
-		c.gap = seconds(c.hi-c.lo) > 5*r.spacing(c.lo) && c.empty(nanos(r.spacing(c.lo)))
 		if c.gap {
 			r.outstanding(c)
 		}
 	}
+}
+
+// bridges says that a cluster lies over a hole in the readings. One that was
+// placed a few readings too wide about a hole is narrowed down to it: what
+// scatters so much cannot tell that it moved in those few readings.
+func (r *run) bridges(c *cluster) bool {
+	spacing := r.spacing(c.lo)
+	if seconds(c.hi-c.lo) <= 5*spacing {
+		return false
+	}
+	if c.empty(nanos(spacing)) {
+		return true
+	}
+	hole := interval{c.hi, c.lo}
+	for _, pts := range c.raw {
+		if len(pts) == 0 {
+			continue
+		}
+		v, ok := widest(pts, c.lo, c.hi)
+		if !ok || 10*(v.to-v.from) < 9*(c.hi-c.lo) {
+			return false
+		}
+		hole.from, hole.to = min(hole.from, v.from), max(hole.to, v.to)
+	}
+	if seconds(hole.to-hole.from) > 5*spacing {
+		c.lo, c.hi = hole.from, hole.to
+		return true
+	}
+	return false
+}
+
+// widest is the longest stretch without a reading that lies in [lo, hi].
+func widest(pts []point, lo, hi int64) (v interval, ok bool) {
+	for i := 1; i < len(pts); i++ {
+		if a, b := max(pts[i-1].t, lo), min(pts[i].t, hi); b-a > v.to-v.from {
+			v, ok = interval{a, b}, true
+		}
+	}
+	return v, ok
 }
 
 // empty says that no gauge left a reading inside the cluster, but for those

@@ -36,7 +36,9 @@ const (
 	longest = 5400
 )
 
-// blocks holds the medians and mean instants of k successive points.
+// blocks holds the medians of k successive points, and of their instants: on a
+// slope the median reading is the one of the median instant, however unequally
+// the points are spaced.
 type blocks struct{ y, t []float64 }
 
 func blockMedians(seq []point, k int) blocks {
@@ -47,23 +49,40 @@ func blockMedians(seq []point, k int) blocks {
 	b := blocks{make([]float64, n), make([]float64, n)}
 	w := make([]float64, 0, k)
 	t0 := seq[0].t
-	sum := 0.0
 	for i, p := range seq {
 		if len(w) == k {
 			old := seq[i-k]
 			j, _ := slices.BinarySearch(w, old.y)
 			w = slices.Delete(w, j, j+1)
-			sum -= seconds(old.t - t0)
 		}
 		j, _ := slices.BinarySearch(w, p.y)
 		w = slices.Insert(w, j, p.y)
-		sum += seconds(p.t - t0)
 		if i >= k-1 {
-			b.y[i-k+1] = (w[(k-1)/2] + w[k/2]) / 2
-			b.t[i-k+1] = sum / float64(k)
+			first := i - k + 1
+			b.y[first] = (w[(k-1)/2] + w[k/2]) / 2
+			b.t[first] = (seconds(seq[first+(k-1)/2].t-t0) + seconds(seq[first+k/2].t-t0)) / 2
 		}
 	}
 	return b
+}
+
+// beside is the block that with block i tells the slope next to a rise that
+// takes dt: the one step blocks on. Where readings came much closer together
+// there than within the rise, as at the end of a dense stretch, so short a way
+// tells no slope worth carrying across the rise, and a block farther off is
+// taken. -1: there is none.
+func (b blocks) beside(i, step int, dt float64) int {
+	m := i + step
+	if m < 0 || m >= len(b.t) {
+		return -1
+	}
+	if dt > longest {
+		return m
+	}
+	for most := dt / 4; math.Abs(b.t[m]-b.t[i]) < most && m+step >= 0 && m+step < len(b.t); {
+		m += step
+	}
+	return m
 }
 
 // score is how far the rise behind point i stands out at one scale.
@@ -89,14 +108,14 @@ func scores(seq []point, k int, sigma func(point) float64, res, least float64) [
 		rise, dt := b.y[r]-b.y[l], b.t[r]-b.t[l]
 		slopes := make([]float64, 0, 2)
 		va, vb := 1.0, 1.0
-		if l-k >= 0 {
-			d := b.t[l] - b.t[l-k]
-			slopes = append(slopes, (b.y[l]-b.y[l-k])/d)
+		if m := b.beside(l, -k, dt); m >= 0 {
+			d := b.t[l] - b.t[m]
+			slopes = append(slopes, (b.y[l]-b.y[m])/d)
 			va = dt / d
 		}
-		if r+k < len(b.y) {
-			d := b.t[r+k] - b.t[r]
-			slopes = append(slopes, (b.y[r+k]-b.y[r])/d)
+		if m := b.beside(r, k, dt); m >= 0 {
+			d := b.t[m] - b.t[r]
+			slopes = append(slopes, (b.y[m]-b.y[r])/d)
 			vb = dt / d
 		}
 		s := score{i: i, rise: rise, jump: rise}
