@@ -9,15 +9,11 @@ package segmenttest
 
 import (
 	"errors"
-	"fmt"
-	"io"
 	"io/fs"
-	"math/rand/v2"
 	"path"
 	"slices"
 	"strings"
 	"sync"
-	"time"
 
 	"gaugelog/ingest/segment"
 )
@@ -99,75 +95,6 @@ func (m *FS) call(kind, name string) error {
 		return &fs.PathError{Op: kind, Path: name, Err: f.Err}
 	}
 	return nil
-}
-
-// Crash returns a file system as a power cut at this moment could leave it.
-// With keep, all unsynced bytes and names survive (as when only the process was
-// killed); otherwise a random part does, cut, with zeros or old bytes in it.
-func (m *FS) Crash(rng *rand.Rand, keep bool) *FS {
-	m.mu.Lock()
-	defer m.mu.Unlock()
-	c := New()
-	for d := range m.dirs {
-		c.dirs[d] = true
-	}
-	names := make(map[string]*node, len(m.names))
-	for n, f := range m.durable {
-		names[n] = f
-	}
-	// Half of the crashes keep names in the order of their changes, as a
-	// journal does; the others any of them, as POSIX allows.
-	ops, any := len(m.pending), false
-	if !keep {
-		ops, any = rng.IntN(ops+1), rng.IntN(2) == 0
-	}
-	for i, op := range m.pending {
-		if any && rng.IntN(2) == 0 || !any && i < ops {
-			op.apply(names)
-		}
-	}
-	for _, n := range slices.Sorted(func(yield func(string) bool) {
-		for n := range names {
-			if !yield(n) {
-				return
-			}
-		}
-	}) {
-		data := names[n].crash(rng, keep)
-		c.names[n] = &node{data: data, synced: slices.Clone(data)}
-		c.durable[n] = c.names[n]
-	}
-	return c
-}
-
-func (op nameOp) apply(names map[string]*node) {
-	if op.from != "" {
-		delete(names, op.from)
-	}
-	if op.to != "" {
-		names[op.to] = op.node
-	}
-}
-
-// crash returns bytes that a power cut could leave: the synced ones, and of the
-// rest nothing, a prefix, or a prefix with a stretch of zeros in it.
-func (n *node) crash(rng *rand.Rand, keep bool) []byte {
-	if keep {
-		return slices.Clone(n.data)
-	}
-	out := slices.Clone(n.synced)
-	more := len(n.data) - len(out)
-	if more <= 0 {
-		return out
-	}
-	start := len(out)
-	out = append(out, n.data[start:start+rng.IntN(more+1)]...)
-	if len(out) > start && rng.IntN(2) == 0 {
-		from := start + rng.IntN(len(out)-start)
-		to := from + rng.IntN(len(out)-from+1)
-		clear(out[from:to])
-	}
-	return out
 }
 
 // Bytes returns a file's bytes, nil where it does not exist.
@@ -353,103 +280,4 @@ func (m *FS) ReadDir(dir string) ([]fs.DirEntry, error) {
 	}
 	slices.SortFunc(out, func(a, b fs.DirEntry) int { return strings.Compare(a.Name(), b.Name()) })
 	return out, nil
-}
-
-type file struct {
-	fs     *FS
-	name   string
-	node   *node
-	writes bool
-	closed bool
-}
-
-// Write appends. A failing write leaves half of p in the file, as a full disk
-// does.
-func (f *file) Write(p []byte) (int, error) {
-	f.fs.mu.Lock()
-	defer f.fs.mu.Unlock()
-	if f.closed || !f.writes {
-		return 0, &fs.PathError{Op: "write", Path: f.name, Err: fs.ErrClosed}
-	}
-	if err := f.fs.call("write", f.name); err != nil {
-		n := len(p) / 2
-		f.node.data = append(f.node.data, p[:n]...)
-		return n, err
-	}
-	f.node.data = append(f.node.data, p...)
-	return len(p), nil
-}
-
-func (f *file) ReadAt(p []byte, off int64) (int, error) {
-	f.fs.mu.Lock()
-	defer f.fs.mu.Unlock()
-	if err := f.fs.call("read", f.name); err != nil {
-		return 0, err
-	}
-	if off >= int64(len(f.node.data)) {
-		return 0, io.EOF
-	}
-	n := copy(p, f.node.data[off:])
-	if n < len(p) {
-		return n, io.EOF
-	}
-	return n, nil
-}
-
-// Sync makes the bytes durable. What a failing Sync covered never becomes so,
-// even if a later one succeeds: the system has dropped it.
-func (f *file) Sync() error {
-	f.fs.mu.Lock()
-	defer f.fs.mu.Unlock()
-	n := f.node
-	if err := f.fs.call("sync", f.name); err != nil {
-		n.lost = append(n.lost, [2]int{len(n.synced), len(n.data)})
-		return err
-	}
-	// Bytes are only ever appended, so that those here now stay as they are.
-	n.synced = n.data[:len(n.data):len(n.data)]
-	if len(n.lost) > 0 {
-		n.synced = slices.Clone(n.synced)
-	}
-	for _, l := range n.lost {
-		clear(n.synced[l[0]:l[1]])
-	}
-	return nil
-}
-
-func (f *file) Close() error {
-	f.fs.mu.Lock()
-	defer f.fs.mu.Unlock()
-	if f.closed {
-		return fmt.Errorf("%s: %w", f.name, fs.ErrClosed)
-	}
-	f.closed = true
-	return f.fs.call("close", f.name)
-}
-
-func (f *file) Stat() (fs.FileInfo, error) {
-	f.fs.mu.Lock()
-	defer f.fs.mu.Unlock()
-	if err := f.fs.call("stat", f.name); err != nil {
-		return nil, err
-	}
-	return info{path.Base(f.name), int64(len(f.node.data)), false}, nil
-}
-
-type info struct {
-	name string
-	size int64
-	dir  bool
-}
-
-func (i info) Name() string       { return i.name }
-func (i info) Size() int64        { return i.size }
-func (i info) ModTime() time.Time { return time.Time{} }
-func (i info) IsDir() bool        { return i.dir }
-func (i info) Sys() any           { return nil }
-func (i info) Mode() fs.FileMode {
-	if i.dir {
-		return fs.ModeDir | 0o755
-	}
-	return 0o644
 }
