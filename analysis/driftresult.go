@@ -60,10 +60,10 @@ func driftWarnings(h *history.History, t *creepTask, a *creep.Analysis) []Warnin
 		switch {
 		case n.U > 0 && math.Abs(n.Value) > 3*max(n.U, stated):
 			out = append(out, Warning{Code: "gauge-drift", Gauge: name, Text: fmt.Sprintf(
-				"gauge %s drifts by %.3g(%.1g) mm/d against the other gauges, %.3g mm over the record, more than its stated uncertainty allows; it was taken off", name, n.Value, n.U, n.Value*days)})
+				"gauge %s drifts by %.3g\u202fmm/d (u %.1g\u202fmm/d) against the other gauges, %.3g\u202fmm over the record, more than its stated uncertainty allows; it was taken off", name, n.Value, n.U, n.Value*days)})
 		case n.Series == 0 && n.U > 0.7*stated:
 			out = append(out, Warning{Code: "drift-bounded", Gauge: name, Text: fmt.Sprintf(
-				"a straight drift of gauge %s cannot be told from slow creep by these readings; it is held within the uncertainty the rig states of the gauge, %.2g mm over the record, and widens the law's", name, stated*days)})
+				"a straight drift of gauge %s cannot be told from slow creep by these readings; it is held within the uncertainty the rig states of the gauge, %.2g\u202fmm over the record, and widens the law's", name, stated*days)})
 		}
 	}
 	return out

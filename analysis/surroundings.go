@@ -173,7 +173,7 @@ func (t *creepTask) reference(h *history.History, f *steps.Findings, g int, temp
 		}
 	}
 	a.Prior = &creep.Knowledge{Value: share, U: referenceU}
-	t.note("reference-moved", "reference gauge %s moved by %.3g mm beyond its answer to temperature: the stand did, and so much is taken off the gauges on it, as far as it is not off already",
+	t.note("reference-moved", "reference gauge %s moved by %.3g\u202fmm beyond its answer to temperature: the stand did, and so much is taken off the gauges on it, as far as it is not off already",
 		h.Rig.Gauges[g].Name, hi-lo)
 	return a, len(a.Series) > 0
 }

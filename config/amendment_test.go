@@ -80,7 +80,7 @@ func TestWrongAmendmentNamesItsPlace(t *testing.T) {
 		{"- {path: specimen.length, value: 800, why: x}\n", "a.yaml:1:34: specimen.length: \"800\" has no unit"},
 		{"- {path: specimen.lenght, value: 800 mm, why: x}\n", "a.yaml:1:10: unknown key \"lenght\" in specimen"},
 		{"- {path: \"gauges[mit].at\", value: 300 mm, why: x}\n", "a.yaml:1:10: amendment of gauges[mit].at: there is no mit in the list (did you mean mid?)"},
-		{"- {path: \"gauges[mid].at\", value: 3 m, why: x}\n", "a.yaml:1:35: gauge mid at 3000 mm is not on the beam"},
+		{"- {path: \"gauges[mid].at\", value: 3 m, why: x}\n", "a.yaml:1:35: gauge mid at 3000\u202fmm is not on the beam"},
 	} {
 		list, err := ParseAmendments("a.yaml", []byte(tc.text))
 		if err != nil {

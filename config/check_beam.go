@@ -58,7 +58,7 @@ func (c *checker) inside(path, what string, place float64) {
 		return // reported already
 	}
 	if place < from || place > to {
-		c.fail(path, fmt.Sprintf("%s at %s mm is not on the beam, which lies from %s mm to %s mm", what, mm(place), mm(from), mm(to)),
+		c.fail(path, fmt.Sprintf("%s at %s\u202fmm is not on the beam, which lies from %s\u202fmm to %s\u202fmm", what, mm(place), mm(from), mm(to)),
 			"correct at, or the beam's from and length")
 	}
 }

@@ -70,7 +70,7 @@ func (c *checker) seat(p string, g *Gauge) {
 		nearest = min(nearest, math.Abs(s.At.Value-g.At.Value))
 	}
 	if nearest > 1 && !math.IsInf(nearest, 1) {
-		c.warn(p+".at", fmt.Sprintf("gauge %s sees a seat, but the nearest support is %s mm away", g.Name, mm(nearest)),
+		c.warn(p+".at", fmt.Sprintf("gauge %s sees a seat, but the nearest support is %s\u202fmm away", g.Name, mm(nearest)),
 			"write the place of the support whose seat it follows")
 	}
 }
@@ -86,7 +86,7 @@ func (c *checker) gaugeValues(p string, g *Gauge) {
 	case g.Resolution.Value <= 0:
 		c.fail(p+".resolution", "resolution of gauge "+g.Name+" must be greater than zero", "write the step of its last digit, such as 0.001 mm")
 	case g.Resolution.Value > 1:
-		c.warn(p+".resolution", fmt.Sprintf("resolution of gauge %s is coarse: %s mm", g.Name, mm(g.Resolution.Value)), "check the unit of the resolution")
+		c.warn(p+".resolution", fmt.Sprintf("resolution of gauge %s is coarse: %s\u202fmm", g.Name, mm(g.Resolution.Value)), "check the unit of the resolution")
 	}
 	switch {
 	case len(g.Travel) == 0:

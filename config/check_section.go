@@ -91,7 +91,7 @@ func (c *checker) measured(path, key string, places []Length) {
 		largest = max(largest, l.Value)
 	}
 	if len(places) > 1 && largest > 1.1*smallest {
-		c.warn(path, fmt.Sprintf("the places measured for %s differ by more than a tenth (%s mm to %s mm)", key, mm(smallest), mm(largest)),
+		c.warn(path, fmt.Sprintf("the places measured for %s differ by more than a tenth (%s\u202fmm to %s\u202fmm)", key, mm(smallest), mm(largest)),
 			"look for a slip of the pen; the mean counts")
 	}
 }
@@ -106,7 +106,7 @@ func (c *checker) wall(s *Section) {
 		places []Length
 	}{{"width", s.Width}, {"depth", s.Depth}, {"diameter", s.Diameter}} {
 		if m := mean(outer.places); m > 0 && 2*wall >= m {
-			c.fail("specimen.section.wall", fmt.Sprintf("two walls of %s mm fill the %s of %s mm", mm(wall), outer.key, mm(m)),
+			c.fail("specimen.section.wall", fmt.Sprintf("two walls of %s\u202fmm fill the %s of %s\u202fmm", mm(wall), outer.key, mm(m)),
 				"correct the wall, or use shape: "+map[bool]string{true: "round", false: "rectangle"}[outer.key == "diameter"]+" for a solid section")
 		}
 	}

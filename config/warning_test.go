@@ -12,11 +12,11 @@ func TestDoubtfulRigsLoadWithAWarning(t *testing.T) {
 		t.Fatal(err)
 	}
 	for _, tc := range []struct{ old, new, want string }{
-		{"139.95 mm", "193.95 mm", "rig.yaml:8:38: the places measured for width differ by more than a tenth (139.82 mm to 193.95 mm)"},
+		{"139.95 mm", "193.95 mm", "rig.yaml:8:38: the places measured for width differ by more than a tenth (139.82\u202fmm to 193.95\u202fmm)"},
 		{"gain: 1.0004", "gain: 0.0004", "calibration gain of gauge mid is 0.0004, more than a tenth from 1"},
 		{"    u: 0.002 mm", "    u: 0.0002 mm", "u of gauge mid is smaller than its resolution allows"},
-		{"resolution: 0.001 mm", "resolution: 1 cm", "resolution of gauge mid is coarse: 10 mm"},
-		{"sees: beam", "sees: seat", "gauge mid sees a seat, but the nearest support is 300 mm away"},
+		{"resolution: 0.001 mm", "resolution: 1 cm", "resolution of gauge mid is coarse: 10\u202fmm"},
+		{"sees: beam", "sees: seat", "gauge mid sees a seat, but the nearest support is 300\u202fmm away"},
 		{"{step: zero, hold: 30 min}", "{step: zero, set: {pan: 1 kg}, hold: 30 min}", "the plan begins with a load"},
 		{"catcher_gap: 40 mm", "catcher_gap: 5 mm", "the sag limit is not below catcher_gap"},
 		{"times: [60 s, 1 h, 24 h]", "times: [60 s, 24 h, 1 h]", "times are not in ascending order"},

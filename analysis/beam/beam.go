@@ -89,13 +89,13 @@ func (b Beam) on(x float64) bool {
 func (b Beam) check() error {
 	switch {
 	case !finite(b.From):
-		return wrong("give the place where the beam begins in mm", "the beam begins at %g", b.From)
+		return wrong("give the place where the beam begins in mm", "the beam begins at %g\u202fmm", b.From)
 	case !finite(b.Length) || b.Length <= 0:
-		return wrong("give the beam a length greater than 0 mm", "the beam is %g mm long", b.Length)
+		return wrong("give the beam a length greater than 0", "the beam is %g\u202fmm long", b.Length)
 	case math.IsNaN(b.EI) || b.EI <= 0:
-		return wrong("give a bending stiffness greater than 0", "the bending stiffness is %g N.mm2", b.EI)
+		return wrong("give a bending stiffness greater than 0", "the bending stiffness is %g\u202fN.mm2", b.EI)
 	case math.IsNaN(b.S) || b.S <= 0:
-		return wrong("give a shear stiffness greater than 0, or +Inf for none", "the shear stiffness is %g N", b.S)
+		return wrong("give a shear stiffness greater than 0, or +Inf for none", "the shear stiffness is %g\u202fN", b.S)
 	}
 	for i, s := range b.Supports {
 		if err := b.checkSupport(i, s); err != nil {
@@ -104,10 +104,10 @@ func (b Beam) check() error {
 	}
 	for i, s := range b.Springs {
 		if !b.on(s.At) {
-			return wrong("put it between the beam's ends", "spring %s at %g mm is off the beam (%g to %g mm)", named(s.Name, i), s.At, b.From, b.End())
+			return wrong("put it between the beam's ends", "spring %s at %g\u202fmm is off the beam (%g\u202fmm to %g\u202fmm)", named(s.Name, i), s.At, b.From, b.End())
 		}
 		if !finite(s.Stiffness) || s.Stiffness < 0 {
-			return wrong("give a stiffness of 0 N/mm or more", "spring %s has a stiffness of %g N/mm", named(s.Name, i), s.Stiffness)
+			return wrong("give a stiffness of 0 N/mm or more", "spring %s has a stiffness of %g\u202fN/mm", named(s.Name, i), s.Stiffness)
 		}
 	}
 	return b.stands(nil)
@@ -117,17 +117,17 @@ func (b Beam) checkSupport(i int, s Support) error {
 	name := named(s.Name, i)
 	if !b.on(s.At) {
 		return wrong("put it between the beam's ends, or mend the beam's from and length",
-			"support %s at %g mm is off the beam (%g to %g mm)", name, s.At, b.From, b.End())
+			"support %s at %g\u202fmm is off the beam (%g\u202fmm to %g\u202fmm)", name, s.At, b.From, b.End())
 	}
 	if !finite(s.Compliance) || s.Compliance < 0 {
-		return wrong("give a compliance of 0 mm/N or more", "support %s has a compliance of %g mm/N", name, s.Compliance)
+		return wrong("give a compliance of 0 mm/N or more", "support %s has a compliance of %g\u202fmm/N", name, s.Compliance)
 	}
 	if !finite(s.Settlement) {
-		return wrong("give the settlement in mm", "support %s settles by %g", name, s.Settlement)
+		return wrong("give the settlement in mm", "support %s settles by %g\u202fmm", name, s.Settlement)
 	}
 	for j, other := range b.Supports[:i] {
 		if math.Abs(s.At-other.At) <= near*b.Length {
-			return wrong("leave one of them out, or move it", "supports %s and %s are both at %g mm", named(other.Name, j), name, s.At)
+			return wrong("leave one of them out, or move it", "supports %s and %s are both at %g\u202fmm", named(other.Name, j), name, s.At)
 		}
 	}
 	return nil
@@ -160,15 +160,15 @@ func (b Beam) checkLoad(i int, l Load) error {
 	name := named(l.Name, i)
 	switch {
 	case !finite(l.Force):
-		return wrong("give the force in N", "load %s is %g N", name, l.Force)
+		return wrong("give the force in N", "load %s is %g\u202fN", name, l.Force)
 	case l.To < l.From:
-		return wrong("let from be less than to", "load %s runs backwards, from %g to %g mm", name, l.From, l.To)
+		return wrong("let from be less than to", "load %s runs backwards, from %g\u202fmm to %g\u202fmm", name, l.From, l.To)
 	case !b.on(l.From) || !b.on(l.To):
-		where := fmt.Sprintf("at %g mm", l.From)
+		where := fmt.Sprintf("at %g\u202fmm", l.From)
 		if l.To != l.From {
-			where = fmt.Sprintf("from %g to %g mm", l.From, l.To)
+			where = fmt.Sprintf("from %g\u202fmm to %g\u202fmm", l.From, l.To)
 		}
-		return wrong("put the load between the beam's ends", "load %s %s is off the beam (%g to %g mm)", name, where, b.From, b.End())
+		return wrong("put the load between the beam's ends", "load %s %s is off the beam (%g\u202fmm to %g\u202fmm)", name, where, b.From, b.End())
 	}
 	return nil
 }

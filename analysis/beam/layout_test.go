@@ -15,24 +15,24 @@ func TestLayoutErrors(t *testing.T) {
 		spoil func(*Beam, *[]Load)
 		want  string
 	}{
-		{"no length", func(b *Beam, _ *[]Load) { b.Length = 0 }, "0 mm long"},
+		{"no length", func(b *Beam, _ *[]Load) { b.Length = 0 }, "0\u202fmm long"},
 		{"length NaN", func(b *Beam, _ *[]Load) { b.Length = math.NaN() }, "long"},
 		{"no stiffness", func(b *Beam, _ *[]Load) { b.EI = 0 }, "bending stiffness"},
 		{"shear NaN", func(b *Beam, _ *[]Load) { b.S = math.NaN() }, "shear stiffness"},
 		{"one pin", func(b *Beam, _ *[]Load) { b.Supports = b.Supports[:1] }, "can turn or fall"},
 		{"no support", func(b *Beam, _ *[]Load) { b.Supports = nil }, "can turn or fall"},
 		{"twice the same place", func(b *Beam, _ *[]Load) { b.Supports[1].At = 0 }, "left and right are both"},
-		{"support off", func(b *Beam, _ *[]Load) { b.Supports[1].At = 1001 }, "right at 1001 mm is off the beam"},
+		{"support off", func(b *Beam, _ *[]Load) { b.Supports[1].At = 1001 }, "right at 1001\u202fmm is off the beam"},
 		{"compliance negative", func(b *Beam, _ *[]Load) { b.Supports[1].Compliance = -1 }, "compliance of -1"},
 		{"spring off", func(b *Beam, _ *[]Load) { b.Springs = []Spring{{Name: "mid", At: -1}} }, "spring mid"},
 		{"spring only", func(b *Beam, _ *[]Load) {
 			b.Supports = b.Supports[:1]
 			b.Springs = []Spring{{At: 900, Stiffness: 1}}
 		}, "can turn or fall"},
-		{"load off", func(_ *Beam, l *[]Load) { (*l)[0] = Load{Name: "pan", From: 1200, To: 1200, Force: 1} }, "load pan at 1200 mm is off the beam"},
-		{"load half off", func(_ *Beam, l *[]Load) { (*l)[0] = Spread(900, 1200, 1) }, "from 900 to 1200 mm"},
+		{"load off", func(_ *Beam, l *[]Load) { (*l)[0] = Load{Name: "pan", From: 1200, To: 1200, Force: 1} }, "load pan at 1200\u202fmm is off the beam"},
+		{"load half off", func(_ *Beam, l *[]Load) { (*l)[0] = Spread(900, 1200, 1) }, "from 900\u202fmm to 1200\u202fmm"},
 		{"load backwards", func(_ *Beam, l *[]Load) { (*l)[0] = Spread(900, 100, 1) }, "runs backwards"},
-		{"load NaN", func(_ *Beam, l *[]Load) { (*l)[0].Force = math.NaN() }, "is NaN N"},
+		{"load NaN", func(_ *Beam, l *[]Load) { (*l)[0].Force = math.NaN() }, "is NaN\u202fN"},
 		{"rigid and statically indeterminate", func(b *Beam, _ *[]Load) {
 			b.EI = math.Inf(1)
 			b.Supports = append(b.Supports, Support{At: 500})

@@ -74,7 +74,7 @@ func (b Beam) Influence(places []float64, loads []Load) (*mat.Dense, error) {
 	}
 	for i, x := range places {
 		if !b.on(x) {
-			return nil, wrong("put it between the beam's ends", "place %d at %g mm is off the beam (%g to %g mm)", i+1, x, b.From, b.End())
+			return nil, wrong("put it between the beam's ends", "place %d at %g\u202fmm is off the beam (%g\u202fmm to %g\u202fmm)", i+1, x, b.From, b.End())
 		}
 	}
 	b.Supports = append([]Support(nil), b.Supports...)

@@ -201,7 +201,7 @@ func TestWrongCSV(t *testing.T) {
 		"block_mm,reading_mm,colour\n1,1,2": `column "colour"`,
 		"block_mm,reading_mm\n1,1,004\n":    "wrong number of fields",
 		"block_mm,reading_mm\n1,1\n2,x\n":   `s.csv:3: reading_mm "x"`,
-		"block_mm,reading_mm\n-1,1\n":       "s.csv:2: a block of -1 mm",
+		"block_mm,reading_mm\n-1,1\n":       "s.csv:2: a block of -1\u202fmm",
 		"block_mm,reading_mm\n1,NaN\n":      `reading_mm "NaN"`,
 	} {
 		if _, err := ReadCSV("s.csv", strings.NewReader(text)); err == nil || !strings.Contains(err.Error(), want) {

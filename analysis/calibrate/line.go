@@ -115,7 +115,7 @@ func (s *Session) check() error {
 		return errors.New("a gauge's resolution must be more than 0 mm")
 	}
 	if s.BlockU < 0 || math.IsNaN(s.BlockU) || math.IsInf(s.BlockU, 0) {
-		return fmt.Errorf("a block's uncertainty of %g mm does not exist", s.BlockU)
+		return fmt.Errorf("a block's uncertainty of %g\u202fmm does not exist", s.BlockU)
 	}
 	if s.BlockCelsius != nil && !(*s.BlockCelsius > -50 && *s.BlockCelsius < 100) {
 		return fmt.Errorf("blocks at %g C are not for measuring", *s.BlockCelsius)

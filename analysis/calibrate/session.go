@@ -116,7 +116,7 @@ func pointOf(head, row []string) (p Point, err error) {
 		case "block_mm":
 			p.BlockMM, err = number(h, text)
 			if err == nil && p.BlockMM < 0 {
-				err = fmt.Errorf("a block of %g mm does not exist", p.BlockMM)
+				err = fmt.Errorf("a block of %g\u202fmm does not exist", p.BlockMM)
 			}
 		case "reading_mm":
 			p.ReadingMM, err = number(h, text)

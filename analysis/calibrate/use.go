@@ -51,10 +51,10 @@ func (l *Line) warn(s Session) {
 	if l.Hysteresis == nil {
 		say("one-way", "no block was taken both up and down, so hysteresis is not known")
 	} else if h := math.Abs(l.Hysteresis.MM); h > 2*l.ReadingU && h > 2*s.Resolution {
-		say("hysteresis", "the way down differs from the way up by %.4f mm at the block of %g mm: figures of recovery carry it", l.Hysteresis.MM, l.Hysteresis.BlockMM)
+		say("hysteresis", "the way down differs from the way up by %.4f\u202fmm at the block of %g\u202fmm: figures of recovery carry it", l.Hysteresis.MM, l.Hysteresis.BlockMM)
 	}
 	if !l.Curvature.LineEnough {
-		say("not-straight", "a line is not enough (p = %.2g): the curve leaves its chord by %.4f mm in the middle; calibrate over the travel that the test will use, and no more", l.Curvature.P, l.Curvature.Bulge)
+		say("not-straight", "a line is not enough (p = %.2g): the curve leaves its chord by %.4f\u202fmm in the middle; calibrate over the travel that the test will use, and no more", l.Curvature.P, l.Curvature.Bulge)
 	}
 	if math.Abs(l.Gain-1) > 0.01 {
 		say("gain-far-off", "a gain of %.5f is far from 1: is a block wrong, or the gauge set to another unit?", l.Gain)
@@ -65,10 +65,10 @@ func (l *Line) warn(s Session) {
 			lo, hi = math.Min(lo, p.ReadingMM), math.Max(hi, p.ReadingMM)
 		}
 		if hi-lo < 0.5*(s.Travel[1]-s.Travel[0]) {
-			say("part-of-travel", "the blocks covered indications from %.3f to %.3f mm, less than half the travel of %g to %g mm: the line holds there only", lo, hi, s.Travel[0], s.Travel[1])
+			say("part-of-travel", "the blocks covered indications from %.3f\u202fmm to %.3f\u202fmm, less than half the travel of %g\u202fmm to %g\u202fmm: the line holds there only", lo, hi, s.Travel[0], s.Travel[1])
 		}
 	}
 	if worst := slices.IndexFunc(l.Residuals, func(r float64) bool { return math.Abs(r) > 4*l.ReadingU }); worst >= 0 {
-		say("outlier", "point %d (block %g mm) lies %.4f mm off the line: was it the right block, and clean?", worst+1, s.Points[worst].BlockMM, l.Residuals[worst])
+		say("outlier", "point %d (block %g\u202fmm) lies %.4f\u202fmm off the line: was it the right block, and clean?", worst+1, s.Points[worst].BlockMM, l.Residuals[worst])
 	}
 }

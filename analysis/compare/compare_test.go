@@ -196,7 +196,7 @@ func TestWhatSpansNeed(t *testing.T) {
 		change func([]Subject)
 		want   string
 	}{
-		"one span":    {func(l []Subject) { copy(l, spansOf(t, 800, 800)) }, "span of 800 mm"},
+		"one span":    {func(l []Subject) { copy(l, spansOf(t, 800, 800)) }, "span of 800\u202fmm"},
 		"sections":    {func(l []Subject) { l[1].Rig.Specimen.Section.Depth[0].Value = 39 }, "different sections"},
 		"clamp":       {func(l []Subject) { l[1].Rig.Supports[0].Kind = "clamp" }, "two plain supports"},
 		"load aside":  {func(l []Subject) { l[1].Rig.Loads[0].At.Value += 50 }, "load pan does not hang in the middle"},

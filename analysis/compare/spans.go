@@ -82,7 +82,7 @@ func VariableSpan(list []Subject) (*Spans, error) {
 		s.Points = append(s.Points, SpanPoint{Run: r.Run, SpanMM: l, X: h2 / (l * l), Y: y, U: own * y})
 	}
 	if len(spans) < 2 {
-		return nil, &Error{fmt.Sprintf("all runs have a span of %g mm: bending and shear cannot be told apart", spans[0]), "test the specimen at a shorter span too, of 5 to 10 times its depth"}
+		return nil, &Error{fmt.Sprintf("all runs have a span of %g\u202fmm: bending and shear cannot be told apart", spans[0]), "test the specimen at a shorter span too, of 5 to 10 times its depth"}
 	}
 	if err := s.fit(sec, shared); err != nil {
 		return nil, err
@@ -183,7 +183,7 @@ func (s *Spans) fit(sec *stiffness.Section, shared common) error {
 	s.Intercept, s.Slope, s.Chi2, s.DOF, s.P = sol.X[0], sol.X[1], sol.Chi2, sol.DOF, lsq.Chi2P(sol.Chi2, sol.DOF)
 	s.Common = shared.rest
 	if !(s.Intercept > 0) || !(s.Slope > 0) {
-		return &Error{fmt.Sprintf("the line over (h/L)^2 has the intercept %.3g and the slope %.3g 1/MPa; both must be more than 0 to be moduli", s.Intercept, s.Slope),
+		return &Error{fmt.Sprintf("the line over (h/L)^2 has the intercept %.3g\u202f1/MPa and the slope %.3g\u202f1/MPa; both must be more than 0 to be moduli", s.Intercept, s.Slope),
 			"look at supports and seats at the short spans, where small movements count most, or add shorter spans"}
 	}
 	e, g := 1/s.Intercept, 1/(s.ShearFactor*s.Slope)

@@ -129,8 +129,8 @@ func (c *Clause) judge(e *env, measured dual) (holds bool, words string, err err
 		holds = holds && q.holds(m.v)
 		if u := e.u(m); u > 0 && math.Abs(m.v) <= coverage*u {
 			f := units[c.Unit].factor
-			said = append(said, fmt.Sprintf("the guard band straddles the limit: the margin is %.3g %s and its U95 %.3g %s, so it is not decided within its uncertainty",
-				math.Abs(m.v)/f, plain(c.Unit), coverage*u/f, plain(c.Unit)))
+			said = append(said, fmt.Sprintf("the guard band straddles the limit: the margin is %.3g%s and its U95 %.3g%s, so it is not decided within its uncertainty",
+				math.Abs(m.v)/f, behind(difference(c.Unit)), coverage*u/f, behind(difference(c.Unit))))
 		}
 	}
 	if len(said) == 0 {
@@ -146,17 +146,26 @@ func (c *Clause) words(e *env) string {
 		limit := q.text
 		own := &env{facts: e.facts, scope: e.scope, used: inputs{}}
 		if v, err := q.rhs.value(own); err == nil {
-			limit = fmt.Sprintf("%s (%s)", strings.TrimSpace(fmt.Sprintf("%.4g %s", v.v/units[c.Unit].factor, plain(c.Unit))), q.text)
+			limit = fmt.Sprintf("%s (%s)", fmt.Sprintf("%.4g%s", v.v/units[c.Unit].factor, behind(c.Unit)), q.text)
 		}
 		out = append(out, strings.ReplaceAll(q.op, "_", " ")+" "+limit)
 	}
 	return strings.Join(out, " and ")
 }
 
-// plain is a unit for a reader: nothing for a plain number.
-func plain(unit string) string {
+// behind is a unit as it stands behind a number in a sentence, with the space
+// by which a reader's own units are put in; nothing for a plain number.
+func behind(unit string) string {
 	if unit == "1" {
 		return ""
+	}
+	return "\u202f" + unit
+}
+
+// difference is the unit of a difference: of temperatures, kelvin.
+func difference(unit string) string {
+	if unit == "C" {
+		return "K"
 	}
 	return unit
 }

@@ -94,7 +94,7 @@ func FromSource(g Given, src Source) *History {
 
 func notMultiple(g config.Gauge) Note {
 	return Note{Code: "not-a-multiple", Gauge: g.Name, Text: fmt.Sprintf(
-		"indications of gauge %s are no multiples of its resolution of %g mm; medians are exact to a nanometre all the same, but check the resolution in the rig file", g.Name, g.Resolution.Value)}
+		"indications of gauge %s are no multiples of its resolution of %g\u202fmm; medians are exact to a nanometre all the same, but check the resolution in the rig file", g.Name, g.Resolution.Value)}
 }
 
 // memory is a Source of readings held in memory.

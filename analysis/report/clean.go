@@ -1,36 +1,41 @@
 package report
 
-import "strings"
+import (
+	"strings"
+
+	"gaugelog/analysis/unitsystem"
+)
 
 // clean makes every text of the document harmless to show: what a gauge, an
 // operator or a rig file says may hold control characters, which would speak
-// to a terminal, or marks that turn the direction of what follows.
-func (d *Document) clean() {
-	d.Title, d.Subtitle = shownText(d.Title), shownText(d.Subtitle)
+// to a terminal, or marks that turn the direction of what follows. The
+// quantities in sentences come out in the report's units.
+func (d *Document) clean(u units) {
+	d.Title, d.Subtitle = shownText(u, d.Title), shownText(u, d.Subtitle)
 	for i := range d.Sections {
 		s := &d.Sections[i]
-		s.Title, s.Lead = shownText(s.Title), shownText(s.Lead)
+		s.Title, s.Lead = shownText(u, s.Title), shownText(u, s.Lead)
 		for j, block := range s.Blocks {
 			switch v := block.(type) {
 			case Paragraph:
-				v.Text = shownText(v.Text)
+				v.Text = shownText(u, v.Text)
 				s.Blocks[j] = v
 			case List:
-				v.Items = shownTexts(v.Items)
+				v.Items = shownTexts(u, v.Items)
 				s.Blocks[j] = v
 			case Figure:
-				v.Caption, v.Alt = shownText(v.Caption), shownText(v.Alt)
+				v.Caption, v.Alt = shownText(u, v.Caption), shownText(u, v.Alt)
 				s.Blocks[j] = v
 			case Picture:
-				v.Caption, v.Alt = shownText(v.Caption), shownText(v.Alt)
+				v.Caption, v.Alt = shownText(u, v.Caption), shownText(u, v.Alt)
 				s.Blocks[j] = v
 			case Table:
-				v.Caption, v.Says = shownText(v.Caption), shownText(v.Says)
+				v.Caption, v.Says = shownText(u, v.Caption), shownText(u, v.Says)
 				for k, row := range v.Rows {
-					v.Rows[k] = shownTexts(row)
+					v.Rows[k] = shownTexts(u, row)
 				}
 				for k := range v.Columns {
-					v.Columns[k].Name = shownText(v.Columns[k].Name)
+					v.Columns[k].Name = shownText(u, v.Columns[k].Name)
 				}
 				s.Blocks[j] = v
 			}
@@ -38,10 +43,10 @@ func (d *Document) clean() {
 	}
 }
 
-func shownTexts(all []string) []string {
+func shownTexts(u units, all []string) []string {
 	out := make([]string, len(all))
 	for i, s := range all {
-		out[i] = shownText(s)
+		out[i] = shownText(u, s)
 	}
 	return out
 }
@@ -49,7 +54,7 @@ func shownTexts(all []string) []string {
 // shownText puts a blank for control characters and drops the marks that turn
 // the direction of writing (Unicode's bidirectional embeddings, overrides and
 // isolates).
-func shownText(s string) string {
+func shownText(u units, s string) string {
 	return strings.Map(func(r rune) rune {
 		switch {
 		case r < ' ' || r >= 0x7f && r < 0xa0 || r == 0x2028 || r == 0x2029:
@@ -58,5 +63,5 @@ func shownText(s string) string {
 			return -1
 		}
 		return r
-	}, strings.ToValidUTF8(s, "�"))
+	}, unitsystem.Text(string(u), strings.ToValidUTF8(s, "�")))
 }

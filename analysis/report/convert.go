@@ -1,9 +1,12 @@
 package report
 
-import "gaugelog/analysis"
+import (
+	"gaugelog/analysis"
+	"gaugelog/analysis/unitsystem"
+)
 
 // Units are the names that --units takes.
-var Units = []string{"si", "us"}
+var Units = unitsystem.Names
 
 // Convert gives, for one of Units and a unit of the result ("mm", "MPa", "N",
 // "mm/N", ...), the factor by which a figure is multiplied and the name of the

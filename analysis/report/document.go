@@ -131,6 +131,6 @@ func Build(r *analysis.Result, o Options) *Document {
 			d.Sections = append(d.Sections, s)
 		}
 	}
-	d.clean()
+	d.clean(b.u)
 	return d
 }

@@ -3,6 +3,8 @@ package report
 import (
 	"cmp"
 	"fmt"
+
+	"gaugelog/analysis/unitsystem"
 )
 
 // mostEvents is how many events of the recording are listed one by one.
@@ -26,7 +28,7 @@ func (b *builder) entries() Section {
 		t := Table{Caption: "Overruled by a person", Columns: []Column{
 			{Name: "What", Text: true}, {Name: "Value", Text: true}, {Name: "Why", Text: true}, {Name: "By", Text: true}, {Name: "Since", Text: true}}}
 		for _, d := range b.r.Decisions {
-			t.Rows = append(t.Rows, []string{d.Path, d.Value, d.Why, cmp.Or(d.By, "not stated"), b.local(d.Since)})
+			t.Rows = append(t.Rows, []string{d.Path, unitsystem.Typed(d.Value), d.Why, cmp.Or(d.By, "not stated"), b.local(d.Since)})
 		}
 		t.Says = "Decisions of the analysis that an amendment changed; the figures of this report follow the person."
 		s.Blocks = append(s.Blocks, t)
@@ -65,7 +67,7 @@ func (b *builder) amendmentTable() Table {
 		if value == "" {
 			value = fmt.Sprint(a.Value)
 		}
-		t.Rows = append(t.Rows, []string{a.Path, value, since, a.Why, cmp.Or(a.By, "not stated"), b.local(a.Entered)})
+		t.Rows = append(t.Rows, []string{a.Path, unitsystem.Typed(value), since, a.Why, cmp.Or(a.By, "not stated"), b.local(a.Entered)})
 	}
 	t.Says = "Learned after the start and applied in the analysis; the recorded rig file is unchanged."
 	return t

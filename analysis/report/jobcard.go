@@ -6,6 +6,7 @@ import (
 	"strings"
 	"time"
 
+	"gaugelog/analysis/unitsystem"
 	"gaugelog/config"
 )
 
@@ -34,9 +35,9 @@ func (b *builder) specimenTable() Table {
 	add("Specimen", g.Specimen.Name)
 	add("Material", g.Specimen.Material)
 	add("Section", sectionWords(g.Specimen.Section))
-	add("Length", g.Specimen.Length.Shown)
+	add("Length", shown(g.Specimen.Length))
 	if g.Specimen.Mass != nil {
-		add("Mass", g.Specimen.Mass.Shown)
+		add("Mass", unitsystem.Typed(g.Specimen.Mass.Shown))
 	}
 	add("Test", g.Test.ID)
 	add("Purpose", g.Test.Purpose)
@@ -57,17 +58,17 @@ func sectionWords(s config.Section) string {
 		if len(d.list) == 0 {
 			continue
 		}
-		var shown []string
+		var places []string
 		for _, l := range d.list {
-			shown = append(shown, l.Shown)
+			places = append(places, shown(l))
 		}
-		parts = append(parts, d.name+" "+strings.Join(shown, ", "))
+		parts = append(parts, d.name+" "+strings.Join(places, ", "))
 	}
 	if s.SecondMoment != nil {
-		parts = append(parts, "second moment of area "+s.SecondMoment.Shown)
+		parts = append(parts, "second moment of area "+unitsystem.Typed(s.SecondMoment.Shown))
 	}
 	if s.U != nil {
-		parts = append(parts, "each with u = "+s.U.Shown)
+		parts = append(parts, "each with u = "+shown(*s.U))
 	}
 	return strings.Join(parts, "; ")
 }
@@ -91,12 +92,13 @@ func (b *builder) placesTable() Table {
 	return t
 }
 
-// shown is the text of the rig file, or the value where it was a default.
+// shown is the text of the rig file, or the value where it was a default, to
+// come out in the report's units.
 func shown(l config.Length) string {
 	if l.Shown != "" {
-		return l.Shown
+		return unitsystem.Typed(l.Shown)
 	}
-	return fmt.Sprintf("%g mm", l.Value)
+	return fmt.Sprintf("%g\u202fmm", l.Value)
 }
 
 func (b *builder) gaugeTable() Table {

@@ -43,11 +43,11 @@ func TestFigure(t *testing.T) {
 // NIST SP 811 appendix B.8: 1 psi = 6.894757 E-03 MPa, 1 lbf.in2 from
 // 4.448222 N and 25.4 mm.
 func TestUSFactors(t *testing.T) {
-	f, unit := us.convert("MPa")
+	f, unit := unitsOf("us").convert("MPa")
 	if got := 1 / f; unit != "psi" || got < 6.8947569e-3 || got > 6.8947574e-3 {
 		t.Errorf("psi is %v MPa (%s)", got, unit)
 	}
-	f, _ = us.convert("N.mm2")
+	f, _ = unitsOf("us").convert("N.mm2")
 	if got, want := 1/f, 4.4482216152605*25.4*25.4; got < want*(1-1e-12) || got > want*(1+1e-12) {
 		t.Errorf("lb-in2 is %v N.mm2, want %v", got, want)
 	}

@@ -5,63 +5,17 @@ import (
 	"math"
 	"time"
 
+	"gaugelog/analysis/unitsystem"
 	"gaugelog/config"
 )
 
-// units converts the result's units into those of the report. Factors are
-// exact by definition (NIST SP 811): 1 in = 25.4 mm, 1 lbf = 4.4482216152605 N,
-// 1 lb = 0.45359237 kg.
-type units map[string]conversion
+// units is the system in which the report shows the result's figures.
+type units string
 
-type conversion struct {
-	factor float64
-	unit   string
-}
-
-const (
-	inch  = 25.4
-	pound = 4.4482216152605
-	psi   = pound / (inch * inch) // MPa
-)
-
-var us = units{
-	"mm":    {1 / inch, "in"},
-	"N":     {1 / pound, "lbf"},
-	"kg":    {1 / 0.45359237, "lb"},
-	"MPa":   {1 / psi, "psi"},
-	"N.mm2": {1 / (pound * inch * inch), "lb-in2"},
-	"mm/N":  {pound / inch, "in/lbf"},
-	"N/mm":  {inch / pound, "lbf/in"},
-
-	// The laws' parameters.
-	"mm/(N.h)":   {pound / inch, "in/(lbf.h)"},
-	"mm/(N.h^n)": {pound / inch, "in/(lbf.h^n)"},
-
-	"mm/d": {1 / inch, "in/d"},
-	"mm/K": {1 / (inch * 1.8), "in/°F"},
-	"m/s2": {1 / 0.3048, "ft/s2"},
-}
-
-func unitsOf(name string) units {
-	if name == "us" {
-		return us
-	}
-	return units{}
-}
+func unitsOf(name string) units { return units(unitsystem.Of(name)) }
 
 // convert returns the factor and the name of the unit shown for a result's.
-func (u units) convert(unit string) (float64, string) {
-	if c, ok := u[unit]; ok {
-		return c.factor, c.unit
-	}
-	switch unit {
-	case "1":
-		return 1, ""
-	case "N.mm2":
-		return 1e-6, "N·m2" // 1 N.m2 = 1e6 N.mm2
-	}
-	return 1, unit
-}
+func (u units) convert(unit string) (float64, string) { return unitsystem.Convert(string(u), unit) }
 
 // of is the name alone, for a table's head.
 func (u units) of(unit string) string { _, name := u.convert(unit); return name }
@@ -92,14 +46,14 @@ func (b *builder) localTime(t time.Time) string {
 
 // temperatureUnit is the report's own; temperature converts to it.
 func (b *builder) temperatureUnit() string {
-	if b.u.of("mm") == "in" {
+	if b.u == "us" {
 		return "°F"
 	}
 	return "°C"
 }
 
 func (b *builder) temperature(celsius float64) float64 {
-	if b.u.of("mm") == "in" {
+	if b.u == "us" {
 		return celsius*1.8 + 32
 	}
 	return celsius

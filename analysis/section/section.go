@@ -162,13 +162,13 @@ func (s *Session) question(p Place) string {
 		if math.Abs(p.MM-m) <= 0.1*m {
 			return ""
 		}
-		return fmt.Sprintf("%s %s is far from the %.2f mm in the rig file", s.Dimension(), p.Shown, m)
+		return fmt.Sprintf("%s %s is far from the %.2f\u202fmm in the rig file", s.Dimension(), p.Shown, m)
 	}
 	m := median(others)
 	if math.Abs(p.MM-m) <= s.tolerance(m, others) {
 		return ""
 	}
-	return fmt.Sprintf("%s %s is %+.2f mm from the middle of the others (%.2f mm)", s.Dimension(), p.Shown, p.MM-m, m)
+	return fmt.Sprintf("%s %s is %+.2f\u202fmm from the middle of the others (%.2f\u202fmm)", s.Dimension(), p.Shown, p.MM-m, m)
 }
 
 // tolerance is how far a place may lie from the others' median: 2 % of it

@@ -74,7 +74,7 @@ func TestOutlier(t *testing.T) {
 	s := session(t, "round")
 	take(t, s, 38.0, 38.1)
 	q, err := s.Take(Place{83.1, "83.1 mm"})
-	if err != nil || !strings.Contains(q, "83.1 mm is +45.05 mm") {
+	if err != nil || !strings.Contains(q, "83.1 mm is +45.05\u202fmm") {
 		t.Fatalf("%q %v", q, err)
 	}
 	if _, err := s.Finish(); err == nil {
@@ -104,7 +104,7 @@ func TestOutlier(t *testing.T) {
 // A first place is held against the rig file's.
 func TestFirstAgainstRigFile(t *testing.T) {
 	s, _ := New(config.Section{Shape: "round", Diameter: []config.Length{mm(38)}})
-	if q, _ := s.Take(Place{3.8, "3.8 mm"}); !strings.Contains(q, "38.00 mm in the rig file") {
+	if q, _ := s.Take(Place{3.8, "3.8 mm"}); !strings.Contains(q, "38.00\u202fmm in the rig file") {
 		t.Errorf("%q", q)
 	}
 }

@@ -182,7 +182,7 @@ func (r *run) chooseBaseline() {
 	}
 	r.out.Baseline = best
 	if least > 0 {
-		r.warn("baseline-loaded", -1, r.out.Steps[best].From, fmt.Sprintf("%.4g N hung on the beam at the baseline (step %s): sags count from there", least, r.out.Steps[best].Name))
+		r.warn("baseline-loaded", -1, r.out.Steps[best].From, fmt.Sprintf("%.4g\u202fN hung on the beam at the baseline (step %s): sags count from there", least, r.out.Steps[best].Name))
 	}
 }
 

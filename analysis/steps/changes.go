@@ -79,7 +79,7 @@ func (r *run) readMarks() (start change) {
 		}
 		open.last = m.Time
 		if v := r.newton(i, m); open.set[i] && math.Abs(v-open.newton[i]) > 1e-9 {
-			r.warn("contradictory-marks", -1, m.Time, fmt.Sprintf("load %s was marked as %.5g N and as %.5g N within %d s; the later mark counts: withdraw the wrong one", m.Load, open.newton[i], v, apart/second))
+			r.warn("contradictory-marks", -1, m.Time, fmt.Sprintf("load %s was marked as %.5g\u202fN and as %.5g\u202fN within %d s; the later mark counts: withdraw the wrong one", m.Load, open.newton[i], v, apart/second))
 		}
 		open.newton[i] = r.newton(i, m)
 		open.set[i] = true

@@ -252,5 +252,5 @@ func (u *unmarkedStep) estimate() string {
 	if u.newton == nil {
 		return ""
 	}
-	return fmt.Sprintf("by some %.4g N (u = %.2g N, estimated from the sags) ", u.newton.MM, u.newton.U)
+	return fmt.Sprintf("by some %.4g\u202fN (u = %.2g\u202fN, estimated from the sags) ", u.newton.MM, u.newton.U)
 }

@@ -70,7 +70,7 @@ func (r *run) finish() {
 			r.warn("mark-off", -1, s.Marked, fmt.Sprintf("the mark of step %s came %s %s; the readings' own time was used", s.Name, lasted(math.Abs(s.OffsetS)), word))
 		}
 		if s.RingingS > 0 {
-			r.warn("ringing", -1, s.Full, fmt.Sprintf("the beam swung for %s after step %s (up to %.3g mm): the load was not put on gently", lasted(s.RingingS), s.Name, s.RingingMM))
+			r.warn("ringing", -1, s.Full, fmt.Sprintf("the beam swung for %s after step %s (up to %.3g\u202fmm): the load was not put on gently", lasted(s.RingingS), s.Name, s.RingingMM))
 		}
 	}
 	if k := r.out.BelowBaseline(); k >= 0 {

@@ -67,7 +67,7 @@ func (r *run) reportSettling(v slowly, g int) {
 	name := r.h.Rig.Supports[v.support].Name
 	d := Disturbance{Kind: SupportShift, Gauges: []int{g}, From: v.from, To: v.to, By: []Value{{v.mm, v.u}},
 		Treated:  "a real movement: taken off by the support gauges",
-		Evidence: fmt.Sprintf("support %s settled slowly, by %.3g mm within %s: %s", name, v.mm, lasted(seconds(v.to-v.from)), v.why)}
+		Evidence: fmt.Sprintf("support %s settled slowly, by %.3g\u202fmm within %s: %s", name, v.mm, lasted(seconds(v.to-v.from)), v.why)}
 	if !r.chordPossible() {
 		d.Treated = "taken off as far as one support gauge tells"
 	}

@@ -97,13 +97,13 @@ func (r *run) judgeStill(s stuck) (stuck, bool) {
 	if (want <= 6*count || r.oftenStill(g, v, want)) && (want <= 2*count || !r.unlikeItself(s)) {
 		return s, false
 	}
-	s.evidence = fmt.Sprintf("gauge %s showed the same value for %.0f s while %s moved: it should have moved %.3g mm", r.name(g), seconds(v.to-v.from), r.names(by), want)
+	s.evidence = fmt.Sprintf("gauge %s showed the same value for %.0f s while %s moved: it should have moved %.3g\u202fmm", r.name(g), seconds(v.to-v.from), r.names(by), want)
 	if raw, ok := r.rawAt(g, v.from); ok && len(gg.cfg.Travel) == 2 {
 		lo, hi := gg.cfg.Travel[0].Value, gg.cfg.Travel[1].Value
 		edge := 2*gg.res + 0.002*(hi-lo)
 		if raw <= lo+edge || raw >= hi-edge {
 			s.kind = EndOfTravel
-			s.evidence = fmt.Sprintf("gauge %s stood at the end of its travel (%.4g mm) from then on, while %s moved", r.name(g), raw, r.names(by))
+			s.evidence = fmt.Sprintf("gauge %s stood at the end of its travel (%.4g\u202fmm) from then on, while %s moved", r.name(g), raw, r.names(by))
 		}
 	}
 	return s, true

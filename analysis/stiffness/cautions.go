@@ -72,7 +72,7 @@ func (e *Estimate) inputCautions() {
 		return
 	}
 	if bound := stiffestPlunger * e.flexibility(); bound > 0.001 {
-		e.warn("plunger-unknown", "", "the plunger stiffness of %s is not stated: at %g N/mm each would carry up to %.1f %% of a load beside it, and the stiffness would seem as much too high", strings.Join(free, ", "), stiffestPlunger, 100*bound)
+		e.warn("plunger-unknown", "", "the plunger stiffness of %s is not stated: at %g\u202fN/mm each would carry up to %.1f %% of a load beside it, and the stiffness would seem as much too high", strings.Join(free, ", "), stiffestPlunger, 100*bound)
 	}
 }
 
@@ -154,7 +154,7 @@ func (e *Estimate) twist() {
 				}
 			}
 			if math.Abs(d) > 3*math.Sqrt(v) && math.Abs(d) > 0.005*sum {
-				e.warn("twist", b.Name, "gauges %s and %s at one place differ by %.3f mm over the steps: the beam twists or the load hangs off its middle; their mean counts", a.Name, b.Name, d)
+				e.warn("twist", b.Name, "gauges %s and %s at one place differ by %.3f\u202fmm over the steps: the beam twists or the load hangs off its middle; their mean counts", a.Name, b.Name, d)
 			}
 		}
 	}

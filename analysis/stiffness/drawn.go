@@ -83,6 +83,6 @@ func tolerance(u float64, digits int) float64 {
 func (mc *MonteCarlo) words() string {
 	m := mc.Modulus
 	how := [...]string{"differs from", "agrees to one digit of u with", "agrees to two digits of u with"}[m.Digits]
-	return fmt.Sprintf("%d draws of all inputs (seed %d) give 95 %% of the moduli in %.6g to %.6g MPa, which %s the propagated %.6g to %.6g MPa (tolerance %.2g MPa at each end, beside the draws' own noise of %.2g MPa)",
+	return fmt.Sprintf("%d draws of all inputs (seed %d) give 95 %% of the moduli in %.6g\u202fMPa to %.6g\u202fMPa, which %s the propagated %.6g\u202fMPa to %.6g\u202fMPa (tolerance %.2g\u202fMPa at each end, beside the draws' own noise of %.2g\u202fMPa)",
 		mc.Draws, mc.Seed, m.Lo, m.Hi, how, m.PropagatedLo, m.PropagatedHi, m.Tolerance, m.Noise)
 }

@@ -94,10 +94,10 @@ func (p *predictor) judge(s *PredictedStep) {
 	}
 	lim := p.rig.Limits
 	if lim.CatcherGap != nil && s.WithCreep > 0.8*lim.CatcherGap.Value {
-		p.warn("catcher-gap", "", "step %s will sag %.1f mm with creep, over 80 %% of the catcher's gap of %g mm", s.Step, s.WithCreep, lim.CatcherGap.Value)
+		p.warn("catcher-gap", "", "step %s will sag %.1f\u202fmm with creep, over 80 %% of the catcher's gap of %g\u202fmm", s.Step, s.WithCreep, lim.CatcherGap.Value)
 	}
 	if lim.Sag != nil && s.WithCreep > lim.Sag.Value {
-		p.warn("sag-limit", "", "step %s will sag %.2f mm with creep, beyond the limit of %g mm", s.Step, s.WithCreep, lim.Sag.Value)
+		p.warn("sag-limit", "", "step %s will sag %.2f\u202fmm with creep, beyond the limit of %g\u202fmm", s.Step, s.WithCreep, lim.Sag.Value)
 	}
 	if lim.SpanOverSag != nil && s.WithCreep > 0 && span(p.rig)/s.WithCreep < lim.SpanOverSag.Value {
 		p.warn("sag-limit", "", "step %s will sag 1/%.0f of the span with creep, beyond the limit of 1/%g", s.Step, span(p.rig)/s.WithCreep, lim.SpanOverSag.Value)

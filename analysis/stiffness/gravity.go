@@ -30,7 +30,7 @@ func GravityOf(c config.Gravity) (g Value, source string, err error) {
 	switch {
 	case c.Value != nil:
 		if !(c.Value.Value > 9 && c.Value.Value < 10.5) {
-			return Value{}, "", fmt.Errorf("gravity: %g m/s2 is found nowhere on the ground; mend: state the local value, 9.76 to 9.84", c.Value.Value)
+			return Value{}, "", fmt.Errorf("gravity: %g\u202fm/s2 is found nowhere on the ground; mend: state the local value, 9.76 to 9.84", c.Value.Value)
 		}
 		return Value{c.Value.Value, c.Value.U}, "stated in the rig file", nil
 	case c.Latitude != nil:

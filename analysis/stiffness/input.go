@@ -107,7 +107,7 @@ func (in *Input) checkLoads() error {
 				return fmt.Errorf("stiffness: step %s hangs load %s, which the rig does not have; mend: name it under loads in the rig file or an amendment", s.Name, l.Load)
 			}
 			if math.IsNaN(l.N) || math.IsInf(l.N, 0) || !(l.U >= 0) {
-				return fmt.Errorf("stiffness: step %s: load %s is %g N with u %g N; mend: give both as numbers", s.Name, l.Load, l.N, l.U)
+				return fmt.Errorf("stiffness: step %s: load %s is %g\u202fN with u %g\u202fN; mend: give both as numbers", s.Name, l.Load, l.N, l.U)
 			}
 		}
 	}

@@ -88,8 +88,8 @@ func TestBadInput(t *testing.T) {
 		{"no steps", func(in *Input) { in.Steps = nil }, "no gauge answered"},
 		{"NaN", func(in *Input) { in.Steps[0].Gauges[0].MM = math.NaN() }, "not a number"},
 		{"unknown load", func(in *Input) { in.Steps[0].Loads[0].Load = "x" }, "hangs load x"},
-		{"zero depth", func(in *Input) { in.Rig.Specimen.Section.Depth = lengths(0) }, "depth of 0 mm"},
-		{"no span", func(in *Input) { in.Rig.Supports[1].At = length(0, 0) }, "are both at 0 mm"},
+		{"zero depth", func(in *Input) { in.Rig.Specimen.Section.Depth = lengths(0) }, "depth of 0\u202fmm"},
+		{"no span", func(in *Input) { in.Rig.Supports[1].At = length(0, 0) }, "are both at 0\u202fmm"},
 		{"load off the beam", func(in *Input) { a := length(9000, 0); in.Rig.Loads[0].At = &a }, "off the beam"},
 		{"gauge number", func(in *Input) { in.Steps[0].Gauges[0].Gauge = 99 }, "gauge number 99"},
 		{"too few", func(in *Input) {

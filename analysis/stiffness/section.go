@@ -53,7 +53,7 @@ func SectionOf(c config.Section) (*Section, error) {
 	}
 	i, a, kappa := s.shape(s.base)
 	if !(i > 0) || math.IsInf(i, 0) || a < 0 || math.IsNaN(a) {
-		return nil, fmt.Errorf("section: the dimensions leave a second moment of %g mm4 and an area of %g mm2; mend: correct width, depth, diameter or wall (twice the wall must be less than the outside)", i, a)
+		return nil, fmt.Errorf("section: the dimensions leave a second moment of %g\u202fmm4 and an area of %g\u202fmm2; mend: correct width, depth, diameter or wall (twice the wall must be less than the outside)", i, a)
 	}
 	s.SecondMoment.Value, s.Area.Value, s.ShearFactor = i, a, kappa
 	if s.Depth > 0 {
@@ -155,7 +155,7 @@ func (s *Section) take(c config.Section, names ...string) error {
 		}
 		for _, p := range places {
 			if !(p.Value > 0) || math.IsInf(p.Value, 0) {
-				return fmt.Errorf("section: a %s of %g mm; mend: state the measured %s, greater than 0 mm", name, p.Value, name)
+				return fmt.Errorf("section: a %s of %g\u202fmm; mend: state the measured %s, greater than 0", name, p.Value, name)
 			}
 		}
 		m := mean(places)

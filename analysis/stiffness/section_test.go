@@ -52,7 +52,7 @@ func TestSectionErrors(t *testing.T) {
 		s    config.Section
 		want string
 	}{
-		{config.Section{Shape: "rectangle", Width: lengths(100), Depth: lengths(0)}, "depth of 0 mm"},
+		{config.Section{Shape: "rectangle", Width: lengths(100), Depth: lengths(0)}, "depth of 0\u202fmm"},
 		{config.Section{Shape: "rectangle", Width: lengths(100)}, "needs its depth"},
 		{config.Section{Shape: "tube", Diameter: lengths(20), Wall: lengths(11)}, "second moment"},
 		{config.Section{Shape: "general"}, "second_moment"},

@@ -1,6 +1,7 @@
 package main
 
 import (
+	"bytes"
 	"context"
 	"encoding/json"
 	"errors"
@@ -16,6 +17,7 @@ import (
 	"gaugelog/analysis/history"
 	"gaugelog/analysis/report"
 	"gaugelog/analysis/stiffness"
+	"gaugelog/analysis/unitsystem"
 	"gaugelog/config"
 )
 
@@ -165,11 +167,14 @@ func held(r *analysis.Result) error {
 
 // printJSON writes indented JSON with characters as they are.
 func printJSON(w io.Writer, v any) error {
-	enc := json.NewEncoder(w)
+	var text bytes.Buffer
+	enc := json.NewEncoder(&text)
 	enc.SetIndent("", " ")
 	enc.SetEscapeHTML(false)
 	if err := enc.Encode(v); err != nil {
 		return fmt.Errorf("writing JSON: %w", err)
 	}
-	return nil
+	// Its texts are in the units of its figures.
+	_, err := w.Write(bytes.ReplaceAll(text.Bytes(), []byte(unitsystem.Space), []byte(" ")))
+	return err
 }

@@ -4,27 +4,26 @@ import (
 	"bytes"
 	"errors"
 	"fmt"
-	"io"
 	"io/fs"
 	"math"
 	"os"
 	"path/filepath"
+	"slices"
 	"strconv"
-	"strings"
-	"text/tabwriter"
 	"time"
 
 	"github.com/spf13/cobra"
 
 	"gaugelog/analysis/calibrate"
+	"gaugelog/analysis/unitsystem"
 	"gaugelog/config"
 	"gaugelog/device"
 )
 
 // calibrateFlags are the flags of `calibrate`.
 type calibrateFlags struct {
-	gauge, csv, temperature, blockU, date, due, ports, settle, span string
-	write, yes, asJSON                                              bool
+	gauge, csv, temperature, blockU, date, due, ports, settle, span, units string
+	write, yes, asJSON                                                     bool
 }
 
 func calibrateCommand() *cobra.Command {
@@ -67,11 +66,15 @@ session as a CSV beside it; a live session is kept in any case.`,
 	fl.StringVar(&f.span, "average", "2 s", "then average over this long")
 	fl.BoolVar(&f.write, "write", false, "put the calibration into the rig file")
 	fl.BoolVar(&f.yes, "yes", false, "with --write: do not ask")
+	fl.StringVar(&f.units, "units", "si", "units of the text: si or us")
 	fl.BoolVar(&f.asJSON, "json", false, "print what was found as JSON")
 	return c
 }
 
 func runCalibrate(cmd *cobra.Command, rigFile string, f calibrateFlags) error {
+	if !slices.Contains(unitsystem.Names, f.units) {
+		return wrongf("give --units si or --units us", "units %q are not known", f.units)
+	}
 	rig, file, err := openRig(rigFile)
 	if err != nil {
 		return err
@@ -117,7 +120,7 @@ func runCalibrate(cmd *cobra.Command, rigFile string, f calibrateFlags) error {
 	if err != nil {
 		return wrong(err, "take more blocks, up and down")
 	}
-	if err := tellCalibration(cmd.OutOrStdout(), f.asJSON, gauge.Name, s, line, kept); err != nil || !f.write {
+	if err := tellCalibration(cmd.OutOrStdout(), f, gauge.Name, s, line, kept); err != nil || !f.write {
 		return err
 	}
 	if err := putCalibration(file, gauge.Name, line, date, due); err != nil {
@@ -206,7 +209,7 @@ func blocksLive(cmd *cobra.Command, alone *config.Rig, g config.Gauge, lines <-c
 			if !open || text == "done" {
 				return points, nil
 			}
-			points, err = oneBlock(cmd, l, points, text, settle, span)
+			points, err = oneBlock(cmd, l, points, text, f.units, settle, span)
 			if err != nil {
 				return points, err
 			}
@@ -215,7 +218,7 @@ func blocksLive(cmd *cobra.Command, alone *config.Rig, g config.Gauge, lines <-c
 }
 
 // oneBlock deals with one line that was typed.
-func oneBlock(cmd *cobra.Command, l *live, points []calibrate.Point, text string, settle, span time.Duration) ([]calibrate.Point, error) {
+func oneBlock(cmd *cobra.Command, l *live, points []calibrate.Point, text, units string, settle, span time.Duration) ([]calibrate.Point, error) {
 	out := cmd.ErrOrStderr()
 	switch text {
 	case "":
@@ -226,7 +229,7 @@ func oneBlock(cmd *cobra.Command, l *live, points []calibrate.Point, text string
 			return points, nil
 		}
 		last := points[len(points)-1]
-		fmt.Fprintf(out, "took back the block of %g mm\n", last.BlockMM)
+		fmt.Fprintln(out, unitsystem.Text(units, fmt.Sprintf("took back the block of %g\u202fmm", last.BlockMM)))
 		return points[:len(points)-1], nil
 	}
 	if v, err := strconv.ParseFloat(text, 64); err == nil {
@@ -249,7 +252,7 @@ func oneBlock(cmd *cobra.Command, l *live, points []calibrate.Point, text string
 	points = append(points, calibrate.Point{BlockMM: block.Value, ReadingMM: mm, Time: time.Now().UTC().Format(time.RFC3339)})
 	calibrate.AddDirections(points)
 	p := points[len(points)-1]
-	fmt.Fprintf(out, "%d: block %g mm, %s: %.4f mm (mean of %d)\n", len(points), p.BlockMM, p.Direction, p.ReadingMM, n)
+	fmt.Fprintln(out, unitsystem.Text(units, fmt.Sprintf("%d: block %g\u202fmm, %s: %.4f\u202fmm (mean of %d)", len(points), p.BlockMM, p.Direction, p.ReadingMM, n)))
 	return points, nil
 }
 
@@ -300,47 +303,6 @@ type calibrated struct {
 	Points  []calibrate.Point `json:"points"`
 	Line    *calibrate.Line   `json:"line"`
 	Session string            `json:"session,omitempty"`
-}
-
-func tellCalibration(w io.Writer, asJSON bool, gauge string, s calibrate.Session, l *calibrate.Line, kept string) error {
-	if asJSON {
-		return printJSON(w, calibrated{gauge, s.Points, l, kept})
-	}
-	t := tabwriter.NewWriter(w, 0, 8, 2, ' ', tabwriter.AlignRight)
-	fmt.Fprintln(t, "block, mm\tway\treading, mm\toff the line, mm\t")
-	for i, p := range s.Points {
-		fmt.Fprintf(t, "%g\t%s\t%.4f\t%+.4f\t\n", p.BlockMM, p.Direction, p.ReadingMM, l.Residuals[i])
-	}
-	if err := t.Flush(); err != nil {
-		return err
-	}
-	fmt.Fprintf(w, "\ngauge %s: indication = offset + gain * true\n", gauge)
-	fmt.Fprintf(w, "  offset %.5f mm, u %.5f mm; gain %.6f, u %.6f; correlation %.3f\n", l.Offset, l.UOffset, l.Gain, l.UGain, l.Correlation)
-	fmt.Fprintf(w, "  scatter about the line %.5f mm (%d degrees of freedom); u of one reading %.5f mm\n", l.ResidualSD, l.DOF, l.ReadingU)
-	if l.Hysteresis != nil {
-		fmt.Fprintf(w, "  hysteresis %+.4f mm at the block of %g mm (down less up, greatest of %d blocks)\n", l.Hysteresis.MM, l.Hysteresis.BlockMM, l.Hysteresis.Blocks)
-	}
-	if l.Repeatability != nil {
-		fmt.Fprintf(w, "  repeatability %.5f mm (%d degrees of freedom)\n", l.Repeatability.SD, l.Repeatability.DOF)
-	} else {
-		fmt.Fprintln(w, "  repeatability: not known, no block was taken twice the same way")
-	}
-	enough := "a line is enough"
-	if !l.Curvature.LineEnough {
-		enough = "a line is NOT enough"
-	}
-	fmt.Fprintf(w, "  %s: a curve would leave its chord by %+.4f mm in the middle (p = %.2g)\n", enough, l.Curvature.Bulge, l.Curvature.P)
-	first, last := s.Points[0].ReadingMM, s.Points[0].ReadingMM
-	for _, p := range s.Points {
-		first, last = math.Min(first, p.ReadingMM), math.Max(last, p.ReadingMM)
-	}
-	at, diff := l.Corrected(last), l.Difference(first, last)
-	fmt.Fprintf(w, "  a reading of %.4f mm means %.4f mm, u %.5f mm; from %.4f to %.4f mm is %.4f mm, u %.5f mm (the offset drops out)\n",
-		last, at.MM, at.U, first, last, diff.MM, diff.U)
-	for _, warning := range l.Warnings {
-		fmt.Fprintf(w, "warning: %s\n", strings.TrimSpace(warning.Text))
-	}
-	return nil
 }
 
 var _ device.Sink = (*live)(nil)

@@ -11,6 +11,7 @@ import (
 
 	"gaugelog/analysis/report"
 	"gaugelog/analysis/stiffness"
+	"gaugelog/analysis/unitsystem"
 	"gaugelog/config"
 )
 
@@ -67,7 +68,7 @@ be known and what would better that most, and whose calibration has lapsed.`,
 			} else {
 				err = foreteller{cmd.OutOrStdout(), units}.print(rig, out)
 			}
-			return errors.Join(err, wrongRig(cmd.ErrOrStderr(), problems, asJSON), outside(rig, out.Prediction))
+			return errors.Join(err, wrongRig(cmd.ErrOrStderr(), units, problems, asJSON), outside(rig, out.Prediction))
 		},
 	}
 	c.Flags().BoolVar(&asJSON, "json", false, "print what was found as JSON")
@@ -77,7 +78,7 @@ be known and what would better that most, and whose calibration has lapsed.`,
 
 // wrongRig turns errors among the problems into the command's failure;
 // warnings are printed and let pass.
-func wrongRig(w io.Writer, problems []config.Problem, asJSON bool) error {
+func wrongRig(w io.Writer, units string, problems []config.Problem, asJSON bool) error {
 	var errs []error
 	for _, p := range problems {
 		if p.Severity == config.Error {
@@ -85,9 +86,9 @@ func wrongRig(w io.Writer, problems []config.Problem, asJSON bool) error {
 			continue
 		}
 		if !asJSON {
-			fmt.Fprintf(w, "warning: %s\n", p.Error())
+			fmt.Fprintf(w, "warning: %s\n", unitsystem.Text(units, p.Error()))
 			if p.Fix != "" {
-				fmt.Fprintf(w, "mend: %s\n", p.Fix)
+				fmt.Fprintf(w, "mend: %s\n", unitsystem.Text(units, p.Fix))
 			}
 		}
 	}

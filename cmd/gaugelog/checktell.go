@@ -10,6 +10,7 @@ import (
 
 	"gaugelog/analysis/report"
 	"gaugelog/analysis/stiffness"
+	"gaugelog/analysis/unitsystem"
 	"gaugelog/config"
 )
 
@@ -56,13 +57,13 @@ func (f foreteller) print(rig *config.Rig, c checked) error {
 		fmt.Fprintf(f.w, "warning: the calibration of gauge %s expired %s ago (due %s); mend: calibrate it, or have it calibrated, before the test\n", l.Gauge, count(l.Days, "day"), l.Due)
 	}
 	if c.Prediction == nil {
-		fmt.Fprintf(f.w, "\nNothing is foretold: %s\n", c.NotForetold)
+		fmt.Fprintf(f.w, "\nNothing is foretold: %s\n", f.text(c.NotForetold))
 	} else {
 		f.steps(rig, c.Prediction)
 		f.gauges(c.Prediction)
 		f.reach(c.Prediction)
 		for _, warning := range c.Prediction.Warnings {
-			fmt.Fprintf(f.w, "warning: %s\n", warning.Text)
+			fmt.Fprintf(f.w, "warning: %s\n", f.text(warning.Text))
 		}
 	}
 	fmt.Fprintf(f.w, "\nCautions\n")
@@ -71,6 +72,9 @@ func (f foreteller) print(rig *config.Rig, c checked) error {
 	}
 	return nil
 }
+
+// text shows a sentence's quantities in the units asked for.
+func (f foreteller) text(s string) string { return unitsystem.Text(f.units, s) }
 
 // count prints a number with its noun.
 func count(n int, noun string) string {
@@ -175,7 +179,7 @@ func travel(g stiffness.PredictedGauge, format string) string {
 
 func (f foreteller) reach(p *stiffness.Prediction) {
 	if p.Unreachable != "" {
-		fmt.Fprintf(f.w, "\nHow well the modulus can be known: %s\n", p.Unreachable)
+		fmt.Fprintf(f.w, "\nHow well the modulus can be known: %s\n", f.text(p.Unreachable))
 		return
 	}
 	fmt.Fprintf(f.w, "\nThe modulus can be known to %.2f %% (standard), %.2f %% for 95 %%; scatter and drift come on top\n", 100*p.RelativeU, 100*p.RelativeU95)

@@ -12,6 +12,7 @@ import (
 	"gaugelog/analysis"
 	"gaugelog/analysis/compare"
 	"gaugelog/analysis/report"
+	"gaugelog/analysis/unitsystem"
 )
 
 // teller prints a comparison in one system of units.
@@ -41,7 +42,7 @@ func (t teller) comparison(c *compare.Comparison) error {
 		}
 	}
 	for _, warning := range c.Warnings {
-		fmt.Fprintf(t.w, "warning: %s\n", warning.Text)
+		fmt.Fprintf(t.w, "warning: %s\n", unitsystem.Text(t.units, warning.Text))
 	}
 	return nil
 }

@@ -5,6 +5,8 @@ import (
 	"fmt"
 	"io"
 	"strings"
+
+	"gaugelog/analysis/unitsystem"
 )
 
 // Code is an exit code; scripts rely on them.
@@ -48,18 +50,18 @@ var errNotHeld = &failure{code: NotHeld, err: errors.New("a check did not hold")
 type mender interface{ Mend() string }
 
 // printError writes err the way design and scripts expect and returns its
-// exit code. Several errors joined are printed one under the other.
-func printError(w io.Writer, err error) Code {
+// exit code, quantities in one of the systems of units. Several errors joined are printed one under the other.
+func printError(w io.Writer, units string, err error) Code {
 	var held *failure
 	if errors.As(err, &held) && held.code == NotHeld {
 		return NotHeld
 	}
 	code := Failed
 	for _, e := range flatten(err) {
-		fmt.Fprintf(w, "gaugelog: %s\n", strings.TrimSpace(e.Error()))
+		fmt.Fprintf(w, "gaugelog: %s\n", unitsystem.Text(units, strings.TrimSpace(e.Error())))
 		var m mender
 		if errors.As(e, &m) && m.Mend() != "" {
-			fmt.Fprintf(w, "mend: %s\n", m.Mend())
+			fmt.Fprintf(w, "mend: %s\n", unitsystem.Text(units, m.Mend()))
 		}
 		code = max(code, codeOf(e))
 	}

@@ -35,10 +35,21 @@ func run(args []string, in io.Reader, out, errOut io.Writer) Code {
 	root.SetIn(in)
 	root.SetOut(out)
 	root.SetErr(errOut)
-	if err := root.ExecuteContext(ctx); err != nil {
-		return printError(errOut, unknownCommand(err))
+	if c, err := root.ExecuteContextC(ctx); err != nil {
+		return printError(errOut, unitsOf(c), unknownCommand(err))
 	}
 	return Done
+}
+
+// unitsOf is what the command was told of --units, "" where it has no such flag.
+func unitsOf(c *cobra.Command) string {
+	if c == nil {
+		return ""
+	}
+	if f := c.Flags().Lookup("units"); f != nil {
+		return f.Value.String()
+	}
+	return ""
 }
 
 // newRoot builds the command tree. Tests call it too.

@@ -5,6 +5,7 @@ import (
 	"time"
 
 	"gaugelog/analysis"
+	"gaugelog/analysis/unitsystem"
 	"gaugelog/ingest/desk"
 )
 
@@ -58,7 +59,7 @@ func outlook(r *analysis.Result) *desk.Outlook {
 		o.MayStop = append(o.MayStop, desk.MayStop{More: time.Duration(m.MoreS * float64(time.Second)), WidthMM: m.ForecastWidth.Value})
 	}
 	for _, d := range r.Disturbances {
-		b := desk.Disturbance{Kind: d.Kind, Gauges: d.Gauges, From: nanoseconds(&d.From), To: nanoseconds(d.To), Treated: d.Treated}
+		b := desk.Disturbance{Kind: d.Kind, Gauges: d.Gauges, From: nanoseconds(&d.From), To: nanoseconds(d.To), Treated: unitsystem.Text("si", d.Treated)}
 		if d.Size != nil {
 			b.Size = &d.Size.Value
 		}

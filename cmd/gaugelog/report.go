@@ -17,6 +17,7 @@ import (
 	"gaugelog/analysis"
 	"gaugelog/analysis/history"
 	"gaugelog/analysis/report"
+	"gaugelog/analysis/unitsystem"
 	"gaugelog/ingest"
 )
 
@@ -153,6 +154,9 @@ func marksOf(run string) ([]report.Mark, error) {
 	for _, m := range marks {
 		if m.Withdraw != "" {
 			continue
+		}
+		for i := range m.Loads {
+			m.Loads[i].Shown = unitsystem.Typed(m.Loads[i].Shown)
 		}
 		out = append(out, report.Mark{ID: m.ID, Time: time.Unix(0, m.Time), What: markWords(m), By: m.By, Withdrawn: gone[m.ID], Photo: m.Photo})
 	}

@@ -4,6 +4,7 @@ import (
 	"errors"
 	"fmt"
 	"io"
+	"slices"
 	"strconv"
 	"strings"
 	"text/tabwriter"
@@ -12,15 +13,16 @@ import (
 	"github.com/spf13/cobra"
 
 	"gaugelog/analysis/section"
+	"gaugelog/analysis/unitsystem"
 	"gaugelog/config"
 	"gaugelog/device"
 )
 
 // sectionFlags are the flags of `section`.
 type sectionFlags struct {
-	port, frame, ports string
-	dryRun, yes        bool
-	asJSON             bool
+	port, frame, ports, units string
+	dryRun, yes               bool
+	asJSON                    bool
 }
 
 func sectionCommand() *cobra.Command {
@@ -48,11 +50,15 @@ say "button: true" is read when Enter is pressed on an empty line; "next" goes o
 	fl.StringVar(&f.ports, "ports", "", "file of \"name path\" lines that say where the ports are, as `simulate` prints them")
 	fl.BoolVar(&f.dryRun, "dry-run", false, "show what would be written, and write nothing")
 	fl.BoolVar(&f.yes, "yes", false, "do not ask before writing")
+	fl.StringVar(&f.units, "units", "si", "units of the text: si or us")
 	fl.BoolVar(&f.asJSON, "json", false, "print what was found as JSON")
 	return c
 }
 
 func runSection(cmd *cobra.Command, rigFile string, f sectionFlags) (err error) {
+	if !slices.Contains(unitsystem.Names, f.units) {
+		return wrongf("give --units si or --units us", "units %q are not known", f.units)
+	}
 	rig, file, err := openRig(rigFile)
 	if err != nil {
 		return err
@@ -61,7 +67,7 @@ func runSection(cmd *cobra.Command, rigFile string, f sectionFlags) (err error) 
 	if err != nil {
 		return wrong(err, "write second_moment by hand, or another shape")
 	}
-	t := &sectionTalk{s: s, out: cmd.ErrOrStderr(), lines: typed(cmd.Context(), cmd.InOrStdin())}
+	t := &sectionTalk{s: s, units: f.units, out: cmd.ErrOrStderr(), lines: typed(cmd.Context(), cmd.InOrStdin())}
 	if f.port != "" || f.frame != "" {
 		l, err := caliperOn(cmd, rig, f, t)
 		if err != nil {
@@ -80,7 +86,7 @@ func runSection(cmd *cobra.Command, rigFile string, f sectionFlags) (err error) 
 	if f.asJSON {
 		err = printJSON(cmd.OutOrStdout(), r)
 	} else {
-		err = tellSection(cmd.OutOrStdout(), r)
+		err = tellSection(cmd.OutOrStdout(), f.units, r)
 	}
 	if err != nil {
 		return err
@@ -126,6 +132,7 @@ func caliperOn(cmd *cobra.Command, rig *config.Rig, f sectionFlags, t *sectionTa
 // sectionTalk is the conversation of one session.
 type sectionTalk struct {
 	s      *section.Session
+	units  string // of what is asked and told
 	out    io.Writer
 	lines  <-chan string
 	live   *live // nil: everything is typed
@@ -225,23 +232,29 @@ func (t *sectionTalk) take(p section.Place) {
 	case err != nil:
 		fmt.Fprintln(t.out, err)
 	case q != "":
-		fmt.Fprintf(t.out, "%s: measure again there, or k keeps it, u takes it back\n", q)
+		fmt.Fprintf(t.out, "%s: measure again there, or k keeps it, u takes it back\n", unitsystem.Text(t.units, q))
 	default:
 		list := t.s.Places(t.s.Dimension())
 		fmt.Fprintf(t.out, "%s %d: %s\n", t.s.Dimension(), len(list), p.Shown)
 	}
 }
 
-func tellSection(w io.Writer, r *section.Result) error {
+func tellSection(w io.Writer, units string, r *section.Result) error {
+	factor, unit := unitsystem.Convert(units, "mm")
+	fine := 3
+	if unit == "in" {
+		fine = 4
+	}
 	t := tabwriter.NewWriter(w, 0, 8, 2, ' ', tabwriter.AlignRight)
-	fmt.Fprintln(t, "\tplaces\tmean, mm\tleast, mm\tgreatest, mm\tE if least everywhere\tE if greatest\tu(E) from it\t")
+	fmt.Fprintf(t, "\tplaces\tmean, %[1]s\tleast, %[1]s\tgreatest, %[1]s\tE if least everywhere\tE if greatest\tu(E) from it\t\n", unit)
 	for _, d := range r.Dimensions {
-		fmt.Fprintf(t, "%s\t%d\t%.3f\t%.3f\t%.3f\t%+.2f %%\t%+.2f %%\t%s\t\n", d.Name, d.N, d.Mean, d.Least, d.Most, 100*d.AtLeast, 100*d.AtMost, percent(d.URelative))
+		fmt.Fprintf(t, "%s\t%d\t%.*f\t%.*f\t%.*f\t%+.2f %%\t%+.2f %%\t%s\t\n", d.Name, d.N, fine, d.Mean*factor, fine, d.Least*factor, fine, d.Most*factor, 100*d.AtLeast, 100*d.AtMost, percent(d.URelative))
 	}
 	if err := t.Flush(); err != nil {
 		return err
 	}
-	fmt.Fprintf(w, "second moment %.6g mm4; the modulus carries %s of standard uncertainty from the section\n", r.SecondMoment, percent(r.URelative))
+	fourth, unit := unitsystem.Convert(units, "mm4")
+	fmt.Fprintf(w, "second moment %.6g %s; the modulus carries %s of standard uncertainty from the section\n", r.SecondMoment*fourth, unit, percent(r.URelative))
 	var single []string
 	for _, d := range r.Dimensions {
 		if d.N < 3 {
