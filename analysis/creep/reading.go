@@ -161,10 +161,10 @@ func (a *Analysis) recover(in *Input, loading []*Fit, unload Change, o Options) 
 	if math.Abs(set.Value) > max(3, k)*set.U {
 		a.LoadingOnly = true
 		if set.Value > 0 {
-			a.note("recovery-not-linear", "the law of the loading part predicts %.4g mm left at the end of the recovery, %.4g mm were: %.3g(%.2g) mm of permanent set; the law is taken from the loading part alone",
+			a.note("recovery-not-linear", "the law of the loading part predicts %.4g\u202fmm left at the end of the recovery, %.4g\u202fmm were: %.3g\u202fmm (u %.2g\u202fmm) of permanent set; the law is taken from the loading part alone",
 				end.Predicted.Value, end.Residual.Value, set.Value, set.U)
 		} else {
-			a.note("recovery-overshoots", "more came back (%.4g mm left) than the law of the loading part predicts (%.4g mm): the beam, a zero or a load is not what the marks say; the law is taken from the loading part alone",
+			a.note("recovery-overshoots", "more came back (%.4g\u202fmm left) than the law of the loading part predicts (%.4g\u202fmm): the beam, a zero or a load is not what the marks say; the law is taken from the loading part alone",
 				end.Residual.Value, end.Predicted.Value)
 		}
 	}

@@ -35,7 +35,7 @@ func (a *Analysis) stage(in *Input) {
 		there := f.Rate(in.FullH + mid)
 		if math.Abs(local.Value-there.Value) > max(4*math.Hypot(local.U, there.U), 0.1*math.Abs(there.Value)) {
 			a.Rate, a.Method = &local, "local"
-			a.note("rate-off-law", "the sag at the end of the step runs at %.3g mm/d where the law has %.3g", local.Value, there.Value)
+			a.note("rate-off-law", "the sag at the end of the step runs at %.3g\u202fmm/d where the law has %.3g\u202fmm/d", local.Value, there.Value)
 		}
 	}
 	a.Stage = stageOf(age, sag, f, in)
