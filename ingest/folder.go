@@ -58,10 +58,10 @@ type folder struct {
 func layFolder(o *Options) (*folder, error) {
 	sum := sha256.Sum256(o.RigBytes)
 	found := &folder{run: o.Run, rigSum: hex.EncodeToString(sum[:])}
-	there, err := readAll(o.FS, rigName)
+	there, err := segment.ReadFile(o.FS, rigName)
 	switch {
 	case errors.Is(err, fs.ErrNotExist):
-		if err := writeNew(o.FS, ".", rigName, o.RigBytes); err != nil {
+		if err := segment.ReplaceFile(o.FS, rigName, o.RigBytes); err != nil {
 			return nil, err
 		}
 	case err != nil:
@@ -75,7 +75,7 @@ func layFolder(o *Options) (*folder, error) {
 		if err := o.FS.Remove(rigName); err != nil {
 			return nil, err
 		}
-		if err := writeNew(o.FS, ".", rigName, o.RigBytes); err != nil {
+		if err := segment.ReplaceFile(o.FS, rigName, o.RigBytes); err != nil {
 			return nil, err
 		}
 	}

@@ -91,7 +91,7 @@ func (m *Mark) place(earlier []Mark) error {
 // marksHeader takes the run's id from its events and the rig's sum from its rig file.
 func marksHeader(fsys segment.FS) (segment.Header, error) {
 	var h segment.Header
-	rig, err := readAll(fsys, rigName)
+	rig, err := segment.ReadFile(fsys, rigName)
 	if errors.Is(err, fs.ErrNotExist) {
 		return h, errors.New("this is no run folder: it has no rig.yaml")
 	}

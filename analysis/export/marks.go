@@ -1,6 +1,7 @@
 package export
 
 import (
+	"cmp"
 	"io"
 	"slices"
 
@@ -17,15 +18,7 @@ func Marks(w io.Writer, h *history.History) (Summary, error) {
 		return Summary{}, err
 	}
 	marks := slices.Clone(h.Marks)
-	slices.SortStableFunc(marks, func(a, b history.Mark) int {
-		switch {
-		case a.Time < b.Time:
-			return -1
-		case a.Time > b.Time:
-			return 1
-		}
-		return 0
-	})
+	slices.SortStableFunc(marks, func(a, b history.Mark) int { return cmp.Compare(a.Time, b.Time) })
 	for _, m := range marks {
 		t.when(m.Time, h.First)
 		value, note := "", m.Text

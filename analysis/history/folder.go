@@ -5,7 +5,6 @@ import (
 	"encoding/hex"
 	"errors"
 	"fmt"
-	"io"
 	"io/fs"
 	"os"
 
@@ -92,7 +91,7 @@ func (h *History) noteWholeness(folder *segment.Folder) {
 
 // readRig reads rig.yaml and puts the constant amendments in.
 func (h *History) readRig(fsys segment.FS) error {
-	text, err := readAll(fsys, segment.RigFile)
+	text, err := segment.ReadFile(fsys, segment.RigFile)
 	if errors.Is(err, fs.ErrNotExist) {
 		return fmt.Errorf("%s is missing: a run folder holds the rig file its readings were taken by; put it there", segment.RigFile)
 	}
@@ -105,7 +104,7 @@ func (h *History) readRig(fsys segment.FS) error {
 	if err != nil {
 		return err
 	}
-	more, err := readAll(fsys, amendmentsFile)
+	more, err := segment.ReadFile(fsys, amendmentsFile)
 	if err != nil && !errors.Is(err, fs.ErrNotExist) {
 		return err
 	}
@@ -114,23 +113,6 @@ func (h *History) readRig(fsys segment.FS) error {
 	}
 	h.Rig, err = rig.Apply(h.Amendments)
 	return err
-}
-
-func readAll(fsys segment.FS, name string) ([]byte, error) {
-	f, err := fsys.Open(name)
-	if err != nil {
-		return nil, err
-	}
-	defer f.Close()
-	info, err := f.Stat()
-	if err != nil {
-		return nil, fmt.Errorf("%s: %w", name, err)
-	}
-	text, err := io.ReadAll(io.NewSectionReader(f, 0, info.Size()))
-	if err != nil {
-		return nil, fmt.Errorf("%s: %w", name, err)
-	}
-	return text, nil
 }
 
 // readLogs reads marks and events.

@@ -1,7 +1,6 @@
 package main
 
 import (
-	"context"
 	"errors"
 	"fmt"
 	"io"
@@ -109,16 +108,11 @@ func runListen(cmd *cobra.Command, port string, f listenFlags) (err error) {
 	if f.guess {
 		return guessPort(cmd, o, f)
 	}
-	ctx := cmd.Context()
-	if f.lasts != "" {
-		d, err := spanFlag("for", f.lasts)
-		if err != nil {
-			return err
-		}
-		var stop context.CancelFunc
-		ctx, stop = context.WithTimeout(ctx, d)
-		defer stop()
+	ctx, stop, err := lasting(cmd.Context(), f.lasts)
+	if err != nil {
+		return err
 	}
+	defer stop()
 	if len(o.Request) > 0 {
 		fmt.Fprintf(cmd.ErrOrStderr(), "asking %s by %q\n", port, o.Request)
 	}

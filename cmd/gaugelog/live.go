@@ -168,3 +168,17 @@ func spanFlag(name, text string) (time.Duration, error) {
 	}
 	return time.Duration(d.Value * float64(time.Second)), nil
 }
+
+// lasting is ctx for as long as --for says; for good where it says nothing.
+func lasting(ctx context.Context, text string) (context.Context, context.CancelFunc, error) {
+	if text == "" {
+		ctx, stop := context.WithCancel(ctx)
+		return ctx, stop, nil
+	}
+	d, err := spanFlag("for", text)
+	if err != nil {
+		return nil, nil, err
+	}
+	ctx, stop := context.WithTimeout(ctx, d)
+	return ctx, stop, nil
+}

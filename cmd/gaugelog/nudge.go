@@ -1,7 +1,6 @@
 package main
 
 import (
-	"context"
 	"fmt"
 	"slices"
 
@@ -64,16 +63,11 @@ func runNudge(cmd *cobra.Command, rigFile string, f nudgeFlags) (err error) {
 	if err != nil {
 		return err
 	}
-	ctx := cmd.Context()
-	if f.lasts != "" {
-		d, err := spanFlag("for", f.lasts)
-		if err != nil {
-			return err
-		}
-		var stop context.CancelFunc
-		ctx, stop = context.WithTimeout(ctx, d)
-		defer stop()
+	ctx, stop, err := lasting(cmd.Context(), f.lasts)
+	if err != nil {
+		return err
 	}
+	defer stop()
 	sources := sourcesOf(rig)
 	if f.all {
 		if sources, err = everySource(ctx, cmd.ErrOrStderr(), rig, opener); err != nil {

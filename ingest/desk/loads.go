@@ -1,6 +1,7 @@
 package desk
 
 import (
+	"cmp"
 	"slices"
 	"time"
 
@@ -75,15 +76,7 @@ func counted(marks []ingest.Mark, gone map[string]string) []ingest.Mark {
 			out = append(out, m)
 		}
 	}
-	slices.SortStableFunc(out, func(a, b ingest.Mark) int {
-		switch {
-		case a.Time < b.Time:
-			return -1
-		case a.Time > b.Time:
-			return 1
-		}
-		return 0
-	})
+	slices.SortStableFunc(out, func(a, b ingest.Mark) int { return cmp.Compare(a.Time, b.Time) })
 	return out
 }
 

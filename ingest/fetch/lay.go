@@ -1,6 +1,7 @@
 package fetch
 
 import (
+	"cmp"
 	"errors"
 	"fmt"
 	"slices"
@@ -147,15 +148,7 @@ func (l *layer) close() error {
 const mostInBlock = 4096
 
 func (l *layer) log(name string, entries []segment.Entry) error {
-	slices.SortStableFunc(entries, func(a, b segment.Entry) int {
-		switch {
-		case a.Time < b.Time:
-			return -1
-		case a.Time > b.Time:
-			return 1
-		}
-		return 0
-	})
+	slices.SortStableFunc(entries, func(a, b segment.Entry) int { return cmp.Compare(a.Time, b.Time) })
 	h := l.header
 	h.Clock = segment.ClockState{Wall: entries[0].Time, Given: true}
 	log, err := segment.OpenLog(l.fs, name, h)

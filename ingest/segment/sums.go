@@ -18,7 +18,7 @@ const SumsFile = "SHA256SUMS"
 // ReadSums reads SHA256SUMS: hexadecimal hashes by slash-separated name. A
 // missing file is empty.
 func ReadSums(fs FS) (map[string]string, error) {
-	text, err := readWhole(fs, SumsFile)
+	text, err := ReadFile(fs, SumsFile)
 	if isNotExist(err) {
 		return map[string]string{}, nil
 	}
@@ -81,34 +81,7 @@ func UpdateSums(fs FS, names ...string) error {
 	for _, name := range slices.Sorted(maps.Keys(sums)) {
 		fmt.Fprintf(&b, "%s  %s\n", sums[name], name)
 	}
-	return replaceFile(fs, SumsFile, b.Bytes())
-}
-
-// replaceFile puts text in the place of name in one step.
-func replaceFile(fs FS, name string, text []byte) error {
-	partial := name + ".partial"
-	if err := fs.Remove(partial); err != nil && !isNotExist(err) {
-		return err
-	}
-	f, err := fs.Create(partial)
-	if err != nil {
-		return err
-	}
-	_, err = f.Write(text)
-	if err == nil {
-		err = f.Sync()
-	}
-	if cerr := f.Close(); err == nil {
-		err = cerr
-	}
-	if err == nil {
-		err = fs.Rename(partial, name)
-	}
-	if err != nil {
-		_ = fs.Remove(partial)
-		return err
-	}
-	return fs.SyncDir(".")
+	return ReplaceFile(fs, SumsFile, b.Bytes())
 }
 
 func hashFile(fs FS, name string) (string, error) {
@@ -127,18 +100,4 @@ func hashFile(fs FS, name string) (string, error) {
 		err = io.ErrUnexpectedEOF
 	}
 	return hex.EncodeToString(h.Sum(nil)), err
-}
-
-func readWhole(fs FS, name string) ([]byte, error) {
-	f, err := fs.Open(name)
-	if err != nil {
-		return nil, err
-	}
-	defer f.Close()
-	info, err := f.Stat()
-	if err != nil {
-		return nil, err
-	}
-	b := make([]byte, info.Size())
-	return b, readFull(f, b, 0)
 }

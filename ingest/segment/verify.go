@@ -151,7 +151,7 @@ func (v *Verified) sums(fs FS) {
 // grown tells whether sum is the hash of a log up to one of its comments, or up
 // to the unfinished tail before one.
 func grown(fs FS, name, sum string) bool {
-	text, err := readWhole(fs, name)
+	text, err := ReadFile(fs, name)
 	if err != nil {
 		return false
 	}
