@@ -62,7 +62,13 @@ func (g *gauge) refresh(h *history.History) {
 	for _, b := range bins {
 		g.seq = append(g.seq, g.fromBin(b))
 	}
-	g.noise, g.interval = g.scatter()
+	var loads []int64
+	for _, m := range h.Marks {
+		if m.Kind == "load" {
+			loads = append(loads, m.Time)
+		}
+	}
+	g.noise, g.interval = g.scatter(loads)
 }
 
 func (g *gauge) fromBin(b history.Bin) point {
@@ -101,9 +107,10 @@ func (g *gauge) factor(t int64) float64 {
 // interval. Within bins of several readings it is their standard deviation, of
 // all bins the median, which no spike enters; otherwise second differences of
 // neighbours tell, which no steady trend enters. It is never below the
-// resolution's floor.
-func (g *gauge) scatter() (noise, interval float64) {
-	var spread, second, gaps []float64
+// resolution's floor. Few neighbours are told of where a load was marked
+// between them: its jump is no scatter.
+func (g *gauge) scatter(loads []int64) (noise, interval float64) {
+	var spread, second, calm, gaps []float64
 	held := g.held()
 	free := 0
 	for i, p := range g.seq {
@@ -119,7 +126,13 @@ func (g *gauge) scatter() (noise, interval float64) {
 		if i > 1 && !held[i] {
 			d := g.seq[i-2].y - 2*g.seq[i-1].y + p.y
 			second = append(second, math.Abs(d)*math.Sqrt(float64(p.n)))
+			if !slices.ContainsFunc(loads, func(t int64) bool { return t >= g.seq[i-2].from && t <= p.to }) {
+				calm = append(calm, second[len(second)-1])
+			}
 		}
+	}
+	if len(second) < fewBins && len(calm) >= 3 {
+		second = calm
 	}
 	floor := floorU(g.res)
 	interval = lsq.Median(gaps)
@@ -151,6 +164,9 @@ func (g *gauge) held() []bool {
 	return out
 }
 
+// fewBins is of how few deviations a single change of load may be a tenth.
+const fewBins = 300
+
 // trimmedSigma estimates a standard deviation from absolute deviations: the
 // mean of their lower nine tenths over what it is for normal ones, 0.6573
 // (from the normal density). Unlike a median it does not stick at a count. Of
@@ -160,7 +176,7 @@ func trimmedSigma(abs []float64) float64 {
 	s := slices.Clone(abs)
 	slices.Sort(s)
 	n, mean := len(s)*9/10, 0.6573
-	if len(s) < 300 {
+	if len(s) < fewBins {
 		n, mean = len(s)*3/4, 0.5149
 	}
 	if n == 0 {

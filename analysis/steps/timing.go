@@ -146,12 +146,13 @@ func clamp(v, lo, hi int64) int64 { return max(lo, min(v, hi)) }
 // rising signal: 0 before, 1 behind.
 func (r *run) shares(c *cluster) []share {
 	var all []share
+	before, behind := r.neighbours(c)
 	for g := range r.gauges {
 		if !c.moved[g] {
 			continue
 		}
 		gg := &r.gauges[g]
-		base, ok := levelBefore(c.raw[g], c.lo, gg)
+		base, ok := levelBefore(c.raw[g], before, c.lo, gg)
 		if !ok {
 			continue
 		}
@@ -163,7 +164,6 @@ func (r *run) shares(c *cluster) []share {
 			}
 		}
 	}
-	before, behind := r.neighbours(c)
 	all = slices.DeleteFunc(all, func(s share) bool { return s.t <= before || s.t >= behind })
 	sort.SliceStable(all, func(a, b int) bool { return all[a].t < all[b].t })
 	return combine(all, nanos(r.spacing(c.lo)/20))
@@ -204,18 +204,28 @@ func combine(all []share, tol int64) []share {
 	return out
 }
 
-// levelBefore is a gauge's line before a cluster, as a function of time.
-func levelBefore(pts []point, lo int64, g *gauge) (func(int64) float64, bool) {
+// levelBefore is a gauge's line before a cluster that begins at lo, as a
+// function of time; from readings behind the happening before it, which ended
+// at former. Where that is not long ago as readings go, the line is one in the
+// logarithm of the time since, as creep runs.
+func levelBefore(pts []point, former, lo int64, g *gauge) (func(int64) float64, bool) {
 	b := sort.Search(len(pts), func(k int) bool { return pts[k].t > lo })
-	a := max(0, b-keptReadings)
+	a := max(0, b-keptReadings, sort.Search(b, func(k int) bool { return pts[k].t >= former }))
 	if a == b {
 		return nil, false
 	}
+	span := pts[b-1].t - pts[a].t
+	creeps := former > math.MinInt64 && lo-former < 20*span
+	scale := func(t int64) float64 { return seconds(t - lo) }
+	if creeps {
+		h := max(seconds(span)/float64(b-a), 1e-3)
+		scale = func(t int64) float64 { return math.Log(seconds(t-former) + h) }
+	}
 	var x, y, u []float64
 	for _, p := range pts[a:b] {
-		x, y, u = append(x, seconds(p.t-lo)), append(y, p.y), append(u, g.noise)
+		x, y, u = append(x, scale(p.t)), append(y, p.y), append(u, g.noise)
 	}
-	if len(x) < 8 {
+	if len(x) < 4 || len(x) < 8 && !creeps {
 		m := lsq.Median(y)
 		return func(int64) float64 { return m }, true
 	}
@@ -224,8 +234,8 @@ func levelBefore(pts []point, lo int64, g *gauge) (func(int64) float64, bool) {
 		return nil, false
 	}
 	// Carried on for hours, over a gap, a line of a minute tells nothing.
-	end := max(4*seconds(pts[b-1].t-pts[a].t), 180)
-	return func(t int64) float64 { return fit.at(min(seconds(t-lo), end)) }, true
+	end := lo + max(4*span, 180*second)
+	return func(t int64) float64 { return fit.at(scale(min(t, end))) }, true
 }
 
 // aftermath is the level behind a change as a function of time: a straight
