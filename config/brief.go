@@ -2,6 +2,7 @@ package config
 
 import (
 	"bytes"
+	"encoding/json"
 	"errors"
 	"reflect"
 	"regexp"
@@ -52,6 +53,39 @@ func ParseBrief(name string, text []byte) (*Rig, error) {
 		rig.Gauges[i].fillDefaults()
 	}
 	return rig, nil
+}
+
+// Brief writes what ParseBrief reads of a rig file, with the amendments that
+// were applied, as one line of JSON. That is YAML too: ParseBrief reads it as it
+// reads the file. Empty for a rig that was not read from a file.
+func (r *Rig) Brief() string {
+	if r.source == nil {
+		return ""
+	}
+	b, err := json.Marshal(plainValue(only(r.source.root, "", brief)))
+	if err != nil {
+		panic(err) // texts, lists and groups of them
+	}
+	return string(b)
+}
+
+// plainValue is a node as JSON knows it; every scalar is a text.
+func plainValue(n *yaml.Node) any {
+	switch n.Kind {
+	case yaml.MappingNode:
+		out := map[string]any{}
+		for i := 0; i+1 < len(n.Content); i += 2 {
+			out[n.Content[i].Value] = plainValue(n.Content[i+1])
+		}
+		return out
+	case yaml.SequenceNode:
+		out := []any{}
+		for _, item := range n.Content {
+			out = append(out, plainValue(item))
+		}
+		return out
+	}
+	return n.Value
 }
 
 // blockText is a value that goes on over the lines below as they stand.

@@ -2,6 +2,7 @@ package config
 
 import (
 	"reflect"
+	"strings"
 	"testing"
 )
 
@@ -35,6 +36,13 @@ func TestBrief(t *testing.T) {
 	}
 	if len(got.Gauges) == 0 || len(got.Plan) == 0 || got.Title == "" {
 		t.Errorf("the template shows too little for this test: %+v", got)
+	}
+	line := whole.Brief()
+	if strings.Contains(line, "\n") {
+		t.Fatalf("%q", line)
+	}
+	if back, err := ParseBrief("rig.yaml", []byte(line)); err != nil || !reflect.DeepEqual(back, want) {
+		t.Errorf("%+v, %v", back, err)
 	}
 	for _, bad := range []string{"", "[", "gauges: 7\n", "specimens: {}\n", "specimen: {name: a}\nplan: [{step: l1, hold: 3 mm}]\n"} {
 		if _, err := ParseBrief("rig.yaml", []byte(bad)); err == nil {

@@ -1,6 +1,8 @@
 package glance
 
 import (
+	"maps"
+	"math"
 	"slices"
 	"strings"
 	"time"
@@ -36,12 +38,26 @@ type Summary struct {
 // window is how long a stretch of readings a figure is the median of.
 const window = int64(10 * time.Minute)
 
-// Look sums a run up. Its error is a folder that cannot be read.
+// Input is what a summary is made of, wherever a run lies.
+type Input struct {
+	// Marks and Events are in order of time.
+	Marks, Events []segment.Record
+	// First and Last bound the readings, ns since 1970 UTC; both 0: there is none.
+	First, Last int64
+	// Medians gives, for each of the spans, the median of the indications of each
+	// of the gauges (nil: of all there are) that has one in it.
+	Medians func(gauges []string, spans []segment.Interval) ([]map[string]Median, error)
+}
+
+// Median is the median of some indications, mm, and about the median of their
+// instants, ns.
+type Median struct {
+	MM float64
+	At int64
+}
+
+// Look sums a run folder up. Its error is a folder that cannot be read.
 func Look(fsys segment.FS, rig *config.Rig) (*Summary, error) {
-	s := &Summary{Title: rig.Title, Specimen: rig.Specimen.Name, Gauge: rig.Read.CreepGauge}
-	if rig.Limits.Sag != nil {
-		s.SagLimitMM = &rig.Limits.Sag.Value
-	}
 	names, err := segmentsOf(fsys)
 	if err != nil {
 		return nil, err
@@ -50,33 +66,58 @@ func Look(fsys segment.FS, rig *config.Rig) (*Summary, error) {
 	if err != nil {
 		return nil, err
 	}
-	marks, _, err := d.Log(segment.MarksFile)
-	if err != nil {
+	var in Input
+	if in.Marks, _, err = d.Log(segment.MarksFile); err != nil {
 		return nil, err
 	}
-	events, _, err := d.Log(segment.EventsFile)
-	if err != nil {
+	if in.Events, _, err = d.Log(segment.EventsFile); err != nil {
 		return nil, err
 	}
-	s.alarms(events)
-	load, changed := s.steps(marks)
-	first, last, ok := d.Span()
-	if !ok {
-		return s, nil
+	if first, last, ok := d.Span(); ok {
+		in.First, in.Last = first, last
 	}
-	s.First, s.Last = first, last
-	s.toGo(rig, marks)
-	if d, err = names.with(fsys, d, load-window, load, s.dayBefore(changed), s.dayBefore(changed)+window); err != nil {
-		return nil, err
+	in.Medians = func(gauges []string, spans []segment.Interval) ([]map[string]Median, error) {
+		var ends []int64
+		for _, s := range spans {
+			ends = append(ends, s.From, s.To)
+		}
+		d, err := names.with(fsys, d, ends...)
+		if err != nil {
+			return nil, err
+		}
+		return medians(d, gauges, spans)
 	}
-	return s, s.figures(d, rig, load, changed)
+	return Sum(rig, in)
 }
 
-// alarms follows what was raised and what is over.
+// Sum sums a run up. rig may be nil where the rig file is not known: then the
+// gauge is the one that moved most, and the way it moved is taken to be down.
+func Sum(rig *config.Rig, in Input) (*Summary, error) {
+	s := &Summary{}
+	if rig != nil {
+		s.Title, s.Specimen, s.Gauge = rig.Title, rig.Specimen.Name, rig.Read.CreepGauge
+		if rig.Limits.Sag != nil {
+			s.SagLimitMM = &rig.Limits.Sag.Value
+		}
+	}
+	s.alarms(in.Events)
+	load, changed := s.steps(in.Marks)
+	if in.Last == 0 {
+		return s, nil
+	}
+	s.First, s.Last = in.First, in.Last
+	if rig != nil {
+		s.toGo(rig, in.Marks)
+	}
+	return s, s.figures(in, rig, load, changed)
+}
+
+// alarms follows what was raised and what is over. Where the words are not held,
+// which say of what, a gauge's alarms are counted.
 func (s *Summary) alarms(events []segment.Record) {
 	type key struct{ gauge, cause string }
 	var order []key
-	raised := map[key]string{}
+	raised, wordless := map[key]string{}, map[key]int{}
 	for i := range events {
 		r := &events[i]
 		if r.Kind != segment.Event || r.Point == nil {
@@ -88,9 +129,15 @@ func (s *Summary) alarms(events []segment.Record) {
 		k := key{r.Point.Tag("gauge"), cause}
 		switch r.Name {
 		case "alarm-raised":
+			if wordless[k]++; detail == "" {
+				detail = strings.TrimPrefix(k.gauge+": an alarm, whose words are not held", ": ")
+			}
 			order, raised[k] = append(order, k), detail
 		case "alarm-over":
-			delete(raised, k)
+			if wordless[k]--; cause != "" || wordless[k] <= 0 {
+				delete(raised, k)
+				wordless[k] = 0
+			}
 		case "started":
 			s.Started, s.Ended = true, false
 		case "stopped":
@@ -168,45 +215,67 @@ func text(r *segment.Record, key string) string {
 	return t
 }
 
-// figures reads three windows in one pass: before the first load, a day before
+// figures takes three windows in one pass: before the first load, a day before
 // the end (or as near to it as there is), and the end. Where the rig names no
 // creep gauge it is the one on the beam that sagged most, as in the analysis.
-func (s *Summary) figures(d *segment.Folder, rig *config.Rig, load, changed int64) error {
-	scale := map[string]float64{}
-	for _, g := range rig.Gauges {
-		if s.Gauge == g.Name || s.Gauge == "" && (g.Sees == "" || g.Sees == "beam") {
-			scale[g.Name] = scaleOf(g)
-		}
-	}
+func (s *Summary) figures(in Input, rig *config.Rig, load, changed int64) error {
 	day := s.dayBefore(changed)
 	spans := []segment.Interval{{From: max(s.Last-window, changed+(s.Last-changed)/2), To: s.Last}, {From: day, To: day + window}}
 	if load > 0 {
 		spans = append(spans, segment.Interval{From: load - window, To: load - int64(30*time.Second)})
 	}
-	all, err := medians(d, scale, spans)
+	gauges, scale := s.chosen(rig)
+	all, err := in.Medians(gauges, spans)
 	if err != nil {
 		return err
 	}
 	now, before := all[0], all[1]
-	for _, g := range rig.Gauges {
-		n, there := now[g.Name]
-		if load == 0 || !there {
-			continue
-		}
-		if b, known := all[2][g.Name]; known && (s.SagMM == nil || n.mm-b.mm > *s.SagMM) {
-			sag := n.mm - b.mm
-			s.Gauge, s.SagMM = g.Name, &sag
-		}
+	if load > 0 {
+		s.sag(now, all[2], scale, rig == nil)
 	}
 	n, there := now[s.Gauge]
 	b, known := before[s.Gauge]
-	if !there || !known || s.Last-window-day < 3*window || n.at-b.at < 2*window {
+	if !there || !known || s.Last-window-day < 3*window || n.At-b.At < 2*window {
 		return nil
 	}
-	s.RateOverS = float64(n.at-b.at) / 1e9
-	rate := (n.mm - b.mm) / s.RateOverS * 86400
+	s.RateOverS = float64(n.At-b.At) / 1e9
+	rate := scale(s.Gauge) * (n.MM - b.MM) / s.RateOverS * 86400
+	if rig == nil && s.SagMM != nil && n.MM < all[2][s.Gauge].MM {
+		rate = -rate // the indication falls where the sag grows
+	}
 	s.RateMMPerDay = &rate
 	return nil
+}
+
+// chosen are the gauges that the sag may be of, nil for all there are, and what
+// turns their indications into sag.
+func (s *Summary) chosen(rig *config.Rig) (gauges []string, scale func(string) float64) {
+	if rig == nil {
+		return nil, func(string) float64 { return 1 }
+	}
+	by := map[string]float64{}
+	for _, g := range rig.Gauges {
+		if s.Gauge == g.Name || s.Gauge == "" && (g.Sees == "" || g.Sees == "beam") {
+			by[g.Name] = scaleOf(g)
+			gauges = append(gauges, g.Name)
+		}
+	}
+	return gauges, func(name string) float64 { return by[name] }
+}
+
+// sag finds the gauge that sagged most; unsigned, where no sense is known, the
+// one that moved most.
+func (s *Summary) sag(now, base map[string]Median, scale func(string) float64, unsigned bool) {
+	for _, name := range slices.Sorted(maps.Keys(now)) {
+		b, known := base[name]
+		sag := scale(name) * (now[name].MM - b.MM)
+		if unsigned {
+			sag = math.Abs(sag)
+		}
+		if known && (s.SagMM == nil || sag > *s.SagMM) {
+			s.Gauge, s.SagMM = name, &sag
+		}
+	}
 }
 
 // dayBefore is where the window begins that the end is compared with: a day
@@ -227,29 +296,18 @@ func scaleOf(g config.Gauge) float64 {
 	return down
 }
 
-// middle is the median of some readings, scaled, and of their instants.
-type middle struct {
-	mm float64
-	at int64
-}
-
 // medians are those of the gauges' readings in each of the spans; a gauge
 // without one is not among them.
-func medians(d *segment.Folder, scale map[string]float64, spans []segment.Interval) ([]map[string]middle, error) {
+func medians(d *segment.Folder, gauges []string, spans []segment.Interval) ([]map[string]Median, error) {
 	type values struct {
 		mm []float64
 		at []int64
 	}
-	var only []string
-	for name := range scale {
-		only = append(only, name)
-	}
-	slices.Sort(only)
 	found := make([]map[string]*values, len(spans))
 	for i := range found {
 		found[i] = map[string]*values{}
 	}
-	r := d.Read(segment.ReadOptions{Workers: 1, Spans: spans, Only: only})
+	r := d.Read(segment.ReadOptions{Workers: 1, Spans: spans, Only: gauges})
 	defer r.Close()
 	for rec, err := range r.Records() {
 		if err != nil {
@@ -267,14 +325,14 @@ func medians(d *segment.Folder, scale map[string]float64, spans []segment.Interv
 			v.mm, v.at = append(v.mm, rec.MM), append(v.at, rec.Time)
 		}
 	}
-	out := make([]map[string]middle, len(spans))
+	out := make([]map[string]Median, len(spans))
 	for i := range found {
-		out[i] = map[string]middle{}
+		out[i] = map[string]Median{}
 		for name, v := range found[i] {
 			slices.Sort(v.mm)
 			slices.Sort(v.at)
 			n := len(v.mm)
-			out[i][name] = middle{scale[name] * (v.mm[n/2] + v.mm[(n-1)/2]) / 2, v.at[n/2]}
+			out[i][name] = Median{(v.mm[n/2] + v.mm[(n-1)/2]) / 2, v.at[n/2]}
 		}
 	}
 	return out, nil

@@ -10,6 +10,7 @@ import (
 
 	"github.com/spf13/cobra"
 
+	"gaugelog/analysis/glance"
 	"gaugelog/config"
 	"gaugelog/ingest"
 	"gaugelog/ingest/forward"
@@ -40,7 +41,8 @@ Each line is sent at least once; sending again does no harm. How far a server ca
 stands in RUN/forward. An absent server is tried for ever; a line that it refuses is
 set aside there with the server's words; where it refuses access forwarding waits and
 says so. Readings whose clock was never set are held back until it is known. The
-recording is never touched.
+recording is never touched. With the readings goes what "gaugelog rigs" needs of the
+rig file: names, senses, gains, the limit on sag and the plan, nothing else of it.
 
 --follow goes on until Ctrl-C, so that a run is sent while it is recorded.`,
 		Example: `  gaugelog forward runs/first --to 'http://lab:8086/write?db=sag' --follow
@@ -76,6 +78,13 @@ func runForward(cmd *cobra.Command, run string, f forwardFlags) error {
 	if err != nil {
 		return err
 	}
+	amendments, err := config.LoadAmendments(filepath.Join(run, glance.AmendmentsFile))
+	if err != nil {
+		return err
+	}
+	if rig, err = rig.ApplyAt(amendments, time.Now()); err != nil {
+		return err
+	}
 	dir, err := ingest.OpenDir(run, ingest.DirOptions{})
 	if err != nil {
 		return err
@@ -88,7 +97,7 @@ func runForward(cmd *cobra.Command, run string, f forwardFlags) error {
 		f.rig = rig.Specimen.Name
 	}
 	began := time.Now()
-	fw, err := forward.Open(forward.Options{FS: dir.FS(), State: f.state, Target: target, Rig: f.rig, Run: f.run,
+	fw, err := forward.Open(forward.Options{FS: dir.FS(), State: f.state, Target: target, Rig: f.rig, Run: f.run, Brief: rig.Brief(),
 		Program: "gaugelog", Token: func() (string, error) { return tokenOf(f.tokenFile) }, Lines: f.lines, Tell: tellForward(cmd.ErrOrStderr())})
 	if err != nil {
 		return err

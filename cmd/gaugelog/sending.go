@@ -50,7 +50,7 @@ func openSending(rig *config.Rig, run string, fsys segment.FS, logger *slog.Logg
 	}
 	s.log = logger.With("server", target.String())
 	s.o = forward.Options{FS: fsys, State: filepath.Join(run, forward.StateDir), Target: target, Token: token,
-		Rig: rig.Specimen.Name, Program: "gaugelog", Tell: s.tell()}
+		Rig: rig.Specimen.Name, Brief: rig.Brief(), Program: "gaugelog", Tell: s.tell()}
 	return s, nil
 }
 

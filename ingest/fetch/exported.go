@@ -128,6 +128,13 @@ func (e *exported) points(ctx context.Context, run, measurement string, take fun
 
 var errTooMany = errors.New("too many values for one window of time")
 
+// exportLine is one line of an export: some values of one series.
+type exportLine struct {
+	Metric     map[string]string `json:"metric"`
+	Values     []json.Number     `json:"values"`
+	Timestamps []int64           `json:"timestamps"`
+}
+
 // window reads the points between two instants, ms, both included, in order.
 func (e *exported) window(ctx context.Context, name, measurement, run string, from, to int64) ([]*point, int, error) {
 	q := url.Values{"match[]": {selector(name, run, "")}, "start": {seconds(from)}, "end": {seconds(to)}, "reduce_mem_usage": {"1"}}
@@ -139,11 +146,7 @@ func (e *exported) window(ctx context.Context, name, measurement, run string, fr
 	b := joiner{measurement: measurement, points: map[string]*point{}, from: from, to: to}
 	d := json.NewDecoder(bufio.NewReaderSize(body, 1<<16))
 	for {
-		var line struct {
-			Metric     map[string]string `json:"metric"`
-			Values     []json.Number     `json:"values"`
-			Timestamps []int64           `json:"timestamps"`
-		}
+		var line exportLine
 		if err := d.Decode(&line); errors.Is(err, io.EOF) {
 			return b.sorted(), b.n, nil
 		} else if err != nil {

@@ -19,17 +19,20 @@ func (q *queried) loses() string { return "" }
 
 // series is one table of an answer.
 type series struct {
-	Columns []string `json:"columns"`
-	Values  [][]any  `json:"values"`
-	Partial bool     `json:"partial"`
+	Tags      map[string]string `json:"tags"`
+	statement int               // of which it answers, from 0
+	Columns   []string          `json:"columns"`
+	Values    [][]any           `json:"values"`
+	Partial   bool              `json:"partial"`
 }
 
 // answer is one piece of a chunked answer.
 type answer struct {
 	Results []struct {
-		Series  []series `json:"series"`
-		Error   string   `json:"error"`
-		Partial bool     `json:"partial"`
+		Statement int      `json:"statement_id"`
+		Series    []series `json:"series"`
+		Error     string   `json:"error"`
+		Partial   bool     `json:"partial"`
 	} `json:"results"`
 	Error string `json:"error"`
 }
@@ -38,6 +41,11 @@ type answer struct {
 // whether more follow, so that an answer cut off between two pieces is known
 // for one even where whoever stands between ends it properly.
 func (q *queried) ask(ctx context.Context, query string, take func(*series) error) error {
+	return q.askAll(ctx, query, 1, take)
+}
+
+// askAll does so with a number of statements, each of which is answered.
+func (q *queried) askAll(ctx context.Context, query string, statements int, take func(*series) error) error {
 	body, err := q.s.get(ctx, "", "", url.Values{"q": {query}, "epoch": {"ns"}, "chunked": {"true"}, "chunk_size": {"10000"}})
 	if err != nil {
 		return err
@@ -45,9 +53,10 @@ func (q *queried) ask(ctx context.Context, query string, take func(*series) erro
 	defer body.Close()
 	d := json.NewDecoder(body)
 	d.UseNumber()
+	answered := 0
 	for more := true; ; {
 		var a answer
-		if err := d.Decode(&a); errors.Is(err, io.EOF) && !more {
+		if err := d.Decode(&a); errors.Is(err, io.EOF) && !more && answered == statements {
 			return nil
 		} else if err != nil {
 			return fmt.Errorf("%s: the answer to %q breaks off or is no answer of such a server: %w", q.s, query, err)
@@ -61,8 +70,10 @@ func (q *queried) ask(ctx context.Context, query string, take func(*series) erro
 				return q.s.says(e)
 			}
 			more = more || a.Results[i].Partial
+			answered = max(answered, a.Results[i].Statement+1)
 			for j := range a.Results[i].Series {
 				more = more || a.Results[i].Series[j].Partial
+				a.Results[i].Series[j].statement = a.Results[i].Statement
 				if err := take(&a.Results[i].Series[j]); err != nil {
 					return err
 				}
@@ -129,13 +140,7 @@ func (q *queried) points(ctx context.Context, run, measurement string, take func
 	var p point
 	query := `SELECT * FROM "` + measurement + `" WHERE "run" = ` + quoted(run)
 	return q.ask(ctx, query, func(s *series) error {
-		columns := make([]column, len(s.Columns))
-		for i, c := range s.Columns {
-			columns[i] = column{c, kinds[c]}
-			if c == "time" {
-				columns[i].kind = "time"
-			}
-		}
+		columns := columnsOf(s, kinds)
 		for _, row := range s.Values {
 			if err := p.fill(measurement, columns, row); err != nil {
 				return fmt.Errorf("%s: %w", q.s, err)
@@ -146,6 +151,18 @@ func (q *queried) points(ctx context.Context, run, measurement string, take func
 		}
 		return nil
 	})
+}
+
+// columnsOf tells what the columns of a table are.
+func columnsOf(s *series, kinds map[string]string) []column {
+	columns := make([]column, len(s.Columns))
+	for i, c := range s.Columns {
+		columns[i] = column{c, kinds[c]}
+		if c == "time" {
+			columns[i].kind = "time"
+		}
+	}
+	return columns
 }
 
 // fill makes a point of one row.

@@ -48,6 +48,11 @@ type Options struct {
 	// Rig and Run are the tags added to each line; Run "" is the run's id.
 	Rig, Run string
 	Program  string
+	// Brief, where not empty, is what config.Rig.Brief tells of the rig file. It is
+	// sent once behind the first readings after each start, with their last
+	// stamp, as the point "rig brief=...": so that who asks the server how the
+	// rigs stand knows senses, limits and plans.
+	Brief string
 	// Lines and Bytes bound one body; 0: 5000 lines, 1 MB before packing.
 	Lines, Bytes int
 	// Hold is the least wait where access is refused; 0: 1 min.
@@ -87,6 +92,7 @@ type Forwarder struct {
 	bytes    int // bound of one body; less once the server said 413
 	refusals int // in a row
 	count    Count
+	briefed  bool // Brief was sent
 	board    board
 	// whole are the segments sent to their end, to which nothing is added.
 	whole map[string]bool

@@ -183,6 +183,13 @@ func (f *Forwarder) stretch(ctx context.Context, s segment.Stretch, gauges []str
 	if err != nil {
 		return err
 	}
+	if f.o.Brief != "" && !f.briefed && len(s.Time) > 0 {
+		line, err := f.liner.encode("rig", nil, []segment.Field{{Key: "brief", Value: f.o.Brief}}, s.Time[len(s.Time)-1])
+		if err == nil { // a rig file that no line can hold is no reason not to send readings
+			f.lines = append(f.lines, line...)
+		}
+		f.briefed = true
+	}
 	if err := f.send(ctx, f.lines); err != nil {
 		return err
 	}

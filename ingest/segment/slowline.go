@@ -210,6 +210,12 @@ var kinds = map[string]struct {
 	"step":       {StepMark, ""},
 }
 
+// RecordOf makes a Record of a point that came another way than from a file.
+func RecordOf(p *Point, at int64) (Record, error) {
+	rec := Record{Time: at, Raw: at}
+	return rec, rec.name(p)
+}
+
 // name fills in what a Record says of its Point.
 func (rec *Record) name(p *Point) error {
 	k, known := kinds[p.Measurement]
