@@ -184,7 +184,7 @@ func TestWhatASessionLacks(t *testing.T) {
 		"no resolution": {func(s *Session) { s.Resolution = 0 }, "resolution"},
 		"not a number":  {func(s *Session) { s.Points[3].ReadingMM = math.NaN() }, "point 4"},
 		"no direction":  {func(s *Session) { s.Points[0].Direction = "left" }, "neither up nor down"},
-		"hot blocks":    {func(s *Session) { v := 400.0; s.BlockCelsius = &v }, "400 C"},
+		"hot blocks":    {func(s *Session) { v := 400.0; s.BlockCelsius = &v }, "400\u202fC"},
 	} {
 		s := session(0, 0)
 		c.change(&s)

@@ -118,7 +118,7 @@ func (s *Session) check() error {
 		return fmt.Errorf("a block's uncertainty of %g\u202fmm does not exist", s.BlockU)
 	}
 	if s.BlockCelsius != nil && !(*s.BlockCelsius > -50 && *s.BlockCelsius < 100) {
-		return fmt.Errorf("blocks at %g C are not for measuring", *s.BlockCelsius)
+		return fmt.Errorf("blocks at %g\u202fC are not for measuring", *s.BlockCelsius)
 	}
 	blocks := map[float64]bool{}
 	for i, p := range s.Points {

@@ -26,7 +26,11 @@ func (b *builder) jobCard() Section {
 
 func (b *builder) specimenTable() Table {
 	g := b.rig
-	t := Table{Caption: "Specimen and test", Columns: []Column{{Name: "Item", Text: true}, {Name: "As recorded", Text: true}}}
+	recorded := "As recorded"
+	if b.u == "us" {
+		recorded += ", in US units"
+	}
+	t := Table{Caption: "Specimen and test", Columns: []Column{{Name: "Item", Text: true}, {Name: recorded, Text: true}}}
 	add := func(k, v string) {
 		if v != "" {
 			t.Rows = append(t.Rows, []string{k, v})

@@ -77,8 +77,11 @@ func TestReportPage(t *testing.T) {
 	}
 }
 
-// Both systems of units are whole: no millimetre is left in a report in
-// inches, but where the rig file is quoted as typed.
+// metric finds a unit that a report in inches and pounds must not hold.
+var metric = regexp.MustCompile(`.{0,40}(?:^|[^\pL/])(?:mm[234]?|µm|N|kN|N·m2|kg|[kMG]?Pa|°C|m/s2|mm/.|N/mm)(?:[^\pL]|$).{0,20}`)
+
+// Both systems of units are whole: nothing of the other is left in a report
+// in inches and pounds, in tables, sentences, plots or what was typed.
 func TestReportInUSUnits(t *testing.T) {
 	into := filepath.Join(t.TempDir(), "us.html")
 	var out, errOut bytes.Buffer
@@ -89,13 +92,17 @@ func TestReportInUSUnits(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	for _, want := range []string{"psi", "lbf", ", in<", "lb-in2"} {
+	for _, want := range []string{"psi", "lbf", ", in<", "lb-in2", "(up to 0.01", "39.370(20) in", "5.5116(22) lb"} {
 		if !bytes.Contains(page, []byte(want)) {
 			t.Errorf("no %q in a report in US units", want)
 		}
 	}
-	if bytes.Contains(page, []byte(", mm<")) || bytes.Contains(page, []byte("MPa")) {
-		t.Error("a table of the US report is in SI units")
+	page = regexp.MustCompile(`(?s)<style.*?</style>|<[^>]*>`).ReplaceAll(page, []byte("\n"))
+	for _, found := range metric.FindAllString(string(page), -1) {
+		t.Errorf("in US units: %q", found)
+	}
+	if !metric.MatchString("it moved by 3 mm.") || !metric.MatchString("98 N") || metric.MatchString("3 in, 22 lbf, PDF, command") {
+		t.Error("what is looked for is not found, or what is not is")
 	}
 }
 
