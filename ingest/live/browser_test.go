@@ -125,7 +125,7 @@ type screen struct {
 
 var (
 	phone  = screen{"phone", 390, 844, true}
-	laptop = screen{"laptop", 1280, 800, false}
+	laptop = screen{"laptop", 1366, 768, false}
 )
 
 // step is one thing done in the browser.
@@ -161,8 +161,15 @@ func shoot(name string) step {
 		if err != nil {
 			return err
 		}
-		return os.WriteFile(filepath.Join(*shots, name+".png"), b, 0o644)
+		return keepShot(name, b)
 	})
+}
+
+func keepShot(name string, b []byte) error {
+	if err := os.MkdirAll(*shots, 0o755); err != nil {
+		return err
+	}
+	return os.WriteFile(filepath.Join(*shots, name+".png"), b, 0o644)
 }
 
 // shootTop keeps a picture of what is on the display at first.
@@ -175,7 +182,7 @@ func shootTop(name string) step {
 		if err != nil {
 			return err
 		}
-		return os.WriteFile(filepath.Join(*shots, name+".png"), b, 0o644)
+		return keepShot(name, b)
 	})
 }
 

@@ -74,12 +74,13 @@ func layReadings(fsys segment.FS, rig *config.Rig, start int64, instants int, ev
 	header := segment.Header{Run: "run-3", Boot: "past"}
 	stamps := new(segment.Stamps)
 	var w *segment.Writer
+	var closed []string
 	seal := func(at int64) error {
 		if err := w.Close(segment.ClockState{Wall: at, Boot: at - start, Synced: true}); err != nil {
 			return err
 		}
-		_, err := segment.Compress(fsys, w.Number())
-		w = nil
+		packed, err := segment.Compress(fsys, w.Number())
+		w, closed = nil, append(closed, packed.Name)
 		return err
 	}
 	number := 0
@@ -115,7 +116,10 @@ func layReadings(fsys segment.FS, rig *config.Rig, start int64, instants int, ev
 			}
 		}
 	}
-	return seal(start + int64(instants)*every)
+	if err := seal(start + int64(instants)*every); err != nil {
+		return err
+	}
+	return segment.UpdateSums(fsys, closed...)
 }
 
 // opened is a desk and a page of the run, as after a restart.
