@@ -55,6 +55,7 @@ func causes(in *Input, m *model, gravity Value, gravitySource string) []cause {
 				source: "what another curve through the trend before would have said, in units of its u", move: func(s *state, v float64) { s.carried(k, v) }})
 		}
 	}
+	out = append(out, m.twistCauses(in)...)
 	if c, has := m.shearPrior(); has {
 		out = append(out, c)
 	}

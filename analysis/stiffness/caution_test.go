@@ -3,6 +3,7 @@ package stiffness
 import (
 	"math"
 	"math/rand/v2"
+	"strings"
 	"testing"
 
 	"gaugelog/config"
@@ -198,5 +199,66 @@ func TestNoNaN(t *testing.T) {
 				t.Errorf("budget line %+v", l)
 			}
 		}
+	}
+}
+
+// Of two gauges on opposite edges the mean counts: turned one up and one down
+// alike, they give the modulus of the beam that does not turn, and what the
+// turn leaves open stands in the budget.
+func TestTwistLeavesTheMean(t *testing.T) {
+	for _, turn := range []float64{0, 0.03} {
+		p := newPlank()
+		p.c = [2]float64{2e-4, 3e-4}
+		p.rig.Gauges[4].At = p.rig.Gauges[3].At
+		in := p.ladder()
+		for k := range in.Steps {
+			mid := in.Steps[k].Gauges[3].MM
+			in.Steps[k].Gauges[3].MM, in.Steps[k].Gauges[4].MM = mid*(1-turn), mid*(1+turn)
+		}
+		e := mustCompute(t, in)
+		relative(t, "E", e.Modulus.Value, 11800, 2e-3)
+		if turned := codes(e)["twist"]; turned != (turn > 0) || e.Fit.P < 0.5 {
+			t.Errorf("turned by %g: twist told %v, p %.2g", turn, turned, e.Fit.P)
+		}
+		share := 0.0
+		for _, l := range e.Budget {
+			if strings.Contains(l.Input, "off the middle") {
+				share = l.U
+			}
+		}
+		// A difference of twice the turn over the width, read 1/50 of it off.
+		if want := 2 * turn / 50 / math.Sqrt(3); turn > 0 && math.Abs(share-want) > 0.01*want || share == 0 {
+			t.Errorf("turned by %g: the budget bounds it at %.3g, want %.3g", turn, share, want)
+		}
+	}
+}
+
+// What a load off the middle does, against its own closed form for a square
+// bar, whose torsion constant is 0.1406 a^4 (the series' tabled value, Roark;
+// from memory), and 2 I of a round one.
+func TestTwistBound(t *testing.T) {
+	square, err := SectionOf(config.Section{Shape: "rectangle", Width: lengths(20), Depth: lengths(20)})
+	if err != nil {
+		t.Fatal(err)
+	}
+	relative(t, "torsion of a square", square.Torsion, 0.1406*20*20*20*20, 5e-3)
+	round, err := SectionOf(config.Section{Shape: "round", Diameter: lengths(20)})
+	if err != nil {
+		t.Fatal(err)
+	}
+	relative(t, "torsion of a round bar", round.Torsion, math.Pi*math.Pow(20, 4)/32, 1e-12)
+	p := newPlank()
+	in := p.ladder()
+	m, err := prepare(&in)
+	if err != nil {
+		t.Fatal(err)
+	}
+	got, _ := m.turn(nil)
+	i, j, l, e := 140*38*38*38/12.0, m.sec.Torsion, 2100.0, 140.0/50/math.Sqrt(3)
+	// E/G = 16: (P e L / 4 G J) y over P L^3 / 48 E I.
+	relative(t, "share", got, (e*e*l/(4*j/16))/(l*l*l/(48*i)), 1e-12)
+	p.rig.Specimen.Section = config.Section{Shape: "general", SecondMoment: &config.SecondMoment{Quantity: config.Quantity{Value: i}}}
+	if !codes(mustCompute(t, in))["twist-not-bounded"] {
+		t.Error("a section without torsion is not told of")
 	}
 }

@@ -134,32 +134,6 @@ func (e *Estimate) shapeCautions() {
 // ratio times the span: 108/35 ratio^2.
 func LargeDeflection(ratio float64) float64 { return 108.0 / 35 * ratio * ratio }
 
-// twist compares gauges that share a place, on opposite edges.
-func (e *Estimate) twist() {
-	m := e.fit.m
-	for i := range m.rig.Gauges {
-		for j := range i {
-			a, b := m.rig.Gauges[j], m.rig.Gauges[i]
-			if sees(a) != "beam" || sees(b) != "beam" || len(a.Bar)+len(b.Bar) > 0 || math.Abs(a.At.Value-b.At.Value) > 1 {
-				continue
-			}
-			d, v, sum := 0.0, 0.0, 0.0
-			for q, o := range m.rows {
-				for r, p := range m.rows {
-					if p.gauge == i && o.gauge == j && p.step == o.step {
-						d += p.mm - o.mm
-						sum += math.Abs(p.mm+o.mm) / 2
-						v += e.fit.read.At(q, q) + e.fit.read.At(r, r)
-					}
-				}
-			}
-			if math.Abs(d) > 3*math.Sqrt(v) && math.Abs(d) > 0.005*sum {
-				e.warn("twist", b.Name, "gauges %s and %s at one place differ by %.3f\u202fmm over the steps: the beam twists or the load hangs off its middle; their mean counts", a.Name, b.Name, d)
-			}
-		}
-	}
-}
-
 // wiring looks for the one swap of two gauges, or the one reversed sense, that
 // makes a poor fit good, and says it. The comparison takes 1 % of each
 // reading beside its own error, so that small misfits do not decide.

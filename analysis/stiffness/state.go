@@ -1,6 +1,7 @@
 package stiffness
 
 import (
+	"maps"
 	"math"
 
 	"gaugelog/config"
@@ -24,6 +25,7 @@ type state struct {
 	shear    float64   // shear modulus where stated, MPa
 	dims     dims
 	offset   map[string][]float64 // stand -> movement by step, mm
+	lean     map[[2]int]float64   // gauge and step -> what turning adds to the increment, mm
 	carry    []float64            // by step: how far the trend carried forward is off, in its u
 }
 
@@ -37,6 +39,7 @@ func (s *state) clone() *state {
 	for k, v := range s.offset {
 		c.offset[k] = append([]float64(nil), v...)
 	}
+	c.lean = maps.Clone(s.lean)
 	return &c
 }
 
@@ -81,6 +84,14 @@ func (s *state) nudge(stand string, k int, v float64) {
 	s.offset[stand][k] += v
 }
 
+// turn adds what turning about the beam's axis does to a gauge in step k.
+func (s *state) turn(gauge, k int, v float64) {
+	if s.lean == nil {
+		s.lean = map[[2]int]float64{}
+	}
+	s.lean[[2]int{gauge, k}] += v
+}
+
 // moved is what has nothing to do with the beam in a row: its stand's movement
 // and the error of the trend carried forward.
 func (s *state) moved(stand string, o observation) float64 {
@@ -88,6 +99,7 @@ func (s *state) moved(stand string, o observation) float64 {
 	if by := s.offset[stand]; o.step < len(by) {
 		mm = by[o.step]
 	}
+	mm += s.lean[[2]int{o.gauge, o.step}]
 	if o.step < len(s.carry) {
 		mm += s.carry[o.step] * o.carried
 	}
