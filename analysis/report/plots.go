@@ -246,10 +246,31 @@ func (b *builder) residualFigure() (Figure, bool) {
 	if len(pts) < 2 {
 		return Figure{}, false
 	}
-	addPoints(p, pts, draw.GlyphStyle{Color: shades[0], Radius: vg.Points(1.2), Shape: draw.CircleGlyph{}}, "")
+	addPoints(p, pts, residualDots, "")
 	return Figure{ID: "residuals", Width: 170, Height: 52, Plot: p,
 		Caption: "What the law leaves over, temperature and offsets taken out: scatter without a pattern says that the law fits; a bend or a wave is something it does not know.",
 		Alt:     "Residuals of the creep law against logarithmic time."}, true
+}
+
+var residualDots = draw.GlyphStyle{Color: shades[0], Radius: vg.Points(1.2), Shape: draw.CircleGlyph{}}
+
+// warmthFigure plots readings less law over the air's temperature.
+func (b *builder) warmthFigure() (Figure, bool) {
+	micro, unit := b.small()
+	p := newPlot("air, "+b.temperatureUnit(), "reading less law, "+unit)
+	var pts plotter.XYs
+	for _, c := range b.r.Series.Creep {
+		if t, ok := b.ambientAt(c.AfterS, func(p analysis.ProbeSeries) []float64 { return p.Celsius }); ok && c.AfterS > 0 {
+			pts = append(pts, plotter.XY{X: b.temperature(t), Y: c.ResidualMM * micro})
+		}
+	}
+	if len(pts) < 2 {
+		return Figure{}, false
+	}
+	addPoints(p, pts, residualDots, "")
+	return Figure{ID: "residuals-warmth", Width: 170, Height: 46, Plot: p,
+		Caption: "The same over the temperature of the air: a slope here would be an answer to it that was not taken out.",
+		Alt:     "Residuals of the creep law against the temperature of the air."}, true
 }
 
 // ambientFigure plots temperature and humidity over the run.
