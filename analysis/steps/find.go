@@ -47,6 +47,7 @@ func Find(h *history.History, opt Options) (*Findings, error) {
 		return nil, err
 	}
 	r.figures()
+	r.lateReadings()
 	r.settlements()
 	r.finish()
 	r.tooFew()

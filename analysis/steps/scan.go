@@ -122,6 +122,28 @@ func (r *run) pointsOf(raw [][]history.Sample, wanted bool) [][]point {
 	return out
 }
 
+// atOnce is how many readings together may be a spike where they come seldomer
+// than once in a minute: more are a load that hung for a while.
+const atOnce = 3
+
+// plateau says that reading i, seldom as they are, lies among more than atOnce
+// that stand off mid as it does.
+func plateau(seq []point, i int, mid float64) bool {
+	if seq[i].n > 1 || i+1 < len(seq) && seq[i+1].t-seq[i].t < 60*second {
+		return false
+	}
+	off := seq[i].y - mid
+	alike := func(k int) bool { return k >= 0 && k < len(seq) && (seq[k].y-mid)/off > 0.5 }
+	a, b := i, i
+	for alike(a - 1) {
+		a--
+	}
+	for alike(b + 1) {
+		b++
+	}
+	return b-a+1 > atOnce
+}
+
 // hampel takes out single readings (up to three together) that stand off the
 // median of the eleven around them, and returns them as pairs of transitions.
 func hampel(g *gauge, seq []point) (rest []point, singles []transition) {
@@ -150,7 +172,7 @@ func hampel(g *gauge, seq []point) (rest []point, singles []transition) {
 			spread = min(spread, g.noise*seq[i].f/lsq.MADScale)
 		}
 		need := max(5*lsq.MADScale*spread, 3*g.res*seq[i].f, 6*g.noise*seq[i].f)
-		bad[i] = off > need && math.Abs(left-right) < off/3
+		bad[i] = off > need && math.Abs(left-right) < off/3 && !plateau(seq, i, sorted[half])
 	}
 	if !slices.Contains(bad, true) {
 		return seq, nil
