@@ -55,9 +55,12 @@ func Evaluate(h *history.History, o Options) (*Result, error) {
 	r := &Result{
 		Schema: Schema, Run: runOf(h, g, o), Steps: stepsOf(h.Rig, f),
 		Stiffness: emptyStiffness(h.Rig), Creep: emptyCreep(h.Rig),
-		Drift:    driftOf(h, nil, nil),
+		Drift:    driftOf(h, nil, nil, nil),
 		Supports: supportsOf(h.Rig, f), Disturbances: disturbancesOf(h.Rig, f), Decisions: decisionsOf(f),
 		Evaluations: []Evaluation{}, Warnings: append(notesOf(h), warningsOf(h.Rig, f)...), Series: seriesOf(h, f),
+	}
+	if r.Drift.Soak, err = soaksOf(h, f); err != nil {
+		return nil, err
 	}
 	found := len(r.Warnings)
 	in := stiffnessInput(h, f, g.Value)
@@ -148,13 +151,13 @@ func (r *Result) addCreep(h *history.History, f *steps.Findings, gravity, ei, s 
 		r.Warnings = append(r.Warnings, Warning{Code: "no-creep", Text: fmt.Sprintf("no creep law: %v", err)})
 		return nil
 	}
-	own := instrument{h.Rig, f.Chord}
+	own := instrument{h.Rig, f.Chord, true}
 	shared, err := commonOf(h, f, t, own, gravity, ei, s)
 	if err != nil {
 		return err
 	}
-	r.Creep = creepOf(h, t, own, shared, f.Steps[t.step].Name, a)
-	r.Drift = driftOf(h, t, a)
+	r.Creep = creepOf(r, h, t, own, shared, f.Steps[t.step].Name, a)
+	r.Drift = driftOf(h, t, a, r.Drift.Soak)
 	r.Warnings = append(r.Warnings, driftWarnings(h, t, a)...)
 	for _, n := range append(t.notes, a.Notes...) {
 		r.Warnings = append(r.Warnings, Warning{Code: n.Code, Gauge: r.Creep.Gauge, Text: n.Text})

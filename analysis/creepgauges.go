@@ -20,6 +20,9 @@ const influenceU = 0.005
 // addSeries hands over the creep gauge, then every other gauge on the beam
 // that sags enough.
 func (t *creepTask) addSeries(h *history.History, f *steps.Findings, shares [][]float64, pattern float64) {
+	if d := grain(h, t.gauge); d > h.Rig.Gauges[t.gauge].Resolution.Value {
+		t.note("coarser-than-stated", "its readings come in steps of %.3g\u202fmm, coarser than the resolution stated of it, %.3g\u202fmm; so much less they tell", d, h.Rig.Gauges[t.gauge].Resolution.Value)
+	}
 	t.in.Series, t.gauges = []creep.Series{t.series(h, f, t.gauge, shares[t.gauge], pattern)}, []int{t.gauge}
 	for g, gauge := range h.Rig.Gauges {
 		if g == t.gauge || !touches(gauge) || g >= len(f.Tracks) || g == f.Chord.Left || g == f.Chord.Right {
@@ -90,14 +93,15 @@ func (t *creepTask) series(h *history.History, f *steps.Findings, g int, share [
 			parts[j] = n * share[j] / pattern
 			newton += parts[j]
 		}
-		s.Changes = append(s.Changes, creep.Change{AtH: t.hours(c.Full) - c.RampS/3600, RampH: c.RampS / 3600, Newton: newton})
+		s.Changes = append(s.Changes, creep.Change{AtH: t.hours(c.Full) - c.RampS/3600, RampH: c.RampS / 3600, Newton: newton,
+			U: f.Steps[c.Step].StartU / 3600})
 		s.Parts = append(s.Parts, parts)
 	}
 	track := f.Tracks[g]
-	s.ZeroU = track.Baseline.U
-	b := creepBin{floor: gauge.Resolution.Value / math.Sqrt(12), into: &s}
+	s.ZeroU, s.ResolutionMM = track.Baseline.U, grain(h, g)
+	b := creepBin{floor: s.ResolutionMM / math.Sqrt(12), into: &s}
 	for _, p := range track.Points {
-		if placing(f, p.Time) || !(p.NetU > 0) || math.IsNaN(p.Net) {
+		if placing(f, p.Time) || t.inDoubt(f, p.Time) || !(p.NetU > 0) || math.IsNaN(p.Net) {
 			continue
 		}
 		b.add(t.hours(p.Time), t.hours(changeBefore(f, p.Time)), p)
@@ -105,6 +109,40 @@ func (t *creepTask) series(h *history.History, f *steps.Findings, g int, share [
 	b.close()
 	return s
 }
+
+// inDoubt reports whether a reading came so soon after a change of load that
+// nobody can say whether the change was complete.
+func (t *creepTask) inDoubt(f *steps.Findings, at int64) bool {
+	for _, c := range f.Loads {
+		if u := int64(2 * f.Steps[c.Step].StartU * 1e9); u > 0 && at > c.Full-int64(c.RampS*1e9)-u && at < c.Full+u {
+			return true
+		}
+	}
+	return false
+}
+
+// grain is the step in which a gauge's readings really come, mm: the rig's
+// resolution, or the least difference among them where that is plainly coarser.
+func grain(h *history.History, g int) float64 {
+	stated := h.Rig.Gauges[g].Resolution.Value
+	least, n, last := math.Inf(1), 0, math.NaN()
+	for _, b := range h.Bins(g) {
+		for _, v := range []float64{b.First, b.Min, b.Max, b.Last} {
+			if d := math.Abs(v - last); d > stated/2 {
+				least = min(least, d)
+				n++
+			}
+			last = v
+		}
+	}
+	if n < leastSteps || least < 2.5*stated {
+		return stated
+	}
+	return least
+}
+
+// leastSteps is how many steps of the readings tell their grain.
+const leastSteps = 10
 
 // addOffsets hands on the jumps that were taken off the gauges' tracks: what
 // is left of them is 0 with the uncertainty they were found with.
@@ -125,12 +163,9 @@ func (t *creepTask) addOffsets(f *steps.Findings) {
 // rig file says of how steady a gauge is.
 func (t *creepTask) addDrifts(h *history.History, f *steps.Findings) {
 	days := float64(h.Last-h.First) / 86400e9
-	own := instrument{h.Rig, f.Chord}
+	own := instrument{h.Rig, f.Chord, true}
 	for i, g := range t.gauges {
 		u := own.net(g, 0) / math.Sqrt2
-		if h.Rig.Gauges[g].U == nil {
-			u = h.Rig.Gauges[g].Resolution.Value / math.Sqrt(12)
-		}
 		if days > 0 && u > 0 {
 			t.in.Drifts = append(t.in.Drifts, creep.Drift{Name: "drift of " + t.in.Series[i].Name, Series: i, AtH: t.hours(h.First),
 				Prior: &creep.Knowledge{U: u / days}})

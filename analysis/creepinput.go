@@ -102,6 +102,9 @@ func creepTaskOf(h *history.History, f *steps.Findings, shares [][]float64) (*cr
 		return nil, false
 	}
 	t.in = creep.Input{FullH: t.hours(t.full), EndH: t.hours(t.end), LoadN: load, InitialH: h.Rig.Read.InitialAfter.Value / 3600}
+	if limit := h.Rig.Limits.Sag; limit != nil {
+		t.in.LimitMM = limit.Value
+	}
 	t.addSeries(h, f, shares, pattern)
 	t.addOffsets(f)
 	t.addDrifts(h, f)

@@ -58,10 +58,16 @@ func valueQOrNil(v *creep.Value, unit string) *Q {
 }
 
 // creepOf renders the creep analysis.
-func creepOf(h *history.History, t *creepTask, own instrument, shared common, step string, a *creep.Analysis) Creep {
+func creepOf(r *Result, h *history.History, t *creepTask, own instrument, shared common, step string, a *creep.Analysis) Creep {
 	c := emptyCreep(h.Rig)
 	c.Gauge, c.Step = h.Rig.Gauges[t.gauge].Name, step
-	if a.Best == nil {
+	c.Acceleration = Acceleration{
+		MinimumTime: t.instantOf(a.Acceleration.MinimumH), CautionTime: t.instantOf(a.Acceleration.CautionH),
+		ClearAreaTime: t.instantOf(a.Acceleration.ClearAreaH),
+	}
+	if a.Best == nil { // a warning needs no law
+		c.After, c.Stage = afterWithoutLaw(r, t, own), string(a.Stage)
+		c.Forecast = forecastsOf(h, t, own, a)
 		return c
 	}
 	c.Model = string(a.Best.Model)
@@ -85,20 +91,12 @@ func creepOf(h *history.History, t *creepTask, own instrument, shared common, st
 		c.Equivalent = append(c.Equivalent, Equivalent{AfterS: secondsOf(v.AfterH), Relative: *own.relative(&v.Value, t.gauge, initial)})
 	}
 	c.Rate, c.Method, c.Stage = shared.sagRate(valueQOrNil(a.Rate, "mm/d")), a.Method, string(a.Stage)
-	c.Acceleration = Acceleration{
-		MinimumTime: t.instantOf(a.Acceleration.MinimumH), CautionTime: t.instantOf(a.Acceleration.CautionH),
-		ClearAreaTime: t.instantOf(a.Acceleration.ClearAreaH),
-	}
 	if !t.below {
 		c.Recovery = recoveryOf(t, own, a)
 		c.PermanentSet = valueQOrNil(a.PermanentSet, "mm")
 	}
-	for i, v := range a.Forecast[:min(len(a.Forecast), len(h.Rig.Forecast))] {
-		c.Forecast = append(c.Forecast, forecastOf(h.Rig, own, t.gauge, i, v))
-	}
-	for _, v := range append(a.Shrunk, a.MayStop...) {
-		c.MayStop = append(c.MayStop, MayStop{MoreS: secondsOf(v.MoreH), ForecastAfterS: secondsOf(v.ForecastH), ForecastWidth: quantity(v.Width, 0, "mm")})
-	}
+	c.Forecast = forecastsOf(h, t, own, a)
+	c.MayStop = mayStopOf(own, t.gauge, a)
 	f := a.Best
 	c.Fit = &CreepFit{RMSmm: f.RMSmm, N: f.N, NEffective: f.NEffective, Lag1: f.Lag1}
 	for _, p := range f.Parameters {
@@ -183,6 +181,16 @@ func (t *creepTask) instantOf(h *float64) *string {
 	return &s
 }
 
+// forecastsOf renders the forecasts that the rig asks for; those behind them
+// are for the plot.
+func forecastsOf(h *history.History, t *creepTask, own instrument, a *creep.Analysis) []Forecast {
+	out := []Forecast{}
+	for i, v := range a.Forecast[:min(len(a.Forecast), len(h.Rig.Forecast))] {
+		out = append(out, forecastOf(h.Rig, own, t.gauge, i, v))
+	}
+	return out
+}
+
 // forecastOf renders a forecast; its limits take the gauge's own uncertainty
 // in by the same coverage factor.
 func forecastOf(rig *config.Rig, own instrument, gauge, i int, v creep.Forecast) Forecast {
@@ -207,6 +215,50 @@ func forecastOf(rig *config.Rig, own instrument, gauge, i int, v creep.Forecast)
 		f.ByModel = append(f.ByModel, ByModel{Model: string(m.Model), Sag: valueQ(m.Sag, "mm")})
 	}
 	return f
+}
+
+// mayStopOf renders what time bought and would buy, with the gauge's own
+// uncertainty as in the forecast itself.
+func mayStopOf(own instrument, gauge int, a *creep.Analysis) []MayStop {
+	out := []MayStop{}
+	for _, v := range append(slices.Clone(a.Shrunk), a.MayStop...) {
+		far := Q{}
+		for _, f := range a.Forecast {
+			if f.AfterH == v.ForecastH {
+				far = valueQ(creep.Value{Value: f.Sag.Value, U: v.U}, "mm")
+			}
+		}
+		width := v.Width
+		if own.widen(&far, gauge); far.U != nil && v.U > 0 {
+			width *= *far.U / v.U
+		}
+		out = append(out, MayStop{MoreS: secondsOf(v.MoreH), ForecastAfterS: secondsOf(v.ForecastH), ForecastWidth: quantity(width, 0, "mm")})
+	}
+	return out
+}
+
+// afterWithoutLaw is the creep gauge's sag at the times asked for where no law
+// was found: as the step has it, not compensated for temperature.
+func afterWithoutLaw(r *Result, t *creepTask, own instrument) []After {
+	out := []After{}
+	if t.step >= len(r.Steps) || t.gauge >= len(r.Steps[t.step].Gauges) {
+		return out
+	}
+	g := r.Steps[t.step].Gauges[t.gauge]
+	for _, at := range g.SagAt {
+		v := After{AfterS: at.AfterS, Sag: at.Sag}
+		if i := g.Initial; i != nil && i.Value != 0 {
+			q := quantity(at.Sag.Value/i.Value, 0, "1")
+			if at.AfterS != r.Creep.InitialAfterS {
+				own.ratio(&q, t.gauge, i.Value)
+			}
+			c := q
+			c.Value--
+			v.Relative, v.Coefficient = &q, &c
+		}
+		out = append(out, v)
+	}
+	return out
 }
 
 // lawPoints is how many points of the law a plot gets within the data.

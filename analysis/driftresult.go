@@ -9,8 +9,8 @@ import (
 )
 
 // driftOf renders what moved the gauges beside load and creep.
-func driftOf(h *history.History, t *creepTask, a *creep.Analysis) Drift {
-	d := Drift{Gauges: []GaugeDrift{}, Temperature: []AmbientTerm{}, Humidity: []AmbientTerm{}}
+func driftOf(h *history.History, t *creepTask, a *creep.Analysis, soak []Soak) Drift {
+	d := Drift{Gauges: []GaugeDrift{}, Temperature: []AmbientTerm{}, Humidity: []AmbientTerm{}, Soak: soak}
 	if a == nil || a.Best == nil {
 		return d
 	}

@@ -15,12 +15,18 @@ import (
 type instrument struct {
 	rig   *config.Rig
 	chord steps.Chord
+	// floor counts a gauge's resolution where its u is not stated: for figures
+	// averaged over many readings, whose scatter does not hold it.
+	floor bool
 }
 
 // own is the part of one gauge that does not grow with the sag, mm.
 func (n instrument) own(g int) float64 {
 	if u := n.rig.Gauges[g].U; u != nil {
 		return math.Sqrt2 * u.Value
+	}
+	if n.floor {
+		return math.Sqrt2 * n.rig.Gauges[g].Resolution.Value / math.Sqrt(12)
 	}
 	return 0
 }

@@ -168,9 +168,10 @@ type ByModel struct {
 	Sag   Q      `json:"sag"`
 }
 
-// MayStop is what more time would buy: the width of the 95 % band of the
-// forecast for ForecastAfterS, MoreS later than the creep step's last reading.
-// A negative MoreS looks back: so wide it was at that time.
+// MayStop is what more time would buy: the width of the 95 % interval of the
+// forecast for ForecastAfterS, MoreS later than the creep step's last reading
+// under its load (after an unloading: had the load stayed). A negative MoreS
+// looks back: so wide it was at that time.
 type MayStop struct {
 	MoreS          float64 `json:"more_s"`
 	ForecastAfterS float64 `json:"forecast_after_s"`
@@ -182,6 +183,33 @@ type Drift struct {
 	Gauges      []GaugeDrift  `json:"gauges"`
 	Temperature []AmbientTerm `json:"temperature"`
 	Humidity    []AmbientTerm `json:"humidity"`
+	// Soak says how the gauges wandered at rest before the first load; empty
+	// where they were not read for five minutes at one interval.
+	Soak []Soak `json:"soak"`
+}
+
+// Soak is how one gauge wandered at rest.
+type Soak struct {
+	Gauge     string  `json:"gauge"`
+	From      string  `json:"from"`
+	To        string  `json:"to"`
+	Readings  int     `json:"readings"`
+	IntervalS float64 `json:"interval_s"`
+	// AverageS is the averaging time of least Allan deviation: averaging longer
+	// takes drift in.
+	AverageS float64 `json:"average_s"`
+	// Floor is the resolution over the square root of 12; Floored says that
+	// constant readings have it in place of a deviation of 0.
+	Floor     Q               `json:"floor"`
+	Floored   bool            `json:"floored"`
+	Deviation []SoakDeviation `json:"deviation"`
+	Rate      *Q              `json:"rate,omitempty"` // straight drift, mm/d
+}
+
+// SoakDeviation is the overlapping Allan deviation at one averaging time.
+type SoakDeviation struct {
+	AverageS  float64 `json:"average_s"`
+	Deviation Q       `json:"deviation"`
 }
 
 // GaugeDrift is a gauge's own rate, mm/d.

@@ -28,7 +28,7 @@ func sag(v *steps.Value) *Q {
 
 // stepsOf renders the steps that were found, with net figures.
 func stepsOf(rig *config.Rig, f *steps.Findings) []Step {
-	own := instrument{rig, f.Chord}
+	own := instrument{rig: rig, chord: f.Chord}
 	out := make([]Step, 0, len(f.Steps))
 	for _, s := range f.Steps {
 		st := Step{

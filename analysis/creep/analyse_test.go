@@ -54,7 +54,7 @@ func TestAnalyseLadder(t *testing.T) {
 			t.Errorf("forecast %g h: %g to %g, true %g", f.AfterH, f.Lo, f.Hi, truth)
 		}
 	}
-	if len(a.MayStop) != 0 || len(a.Shrunk) < 3 {
+	if len(a.MayStop) != 4 || len(a.Shrunk) < 4 {
 		t.Errorf("may stop %v, shrunk %v", a.MayStop, a.Shrunk)
 	}
 	for i := 1; i < len(a.Shrunk); i++ {

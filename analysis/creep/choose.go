@@ -101,6 +101,7 @@ func Analyse(in Input, o Options) (*Analysis, error) {
 		a.choose(loading)
 	}
 	if a.Best == nil {
+		a.withoutLaw(&in, o)
 		return a, nil
 	}
 	a.remarks()
@@ -109,6 +110,22 @@ func Analyse(in Input, o Options) (*Analysis, error) {
 	a.forecast(&in, o)
 	a.mayStop(&in, o)
 	return a, nil
+}
+
+// withoutLaw says what can be said where no law fits: the forecasts are
+// refused, but a warning of acceleration stands.
+func (a *Analysis) withoutLaw(in *Input, o Options) {
+	if a.Acceleration.CautionH != nil {
+		a.Stage = Tertiary
+	}
+	_, observed, n := in.span()
+	for _, after := range o.ForecastH {
+		f := Forecast{AfterH: after, Label: Refused, Refused: "no law was found for these readings", ByModel: []ByModel{}}
+		if n > 0 {
+			f.Decades = math.Log10(after / observed)
+		}
+		a.Forecast = append(a.Forecast, f)
+	}
 }
 
 func (a *Analysis) note(code, format string, args ...any) {

@@ -78,7 +78,7 @@ type Fit struct {
 // Nuisance is one fitted column beside the law.
 type Nuisance struct {
 	Parameter
-	Kind    string // offset | drift | zero | ambient | load
+	Kind    string // offset | drift | zero | ambient | load | instant
 	Series  int
 	Ambient int
 }

@@ -23,7 +23,7 @@ type plan struct {
 func ladder() plan {
 	ramp := 20.0 / 3600
 	return plan{d0: 0.0219, d1: 0.0219 * 0.085, n: 0.23,
-		steps: []Change{{0, ramp, 49}, {0.1, ramp, 147}, {0.2, ramp, 147}, {0.3, ramp, 147}, {168, ramp, -490}},
+		steps: []Change{{0, ramp, 49, 0}, {0.1, ramp, 147, 0}, {0.2, ramp, 147, 0}, {0.3, ramp, 147, 0}, {168, ramp, -490, 0}},
 		full:  0.3 + ramp, end: 168, last: 192, noise: 0.0005, seed: 1}
 }
 

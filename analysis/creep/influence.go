@@ -71,13 +71,13 @@ func (s *system) stiffnessGuess() float64 {
 	return up / down
 }
 
-// holdLaw fixes the columns of the loads' own influence to a law: they are
-// its response, which is linear in small deviations of the influence.
+// holdLaw fixes the columns of the loads' own influence and of the changes'
+// instants to a law: they are its response, linear in small deviations.
 func (s *system) holdLaw(linear []float64, shape float64) {
 	for i := range s.parts {
 		for j := range s.parts[i].extra {
 			n := &s.parts[i].extra[j]
-			if n.kind != kindLoad {
+			if n.load == nil {
 				continue
 			}
 			value, _ := s.fam.columns(s.parts[i].TimeH, n.load, shape)

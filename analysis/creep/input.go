@@ -14,6 +14,9 @@ type Change struct {
 	// loading pattern: the load of that pattern that would give this gauge
 	// the same sag at once. Negative where load is taken off.
 	Newton float64
+	// U is the standard uncertainty of AtH, h; 0: exact. The readings fix it
+	// better where they follow closely.
+	U float64
 }
 
 // Series is one gauge's sag over the whole test, in bins about equally
@@ -35,6 +38,8 @@ type Series struct {
 	// ZeroU is the standard uncertainty of the series' zero (mm), common to
 	// all its bins; 0: exact.
 	ZeroU float64
+	// ResolutionMM is the step of the gauge's readings, mm; 0: exact.
+	ResolutionMM float64
 }
 
 // Knowledge is a value known beforehand with its standard uncertainty.
@@ -90,6 +95,9 @@ type Input struct {
 	// InitialH is the time after full load at which the initial sag is
 	// taken, h; 0: one minute.
 	InitialH float64
+	// LimitMM is the sag of the creep gauge that must not be reached; the watch
+	// for acceleration warns when it is a day away. 0: none.
+	LimitMM float64
 }
 
 // lastH is the end of the record.
@@ -175,8 +183,8 @@ func (s *Series) validate() error {
 		}
 	}
 	for _, c := range s.Changes {
-		if !finite(c.AtH) || !finite(c.RampH) || c.RampH < 0 || !finite(c.Newton) {
-			return errors.New("a change of load is not a number or has a negative ramp")
+		if !finite(c.AtH) || !finite(c.RampH) || c.RampH < 0 || !finite(c.Newton) || c.U < 0 || !finite(c.U) {
+			return errors.New("a change of load is not a number or has a negative ramp or uncertainty")
 		}
 	}
 	return nil

@@ -15,7 +15,7 @@ func TestJointFit(t *testing.T) {
 	rng := rand.New(rand.NewPCG(8, 8))
 	second := Series{Name: "quarter", TimeH: in.Series[0].TimeH, U: in.Series[0].U, ZeroU: 0.0005}
 	for _, c := range p.steps {
-		second.Changes = append(second.Changes, Change{c.AtH, c.RampH, 0.7 * c.Newton})
+		second.Changes = append(second.Changes, Change{AtH: c.AtH, RampH: c.RampH, Newton: 0.7 * c.Newton})
 	}
 	for _, at := range second.TimeH {
 		second.SagMM = append(second.SagMM, 0.7*p.truth(at)+p.noise*rng.NormFloat64()+0.0003)

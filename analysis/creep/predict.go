@@ -231,7 +231,7 @@ func (f *Fit) compensate() {
 		own, _ := s.columns(i, f.sol.q)
 		out := append([]float64(nil), s.parts[i].SagMM...)
 		for j, x := range s.parts[i].extra {
-			if x.kind != kindLoad {
+			if x.load == nil {
 				subtract(out, own[j:j+1], f.sol.own[i][j:j+1])
 			}
 		}

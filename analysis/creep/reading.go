@@ -85,10 +85,12 @@ func (a *Analysis) read(in *Input, o Options) {
 		a.note("no-initial", "no readings about %.3g h after full load; relative creep is given by the single-load equivalent only", in.initialH())
 	}
 	for _, h := range o.TimesH {
-		a.Equivalent = append(a.Equivalent, Relative{h, f.Equivalent(h, in.initialH())})
-		if in.FullH+h > in.EndH+1e-9 {
+		// A hold counted from the begin of the ramp ends a little early; beyond
+		// the data there is a forecast or nothing.
+		if in.FullH+h > in.EndH+endsEarly*h {
 			continue
 		}
+		a.Equivalent = append(a.Equivalent, Relative{h, f.Equivalent(h, in.initialH())})
 		v, ok := at(h)
 		r := Reading{AfterH: h, Sag: v}
 		if !ok {
@@ -106,6 +108,10 @@ func (a *Analysis) read(in *Input, o Options) {
 		a.After = append(a.After, r)
 	}
 }
+
+// endsEarly is the share of a time asked for by which a step may end before it
+// and still be read at it: sag goes with the logarithm of time or slower.
+const endsEarly = 1e-3
 
 // quotient is a/b of independent figures.
 func quotient(a, b Value) Value {

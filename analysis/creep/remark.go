@@ -23,7 +23,11 @@ func (f *Fit) remark() {
 	}
 	for _, p := range f.Parameters {
 		if p.AtBound && p.Name == f.fam.shape {
-			note(p.Name+"-at-bound", "%s: %s ran to its bound, %.4g %s; the law does not suit these readings or they are too few to fix it", f.Model, p.Name, p.Value, p.Unit)
+			unit := " " + p.Unit
+			if p.Unit == "1" {
+				unit = ""
+			}
+			note(p.Name+"-at-bound", "%s: %s ran to its bound, %.4g%s; the law does not suit these readings or they are too few to fix it", f.Model, p.Name, p.Value, unit)
 		}
 	}
 	if c := lsq.Correlation(f.inner, 0, 1); f.Model != KelvinChain && math.Abs(c) > 0.999 {

@@ -57,7 +57,7 @@ func (in *Input) watch() Acceleration {
 	if len(age) == 0 {
 		return Acceleration{}
 	}
-	out := Watch(age, sag, Limits{ChangesH: changes})
+	out := Watch(age, sag, Limits{ChangesH: changes, SagMM: in.LimitMM, ResolutionMM: in.Series[0].ResolutionMM})
 	for _, p := range []*float64{out.MinimumH, out.CautionH, out.ClearAreaH} {
 		if p != nil {
 			*p += in.FullH

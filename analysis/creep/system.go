@@ -15,11 +15,12 @@ const (
 	kindZero
 	kindAmbient
 	kindLoad
+	kindInstant
 )
 
 // String returns the kind in one word.
 func (k kind) String() string {
-	return [...]string{"offset", "drift", "zero", "ambient", "load"}[k]
+	return [...]string{"offset", "drift", "zero", "ambient", "load", "instant"}[k]
 }
 
 // nuisance is one column beside the law's, of one series.
@@ -103,6 +104,7 @@ func newSystem(in *Input, fam family, lags []float64) *system {
 	s.layOffsets()
 	s.layDrifts()
 	s.layAmbient()
+	s.layInstants()
 	s.layLoads()
 	return s
 }

@@ -27,6 +27,8 @@ type Limits struct {
 	// ChangesH are load changes within the ages given, h: after each the creep
 	// begins anew and so does the watch.
 	ChangesH []float64
+	// ResolutionMM is the gauge's: less than it in a window is no rise. 0: exact.
+	ResolutionMM float64
 }
 
 // The rules of the two levels. A window must stand out from the least rate
@@ -43,6 +45,10 @@ const (
 	// tells the steady course.
 	beforeEnd = 1.4
 )
+
+// oneStep is the standard uncertainty that the gauge's steps leave in the
+// difference of two readings, in steps: the least that a window's rise scatters.
+var oneStep = math.Sqrt(2.0 / 12)
 
 // standOut is by how much a window at an age, h, must stand out: the longer a
 // test is watched, the more windows there are one of which may do so by chance.
@@ -210,7 +216,7 @@ func watchScale(win, all []window, w float64, phases int, course *course, l Limi
 		if !ok {
 			continue
 		}
-		u := scatter(all, steady, w, phases)
+		u := max(scatter(all, steady, w, phases), oneStep*l.ResolutionMM/w)
 		a, b := win[i-1].rate, win[i].rate
 		least, leastAt := course.least(win[i-2].endH)
 		base := max(steady.rate(win[i-2].endH-w, win[i-2].endH), least, 0)

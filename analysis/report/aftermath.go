@@ -32,6 +32,9 @@ func (b *builder) creep() Section {
 	if f, ok := b.residualFigure(); ok {
 		s.Blocks = append(s.Blocks, f)
 	}
+	if f, ok := b.warmthFigure(); ok {
+		s.Blocks = append(s.Blocks, f)
+	}
 	if f := c.Fit; f != nil {
 		s.Blocks = append(s.Blocks, Paragraph{fmt.Sprintf(
 			"The law leaves residuals of %s %s (rms) over %d points; neighbouring residuals correlate by %s, so the points count as %s independent ones.",
@@ -206,6 +209,12 @@ func (b *builder) surroundings() Section {
 	if len(t.Rows) > 0 {
 		t.Says = "Fitted with the law; where u is as large as the value, nothing was seen."
 		s.Blocks = append(s.Blocks, t)
+	}
+	if t, ok := b.soakTable(); ok {
+		s.Blocks = append(s.Blocks, t)
+	}
+	if f, ok := b.soakFigure(); ok {
+		s.Blocks = append(s.Blocks, f)
 	}
 	sup := Table{Caption: "Settlement of the supports", Columns: []Column{{Name: "Support", Text: true}, {Name: "Settlement", Text: true}}}
 	for _, p := range b.r.Supports {

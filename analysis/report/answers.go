@@ -159,17 +159,33 @@ func (b *builder) answerStop(add func(q, a, s string)) {
 		}
 	}
 	if now == "" {
+		if len(b.r.Creep.Forecast) > 0 {
+			add("May we stop?", "not to be told", "no forecast stands whose interval could shrink; the decision is the engineer's")
+		}
 		return
 	}
-	a := "the law's 95 % band for " + far + " is " + now + " wide"
-	if len(later) > 0 {
-		a += "; it would be " + strings.Join(later, ", ")
+	a, would := "the 95 % interval for "+far+" is "+now+" wide", "it would be "
+	if b.unloaded() {
+		a, would = "the 95 % interval for "+far+" was "+now+" wide at the unloading", "had the load stayed it would be "
 	}
-	sure := "the gauge's own uncertainty comes on top; the decision is the engineer's"
+	sure := "the decision is the engineer's"
+	if len(later) > 0 {
+		sure = would + strings.Join(later, ", ") + "; " + sure
+	}
 	if len(before) > 0 {
 		sure = "it was " + strings.Join(before, ", ") + "; " + sure
 	}
 	add("May we stop?", a, sure)
+}
+
+// unloaded reports whether load was taken off after the creep step.
+func (b *builder) unloaded() bool {
+	for i, s := range b.r.Steps {
+		if s.Step == b.r.Creep.Step && i+1 < len(b.r.Steps) {
+			return total(b.r.Steps[i+1]) < total(s)
+		}
+	}
+	return false
 }
 
 func forecastWords(label string) string {

@@ -23,7 +23,7 @@ func TestScripts(t *testing.T) {
 		Dir:                 "testdata/script",
 		RequireExplicitExec: true,
 		UpdateScripts:       *update,
-		Cmds:                map[string]func(*testscript.TestScript, bool, []string){"rehearse": rehearse, "happened": happened},
+		Cmds:                map[string]func(*testscript.TestScript, bool, []string){"rehearse": rehearse, "happened": happened, "hold": hold},
 		Setup: func(e *testscript.Env) error {
 			e.Setenv("TZ", "UTC")
 			return os.MkdirAll(e.Getenv("HOME"), 0o755)
