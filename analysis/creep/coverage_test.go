@@ -129,3 +129,33 @@ func TestCoverageSmall(t *testing.T) {
 		t.Errorf("%+v", c)
 	}
 }
+
+// An operator's instants are off by seconds, and readings some seconds apart do
+// not tell better: the intervals must count it.
+func TestUnknownInstantsAreCovered(t *testing.T) {
+	t.Parallel()
+	const tests, after = 40, 1677 // h: a decade beyond the data
+	held := 0
+	for seed := uint64(21000); seed < 21000+tests; seed++ {
+		in, p := drawTest(seed)
+		rng := rand.New(rand.NewPCG(seed, 5))
+		s := &in.Series[0]
+		s.Changes = append([]Change(nil), s.Changes...)
+		for k := range s.Changes {
+			u := 2.0 / 3600 // h
+			s.Changes[k].AtH += u * rng.NormFloat64()
+			s.Changes[k].U = u
+		}
+		f, err := FitLaw(in, Power)
+		if err != nil {
+			t.Fatal(err)
+		}
+		if lo, hi := f.Band(p.full + after); lo <= p.truth(p.full+after) && p.truth(p.full+after) <= hi {
+			held++
+		}
+	}
+	t.Logf("held in %d of %d", held, tests)
+	if held < heldLeast(0.93, tests) {
+		t.Errorf("the sag one decade on is held in %d of %d", held, tests)
+	}
+}

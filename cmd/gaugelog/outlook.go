@@ -56,6 +56,9 @@ func outlook(r *analysis.Result) *desk.Outlook {
 		o.Forecasts = append(o.Forecasts, d)
 	}
 	for _, m := range r.Creep.MayStop {
+		if n := len(r.Steps); n > 0 && r.Steps[n-1].Step != r.Creep.Step {
+			break // what it would have bought, had the load stayed, is for the report
+		}
 		o.MayStop = append(o.MayStop, desk.MayStop{More: time.Duration(m.MoreS * float64(time.Second)), WidthMM: m.ForecastWidth.Value})
 	}
 	for _, d := range r.Disturbances {

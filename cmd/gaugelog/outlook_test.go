@@ -44,10 +44,14 @@ func TestOutlookOfAResult(t *testing.T) {
 		Sag: []desk.NetSag{{Gauge: "mid", MM: 0.7, U: f(0.004)}},
 		Forecasts: []desk.Forecast{{After: "1 h", At: at(loaded) + 3600e9, MM: 4.5, Lo: f(4.4), Hi: f(4.6), Label: "plain"},
 			{After: "1 a", At: at(loaded) + 31557600e9, Label: "refused", Refused: "too far"}},
-		MayStop:      []desk.MayStop{{More: time.Minute, WidthMM: 0.2}},
 		Disturbances: []desk.Disturbance{{Kind: "bench-knock", Gauges: []string{"mid"}, From: at(loaded), To: at(bare), Size: f(-0.01), Load: f(3), Treated: "taken out"}},
 	}
 	if d := cmp.Diff(want, outlook(r)); d != "" {
+		t.Error(d)
+	}
+	// While the load hangs, what more time buys belongs to it.
+	r.Steps = r.Steps[:2]
+	if d := cmp.Diff([]desk.MayStop{{More: time.Minute, WidthMM: 0.2}}, outlook(r).MayStop); d != "" {
 		t.Error(d)
 	}
 }

@@ -64,9 +64,12 @@ func (w speaker) outlook() Outlook {
 		v.Note = "Sag of " + o.Gauge + ", corrected, mm, at a time after full load; in brackets the band that holds it with 95 %, if the fitted laws hold."
 	}
 	for _, m := range o.MayStop {
-		if m.More <= 0 {
+		switch {
+		case m.More < 0:
+			v.MayStop = append(v.MayStop, fmt.Sprintf("%s ago the farthest forecast was %s mm wide.", desk.Span(-m.More), desk.Fixed(m.WidthMM, 0.001)))
+		case m.More == 0:
 			v.MayStop = append(v.MayStop, fmt.Sprintf("Stop now: the farthest forecast is %s mm wide.", desk.Fixed(m.WidthMM, 0.001)))
-		} else {
+		default:
 			v.MayStop = append(v.MayStop, fmt.Sprintf("Another %s: it would be %s mm wide.", desk.Span(m.More), desk.Fixed(m.WidthMM, 0.001)))
 		}
 	}
