@@ -156,6 +156,9 @@ func (c *checker) contact(p string, k *Contact) {
 	if k.Stiffness != nil && k.Stiffness.Value < 0 {
 		c.fail(p+".stiffness", "contact stiffness must not be negative", "write by how much the force grows per mm the plunger is pushed in, such as 0.02 N/mm")
 	}
+	if k.Friction != nil && k.Friction.Value < 0 {
+		c.fail(p+".friction", "contact friction must not be negative", "write the greatest force by which the plunger sticks either way, such as 0.1 N")
+	}
 }
 
 // positive checks an optional time.

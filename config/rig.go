@@ -129,6 +129,8 @@ type Contact struct {
 	Side      string     `mapstructure:"side"` // above | below
 	Force     *Force     `mapstructure:"force"`
 	Stiffness *Stiffness `mapstructure:"stiffness"`
+	// Friction is the greatest force by which the plunger sticks in its sleeve.
+	Friction *Force `mapstructure:"friction"`
 }
 
 // Probe reads the surroundings.

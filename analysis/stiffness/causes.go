@@ -152,8 +152,8 @@ func gaugeCauses(in *Input, m *model, add adder) {
 		if g.Contact != nil && g.Contact.Stiffness != nil && sees(g) == "beam" {
 			add("plunger stiffness of gauge "+g.Name, "B", "N/mm", "stated in the rig file", g.Contact.Stiffness.U, func(s *state, v float64) { s.contact[i] += v })
 		}
-		if i < len(in.Stiction) {
-			add("friction of gauge "+g.Name+"'s plunger", "B", "N", "its half-width over sqrt(3)", in.Stiction[i]/math.Sqrt(3), func(s *state, v float64) { s.stuck[i] += v })
+		if g.Contact != nil && g.Contact.Friction != nil && sees(g) == "beam" && len(g.Bar) == 0 {
+			add("friction of gauge "+g.Name+"'s plunger", "B", "N", "stated in the rig file: its half-width over sqrt(3)", g.Contact.Friction.Value/math.Sqrt(3), func(s *state, v float64) { s.stuck[i] += v })
 		}
 	}
 	var stands []string

@@ -20,9 +20,6 @@ type Input struct {
 	// belongs in here, also one no gauge answered (with no Gauges): loads are
 	// differenced from one step to the next.
 	Steps []StepObs
-	// Stiction is, by gauge index, the half-width in N of the friction a
-	// plunger may have held; nil or 0 where unknown.
-	Stiction []float64
 	// StandU is the standard uncertainty in mm, by stand's name, of that
 	// stand's own movement over one increment (from the drift analysis).
 	StandU map[string]float64

@@ -245,6 +245,32 @@ func TestPlungerIsTakenOff(t *testing.T) {
 	relative(t, "apparent", e.ApparentModulus.Value, 11800*(1+k*c), 1e-9)
 }
 
+// What sticks in a sleeve may hold back that much of the load beside it: the
+// stiffness is uncertain by its share of the load, as a rectangle.
+func TestPlungerFrictionIsInTheBudget(t *testing.T) {
+	p := newPlank()
+	p.rig.Loads = p.rig.Loads[:1]
+	a := length(1050, 0)
+	p.rig.Loads[0].At = &a
+	p.s = math.Inf(1)
+	p.rig.Specimen.Section = config.Section{Shape: "general", SecondMoment: &config.SecondMoment{Quantity: config.Quantity{Value: p.ei / 11800}}}
+	contact := &config.Contact{Side: "above"}
+	p.rig.Gauges = []config.Gauge{{Name: "mid", At: length(1050, 0), Sees: "beam", Resolution: length(0.001, 0), Contact: contact}}
+	in := Input{Rig: p.rig, InitialAfterS: 60, Steps: []StepObs{{Name: "1", Loads: []StepLoad{{Load: "a", N: 200}}, Gauges: []Obs{{MM: 200 * 2100 * 2100 * 2100 / (48 * p.ei), U: 1e-6}}}}}
+	without := mustCompute(t, in).Bending
+	contact.Friction = &config.Force{Quantity: config.Quantity{Value: 0.3}}
+	e := mustCompute(t, in)
+	relative(t, "EI", e.Bending.Value, p.ei, 1e-9)
+	added := math.Sqrt(e.Bending.U*e.Bending.U - without.U*without.U)
+	relative(t, "u from friction", added, p.ei*0.3/math.Sqrt(3)/200, 0.01)
+	for _, l := range e.BendingBudget {
+		if l.Input == "friction of gauge mid's plunger" && l.Share > 0 {
+			return
+		}
+	}
+	t.Errorf("no friction in the budget: %+v", e.BendingBudget)
+}
+
 // noisy adds readings' noise with a known spread: each plateau has its own
 // error, shared by the increments on both sides of it.
 func noisy(in Input, u float64, rng *rand.Rand) Input {
