@@ -157,6 +157,17 @@ func (c *counts) add(g int, t, v int64) {
 	}
 }
 
+// converted counts one reading; of one that was shown in another unit no
+// multiple of the resolution in mm is expected.
+func (c *counts) converted(g int, t, v int64, other bool) {
+	o := &c.gauges[g]
+	from, was := o.from, o.p.inexact
+	c.add(g, t, v)
+	if other {
+		o.p.inexact = was && o.from == from
+	}
+}
+
 // turn ends the open part of a gauge and opens that which holds t; false where
 // t is in no bin that counts.
 func (c *counts) turn(g int, t, v int64) bool {

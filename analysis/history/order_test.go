@@ -67,6 +67,36 @@ func TestDisorderGivesTheSameBins(t *testing.T) {
 	})
 }
 
+// A unit key was pressed for an hour: those lines carry what the gauge showed
+// and stand among the plain ones. They are in order, and no multiples of the
+// resolution are expected of them.
+func TestUnitKeyIsNoDisorder(t *testing.T) {
+	fs := segmenttest.New()
+	if err := fs.MkdirAll(segment.ReadingsDir); err != nil {
+		t.Fatal(err)
+	}
+	fs.Put(segment.RigFile, []byte(rigText))
+	var text strings.Builder
+	var list []Sample
+	for i := range int64(3000) {
+		at, mm, more := t0+i*10*second, 3.21, ""
+		if i >= 1000 && i < 1360 {
+			mm, more = 3.2131, ",shown=0.1265,unit=\"in\""
+		}
+		list = append(list, Sample{at, mm})
+		fmt.Fprintf(&text, "indication,gauge=mid mm=%v%s %d\n", mm, more, at)
+	}
+	fs.Put(segment.ReadingsDir+"/hand.lp", []byte(text.String()))
+	h, err := Open(fs)
+	if err != nil {
+		t.Fatal(err)
+	}
+	same(t, h, [][]Sample{list, nil})
+	if n := notes(h, "out-of-order") + notes(h, "not-a-multiple"); n > 0 {
+		t.Errorf("%v", h.Notes)
+	}
+}
+
 // same holds what h says of its readings against what they are.
 func same(t interface{ Fatalf(string, ...any) }, h *History, want [][]Sample) {
 	m, err := FromSamples(Given{Rig: h.Rig, Samples: want})

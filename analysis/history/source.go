@@ -141,14 +141,19 @@ func (s *folderSource) count(opts segment.ReadOptions, g *grid, tolerance int64,
 			*c = newCounts(s.resolutions, g, tolerance)
 		}
 		(*c).begin()
-		(*c).rows(b.Gauge, b.Micro, b.Time)
+		row := 0
 		for i := range b.Others {
-			if rec := &b.Others[i]; rec.Kind == segment.Indication {
-				if n, ok := s.numbers[rec.Name]; ok {
-					(*c).add(n, rec.Time, toMicro(rec.MM))
-				}
+			rec := &b.Others[i]
+			n, known := s.numbers[rec.Name]
+			if rec.Kind != segment.Indication || !known {
+				continue
 			}
+			at := b.OtherAt[i] // in the order of the file
+			(*c).rows(b.Gauge[row:at], b.Micro[row:at], b.Time[row:at])
+			row = at
+			(*c).converted(n, rec.Time, toMicro(rec.MM), otherUnit(rec))
 		}
+		(*c).rows(b.Gauge[row:], b.Micro[row:], b.Time[row:])
 		(*c).finish()
 	}
 	collect := func(b *segment.Batch, c **counts) error {
@@ -182,6 +187,19 @@ func (s *folderSource) count(opts segment.ReadOptions, g *grid, tolerance int64,
 		return nil, nil, fmt.Errorf("read %s: %w", segment.ReadingsDir, err)
 	}
 	return gathers, r.Report(), nil
+}
+
+// otherUnit says that the gauge showed an indication in another unit than mm.
+func otherUnit(rec *segment.Record) bool {
+	if rec.Point == nil {
+		return false
+	}
+	for _, f := range rec.Point.Fields {
+		if f.Key == "unit" {
+			return f.Value != "mm"
+		}
+	}
+	return false
 }
 
 // settled closes all bins, by gauge. Bins of which readings came after they
