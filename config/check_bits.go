@@ -170,10 +170,11 @@ func (c *checker) cover(p string, f *Frame) {
 		c.fail(p+".to", "the checksum covers nothing: to is not behind from", "bytes count from 0, to itself is not covered; negative counts from the end")
 		return
 	}
-	if f.Kind != "binary" || f.Binary == nil || f.Binary.Length < 1 {
+	size := map[bool]int{true: 2, false: 1}[s.Kind == "crc16"]
+	length, ok := f.guarded(&size)
+	if !ok {
 		return
 	}
-	length := f.Binary.Length
 	place := func(n *int, otherwise int) int {
 		switch {
 		case n == nil:
@@ -183,11 +184,10 @@ func (c *checker) cover(p string, f *Frame) {
 		}
 		return *n
 	}
-	size := map[bool]int{true: 2, false: 1}[s.Kind == "crc16"]
-	sum := place(s.At, 0)
+	sum := place(s.At, length-size)
 	from, to := place(s.From, 0), place(s.To, sum)
 	switch {
-	case s.At == nil:
+	case s.At == nil && f.Kind == "binary":
 	case sum < 0 || sum+size > length:
 		c.fail(p+".at", fmt.Sprintf("the checksum (%d bytes from byte %d) does not lie in a frame of %d bytes", size, sum, length), "bytes count from 0; negative counts from the end")
 	case from < 0 || to > length || from >= to:
@@ -195,4 +195,31 @@ func (c *checker) cover(p string, f *Frame) {
 	case from < sum+size && sum < to:
 		c.fail(p, "the checksum covers itself", "end the stretch before it: to is the first byte that is not covered")
 	}
+}
+
+// guarded is the length of a frame, in bytes without its terminator, whose
+// checksum stands at a place of its own; false where that is not known. size is
+// the checksum's, and doubled where it is sent as hex digits.
+func (f *Frame) guarded(size *int) (length int, ok bool) {
+	s := f.Checksum
+	switch {
+	case f.Kind == "binary" && f.Binary != nil && f.Binary.Length > 0:
+		if s.Form == "hex" {
+			*size *= 2
+		}
+		return f.Binary.Length, true
+	case f.Kind == "nibbles" && f.Nibbles != nil && f.Nibbles.Count > 0:
+		n := f.Nibbles.Count
+		if f.Nibbles.Coding == "packed" {
+			n /= 2
+		}
+		if s.Form == "hex" || s.Form == "" && f.Nibbles.Coding != "packed" {
+			*size *= 2
+		}
+		if n += len(f.Start); s.At == nil {
+			n += *size // it follows the nibbles
+		}
+		return n, true
+	}
+	return 0, false
 }

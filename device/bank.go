@@ -184,15 +184,23 @@ func (b *Bank) Close() error {
 func (b *Bank) Tried() <-chan struct{} { return b.tried }
 
 // Consumed is the number of bytes of the port that are fully dealt with: the
-// readings in them were handed to the Sink. It panics on a port no rig names.
-func (b *Bank) Consumed(port string) int64 { return b.pump(port).consumed.n.Load() }
+// readings in them were handed to the Sink; 0 for a port no rig names.
+func (b *Bank) Consumed(port string) int64 {
+	if p := b.byKey[port]; p != nil {
+		return p.consumed.n.Load()
+	}
+	return 0
+}
 
 // WaitConsumed waits until Consumed(port) is at least n. With Conducted, n
 // must be all that was sent: the line then counts as quiet, so that a frame
 // which ends by the gap behind it has been handed over too, and a question
-// that is still open ends with ErrQuiet.
+// that is still open ends with ErrQuiet. A port that no rig names is ErrUnknown.
 func (b *Bank) WaitConsumed(ctx context.Context, port string, n int64) error {
-	p := b.pump(port)
+	p := b.byKey[port]
+	if p == nil {
+		return fmt.Errorf("port %s: %w", port, ErrUnknown)
+	}
 	if err := p.consumed.wait(ctx, n); err != nil || !p.o.Conducted {
 		return err
 	}
@@ -202,7 +210,8 @@ func (b *Bank) WaitConsumed(ctx context.Context, port string, n int64) error {
 // Ask asks one gauge or probe of a rig now and waits until its answer was
 // handed to the Sink (nil), was refused (ErrRefused), did not come within the
 // frame's time-out (ErrQuiet) or the port is not open (ErrUnplugged). An
-// instrument that sends unasked gives an error at once. With Conducted it is
+// instrument that sends unasked gives an error at once, and so does one that the
+// rig does not have (ErrUnknown). With Conducted it is
 // the only way gauges are asked.
 func (b *Bank) Ask(ctx context.Context, rig int, name string) error {
 	for _, p := range b.pumps {
@@ -218,16 +227,11 @@ func (b *Bank) Ask(ctx context.Context, rig int, name string) error {
 			}
 		}
 	}
-	panic("device: Ask: no such gauge: " + name)
+	return fmt.Errorf("gauge or probe %s: %w", name, ErrUnknown)
 }
 
-func (b *Bank) pump(port string) *pump {
-	p := b.byKey[port]
-	if p == nil {
-		panic("device: no gauge or probe is on port " + port)
-	}
-	return p
-}
+// ErrUnknown: no rig names such a port, gauge or probe.
+var ErrUnknown = errors.New("no rig names it")
 
 // ErrRefused: an answer came, but damaged.
 var ErrRefused = errors.New("the answer was refused")

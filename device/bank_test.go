@@ -1,6 +1,7 @@
 package device_test
 
 import (
+	"errors"
 	"math"
 	"strings"
 	"testing"
@@ -81,4 +82,22 @@ func TestUnplugAndReplug(t *testing.T) {
 			t.Errorf("readings %+v", got)
 		}
 	})
+}
+
+// TestUnknownNames: a port or a gauge that no rig names is an error, as where a
+// run goes on with another rig file than its sender's.
+func TestUnknownNames(t *testing.T) {
+	var o devicetest.Opener
+	var sink count
+	o.Plug("p0")
+	b := start(t, device.Options{Rigs: []*config.Rig{rig(1, signed)}, Opener: &o, Sink: &sink})
+	if err := b.WaitConsumed(t.Context(), "p9", 1); !errors.Is(err, device.ErrUnknown) || !strings.Contains(err.Error(), "p9") {
+		t.Error(err)
+	}
+	if err := b.Ask(t.Context(), 0, "nobody"); !errors.Is(err, device.ErrUnknown) || !strings.Contains(err.Error(), "nobody") {
+		t.Error(err)
+	}
+	if n := b.Consumed("p9"); n != 0 {
+		t.Error(n)
+	}
 }
