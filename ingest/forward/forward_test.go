@@ -35,15 +35,26 @@ func TestAnswers(t *testing.T) {
 	}{
 		{"204", nil, false, 0},
 		{"200 of a portal", first(2, 200, nil), true, time.Minute},
+		{"202", first(2, 202, nil), true, time.Minute},
 		{"301", first(2, 301, map[string]string{"Location": "/elsewhere"}), true, time.Minute},
+		{"302", first(2, 302, map[string]string{"Location": "/login"}), true, time.Minute},
+		{"304", first(2, 304, nil), true, time.Minute},
+		{"307", first(2, 307, map[string]string{"Location": "/write?db=other"}), true, time.Minute},
+		{"308", first(2, 308, map[string]string{"Location": "/write?db=other"}), true, time.Minute},
 		{"401", first(2, 401, nil), true, time.Minute},
 		{"403", first(2, 403, nil), true, time.Minute},
 		{"404", first(2, 404, nil), true, time.Minute},
+		{"405", first(2, 405, nil), true, time.Minute},
+		{"408", first(2, 408, nil), false, time.Second / 2},
+		{"429 without", first(1, 429, nil), false, time.Second / 2},
+		{"429 with a date gone by", first(1, 429, map[string]string{"Retry-After": "Mon, 02 Mar 2020 08:00:30 GMT"}), false, time.Second / 2},
 		{"429 with seconds", first(1, 429, map[string]string{"Retry-After": "17"}), false, 17 * time.Second},
 		{"503 with seconds", first(1, 503, map[string]string{"Retry-After": "3"}), false, 3 * time.Second},
 		{"503 without", first(1, 503, nil), false, time.Second / 2},
 		{"500", first(3, 500, nil), false, time.Second / 2},
 		{"502", first(30, 502, nil), false, time.Second / 2},
+		{"504", first(1, 504, nil), false, time.Second / 2},
+		{"507", first(1, 507, nil), false, time.Second / 2},
 	} {
 		t.Run(c.name, func(t *testing.T) {
 			fsys, state := runOf(t, n)
@@ -63,7 +74,7 @@ func TestAnswers(t *testing.T) {
 			if len(got.waits) == 0 || got.waits[0] < c.wait || got.waits[0] > max(3*c.wait, c.wait+time.Second) {
 				t.Errorf("waits %v, want about %v", got.waits, c.wait)
 			}
-			if got.notices[0].Held != c.held || !strings.Contains(got.notices[0].Words, "words of the server") {
+			if got.notices[0].Held != c.held || c.name != "304" && !strings.Contains(got.notices[0].Words, "words of the server") {
 				t.Errorf("notice %+v", got.notices[0])
 			}
 			for _, w := range got.waits {

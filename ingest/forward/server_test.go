@@ -6,6 +6,7 @@ import (
 	"context"
 	"fmt"
 	"io"
+	"net"
 	"net/http"
 	"net/http/httptest"
 	"os"
@@ -27,6 +28,9 @@ type server struct {
 	*httptest.Server
 	mu     sync.Mutex
 	script func(n int, r *http.Request, body []byte) (code int, header map[string]string, words string)
+	// answer takes a post over where it is not nil and gives true.
+	answer func(w http.ResponseWriter, n int, body []byte) bool
+	hung   []net.Conn // are closed at the end
 	posts  int
 	points map[string]string // series and stamp: fields
 	twice  int
@@ -38,7 +42,12 @@ type server struct {
 func newServer(t testing.TB) *server {
 	s := &server{points: map[string]string{}}
 	s.Server = httptest.NewServer(s)
-	t.Cleanup(s.Close)
+	t.Cleanup(func() {
+		for _, c := range s.hung {
+			c.Close()
+		}
+		s.Close()
+	})
 	return s
 }
 
@@ -61,6 +70,9 @@ func (s *server) ServeHTTP(w http.ResponseWriter, r *http.Request) {
 	}
 	s.posts++
 	s.bodies, s.heads, s.uris = append(s.bodies, body), append(s.heads, r.Header.Clone()), append(s.uris, r.RequestURI)
+	if s.answer != nil && s.answer(w, s.posts, body) {
+		return
+	}
 	if s.script != nil {
 		code, header, words := s.script(s.posts, r, body)
 		for k, v := range header {
