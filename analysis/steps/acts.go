@@ -165,6 +165,7 @@ func removeKey(list []key, k key) []key {
 // acts believes the marked acts on gauges: the jump of that gauge nearest to
 // the mark is its doing.
 func (r *run) acts() {
+	lifted := map[int]int64{}
 	for _, m := range r.h.Marks {
 		if m.Kind != "touch" {
 			continue
@@ -185,6 +186,13 @@ func (r *run) acts() {
 		}
 		e.jump[g] = own
 		r.act(e, g, Disturbance{Kind: kind, Marked: true, Evidence: fmt.Sprintf("marked: %s %s", r.name(g), m.Act)})
+		if from, off := lifted[g]; off {
+			r.exclude(g, from, e.hi, "off the beam") // until it was set down, or whatever was marked next
+			delete(lifted, g)
+		}
+		if m.Act == "lifted" {
+			lifted[g] = e.lo
+		}
 	}
 }
 

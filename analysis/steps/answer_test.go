@@ -61,3 +61,20 @@ func TestMovedWithTheLoad(t *testing.T) {
 		t.Errorf("net increment's u: %.4f", net.U)
 	}
 }
+
+// While a gauge is off the beam it reads nothing of it: those readings are left
+// out, and what it went in all is taken off.
+func TestLiftedAndSetDown(t *testing.T) {
+	w := quiet()
+	w.happenings = []happening{{gauge: 3, from: 9000, to: 9600, by: -1.2}, {gauge: 3, from: 9600, by: 0.1}}
+	w.marks = []history.Mark{touched("g4", "lifted", 9010), touched("g4", "set-down", 9620)}
+	f := w.find(t)
+	if o := f.Tracks[3].Offsets; len(o) != 2 || math.Abs(o[0].Value.MM+o[1].Value.MM-0.1) > 0.003 {
+		t.Errorf("offsets %v", o)
+	}
+	for _, p := range f.Tracks[3].Points {
+		if p.Time > at(9005) && p.Time < at(9595) {
+			t.Fatalf("a point at %.0f s", seconds(p.Time-epoch))
+		}
+	}
+}
