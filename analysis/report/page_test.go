@@ -2,6 +2,7 @@ package report
 
 import (
 	"fmt"
+	"image/color"
 	"math"
 	"regexp"
 	"strconv"
@@ -109,5 +110,46 @@ func TestPageMarkup(t *testing.T) {
 	}
 	if m := regexp.MustCompile(`(?i)(src|href)="?(http|//|/)|<script|javascript:`).FindString(page); m != "" {
 		t.Errorf("the page fetches or runs %q", m)
+	}
+}
+
+// inverted is a colour as the style sheet's filter shows it in the dark: invert(a)
+// and then hue-rotate(180deg), by the formulas of Filter Effects 1 (W3C), sections
+// 9.6 and 9.5, with the cosine -1 and the sine 0.
+func inverted(c [3]float64, a float64) (out [3]float64) {
+	matrix := [3][3]float64{{-0.574, 1.43, 0.144}, {0.426, 0.43, 0.144}, {0.426, 1.43, -0.856}}
+	for i := range c {
+		for j := range c {
+			v := c[j] / 255
+			out[i] += matrix[i][j] * (v*(1-a) + (1-v)*a)
+		}
+		out[i] = 255 * min(max(out[i], 0), 1)
+	}
+	return out
+}
+
+// In the dark the plots are turned over: their letters have a contrast of 4.5 to
+// what they stand on then, and their lines 3.
+func TestContrastOfPlotsInTheDark(t *testing.T) {
+	m := regexp.MustCompile(`\.plot svg \{ filter: invert\(([.0-9]+)\) hue-rotate\(180deg\); \}`).FindStringSubmatch(style)
+	if m == nil {
+		t.Fatal("the style sheet does not turn the plots over")
+	}
+	a, err := strconv.ParseFloat(m[1], 64)
+	if err != nil {
+		t.Fatal(err)
+	}
+	paper := inverted([3]float64{255, 255, 255}, a)
+	rgb := func(c color.NRGBA) [3]float64 { return [3]float64{float64(c.R), float64(c.G), float64(c.B)} }
+	if got := contrast(inverted(rgb(ink), a), paper); got < 4.5 {
+		t.Errorf("letters have a contrast of %.2f", got)
+	}
+	for i, s := range shades {
+		if got := contrast(inverted(rgb(s), a), paper); got < 3 {
+			t.Errorf("shade %d has a contrast of %.2f", i, got)
+		}
+	}
+	if _, print, _ := strings.Cut(style, "@media print"); !strings.Contains(print, "filter: none") {
+		t.Error("print in the dark would turn them over too")
 	}
 }

@@ -206,9 +206,10 @@ func (s *sheet) section(no int, sec Section) {
 func (s *sheet) least(b Block) float64 {
 	switch v := b.(type) {
 	case Figure:
-		return v.Height + 12
+		return leastHeight(v.Height) + 14
 	case Picture:
-		return 90
+		_, h := pictureSize(v)
+		return leastHeight(h) + 14
 	case Table:
 		return s.leastOf(s.layTable(v, false))
 	}
@@ -278,12 +279,27 @@ func (s *sheet) list(l List) {
 	s.y += 0.8
 }
 
+// leastHeight is how low a plot or photograph may be drawn, mm, so that it stays
+// on a page that has not quite the room for it and leaves no gap there.
+func leastHeight(h float64) float64 { return max(0.65*h, min(h, 45)) }
+
+// room is the height for a plot or photograph of height h and its caption: what
+// is left on this page where that is enough, else h on the next one.
+func (s *sheet) room(h float64, caption []string) float64 {
+	below := 1 + float64(len(caption))*lineHeight(smallSize)
+	if left := s.floor - s.y - below; left >= leastHeight(h) {
+		return min(h, left)
+	}
+	s.ensure(h + below)
+	return h
+}
+
 func (s *sheet) figure(g Figure) {
 	w := min(g.Width, s.width)
 	s.style("", smallSize, soft)
 	caption := s.wrap(g.Caption, s.width)
 	s.y += 2
-	s.ensure(g.Height + 1 + float64(len(caption))*lineHeight(smallSize))
+	g.Height = s.room(g.Height, caption)
 	c := newPDFCanvas(s.f, s.alt, sideMargin, s.y, g.Height)
 	drawFigure(g, draw.NewCanvas(c, vg.Length(w)*vg.Millimeter, vg.Length(g.Height)*vg.Millimeter))
 	s.y += g.Height + 1
@@ -292,16 +308,23 @@ func (s *sheet) figure(g Figure) {
 	s.y += 2
 }
 
-// picture places a photograph at most 150 mm wide and 110 mm high.
-func (s *sheet) picture(p Picture) {
-	w, h := 150.0, 150*float64(p.Height)/float64(p.Width)
+// pictureSize is a photograph's on paper: at most 150 mm wide and 110 mm high.
+func pictureSize(p Picture) (w, h float64) {
+	w, h = 150.0, 150*float64(p.Height)/float64(p.Width)
 	if h > 110 {
 		w, h = w*110/h, 110
 	}
+	return w, h
+}
+
+func (s *sheet) picture(p Picture) {
+	w, h := pictureSize(p)
 	s.style("", smallSize, soft)
 	caption := s.wrap(p.Caption, s.width)
 	s.y += 2
-	s.ensure(h + 1 + float64(len(caption))*lineHeight(smallSize))
+	if lower := s.room(h, caption); lower < h {
+		w, h = w*lower/h, lower
+	}
 	o := fpdf.ImageOptions{ImageType: strings.TrimPrefix(p.Type, "image/")}
 	name := fmt.Sprintf("photo-%d-%d", s.f.PageNo(), int(s.y*100))
 	data := p.Data

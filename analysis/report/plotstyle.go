@@ -22,9 +22,17 @@ var (
 		{0x12, 0x3f, 0x6b, 0xff}, {0xa3, 0x4a, 0x12, 0xff}, {0x2f, 0x6e, 0x4f, 0xff}, {0x6f, 0x4a, 0x86, 0xff},
 		{0x55, 0x5b, 0x63, 0xff}, {0x8a, 0x6d, 0x00, 0xff}, {0x1f, 0x7f, 0x8c, 0xff}, {0x8c, 0x2f, 0x4f, 0xff},
 	}
-	dashes = [][]vg.Length{nil, {vg.Points(6), vg.Points(2)}, {vg.Points(2), vg.Points(2)}, {vg.Points(8), vg.Points(2), vg.Points(2), vg.Points(2)}}
+	dashes = [][]vg.Length{nil, points(6, 2), points(2, 2), points(8, 2, 2, 2), points(12, 4), points(1, 3), points(6, 2, 1, 2, 1, 2), points(3, 5)}
 	marks  = []draw.GlyphDrawer{draw.CircleGlyph{}, draw.BoxGlyph{}, draw.TriangleGlyph{}, draw.RingGlyph{}, draw.SquareGlyph{}, draw.PyramidGlyph{}, draw.CrossGlyph{}, draw.PlusGlyph{}}
 )
+
+// points are lengths of dashes and gaps in points.
+func points(lengths ...float64) (out []vg.Length) {
+	for _, l := range lengths {
+		out = append(out, vg.Points(l))
+	}
+	return out
+}
 
 const face = font.Typeface("Liberation")
 
@@ -100,7 +108,7 @@ func roomy(p *plot.Plot) func() {
 func sagDown(p *plot.Plot) { p.Y.Scale = plot.InvertedScale{Normalizer: plot.LinearScale{}} }
 
 func lineStyle(i int) draw.LineStyle {
-	return draw.LineStyle{Color: shades[i%len(shades)], Width: vg.Points(1.1), Dashes: dashes[(i/2)%len(dashes)]}
+	return draw.LineStyle{Color: shades[i%len(shades)], Width: vg.Points(1.1), Dashes: dashes[i%len(dashes)]}
 }
 
 func glyphStyle(i int) draw.GlyphStyle {
