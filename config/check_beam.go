@@ -3,6 +3,7 @@ package config
 import (
 	"fmt"
 	"math"
+	"slices"
 )
 
 // Span returns where the beam begins and ends along it, in mm.
@@ -65,9 +66,12 @@ func (c *checker) inside(path, what string, place float64) {
 
 func mm(x float64) string { return fmt.Sprintf("%.10g", x) }
 
+// onePlace is how near each other two supports no longer make a span, mm.
+const onePlace = 1
+
 func (c *checker) supports() {
 	seen := map[string]string{}
-	places := map[float64]string{}
+	var before []Support
 	pins, clamps := 0, 0
 	for i, s := range c.rig.Supports {
 		p := at("supports", i)
@@ -83,11 +87,11 @@ func (c *checker) supports() {
 			pins++
 		}
 		c.inside(p+".at", "support "+s.Name, s.At.Value)
-		if other, twice := places[s.At.Value]; twice {
-			c.fail(p+".at", "supports "+other+" and "+s.Name+" stand at one place", "correct one of the two, or take it out")
+		if i := slices.IndexFunc(before, func(o Support) bool { return math.Abs(o.At.Value-s.At.Value) < onePlace }); i >= 0 {
+			c.fail(p+".at", "supports "+before[i].Name+" and "+s.Name+" stand at one place", "correct one of the two, or take it out")
 			continue
 		}
-		places[s.At.Value] = s.Name
+		before = append(before, s)
 		if s.Compliance != nil && s.Compliance.Value < 0 {
 			c.fail(p+".compliance", "compliance must not be negative", "write how far the support yields per newton, such as 0.00005 mm/N")
 		}

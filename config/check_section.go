@@ -137,6 +137,12 @@ func (c *checker) sectionRest(s *Section) {
 	if u := s.UPercent; u != nil && (u.Value <= 0 || u.Value > 50) {
 		c.fail(path+".u_percent", "u_percent must be greater than 0 and at most 50", "write the standard uncertainty of second_moment and area in percent, such as 1")
 	}
+	if s.SecondMoment != nil && s.Area != nil && len(s.Depth) > 0 {
+		if most := s.Area.Value * mean(s.Depth) * mean(s.Depth) / 4; s.SecondMoment.Value > most {
+			c.fail(path+".second_moment", fmt.Sprintf("second_moment, area and depth contradict each other: all of %s\u202fmm2 at the edges of %s\u202fmm would make %s\u202fmm4", mm(s.Area.Value), mm(mean(s.Depth)), mm(most)),
+				"correct the one that is wrong, and its unit")
+		}
+	}
 	if s.Shape == "general" && (s.Area == nil || s.ShearFactor == nil) {
 		c.warn(path, "a general section without area and shear_factor: the sag by shear cannot be told apart",
 			"add area: 5310 mm2 and shear_factor: 0.83 (your own figures)")

@@ -23,6 +23,7 @@ func (e *Estimate) cautions() {
 	e.supportCautions()
 	e.shapeCautions()
 	e.twist()
+	e.doubtful()
 	e.departures()
 	if e.Fit.P < 0.01 && e.Fit.DOF > 0 {
 		e.warn("poor-fit", "", "the beam model does not hold the readings within their uncertainties: chi2 %.1f at %d degrees of freedom (probability %.2g); look at the residuals by gauge and step", e.Fit.Chi2, e.Fit.DOF, e.Fit.P)
@@ -35,6 +36,28 @@ func (e *Estimate) cautions() {
 	}
 	if e.ShearFrom != "test" {
 		e.warn("shear-not-told", "", "shear stiffness %s", e.ShearWords)
+	}
+}
+
+// A modulus beyond these (MPa) is no material's: from soft foam to diamond,
+// with room.
+const (
+	leastModulus    = 1e-3
+	greatestModulus = 2e6
+)
+
+// widest is the relative standard uncertainty up to which a figure that goes
+// with a third power is worth propagating by its slope.
+const widest = 0.2
+
+// doubtful tells of a modulus that can only come of a slip, or that is hardly
+// known.
+func (e *Estimate) doubtful() {
+	if v := e.Modulus.Value; v < leastModulus || v > greatestModulus {
+		e.warn("modulus-implausible", "", "a modulus of %.3g\u202fMPa is no material's: check the units of width, depth, span and loads", v)
+	}
+	if u := e.Modulus.U / e.Modulus.Value; u > widest && len(e.Budget) > 0 {
+		e.warn("too-uncertain", "", "the modulus is uncertain by %.0f %% (standard), %.0f %% of its variance from %s: so wide an interval is not to be used; correct or measure that better", 100*u, 100*e.Budget[0].Share, e.Budget[0].Input)
 	}
 }
 

@@ -33,7 +33,7 @@ func prepare(in *Input) (*model, error) {
 		m.take(in, k, s)
 	}
 	if len(m.rows) == 0 {
-		return nil, errors.New("no gauge answered a change of load whose loads are marked; mend: enter the marks of the loads (`gaugelog mark RUN LOAD VALUE --when TIME`), or check that the gauges touch the beam")
+		return nil, errors.New("no gauge answered a change of load whose loads are marked; mend: enter the marks of the loads (`gaugelog mark RUN LOAD VALUE --when TIME`), or check that the gauges touch the beam, and their sense")
 	}
 	for s := range in.Rig.Supports {
 		if m.watched(s) {

@@ -4,6 +4,7 @@ import (
 	"errors"
 	"fmt"
 	"math"
+	"strings"
 
 	"gaugelog/analysis/lsq"
 
@@ -81,7 +82,7 @@ func chooseShear(in *Input, m *model) (*shearChoice, error) {
 	}
 	f, err := newFit(in, held)
 	if err != nil {
-		return nil, tooFew(err, len(m.rows), held.unknowns())
+		return nil, tooFew(err, len(m.rows), held.names())
 	}
 	c.f = f
 	return c, f.rises()
@@ -143,9 +144,14 @@ func (m *model) assume(st *state) {
 	}
 }
 
-func tooFew(err error, rows, unknowns int) error {
-	if rows < unknowns || errors.Is(err, lsq.ErrRank) {
-		return fmt.Errorf("%d increments cannot give %d unknowns: %w; mend: read more gauges or steps, or state the supports' compliance and take their gauges out", rows, unknowns, err)
+// tooFew says of a fit that failed for want of readings what was to be found.
+func tooFew(err error, rows int, unknowns []string) error {
+	mend := "mend: read more gauges or steps, or state the supports' compliance and take their gauges out"
+	switch {
+	case rows < len(unknowns):
+		return fmt.Errorf("%d increments cannot give %d unknowns (%s); %s", rows, len(unknowns), strings.Join(unknowns, ", "), mend)
+	case errors.Is(err, lsq.ErrRank):
+		return fmt.Errorf("the gauges cannot give all of %s: %w; %s", strings.Join(unknowns, ", "), err, mend)
 	}
 	return err
 }
