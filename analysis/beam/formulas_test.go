@@ -26,8 +26,11 @@ func closedForms() []closed {
 	cant := Beam{Length: l, EI: ei, S: inf, Supports: []Support{{At: 0, Clamp: true}}}
 	fixed := Beam{Length: l, EI: ei, S: inf, Supports: []Support{{At: 0, Clamp: true}, {At: l, Clamp: true}}}
 	propped := Beam{Length: l, EI: ei, S: inf, Supports: []Support{{At: 0}, {At: l, Clamp: true}}}
-	timo := ss
-	timo.S = refS
+	shears := func(b Beam) Beam {
+		b.S = refS
+		return b
+	}
+	timo := shears(ss)
 	b := l - a
 	return []closed{
 		{"SS centre", ss, []Load{Point(l/2, p)}, 0, l / 2, func(x float64) float64 { return p * x * (3*l*l - 4*x*x) / (48 * ei) }},
@@ -52,6 +55,15 @@ func closedForms() []closed {
 		{"SS at a with shear, left", timo, []Load{Point(a, p)}, 0, a, func(x float64) float64 {
 			return p*b*x*(l*l-b*b-x*x)/(6*l*ei) + p*b*x/l/refS
 		}},
+		{"SS two loads with shear, outer", timo, []Load{Point(a, p), Point(l-a, p)}, 0, a, func(x float64) float64 { return p*x*(3*l*a-3*a*a-x*x)/(6*ei) + p*x/refS }},
+		{"SS two loads with shear, between", timo, []Load{Point(a, p), Point(l-a, p)}, a, l - a, func(x float64) float64 { return p*a*(3*l*x-3*x*x-a*a)/(6*ei) + p*a/refS }},
+		{"two overhangs, centre with shear, tip line", shears(over), []Load{Point(l/2, p)}, -c, 0, func(x float64) float64 { return p * l * l * x / (16 * ei) }},
+		{"cantilever, load at a, before", cant, []Load{Point(a, p)}, 0, a, func(x float64) float64 { return p * x * x * (3*a - x) / (6 * ei) }},
+		{"cantilever, end load with shear", shears(cant), []Load{Point(l, p)}, 0, l, func(x float64) float64 { return p*x*x*(3*l-x)/(6*ei) + p*x/refS }},
+		{"cantilever, uniform with shear", shears(cant), []Load{Spread(0, l, q*l)}, 0, l, func(x float64) float64 {
+			return q*x*x*(x*x-4*l*x+6*l*l)/(24*ei) + q*x*(2*l-x)/(2*refS)
+		}},
+		{"fixed-fixed, centre with shear", shears(fixed), []Load{Point(l/2, p)}, 0, l / 2, func(x float64) float64 { return p*x*x*(3*l-4*x)/(48*ei) + p*x/(2*refS) }},
 		{"SS at a with shear, right", timo, []Load{Point(a, p)}, a, l, func(x float64) float64 {
 			return p*a*(l-x)*(2*l*x-x*x-a*a)/(6*l*ei) + p*a*(l-x)/l/refS
 		}},
@@ -111,6 +123,24 @@ func TestClosedFormExtremes(t *testing.T) {
 	} {
 		if math.Abs(x.got.Value-x.value) > 1e-9*math.Abs(x.value) || math.Abs(x.got.At-x.at) > 1e-6*l {
 			t.Errorf("%s: %.12g at %.9g mm, want %.12g at %.9g", x.name, x.got.Value, x.got.At, x.value, x.at)
+		}
+	}
+	// Two equal overhangs: loaded evenly all along, and at both tips.
+	both := Beam{From: -c, Length: l + 2*c, EI: ei, S: inf, Supports: ss.Supports}
+	even, tips := solve(both, Spread(-c, l+c, q*(l+2*c))), solve(both, Point(-c, p), Point(l+c, p))
+	for _, x := range []struct {
+		name      string
+		got, want float64
+	}{
+		{"even, middle", even.Deflection(l / 2), q * l * l * (5*l*l - 24*c*c) / (384 * ei)},
+		{"even, tip", even.Deflection(-c), q * c * (3*c*c*c + 6*c*c*l - l*l*l) / (24 * ei)},
+		{"tips, middle", tips.Deflection(l / 2), -p * c * l * l / (8 * ei)},
+		{"tips, tip", tips.Deflection(l + c), p * c * c * (2*c + 3*l) / (6 * ei)},
+		{"thirds, middle", solve(ss, Point(l/3, p), Point(2*l/3, p)).Deflection(l / 2), 23 * p * l * l * l / (648 * ei)},
+		{"thirds, load", solve(ss, Point(l/3, p), Point(2*l/3, p)).Deflection(l / 3), 5 * p * l * l * l / (162 * ei)},
+	} {
+		if math.Abs(x.got-x.want) > 1e-9*math.Abs(x.want) {
+			t.Errorf("%s: %.12g, want %.12g", x.name, x.got, x.want)
 		}
 	}
 	// beam_formulas.json: propped uniform, greatest at (1+sqrt33)L/16.
