@@ -19,6 +19,8 @@ func (w speaker) knocked() Answer {
 	from := "since yesterday " + w.d.Local(w.s.At).Format("15:04")
 	if w.s.Status.Closed {
 		from = "in the last day of the recording"
+	} else if t, known := w.began(); known && w.present().Sub(t) < 24*time.Hour {
+		from = "since the recording began"
 	}
 	o := w.s.Outlook
 	if o == nil {
@@ -64,4 +66,20 @@ func plural(n int, word string) string {
 		return word
 	}
 	return word + "s"
+}
+
+// began is the instant of the first reading in the bins; false while earlier ones
+// are still being read.
+func (w speaker) began() (t time.Time, known bool) {
+	if w.s.Curves == nil || w.s.Rebuilding {
+		return t, false
+	}
+	for i := range w.s.Curves.Series {
+		if bins := w.s.Curves.Series[i].Whole; len(bins) > 0 {
+			if at := time.Unix(0, bins[0].FirstTime); !known || at.Before(t) {
+				t, known = at, true
+			}
+		}
+	}
+	return t, known
 }

@@ -69,7 +69,7 @@ func TestTheQuestionsComeFirst(t *testing.T) {
 		"Is it alive?", "Not wholly: 2 of 4 instruments answer", "Was it knocked overnight?", "Yes: 1 disturbance since yesterday 07:14", "02:14: a gauge was knocked (mid), −0.012 mm",
 		"How much travel is left?", "6.888 mm at mid, 54 % of its travel", "18 Oct 2026", "What changed since yesterday?", "+0.031 mm at mid in 24 h", "4.312 mm at mid, uncorrected; 4.309 mm corrected",
 		"Is it speeding up?", "No: slowing down", "+0.031 mm in the last 24 h, +0.044 mm in the 24 h before, uncorrected", "Under load", "Step l1: pan 12.40 kg", "For 8 d",
-		"Gauges", "Plots", "Sag against log time", "sag, mm, uncorrected", "Forecast, and may we stop?", "more than two decades of time beyond the data", "Another 7 d", "The room", "20.3 °C",
+		"Plots", "Sag against log time", "sag, mm, uncorrected", "Forecast, and may we stop?", "more than two decades of time beyond the data", "Another 7 d", "Gauges", "The room", "20.3 °C",
 		"Alarms", "no safety device", "Last sync to disk", "4.0 s ago", "12 GB free", "kept by a time source", "Last mark", "step l1, pan 12.40 kg", "Begin a step", "Marks entered", "Withdrawn: another rig",
 	} {
 		i := strings.Index(page[at:], want)

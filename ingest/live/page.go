@@ -12,7 +12,7 @@ import (
 )
 
 // sections are the parts of a page that change, in their order on it.
-var sections = []string{"banner", "alive", "knocked", "travel", "yesterday", "speed", "load", "gauges", "plots", "outlook", "room", "alarms", "machine", "steps", "marks"}
+var sections = []string{"banner", "alive", "knocked", "travel", "yesterday", "speed", "load", "plots", "outlook", "gauges", "room", "alarms", "machine", "steps", "marks"}
 
 // page renders one run. What it rendered from a snapshot is kept while that is
 // the latest, so that any number of people cost what one costs.
