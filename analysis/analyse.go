@@ -151,6 +151,11 @@ func (r *Result) addCreep(h *history.History, f *steps.Findings, gravity, ei, s 
 		r.Warnings = append(r.Warnings, Warning{Code: "no-creep", Text: fmt.Sprintf("no creep law: %v", err)})
 		return nil
 	}
+	if odd := t.oddOnes(a.Best); len(odd) > 0 {
+		if freed, err := creep.Analyse(t.freed(odd), opt); err == nil && freed.Best != nil {
+			a = freed
+		}
+	}
 	own := instrument{h.Rig, f.Chord, true}
 	shared, err := commonOf(h, f, t, own, gravity, ei, s)
 	if err != nil {

@@ -24,15 +24,18 @@ func (t *creepTask) addSeries(h *history.History, f *steps.Findings, shares [][]
 		t.note("coarser-than-stated", "its readings come in steps of %.3g\u202fmm, coarser than the resolution stated of it, %.3g\u202fmm; so much less they tell", d, h.Rig.Gauges[t.gauge].Resolution.Value)
 	}
 	t.in.Series, t.gauges = []creep.Series{t.series(h, f, t.gauge, shares[t.gauge], pattern)}, []int{t.gauge}
+	t.share = []float64{1}
 	for g, gauge := range h.Rig.Gauges {
 		if g == t.gauge || !touches(gauge) || g >= len(f.Tracks) || g == f.Chord.Left || g == f.Chord.Right {
 			continue
 		}
-		if p, _ := patternShare(h.Rig, f, t.step, shares[g]); math.Abs(p) < leastShare*math.Abs(pattern) {
+		own, _ := patternShare(h.Rig, f, t.step, shares[g])
+		if math.Abs(own) < leastShare*math.Abs(pattern) {
 			continue
 		}
 		if s := thinned(t.series(h, f, g, shares[g], pattern), mostBeside); len(s.TimeH) >= leastBins {
 			t.in.Series, t.gauges = append(t.in.Series, s), append(t.gauges, g)
+			t.share = append(t.share, own/pattern)
 		}
 	}
 }
@@ -114,7 +117,7 @@ func (t *creepTask) series(h *history.History, f *steps.Findings, g int, share [
 // nobody can say whether the change was complete.
 func (t *creepTask) inDoubt(f *steps.Findings, at int64) bool {
 	for _, c := range f.Loads {
-		if u := int64(2 * f.Steps[c.Step].StartU * 1e9); u > 0 && at > c.Full-int64(c.RampS*1e9)-u && at < c.Full+u {
+		if u := int64(4 * f.Steps[c.Step].StartU * 1e9); u > 0 && at > c.Full-int64(c.RampS*1e9)-u && at < c.Full+u {
 			return true
 		}
 	}

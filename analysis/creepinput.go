@@ -17,6 +17,8 @@ type creepTask struct {
 	step   int   // index of the creep step
 	gauge  int   // index of the creep gauge
 	gauges []int // of each series, in the rig's list; the first is gauge
+	// share is each series' sag per newton over the creep gauge's.
+	share  []float64
 	origin int64 // instant of hour 0
 	full   int64 // full load of the creep step
 	end    int64 // its end
@@ -102,6 +104,9 @@ func creepTaskOf(h *history.History, f *steps.Findings, shares [][]float64) (*cr
 		return nil, false
 	}
 	t.in = creep.Input{FullH: t.hours(t.full), EndH: t.hours(t.end), LoadN: load, InitialH: h.Rig.Read.InitialAfter.Value / 3600}
+	if f.BaselineTo > f.BaselineFrom {
+		t.in.BaselineH = [2]float64{t.hours(f.BaselineFrom), t.hours(f.BaselineTo)}
+	}
 	if limit := h.Rig.Limits.Sag; limit != nil {
 		t.in.LimitMM = limit.Value
 	}

@@ -57,31 +57,17 @@ func (s *system) ambientColumns(a int, lnLag float64) lagColumns {
 	m := lagColumns{lnLag: lnLag, value: make([][]float64, len(s.parts)), slope: make([][]float64, len(s.parts))}
 	for i := range s.parts {
 		if rec.answers(i) && len(s.parts[i].TimeH) > 0 {
-			m.value[i], m.slope[i] = s.parts[i].seen(rec.TimeH, f), s.parts[i].seen(rec.TimeH, d)
+			m.value[i], m.slope[i] = s.parts[i].seen(rec.TimeH, f, s.in.BaselineH), s.parts[i].seen(rec.TimeH, d, s.in.BaselineH)
 		}
 	}
 	s.memory[a] = m
 	return m
 }
 
-// seen reads v at a series' bins, less its mean over the baseline.
-func (p *seriesPart) seen(timeH, v []float64) []float64 {
-	begin := p.Changes[0].AtH
-	out := make([]float64, len(p.TimeH))
-	var base, n float64
-	for r, t := range p.TimeH {
-		out[r] = interpolate(timeH, v, t)
-		if t < begin {
-			base, n = base+out[r], n+1
-		}
-	}
-	if n > 0 {
-		base /= n
-	} else {
-		base = interpolate(timeH, v, begin)
-	}
-	for r := range out {
-		out[r] -= base
-	}
+// seen reads v at a series' bins, less what it was when the zero was read.
+func (p *seriesPart) seen(timeH, v []float64, baseline [2]float64) []float64 {
+	at := func(t float64) float64 { return interpolate(timeH, v, t) }
+	out := p.column(at)
+	p.fromBaseline(out, baseline, at)
 	return out
 }

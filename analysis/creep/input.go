@@ -95,6 +95,9 @@ type Input struct {
 	// InitialH is the time after full load at which the initial sag is
 	// taken, h; 0: one minute.
 	InitialH float64
+	// BaselineH is when the zeros of the series were read, h; {0, 0}: in all bins
+	// before the first change.
+	BaselineH [2]float64
 	// LimitMM is the sag of the creep gauge that must not be reached; the watch
 	// for acceleration warns when it is a day away. 0: none.
 	LimitMM float64

@@ -141,7 +141,9 @@ func (s *system) layOffsets() {
 
 func (s *system) layDrifts() {
 	for _, d := range s.in.Drifts {
-		v := s.parts[d.Series].column(func(t float64) float64 { return max(t-d.AtH, 0) / 24 })
+		drift := func(t float64) float64 { return max(t-d.AtH, 0) / 24 }
+		v := s.parts[d.Series].column(drift)
+		s.parts[d.Series].fromBaseline(v, s.in.BaselineH, drift)
 		s.add(d.Series, nuisance{name: d.Name, unit: "mm/d", kind: kindDrift, prior: d.Prior, fixed: v})
 	}
 	for i := range s.parts {
@@ -149,6 +151,27 @@ func (s *system) layDrifts() {
 			s.add(i, nuisance{name: "zero of " + s.parts[i].Name, unit: "mm", kind: kindZero,
 				prior: &Knowledge{Value: 0, U: u}, fixed: s.parts[i].column(func(float64) float64 { return 1 })})
 		}
+	}
+}
+
+// fromBaseline takes off v, which is of at each bin, what it was when the
+// series' zero was read.
+func (p *seriesPart) fromBaseline(v []float64, baseline [2]float64, of func(tH float64) float64) {
+	var base, n float64
+	if baseline == [2]float64{} {
+		for i, t := range p.TimeH {
+			if t < p.Changes[0].AtH {
+				base, n = base+v[i], n+1
+			}
+		}
+	} else {
+		base, n = of((baseline[0]+baseline[1])/2), 1
+	}
+	if n == 0 {
+		base, n = of(p.Changes[0].AtH), 1
+	}
+	for i := range v {
+		v[i] -= base / n
 	}
 }
 
