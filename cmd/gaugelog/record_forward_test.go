@@ -84,7 +84,14 @@ func TestRecordForwards(t *testing.T) {
 	recording, stop := context.WithTimeout(t.Context(), 5*time.Second)
 	defer stop()
 	context.AfterFunc(recording, stopPlaying)
-	recordBy(t, recording, setClock{}, files, filepath.Join(under, "runs"), terminalOpener{live})
+	var scraped string
+	var scraping sync.WaitGroup
+	recordWith(t, recording, setClock{}, files, filepath.Join(under, "runs"), terminalOpener{live}, pageFlags{address: "127.0.0.1:0"}, func(b *beside) {
+		address := b.server.URL() + "metrics"
+		scraping.Go(func() { scraped = scrape(recording, address) })
+	})
+	scraping.Wait()
+	wantMetrics(t, scraped)
 	if err := <-played; err != nil {
 		t.Error(err)
 	}

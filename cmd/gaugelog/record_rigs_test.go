@@ -156,6 +156,12 @@ func recordFor(t *testing.T, ctx context.Context, files []string, into string, o
 // recordBy does so by a clock, nil for the machine's own.
 func recordBy(t *testing.T, ctx context.Context, clock ingest.Clock, files []string, into string, opener device.Opener) string {
 	t.Helper()
+	return recordWith(t, ctx, clock, files, into, opener, pageFlags{}, func(*beside) {})
+}
+
+// recordWith does so with a page, and hands over what runs beside the recording.
+func recordWith(t *testing.T, ctx context.Context, clock ingest.Clock, files []string, into string, opener device.Opener, page pageFlags, runs func(*beside)) string {
+	t.Helper()
 	cmd := recordCommand()
 	var out, errOut bytes.Buffer
 	cmd.SetOut(&out)
@@ -170,10 +176,11 @@ func recordBy(t *testing.T, ctx context.Context, clock ingest.Clock, files []str
 		t.Fatal(err)
 	}
 	logger := slog.New(slog.DiscardHandler)
-	beside, err := r.openBeside(pageFlags{}, logger, &errOut)
+	beside, err := r.openBeside(page, logger, &errOut)
 	if err != nil {
 		t.Fatal(err)
 	}
+	runs(beside)
 	if err := r.run(ctx, cmd, opener, logger, beside); err != nil {
 		t.Fatalf("%v\n%s", err, &errOut)
 	}

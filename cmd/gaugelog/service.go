@@ -150,35 +150,49 @@ func portsOf(rig *config.Rig) []string {
 	return slices.DeleteFunc(slices.Compact(all), func(p string) bool { return p == "" })
 }
 
-// printUdev prints a rule for each USB adapter the rig names.
+// printUdev prints a rule for each port of this machine that the rig names.
 func printUdev(cmd *cobra.Command, rig *config.Rig, f serviceFlags) error {
-	out := cmd.OutOrStdout()
-	fmt.Fprintf(out, `# /etc/udev/rules.d/70-gaugelog.rules for %s; then: udevadm control --reload && udevadm trigger
-# No program but the recorder opens these ports: modem and braille services probe new ones.
-`, plainTitle(rig))
-	rules := 0
+	var rules, notes []string
 	for _, p := range portsOf(rig) {
-		usb, ok := strings.CutPrefix(p, "usb:")
-		if !ok {
-			fmt.Fprintf(out, "# %s is no USB identity: no rule\n", p)
+		match, why := udevMatch(p)
+		if why != "" {
+			notes = append(notes, fmt.Sprintf("# %q %s: no rule", p, why))
 			continue
 		}
-		parts := strings.SplitN(usb, ":", 3)
-		if len(parts) < 2 || strings.ContainsAny(usb, "\"\n\\*?[") {
-			fmt.Fprintf(out, "# %q names no adapter: no rule\n", p)
-			continue
-		}
-		match := fmt.Sprintf(`SUBSYSTEM=="tty", ATTRS{idVendor}=="%s", ATTRS{idProduct}=="%s"`, parts[0], parts[1])
-		if len(parts) == 3 {
-			match += fmt.Sprintf(`, ATTRS{serial}=="%s"`, parts[2])
-		}
-		fmt.Fprintf(out, "%s, GROUP=\"%s\", MODE=\"0660\", ENV{ID_MM_DEVICE_IGNORE}=\"1\", ENV{ID_MM_PORT_IGNORE}=\"1\", ENV{BRLTTY_BRAILLE_DRIVER}=\"\"\n", match, f.group)
-		rules++
+		rules = append(rules, fmt.Sprintf(`SUBSYSTEM=="tty", %s, GROUP="%s", MODE="0660", ENV{ID_MM_DEVICE_IGNORE}="1", ENV{ID_MM_PORT_IGNORE}="1", ENV{BRLTTY_BRAILLE_DRIVER}=""`, match, f.group))
 	}
-	if rules == 0 {
-		return wrongf("name ports by their USB identity, as `gaugelog ports` prints it", "the rig names no USB adapter")
+	if len(rules) == 0 {
+		return wrongf("name ports as `gaugelog ports` prints them", "the rig names no serial port of this machine")
 	}
+	fmt.Fprintf(cmd.OutOrStdout(), `# /etc/udev/rules.d/70-gaugelog.rules for %s; then: udevadm control --reload && udevadm trigger
+# No program but the recorder opens these ports: modem and braille services probe new ones.
+%s
+`, plainTitle(rig), strings.Join(append(notes, rules...), "\n"))
 	return nil
+}
+
+// udevMatch is what a port is recognised by in a rule: a USB identity by its
+// adapter, a link below /dev/serial by the name that 60-serial.rules gave it, a
+// device by its own; or why it cannot be.
+func udevMatch(port string) (match, why string) {
+	usb, isUSB := strings.CutPrefix(port, "usb:")
+	parts := strings.SplitN(usb, ":", 3)
+	device, isDevice := strings.CutPrefix(port, "/dev/")
+	switch {
+	case strings.ContainsAny(port, "\"\n\\*?[|"):
+		return "", "has signs that mean something in a rule"
+	case isUSB && len(parts) == 3:
+		return fmt.Sprintf(`ATTRS{idVendor}=="%s", ATTRS{idProduct}=="%s", ATTRS{serial}=="%s"`, parts[0], parts[1], parts[2]), ""
+	case isUSB && len(parts) == 2:
+		return fmt.Sprintf(`ATTRS{idVendor}=="%s", ATTRS{idProduct}=="%s"`, parts[0], parts[1]), ""
+	case isUSB:
+		return "", "names no adapter"
+	case isDevice && strings.HasPrefix(device, "serial/"):
+		return fmt.Sprintf(`SYMLINK=="%s"`, device), ""
+	case isDevice && strings.HasPrefix(device, "tty"):
+		return fmt.Sprintf(`KERNEL=="%s"`, device), ""
+	}
+	return "", "is no serial port by its name"
 }
 
 // hardening is what both units have: the least rights. ProtectClock is left
