@@ -27,7 +27,41 @@ func stiffnessInput(h *history.History, f *steps.Findings, gravity float64) stif
 		}
 		in.Steps = append(in.Steps, obs)
 	}
+	in.StandU = standMovement(h.Rig, f)
 	return in
+}
+
+// standMovement is by how much (mm, one standard uncertainty) each stand may
+// have moved over one increment: what the reference gauges on it show beyond
+// their own errors, for nothing else moves them. A stand without a reference
+// gauge, or one that stood still as far as it can tell, is left out.
+func standMovement(rig *config.Rig, f *steps.Findings) map[string]float64 {
+	square, n := map[string]float64{}, map[string]float64{}
+	for i := f.Baseline + 1; i < len(f.Steps); i++ {
+		s := f.Steps[i]
+		if s.Response == nil || !*s.Response {
+			continue
+		}
+		for g, gauge := range rig.Gauges {
+			if gauge.Sees != "reference" || gauge.Stand == "" || g >= len(s.Gauges) || s.Gauges[g].Gross.Increment == nil {
+				continue
+			}
+			v := s.Gauges[g].Gross.Increment
+			own := v.U * v.U
+			if gauge.U != nil {
+				own += 2 * gauge.U.Value * gauge.U.Value
+			}
+			square[gauge.Stand] += v.MM*v.MM - own
+			n[gauge.Stand]++
+		}
+	}
+	out := map[string]float64{}
+	for stand, sum := range square {
+		if sum > 0 {
+			out[stand] = math.Sqrt(sum / n[stand])
+		}
+	}
+	return out
 }
 
 func increments(rig *config.Rig, s steps.Step) []stiffness.Obs {

@@ -3,6 +3,7 @@ package report
 import (
 	"cmp"
 	"fmt"
+	"math"
 	"strings"
 	"time"
 
@@ -66,7 +67,7 @@ func sectionWords(s config.Section) string {
 		for _, l := range d.list {
 			places = append(places, shown(l))
 		}
-		parts = append(parts, d.name+" "+strings.Join(places, ", "))
+		parts = append(parts, d.name+" "+strings.Join(places, ", ")+spread(d.list))
 	}
 	if s.SecondMoment != nil {
 		parts = append(parts, "second moment of area "+unitsystem.Typed(s.SecondMoment.Shown))
@@ -75,6 +76,18 @@ func sectionWords(s config.Section) string {
 		parts = append(parts, "each with u = "+shown(*s.U))
 	}
 	return strings.Join(parts, "; ")
+}
+
+// spread is the mean and the range of a dimension measured at several places.
+func spread(list []config.Length) string {
+	if len(list) < 2 {
+		return ""
+	}
+	least, most, sum := math.Inf(1), math.Inf(-1), 0.0
+	for _, l := range list {
+		least, most, sum = math.Min(least, l.Value), math.Max(most, l.Value), sum+l.Value
+	}
+	return fmt.Sprintf(" (mean %.3f\u202fmm, range %.3f\u202fmm)", sum/float64(len(list)), most-least)
 }
 
 func (b *builder) placesTable() Table {

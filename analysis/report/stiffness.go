@@ -39,7 +39,7 @@ func (b *builder) stiffness() Section {
 		s.Blocks = append(s.Blocks, Paragraph{"No stiffness was worked out: " + b.whyMissing("modulus") + "."})
 		return s
 	}
-	t.Says = "Intervals are U = k u for 95 % (JCGM 100). E divides EI by the second moment of area measured; the apparent modulus leaves shear in."
+	t.Says = "Intervals are U = k u for 95 % (JCGM 100). E divides EI by the second moment of area measured; the apparent modulus leaves shear in. Self-weight was on before the baseline and is in no sag."
 	s.Blocks = append(s.Blocks, t)
 	s.Blocks = append(s.Blocks, b.fitWords()...)
 	s.Blocks = append(s.Blocks, b.fitTables()...)

@@ -163,7 +163,7 @@ func gaugeCauses(in *Input, m *model, add adder) {
 	sort.Strings(stands)
 	for _, name := range stands {
 		for k, step := range in.Steps {
-			add("movement of stand "+name+" in step "+step.Name, "A", "mm", "the drift analysis", in.StandU[name], func(s *state, v float64) { s.nudge(name, k, v) })
+			add("movement of stand "+name+" in step "+step.Name, "A", "mm", "what its reference gauges show beyond their own errors", in.StandU[name], func(s *state, v float64) { s.nudge(name, k, v) })
 		}
 	}
 }

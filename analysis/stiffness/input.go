@@ -21,7 +21,7 @@ type Input struct {
 	// differenced from one step to the next.
 	Steps []StepObs
 	// StandU is the standard uncertainty in mm, by stand's name, of that
-	// stand's own movement over one increment (from the drift analysis).
+	// stand's own movement over one increment (from its reference gauges).
 	StandU map[string]float64
 }
 
