@@ -61,6 +61,14 @@ func TestCheckForetellsTheDemosUncertainty(t *testing.T) {
 	if d := c.Prediction.RelativeU/reached - 1; math.Abs(d) > 0.25 {
 		t.Errorf("foretold %.3g, reached %.3g: off by %.0f %%", c.Prediction.RelativeU, reached, 100*d)
 	}
+	last := r.Creep.After[len(r.Creep.After)-1].Coefficient
+	if last.U == nil {
+		t.Fatal("the creep coefficient has no uncertainty")
+	}
+	t.Logf("creep coefficient: foretold %.5f, reached %.5f", c.Prediction.CreepU, *last.U)
+	if d := c.Prediction.CreepU / *last.U - 1; math.Abs(d) > 0.25 {
+		t.Errorf("creep: foretold %.3g, reached %.3g: off by %.0f %%", c.Prediction.CreepU, *last.U, 100*d)
+	}
 	if len(c.Prediction.Dominating) != 3 || len(c.Prediction.CreepDominating) != 3 {
 		t.Errorf("dominating inputs: %d of E, %d of creep, want 3 each", len(c.Prediction.Dominating), len(c.Prediction.CreepDominating))
 	}
