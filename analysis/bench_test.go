@@ -1,30 +1,49 @@
 package analysis
 
 import (
+	"fmt"
 	"testing"
 
 	"gaugelog/analysis/history"
+	"gaugelog/config"
 	"gaugelog/simulators"
 )
 
 // yearLong is the demonstration's rig under its last load for a year, eight
 // gauges read every second around changes of load and every five minutes
-// between.
-func yearLong(b *testing.B) *history.History {
+// between; with changes, two loads take turns so often.
+func yearLong(b *testing.B, changes int) *history.History {
 	b.Helper()
+	const year = 365 * 86400
 	d := simulators.DemoRig()
-	for i := range d.Rig.Plan {
-		if d.Rig.Plan[i].Step == "s4" {
-			d.Rig.Plan[i].Hold.Value = 365 * 86400
+	plan, pace := d.Rig.Plan[:0:0], d.Truth.Pace[:0:0]
+	every := func(after string, at, s float64) {
+		pace = append(pace, simulators.TruthPace{After: after, At: simulators.Seconds(at), Every: simulators.Seconds(s)})
+	}
+	every("", 0, 1)
+	hold := year / float64(changes+1)
+	var lighter []config.SetWeight
+	for _, p := range d.Rig.Plan {
+		if p.Step == "s2" {
+			lighter = p.Set
+		}
+		if p.Step != "s4" {
+			plan = append(plan, p)
+			continue
+		}
+		heavier := p.Set
+		for k := range changes + 1 {
+			if p.Hold.Value = hold; k > 0 {
+				p.Step, p.Set = fmt.Sprintf("m%d", k), [][]config.SetWeight{heavier, lighter}[k%2]
+			}
+			plan = append(plan, p)
+			every(p.Step, 0, 1)
+			every(p.Step, 3600, 300)
+			every(p.Step, hold-300, 1)
 		}
 	}
-	for i := range d.Truth.Pace {
-		if p := &d.Truth.Pace[i]; p.Every > 1 {
-			p.Every = 300
-		} else if p.After == "s4" {
-			p.At = 365*86400 - 300
-		}
-	}
+	every("bare", 3600, 300)
+	d.Rig.Plan, d.Truth.Pace = plan, pace
 	sim, err := simulators.New(simulators.Options{Rig: d.Rig, Truth: d.Truth, Seed: 1})
 	if err != nil {
 		b.Fatal(err)
@@ -57,7 +76,16 @@ func yearLong(b *testing.B) *history.History {
 
 // BenchmarkEvaluateYear is everything `analyse` does after reading back.
 func BenchmarkEvaluateYear(b *testing.B) {
-	h := yearLong(b)
+	benchmarkYear(b, yearLong(b, 0))
+}
+
+// BenchmarkEvaluateYearOfChanges is the same of a year with twelve changes of
+// load.
+func BenchmarkEvaluateYearOfChanges(b *testing.B) {
+	benchmarkYear(b, yearLong(b, 12))
+}
+
+func benchmarkYear(b *testing.B, h *history.History) {
 	for b.Loop() {
 		r, err := Evaluate(h, Options{})
 		if err != nil {

@@ -210,17 +210,23 @@ func slope(x, y []float64) (float64, bool) {
 func watchScale(win, all []window, w float64, phases int, course *course, l Limits, out *Acceleration) {
 	for i := 3; i < len(win); i++ {
 		end := win[i].endH
+		a, b := win[i-1].rate, win[i].rate
+		least, leastAt := course.least(win[i-2].endH)
+		if b < cautionRatio*max(least, 0) { // far the most, and quickly told
+			continue
+		}
 		// What the sag did until then tells what it would go on to do: judged
 		// windows are no part of it.
 		steady, ok := course.until(min(end/beforeEnd, win[i-2].endH))
 		if !ok {
 			continue
 		}
-		u := max(scatter(all, steady, w, phases), oneStep*l.ResolutionMM/w)
-		a, b := win[i-1].rate, win[i].rate
-		least, leastAt := course.least(win[i-2].endH)
 		base := max(steady.rate(win[i-2].endH-w, win[i-2].endH), least, 0)
-		if b-base < standOut(end)*u || a-base < begun*u || b < cautionRatio*base {
+		if b < cautionRatio*base {
+			continue
+		}
+		u := max(scatter(all, steady, w, phases), oneStep*l.ResolutionMM/w)
+		if b-base < standOut(end)*u || a-base < begun*u {
 			continue
 		}
 		earliest(&out.CautionH, end)

@@ -307,8 +307,10 @@ func (s *activeSet) passiveSolution(names []string) ([]float64, error) {
 		return nil, &RankError{Columns: cols, Names: pick(names, cols), Rank: m, Of: len(cols)}
 	}
 	f := newFactor(columns(s.a, cols))
-	if _, err := f.check(pick(names, cols)); err != nil {
-		return nil, err
+	if !f.plainlyRegular() {
+		if _, err := f.check(pick(names, cols)); err != nil {
+			return nil, err
+		}
 	}
 	y := f.solve(s.b, false)
 	for k, c := range cols {

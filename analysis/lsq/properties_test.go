@@ -388,3 +388,31 @@ func TestDistributions(t *testing.T) {
 		t.Errorf("p %g", p)
 	}
 }
+
+// Where the cheap bound says full rank, the singular values say it too.
+func TestPlainlyRegularIsRegular(t *testing.T) {
+	rapid.Check(t, func(t *rapid.T) {
+		n := rapid.IntRange(1, 6).Draw(t, "n")
+		m := n + rapid.IntRange(0, 6).Draw(t, "more")
+		a := mat.NewDense(m, n, nil)
+		for i := range m {
+			for j := range n {
+				a.Set(i, j, rapid.Float64Range(-1, 1).Draw(t, "a"))
+			}
+		}
+		if n > 1 { // nearly the sum of the others, or exactly
+			small := math.Pow(10, rapid.Float64Range(-17, 0).Draw(t, "apart"))
+			for i := range m {
+				a.Set(i, n-1, a.At(i, 0)+small*a.At(i, n-1))
+			}
+		}
+		f := newFactor(a)
+		cond, err := f.check(nil)
+		if f.plainlyRegular() && err != nil {
+			t.Fatalf("said to be regular: %v", err)
+		}
+		if err == nil && cond < 1e6 && !f.plainlyRegular() {
+			t.Fatalf("condition %g was not seen to be regular", cond)
+		}
+	})
+}

@@ -6,6 +6,7 @@ import (
 	"math"
 	"strings"
 
+	"gonum.org/v1/gonum/blas"
 	"gonum.org/v1/gonum/mat"
 )
 
@@ -50,6 +51,36 @@ func (f *factor) check(names []string) (float64, error) {
 		return values[0] / values[f.n-1], nil
 	}
 	return math.MaxFloat64, &RankError{Columns: involved(v, rank), Names: pick(names, involved(v, rank)), Rank: rank, Of: f.n}
+}
+
+// plainlyRegular reports, by a bound that costs a fraction of the singular
+// values, that check would find full rank: the least of them is no less than
+// one over the Frobenius norm of R's inverse, the greatest, columns being of
+// unit length, no more than the square root of their number. False: check.
+func (f *factor) plainlyRegular() bool {
+	const certain = 1e-10 // far above where rounding could mislead
+	limit := math.Sqrt(float64(f.n)) * max(certain, 100*float64(max(f.m, f.n))*0x1p-52)
+	length := make([]float64, f.n)
+	for j := range f.n {
+		for i := 0; i <= j; i++ {
+			length[j] = math.Hypot(length[j], f.qr.Data[i*f.qr.Stride+j])
+		}
+		if !(length[j] > 0) || f.qr.Data[j*f.qr.Stride+j] == 0 {
+			return false
+		}
+	}
+	var norm2 float64
+	x := make([]float64, f.n)
+	for j := range f.n {
+		clear(x)
+		x[j] = 1
+		f.solveR(blas.NoTrans, x)
+		for i := 0; i <= j; i++ {
+			v := x[i] * length[i]
+			norm2 += v * v
+		}
+	}
+	return norm2*limit*limit < 1
 }
 
 // involved lists the unknowns with a part in the null space.
