@@ -22,5 +22,12 @@ func Words(units string, q *analysis.Q) string {
 	return b.with(q)
 }
 
+// Rounded shows a value and its standard uncertainty, in one unit, with two
+// digits of the latter.
+func Rounded(value, u float64) (shown, shownU string) {
+	d := decimalsFor(u)
+	return fixed(value, d), fixed(u, d)
+}
+
 // Digits is the number of decimals that shows an uncertainty with two digits.
 func Digits(u float64) int { return max(0, decimalsFor(u)) }

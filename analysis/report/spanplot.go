@@ -34,7 +34,7 @@ func DrawSpans(w io.Writer, s SpanPlot) error {
 	for _, x := range s.X {
 		last = max(last, x)
 	}
-	addLine(p, plotter.XYs{{X: 0, Y: s.Intercept}, {X: last, Y: s.Intercept + s.Slope*last}}, lineStyle(0), "1/E + (h/L)² / (κ G)")
+	addLine(p, plotter.XYs{{X: 0, Y: s.Intercept}, {X: last, Y: s.Intercept + s.Slope*last}}, lineStyle(0), "1/E + (h/L)²/κG")
 	points, err := plotter.NewScatter(s)
 	if err != nil {
 		return err

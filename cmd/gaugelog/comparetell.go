@@ -4,6 +4,7 @@ import (
 	"bytes"
 	"fmt"
 	"io"
+	"math"
 	"os"
 	"strings"
 	"text/tabwriter"
@@ -68,9 +69,16 @@ func (t teller) figure(f compare.Figure) error {
 		return err
 	}
 	if s := f.Sample; s != nil {
-		d := report.Digits(s.Half * factor)
-		fmt.Fprintf(t.w, "  sample of %d: mean %.*f, standard deviation %.2g (%.1f %%), median %.*f, from %.*f to %.*f; the mean lies within ±%.2g (95 %%)\n",
-			s.N, d, s.Mean*factor, s.SD*factor, 100*s.CV, d, s.Median*factor, d, s.Least*factor, d, s.Most*factor, s.Half*factor)
+		// Equal values have no scatter to round by.
+		by := max(s.Half, 1e-5*math.Abs(s.Mean)) * factor
+		_, half := report.Rounded(0, s.Half*factor)
+		shown := func(v float64) string {
+			text, _ := report.Rounded(v*factor, by)
+			return text
+		}
+		_, sd := report.Rounded(0, s.SD*factor)
+		fmt.Fprintf(t.w, "  sample of %d: mean %s, standard deviation %s (%.1f %%), median %s, from %s to %s; the mean lies within ±%s (95 %%)\n",
+			s.N, shown(s.Mean), sd, 100*s.CV, shown(s.Median), shown(s.Least), shown(s.Most), half)
 	}
 	return nil
 }
@@ -84,7 +92,8 @@ func differenceWords(d compare.Difference, factor float64) string {
 		words = "beyond 2 u"
 	}
 	if len(d.Shared) > 0 {
-		words += fmt.Sprintf("; u would be %.2g without what both share: %s", *d.UIndependent*factor, strings.Join(d.Shared, ", "))
+		_, alone := report.Rounded(0, *d.UIndependent*factor)
+		words += fmt.Sprintf("; u would be %s without what both share: %s", alone, strings.Join(d.Shared, ", "))
 	}
 	return words
 }
@@ -97,8 +106,8 @@ func valueWords(q *analysis.Q, factor float64) string {
 	case q.U == nil:
 		return fmt.Sprintf("%.4g", q.Value*factor)
 	}
-	digits := report.Digits(*q.U * factor)
-	return fmt.Sprintf("%.*f, u %.*f", digits, q.Value*factor, digits, *q.U*factor)
+	value, u := report.Rounded(q.Value*factor, *q.U*factor)
+	return value + ", u " + u
 }
 
 // flexible is the unit in which 1/E is shown, and its factor from 1/MPa.
