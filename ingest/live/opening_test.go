@@ -13,6 +13,7 @@ import (
 	"slices"
 	"strings"
 	"sync"
+	"syscall"
 	"testing"
 	"time"
 
@@ -187,16 +188,26 @@ func waitWhole(b *testing.B, d *desk.Desk) {
 	}
 }
 
+// processor is the processor time that this process has used, s.
+func processor(b *testing.B) float64 {
+	b.Helper()
+	var u syscall.Rusage
+	if err := syscall.Getrusage(syscall.RUSAGE_SELF, &u); err != nil {
+		b.Skip("processor time cannot be told here")
+	}
+	return time.Duration(u.Utime.Nano() + u.Stime.Nano()).Seconds()
+}
+
 // BenchmarkOpening opens the page of a long run, again and again. Beside the time
 // of an opening it tells, from one start without summaries and one with them:
-// how long it takes until everything is on the page, the slowest opening while
+// how long it takes until everything is on the page and how much processor time, the slowest opening while
 // the run is still being read, and the memory then.
 func BenchmarkOpening(b *testing.B) {
 	run, rig := longRun(b, *readings)
 	if err := os.RemoveAll(filepath.Join(run, "report")); err != nil {
 		b.Fatal(err)
 	}
-	began := time.Now()
+	began, used := time.Now(), processor(b)
 	d, s, closing := opened(b, run, rig)
 	var during []time.Duration
 	for !d.Snapshot().Whole {
@@ -204,23 +215,27 @@ func BenchmarkOpening(b *testing.B) {
 		during = append(during, took)
 		time.Sleep(20 * time.Millisecond)
 	}
-	anew := time.Since(began)
+	anew, anewUsed := time.Since(began), processor(b)-used
 	closing()
-	began = time.Now()
+	began, used = time.Now(), processor(b)
 	d, s, closing = opened(b, run, rig)
 	defer closing()
 	waitWhole(b, d)
-	again := time.Since(began)
+	again, againUsed := time.Since(began), processor(b)-used
 	runtime.GC()
 	var memory runtime.MemStats
 	runtime.ReadMemStats(&memory)
 	size := 0
+	used = processor(b)
 	var all []time.Duration
 	for b.Loop() {
 		var took time.Duration
 		took, size = get(b, s)
 		all = append(all, took)
 	}
+	b.ReportMetric(1000*(processor(b)-used)/float64(len(all)), "cpu-ms/opening")
+	b.ReportMetric(anewUsed, "cpu-s-anew")
+	b.ReportMetric(againUsed, "cpu-s-again")
 	slices.Sort(all)
 	b.ReportMetric(float64(all[len(all)-1].Microseconds())/1000, "ms-slowest")
 	b.ReportMetric(anew.Seconds(), "s-anew")
