@@ -274,3 +274,13 @@ func TestUnitsAreNotMixed(t *testing.T) {
 		t.Errorf("only %d texts were looked at", found)
 	}
 }
+
+// The same run gives the same bytes in every format.
+func TestSameBytesInEveryFormat(t *testing.T) {
+	for _, format := range Formats {
+		first := render(t, Build(demoResult(t), demoOptions(t)), format)
+		if again := render(t, Build(demoResult(t), demoOptions(t)), format); !bytes.Equal(first, again) {
+			t.Errorf("the same result gave other bytes as %s", format)
+		}
+	}
+}

@@ -87,14 +87,20 @@ func (b *builder) photo(path string) (Picture, error) {
 	if err != nil {
 		return p, errors.New("it is damaged")
 	}
-	if len(p.Data) > keepBytes {
-		return smaller(whole)
+	// A camera that was held sideways says so beside the picture, where neither
+	// the PDF nor what is scaled here would know of it.
+	turn := 1
+	if p.Type == "image/jpeg" {
+		turn = orientation(p.Data)
+	}
+	if len(p.Data) > keepBytes || turn != 1 {
+		return smaller(whole, turn)
 	}
 	return p, nil
 }
 
-// smaller scales a picture to scaledSide.
-func smaller(whole image.Image) (Picture, error) {
+// smaller scales a picture to scaledSide, and turns it upright.
+func smaller(whole image.Image, turn int) (Picture, error) {
 	w, h := whole.Bounds().Dx(), whole.Bounds().Dy()
 	if k := float64(scaledSide) / float64(max(w, h)); k < 1 {
 		w, h = max(1, int(float64(w)*k)), max(1, int(float64(h)*k))
@@ -102,11 +108,12 @@ func smaller(whole image.Image) (Picture, error) {
 	to := image.NewRGBA(image.Rect(0, 0, w, h))
 	draw.Draw(to, to.Bounds(), image.White, image.Point{}, draw.Src)
 	scaler.ApproxBiLinear.Scale(to, to.Bounds(), whole, whole.Bounds(), draw.Over, nil)
+	final := upright(to, turn)
 	var buf bytes.Buffer
-	if err := jpeg.Encode(&buf, to, &jpeg.Options{Quality: 85}); err != nil {
+	if err := jpeg.Encode(&buf, final, &jpeg.Options{Quality: 85}); err != nil {
 		return Picture{}, err
 	}
-	return Picture{Type: "image/jpeg", Data: buf.Bytes(), Width: w, Height: h}, nil
+	return Picture{Type: "image/jpeg", Data: buf.Bytes(), Width: final.Bounds().Dx(), Height: final.Bounds().Dy()}, nil
 }
 
 // plainPNG turns any PNG into the plain kind that the PDF writer takes: eight
