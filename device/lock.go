@@ -48,7 +48,14 @@ func lockName(dir, path string) string {
 // lockPort takes the lock, or says who holds it.
 func lockPort(dir, path string) (*portLock, error) {
 	name := lockName(dir, path)
-	f := flock.New(name, flock.SetPermissions(0o666))
+	// A lock that another user left is opened as it is: it may not be written,
+	// and in a folder like /run/lock Linux lets nobody open another's file with
+	// leave to make it (protected_regular).
+	flag := os.O_RDONLY
+	if _, err := os.Stat(name); err != nil {
+		flag = os.O_CREATE | os.O_RDWR
+	}
+	f := flock.New(name, flock.SetFlag(flag), flock.SetPermissions(0o666))
 	ok, err := f.TryLock()
 	if err != nil {
 		return nil, fmt.Errorf("locking %s: %w", path, err)
@@ -56,12 +63,20 @@ func lockPort(dir, path string) (*portLock, error) {
 	if !ok {
 		return nil, fmt.Errorf("%s: %w: %s", path, ErrHeld, holderOf(name))
 	}
-	text := fmt.Sprintf("%d %s\n", os.Getpid(), filepath.Base(os.Args[0]))
-	if err := os.WriteFile(name, []byte(text), 0o666); err != nil {
-		f.Close()
-		return nil, fmt.Errorf("locking %s: %w", path, err)
-	}
+	signLock(name)
 	return &portLock{f}, nil
+}
+
+// signLock leaves the holder's name in the lock, and the lock to be signed by
+// whoever comes next. Where another's may not be written nobody is named.
+func signLock(name string) {
+	_ = os.Chmod(name, 0o666)
+	f, err := os.OpenFile(name, os.O_WRONLY|os.O_TRUNC, 0)
+	if err != nil {
+		return
+	}
+	fmt.Fprintf(f, "%d %s\n", os.Getpid(), filepath.Base(os.Args[0]))
+	f.Close()
 }
 
 func holderOf(name string) string {

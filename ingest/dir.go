@@ -57,7 +57,9 @@ type DirOptions struct {
 // OpenDir opens the run folder at path.
 func OpenDir(path string, o DirOptions) (*Dir, error) {
 	if o.Create {
-		if err := os.MkdirAll(path, 0o755); err != nil {
+		// As open to the group as the umask lets it be: a service sets that so that
+		// technicians can enter marks.
+		if err := os.MkdirAll(path, 0o775); err != nil {
 			return nil, err
 		}
 	}
@@ -131,6 +133,9 @@ func (d *Dir) AppendMark(m Mark, clock Clock) (string, error) {
 	defer cancel()
 	lock := flock.New(filepath.Join(d.path, marksLockName), flock.SetPermissions(0o644))
 	got, err := lock.TryLockContext(ctx, 20*time.Millisecond)
+	if err != nil && !errors.Is(err, context.DeadlineExceeded) {
+		return "", errors.Join(fmt.Errorf("locking the marks of %s: %w", d.path, err), lock.Close())
+	}
 	if err != nil || !got {
 		return "", errors.Join(fmt.Errorf("another mark has been holding the lock for %s: %w", marksLockWait, err), lock.Close())
 	}

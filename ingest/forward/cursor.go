@@ -90,7 +90,7 @@ func loadCursor(root *os.Root, name, run string) (c *cursor, again string, err e
 // save puts the cursor on disk in one step, and keeps the copy before.
 func (c *cursor) save(root *os.Root, name string) error {
 	tmp := name + ".partial"
-	f, err := root.OpenFile(tmp, os.O_WRONLY|os.O_CREATE|os.O_TRUNC, 0o644)
+	f, err := root.OpenFile(tmp, os.O_WRONLY|os.O_CREATE|os.O_TRUNC, 0o664)
 	if err != nil {
 		return err
 	}

@@ -144,14 +144,14 @@ func Open(o Options) (*Forwarder, error) {
 
 // openState takes the lock and reads the cursor.
 func (f *Forwarder) openState(run string) error {
-	if err := os.MkdirAll(f.o.State, 0o755); err != nil {
+	if err := os.MkdirAll(f.o.State, 0o775); err != nil {
 		return err
 	}
 	var err error
 	if f.state, err = os.OpenRoot(f.o.State); err != nil {
 		return err
 	}
-	f.lock = flock.New(filepath.Join(f.o.State, f.name+".lock"), flock.SetPermissions(0o644))
+	f.lock = flock.New(filepath.Join(f.o.State, f.name+".lock"), flock.SetPermissions(0o664))
 	got, err := f.lock.TryLock()
 	if err != nil {
 		return err
