@@ -48,3 +48,43 @@ func TestSoundCampaign(t *testing.T) {
 		t.Errorf("%d sound tests of 500 raised a warning, want at most 2", len(sound))
 	}
 }
+
+// The first tests of each campaign, for a check of every change: the bands are
+// those asked, wider by three binomial standard deviations of so few tests. Run
+// with
+//
+//	go test -tags campaign -run Fewer -v -timeout 15m ./analysis/creep
+func TestFewerCoverage(t *testing.T) {
+	t.Parallel()
+	c := coverage(t, 30000, 400, true)
+	c.log(t)
+	for name, hit := range map[string]int{"n": c.n, "sag": c.sag} {
+		if hit < heldLeast(0.93, c.tests) || hit > c.tests-heldLeast(0.03, c.tests) {
+			t.Errorf("95 %% intervals of %s hold the truth in %d of %d", name, hit, c.tests)
+		}
+	}
+	if c.averaged < heldLeast(0.93, c.tests) || c.widthRatio > 2 || c.failed > 0 {
+		t.Errorf("%+v", c)
+	}
+}
+
+// TestFewerFailures is its part of the failures.
+func TestFewerFailures(t *testing.T) {
+	t.Parallel()
+	w := failures(t, 80000, 250)
+	t.Logf("clear-area in time in %d of %d, median lead %.1f h; missed: %v", w.inTime, w.tests, w.medianLead, w.missed)
+	if w.inTime < heldLeast(0.99, w.tests) {
+		t.Errorf("clear-area in time in %d of %d", w.inTime, w.tests)
+	}
+}
+
+// TestFewerSound is its part of the sound tests.
+func TestFewerSound(t *testing.T) {
+	t.Parallel()
+	const tests = 200
+	sound := soundTests(t, 80000, tests)
+	t.Logf("%d of %d sound tests raised a warning: %v", len(sound), tests, sound)
+	if tests-len(sound) < heldLeast(1-0.004, tests) {
+		t.Errorf("%d sound tests of %d raised a warning", len(sound), tests)
+	}
+}

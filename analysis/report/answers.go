@@ -136,8 +136,11 @@ func (b *builder) answerForecast(add func(q, a, s string)) {
 		}
 		factor, unit := b.u.convert("mm")
 		d := decimalsFor((*f.Hi95 - *f.Lo95) * factor / 4)
-		add(q, b.short(f.Sag), fmt.Sprintf("%s to %s %s for 95 %%; %s decades beyond the data: %s",
-			fixed(*f.Lo95*factor, d), fixed(*f.Hi95*factor, d), unit, fixed(f.Decades, 2), forecastWords(f.Label)))
+		how := "within the time read"
+		if f.Decades > 0 {
+			how = fixed(f.Decades, 2) + " decades beyond the data: " + forecastWords(f.Label)
+		}
+		add(q, b.short(f.Sag), fmt.Sprintf("%s to %s %s for 95 %%; %s", fixed(*f.Lo95*factor, d), fixed(*f.Hi95*factor, d), unit, how))
 	}
 	b.answerStop(add)
 }
