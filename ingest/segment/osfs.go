@@ -91,7 +91,7 @@ func (o osFS) ReadDir(dir string) ([]fs.DirEntry, error) {
 	return entries, nil
 }
 
-func (o osFS) MkdirAll(dir string) error { return o.root.MkdirAll(filepath.FromSlash(dir), 0o755) }
+func (o osFS) MkdirAll(dir string) error { return o.root.MkdirAll(filepath.FromSlash(dir), 0o775) }
 
 func (o osFS) SyncDir(dir string) error {
 	if o.opts.SyncOnCloseOnly {
