@@ -196,6 +196,9 @@ func (b *builder) surroundings() Section {
 	if f, ok := b.overlayFigure(); ok {
 		s.Blocks = append(s.Blocks, f)
 	}
+	if f, ok := b.driftFigure(); ok {
+		s.Blocks = append(s.Blocks, f)
+	}
 	t := Table{Caption: "Answers to the surroundings and drift", Columns: []Column{{Name: "Gauge", Text: true}, {Name: "What", Text: true}, {Name: "Value", Text: true}, {Name: "Lag", Text: true}}}
 	for _, d := range b.r.Drift.Temperature {
 		t.Rows = append(t.Rows, []string{d.Gauge, "temperature", b.with(&d.Coefficient), b.lag(d)})
