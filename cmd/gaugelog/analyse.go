@@ -93,8 +93,9 @@ func (how *howToAnalyse) flags(c *cobra.Command) {
 	c.Flags().BoolVar(&how.thorough, "thorough", false, "check the modulus's uncertainty by 200 000 draws of all inputs (JCGM 101)")
 }
 
-// draws is the check by draws, nil where it was not asked for.
-func (how howToAnalyse) draws(ctx context.Context) func(stiffness.Input) (*stiffness.MonteCarlo, error) {
+// draws is the check by draws, nil where it was not asked for; begin is called
+// before its bar is drawn.
+func (how howToAnalyse) draws(ctx context.Context, begin func()) func(stiffness.Input) (*stiffness.MonteCarlo, error) {
 	if !how.thorough {
 		return nil
 	}
@@ -102,6 +103,7 @@ func (how howToAnalyse) draws(ctx context.Context) func(stiffness.Input) (*stiff
 		var bar *progress
 		mc, err := stiffness.Thorough(ctx, in, func(done, total int) {
 			if bar == nil {
+				begin()
 				bar = newProgress(how.progress, "drawing all inputs", int64(total))
 			}
 			bar.at(int64(done))
@@ -114,8 +116,8 @@ func (how howToAnalyse) draws(ctx context.Context) func(stiffness.Input) (*stiff
 }
 
 // analyseRun reads and evaluates a run folder, and returns the rig as amended.
-func analyseRun(ctx context.Context, dir string) (*analysis.Result, *config.Rig, error) {
-	h, r, err := evaluateRun(ctx, dir, howToAnalyse{})
+func analyseRun(ctx context.Context, dir string, progress io.Writer) (*analysis.Result, *config.Rig, error) {
+	h, r, err := evaluateRun(ctx, dir, howToAnalyse{progress: progress})
 	if err != nil {
 		return nil, nil, err
 	}
@@ -124,12 +126,14 @@ func analyseRun(ctx context.Context, dir string) (*analysis.Result, *config.Rig,
 
 // evaluateRun reads and evaluates a run folder.
 func evaluateRun(ctx context.Context, dir string, how howToAnalyse) (*history.History, *analysis.Result, error) {
+	stop := working(how.progress, "evaluating "+dir, -1, nil)
+	defer stop()
 	h, err := history.Load(dir)
 	if err != nil {
 		return nil, nil, wrongInput(err)
 	}
 	r, err := analysis.Evaluate(h, analysis.Options{
-		Program: version(), Beyond: how.beyond, Thorough: how.draws(ctx), Rules: filepath.Join(dir, analysis.RulesFolder),
+		Program: version(), Beyond: how.beyond, Thorough: how.draws(ctx, stop), Rules: filepath.Join(dir, analysis.RulesFolder),
 	})
 	if ctx.Err() != nil {
 		return nil, nil, ctx.Err()

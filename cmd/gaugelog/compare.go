@@ -4,6 +4,7 @@ import (
 	"context"
 	"errors"
 	"fmt"
+	"io"
 	"slices"
 
 	"github.com/spf13/cobra"
@@ -41,7 +42,7 @@ the line and its points.`,
 			if !slices.Contains(report.Units, units) {
 				return wrongf("give --units si or --units us", "units %q are not known", units)
 			}
-			subjects, err := subjectsOf(cmd.Context(), args)
+			subjects, err := subjectsOf(cmd.Context(), args, cmd.ErrOrStderr())
 			if err != nil {
 				return err
 			}
@@ -76,7 +77,7 @@ the line and its points.`,
 }
 
 // subjectsOf analyses the runs; every one that cannot be is told of.
-func subjectsOf(ctx context.Context, runs []string) ([]compare.Subject, error) {
+func subjectsOf(ctx context.Context, runs []string, progress io.Writer) ([]compare.Subject, error) {
 	var out []compare.Subject
 	var errs []error
 	for _, run := range runs {
@@ -86,7 +87,7 @@ func subjectsOf(ctx context.Context, runs []string) ([]compare.Subject, error) {
 		}
 		var r *analysis.Result
 		var rig *config.Rig
-		r, rig, err := analyseRun(ctx, run)
+		r, rig, err := analyseRun(ctx, run, progress)
 		if err != nil {
 			errs = append(errs, fmt.Errorf("%s: %w", run, err))
 			continue

@@ -110,7 +110,9 @@ func runImport(cmd *cobra.Command, rigFile, table string, f importFlags) error {
 		defer marks.Close()
 		o.Marks, o.MarksFile = marks, f.marks
 	}
+	stop := working(cmd.ErrOrStderr(), "importing "+table, -1, nil)
 	s, err := importer.Import(f.into, o)
+	stop()
 	if err != nil {
 		return err
 	}
