@@ -15,6 +15,14 @@
 //   - a token is sent and never shown;
 //   - memory is bounded by one stretch of the folder, some megabytes.
 //
+// What a server said 204 to is taken to be kept. One that writes to disk some
+// seconds later, such as VictoriaMetrics, loses these when it is killed, and
+// nobody who forwards can know: sending again, without RUN/forward, makes it
+// whole (TestSurviveForwardVictoria).
+//
+// Behind the first readings goes one point "rig brief=...", with what tells how
+// the run stands of the rig file, for who looks at all rigs on the server.
+//
 // It only reads the run's files and keeps its own in RUN/forward, so that
 // nothing it meets can reach the recording. Precision is always nanoseconds.
 package forward
