@@ -3,7 +3,6 @@ package steps
 import (
 	"math"
 	"math/rand/v2"
-	"testing"
 	"time"
 
 	"gaugelog/analysis/history"
@@ -173,8 +172,14 @@ func (w *world) rig() *config.Rig {
 	return r
 }
 
+// failer is a test, of this package's or of a property.
+type failer interface {
+	Helper()
+	Fatal(...any)
+}
+
 // history makes the run as recorded.
-func (w *world) history(t *testing.T) *history.History {
+func (w *world) history(t failer) *history.History {
 	t.Helper()
 	rig := w.rig()
 	rng := rand.New(rand.NewPCG(w.seed, 77))
@@ -261,7 +266,7 @@ func (w *world) marked(rig *config.Rig) []history.Mark {
 	return marks
 }
 
-func (w *world) find(t *testing.T) *Findings {
+func (w *world) find(t failer) *Findings {
 	t.Helper()
 	opt := Options{}
 	if !w.noInfluence {
