@@ -46,7 +46,7 @@ func (m *model) linear(st *state, theta []float64) ([]float64, *mat.Dense, error
 			f[r] += gamma * m.see(st, o.gauge, shear[o.step], none)
 		}
 		x.Set(r, 0, b)
-		f[r] += st.moved(m.rig.Gauges[o.gauge].Stand, o)
+		f[r] += st.moved(m.stand(o.gauge), o)
 	}
 	for s := range m.rig.Supports {
 		if err := m.supportColumns(st, s, sets, f, x); err != nil {

@@ -154,6 +154,15 @@ func margins(rig *config.Rig) float64 {
 	return 10 * u
 }
 
+// stand is the stand that carries gauge g; a gauge on a bar is carried by the
+// beam.
+func (m *model) stand(g int) string {
+	if len(m.rig.Gauges[g].Bar) == 2 {
+		return ""
+	}
+	return m.rig.Gauges[g].Stand
+}
+
 // see is what gauge g reads of a line, its gain included.
 func (m *model) see(st *state, g int, s *beam.Solution, compliance []float64) float64 {
 	return st.gain[g] * m.look(st, g, s, func(i int) float64 { return compliance[i] * s.Reaction(i).Force })

@@ -97,7 +97,7 @@ func (m *model) solved(st *state, theta []float64) ([]float64, error) {
 		return nil, err
 	}
 	for r, o := range m.rows {
-		f[r] = m.see(st, o.gauge, lines[o.step], compliance) + st.moved(m.rig.Gauges[o.gauge].Stand, o)
+		f[r] = m.see(st, o.gauge, lines[o.step], compliance) + st.moved(m.stand(o.gauge), o)
 	}
 	return f, nil
 }
