@@ -83,8 +83,12 @@ func (d *Folder) Span() (first, last int64, ok bool) {
 			d.foreignSpan(f, note)
 		case f.index != nil:
 			for _, fr := range f.index.frames {
-				if fr.set && fr.last != 0 {
+				switch {
+				case fr.last == 0:
+				case fr.set:
 					note(fr.first, fr.last)
+				default: // the clock was not set, at least when it began
+					note(d.put(f, f.header.Clock, fr.first), d.put(f, f.index.last.clock, fr.last))
 				}
 			}
 		case ends < 2:
