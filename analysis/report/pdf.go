@@ -281,7 +281,7 @@ func (s *sheet) list(l List) {
 
 // leastHeight is how low a plot or photograph may be drawn, mm, so that it stays
 // on a page that has not quite the room for it and leaves no gap there.
-func leastHeight(h float64) float64 { return max(0.65*h, min(h, 45)) }
+func leastHeight(h float64) float64 { return max(0.55*h, min(h, 36)) }
 
 // room is the height for a plot or photograph of height h and its caption: what
 // is left on this page where that is enough, else h on the next one.
