@@ -28,7 +28,10 @@ func (r *run) sinkingIn(k int) *sinking {
 	if st.Full != 0 {
 		from += max(60*second, 3*nanos(r.spacing(from))) // the load is surely on by then
 	}
+	// Bins of a short run are narrower than the readings lie apart: one reading
+	// alone is no level.
 	width := history.BinWidth(r.h.First, r.h.Last)
+	width *= max(1, (nanos(2*r.spacing(from))+width-1)/width)
 	first := from/width + 1
 	n := int(st.To/width - first)
 	if n < leastBins {
@@ -39,15 +42,16 @@ func (r *run) sinkingIn(k int) *sinking {
 		s.t[i] = (first+int64(i))*width + width/2
 	}
 	for g := range r.gauges {
-		y := make([]float64, n)
-		for i := range y {
-			y[i] = math.NaN()
-		}
+		y, weight := make([]float64, n), make([]float64, n)
 		for _, p := range r.gauges[g].seq {
 			i := int(p.t/width - first)
 			if i >= 0 && i < n && !r.excluded(g, p.from, p.to+1) {
-				y[i] = p.y - r.shifted(g, p.t, from)
+				y[i] += float64(p.n) * (p.y - r.shifted(g, p.t, from))
+				weight[i] += float64(p.n)
 			}
+		}
+		for i := range y {
+			y[i] /= weight[i] // NaN where nothing was read
 		}
 		s.y = append(s.y, y)
 	}
