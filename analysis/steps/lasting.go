@@ -48,6 +48,26 @@ func (r *run) lasting() {
 	}
 }
 
+// whyUnseen says what may be wrong with a mark at t that no gauge answered. Where
+// nothing was read for long behind it, what came at once and what crept until
+// then cannot be told apart, and no change of load is taken from that.
+func (r *run) whyUnseen(t int64) string {
+	next := int64(math.MaxInt64)
+	for i := range r.gauges {
+		seq := r.gauges[i].seq
+		if k := sort.Search(len(seq), func(k int) bool { return seq[k].from > t }); k < len(seq) {
+			next = min(next, seq[k].from)
+		}
+	}
+	switch {
+	case next == math.MaxInt64:
+		return "no reading came behind it"
+	case next-t > r.near(t):
+		return fmt.Sprintf("the next reading came %s later, too late to tell the step from what crept meanwhile; read soon behind a change of load", lasted(seconds(next-t)))
+	}
+	return "wrong load, wrong time, or nothing hung?"
+}
+
 // lateMark is how far a mark may be off before it is worth a word, s.
 const lateMark = 15
 
@@ -61,7 +81,7 @@ func (r *run) finish() {
 		case s.Response == nil:
 			r.warn("step-shorter-than-sampling", -1, s.Marked, fmt.Sprintf("step %s began and ended between two readings of its neighbour's change: its own response cannot be told apart", s.Name))
 		case !*s.Response:
-			r.warn("mark-without-response", -1, s.Marked, fmt.Sprintf("step %s was marked, but no gauge shows it: wrong load, wrong time, or nothing hung?", s.Name))
+			r.warn("mark-without-response", -1, s.Marked, fmt.Sprintf("step %s was marked, but no gauge shows it: %s", s.Name, r.whyUnseen(s.Marked)))
 		case s.Found != 0 && math.Abs(s.OffsetS) > lateMark:
 			word := "late"
 			if s.OffsetS < 0 {
