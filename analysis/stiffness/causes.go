@@ -13,8 +13,10 @@ type cause struct {
 	name, kind, unit, source string
 	u, dof                   float64
 	rectangular              bool
-	shear                    bool // the shear's prior
-	move                     func(*state, float64)
+	// oneSided marks a cause that must not go below the value it has.
+	oneSided bool
+	shear    bool // the shear's prior
+	move     func(*state, float64)
 }
 
 // priors are the assumed ratios E/G: timber 16 within 30 %, all else 2.6
@@ -25,6 +27,12 @@ const (
 	otherRatio, otherSpread   = 2.6, 0.20
 	statedSpread              = 0.10
 )
+
+// softestSupport bounds how much a support of which nothing is known yields,
+// mm/N: wood and plastic on rollers, packing and stands of steel lie between a
+// tenth of it and this (common practice). The mean square of what lies evenly
+// between nothing and it is a third of its square.
+const softestSupport = 1e-3
 
 // causes lists every stated error of the rig and the loads, in a fixed order.
 func causes(in *Input, m *model, gravity Value, gravitySource string) []cause {
@@ -44,7 +52,18 @@ func causes(in *Input, m *model, gravity Value, gravitySource string) []cause {
 	loadCauses(in, m, add)
 	for i, s := range in.Rig.Supports {
 		add("place of support "+s.Name, "B", "mm", "stated in the rig file", s.At.U, func(st *state, v float64) { st.support[i] += v })
-		if s.Compliance != nil && !m.fitted(i) {
+		switch {
+		case m.fitted(i):
+		case s.Compliance == nil && s.Kind != "clamp":
+			out = append(out, cause{name: "yielding of support " + s.Name, kind: "B", unit: "mm/N", rectangular: true, oneSided: true, u: softestSupport / math.Sqrt(3),
+				source: fmt.Sprintf("neither measured nor stated: none taken off, and anything to %g\u202fmm/N allowed for", softestSupport),
+				move: func(st *state, v float64) {
+					if !m.determinate {
+						v = max(v, 0) // only statics allows a support that pushes back
+					}
+					st.given[i] += v
+				}})
+		case s.Compliance != nil:
 			add("compliance of support "+s.Name, "B", "mm/N", "stated in the rig file", s.Compliance.U, func(st *state, v float64) { st.given[i] += v })
 		}
 	}

@@ -262,3 +262,28 @@ func TestTwistBound(t *testing.T) {
 		t.Error("a section without torsion is not told of")
 	}
 }
+
+// What nobody knows of a support makes the modulus less sure, by what up to a
+// thousandth of a millimetre per newton there would do to it.
+func TestUnseenSupportsWidenTheModulus(t *testing.T) {
+	p := newPlank()
+	seen := mustCompute(t, p.ladder())
+	in := p.ladder()
+	without(&in, "s1")
+	without(&in, "s2")
+	blind := mustCompute(t, in)
+	var lines int
+	var theirs float64
+	for _, l := range blind.Budget {
+		if strings.HasPrefix(l.Input, "yielding of support") {
+			lines, theirs = lines+1, theirs+l.Sensitivity*l.U*l.Sensitivity*l.U
+		}
+	}
+	if lines != 2 || blind.Modulus.U <= seen.Modulus.U || blind.Modulus.U*blind.Modulus.U < theirs {
+		t.Errorf("u of E with supports seen %g, unseen %g, of which %d lines bring %g", seen.Modulus.U, blind.Modulus.U, lines, math.Sqrt(theirs))
+	}
+	// The true supports yield by 2.5e-4 mm/N, which is left in.
+	if d := math.Abs(blind.Modulus.Value - seen.Modulus.Value); d > blind.Modulus.U95 {
+		t.Errorf("E without eyes on the supports is off by %g, U95 %g", d, blind.Modulus.U95)
+	}
+}

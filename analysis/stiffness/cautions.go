@@ -119,9 +119,9 @@ func (e *Estimate) supportCautions() {
 	switch {
 	case len(blind) == 0:
 	case len(blind) == len(m.rig.Supports):
-		e.warn("supports-unmeasured", "", "no gauge watches a support and no compliance is stated: sags are not corrected for yielding supports")
+		e.warn("supports-unmeasured", "", "no gauge watches a support and no compliance is stated: sags are not corrected for yielding supports, and the modulus's uncertainty allows for up to %g\u202fmm/N each; a gauge over each support, or its stated compliance, would tell", softestSupport)
 	default:
-		e.warn("half-corrected", "", "support %s has no gauge and no stated compliance: sags are corrected for the other supports only, and at mid-span half of this one's yielding is left in", strings.Join(blind, ", "))
+		e.warn("half-corrected", "", "support %s has no gauge and no stated compliance: sags are corrected for the other supports only, and at mid-span half of this one's yielding is left in; the modulus's uncertainty allows for up to %g\u202fmm/N of it", strings.Join(blind, ", "), softestSupport)
 	}
 	if b := 1.5 * frictionCoefficient * m.sec.Depth / span(m.rig); len(m.rig.Supports) >= 2 && b >= 0.001 {
 		e.warn("friction-bound", "", "fixed supports with a friction of %g would hide up to %.1f %% of the sag; rollers or a loading and unloading loop would tell", frictionCoefficient, 100*b)

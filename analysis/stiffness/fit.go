@@ -194,9 +194,13 @@ func (f *fitted) shared() error {
 // moved is the change of the increments per unit of one cause.
 func (f *fitted) moved(c cause) ([]float64, error) {
 	h := c.u / 10
-	up, down := f.st.clone(), f.st.clone()
+	up, down, width := f.st.clone(), f.st.clone(), 2*h
 	c.move(up, h)
-	c.move(down, -h)
+	if c.oneSided {
+		width = h
+	} else {
+		c.move(down, -h)
+	}
 	hi, _, err := f.m.evaluate(up, f.theta)
 	if err != nil {
 		return nil, fmt.Errorf("%s, moved by a tenth of its uncertainty: %w", c.name, err)
@@ -206,7 +210,7 @@ func (f *fitted) moved(c cause) ([]float64, error) {
 		return nil, fmt.Errorf("%s, moved by a tenth of its uncertainty: %w", c.name, err)
 	}
 	for r := range hi {
-		hi[r] = (hi[r] - lo[r]) / (2 * h)
+		hi[r] = (hi[r] - lo[r]) / width
 	}
 	return hi, nil
 }
