@@ -117,7 +117,7 @@ func (t *creepTask) series(h *history.History, f *steps.Findings, g int, share [
 // nobody can say whether the change was complete.
 func (t *creepTask) inDoubt(f *steps.Findings, at int64) bool {
 	for _, c := range f.Loads {
-		if u := int64(4 * f.Steps[c.Step].StartU * 1e9); u > 0 && at > c.Full-int64(c.RampS*1e9)-u && at < c.Full+u {
+		if u := int64(2 * f.Steps[c.Step].StartU * 1e9); u > 0 && at > c.Full-int64(c.RampS*1e9)-u && at < c.Full+u {
 			return true
 		}
 	}

@@ -63,8 +63,9 @@ func (r *run) time(c *cluster, mark int64) timing {
 		return r.coarse(c, mark)
 	}
 	lo, hi := s[first-1].t, s[first].t
-	if gap := seconds(hi - lo); gap > max(blind, 5*r.spacing(lo)) && s[first].z > 0.8 {
-		// All of it happened while nothing was read.
+	if gap := seconds(hi - lo); gap > blind && s[first].z > 0.8 {
+		// All of it happened while nothing was read: what is missing of the level
+		// read later is creep.
 		return r.coarse(&cluster{lo: lo, hi: hi}, mark)
 	}
 	after := r.aftermath(s, c, hi)
