@@ -62,6 +62,13 @@ func ThreePoint(l, b, h, slope float64) float64 {
 	return l * l * l * slope / (4 * b * h * h * h)
 }
 
+// D790LargeSpan is ASTM D790's factor on the stress 3 P L / (2 b d^2) of a
+// three-point test that sags by D more than a tenth of its span L:
+// 1 + 6 (D/L)^2 - 4 (d/L)(D/L), d the depth (polynomial from memory).
+func D790LargeSpan(sag, d, l float64) float64 {
+	return 1 + 6*(sag/l)*(sag/l) - 4*(d/l)*(sag/l)
+}
+
 // netSag is a gauge's sag net of support movement, summed over steps, with
 // its uncertainty: a linear form on all readings, since they give the
 // supports' movement too.

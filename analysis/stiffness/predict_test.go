@@ -131,6 +131,31 @@ func TestPredictWarns(t *testing.T) {
 	}
 }
 
+// ASTM D790's factor on the stress belongs to one load amid a thin strip that
+// sags by more than a tenth of its span, and to nothing else.
+func TestPredictsLargeSpanStress(t *testing.T) {
+	strip := func(kg float64) *Prediction {
+		r := demoRig()
+		r.Specimen.Section.Depth = lengths(10)
+		r.Specimen.Mass = nil
+		at := length(1350, 0.5)
+		r.Loads = []config.Load{{Name: "a", At: &at}}
+		r.Plan = r.Plan[:2]
+		r.Plan[1].Set = []config.SetWeight{{Load: "a", Weight: config.Weight{Mass: &config.Mass{Quantity: config.Quantity{Value: kg}}}}}
+		p, err := Predict(r)
+		if err != nil {
+			t.Fatal(err)
+		}
+		return p
+	}
+	small, large := strip(1).Steps[1], strip(20).Steps[1]
+	sag := large.Greatest.Value
+	if small.Greatest.Value > 210 || sag < 210 {
+		t.Fatalf("sags of %g and %g mm do not lie on either side of a tenth of 2100 mm", small.Greatest.Value, sag)
+	}
+	relative(t, "stress of the greater load over twenty times the smaller", large.Stress/(20*small.Stress), 1+6*(sag/2100)*(sag/2100)-4*(10./2100)*(sag/2100), 1e-9)
+}
+
 func TestPredictUplift(t *testing.T) {
 	r := demoRig()
 	r.Supports = append(r.Supports, config.Support{Name: "C", At: length(2600, 0)})

@@ -100,6 +100,9 @@ func TestStandardsFormulas(t *testing.T) {
 			FN   float64 `json:"F_N"`
 			S    string  `json:"s_t_mm"`
 			Et   string  `json:"E_t_MPa"`
+			DL   string  `json:"D_over_L"`
+			HL   string  `json:"d_over_L"`
+			K    string  `json:"factor"`
 		} `json:"numeric_cases"`
 	}
 	raw, err := os.ReadFile("testdata/standards_formulas.json")
@@ -139,14 +142,16 @@ func TestStandardsFormulas(t *testing.T) {
 			got, want = ThreePoint(c.L, c.B, c.H, c.FN/ratio(c.S)), c.Et
 		case "D198 third point, P total":
 			got, want = D198TwoPoint(c.L/3, c.L, c.B, c.H, c.P, ratio(c.D)), c.EApp
+		case "D790 large-span factor":
+			got, want = D790LargeSpan(ratio(c.DL), ratio(c.HL), 1), c.K
 		default:
 			continue
 		}
 		done++
 		relative(t, c.Case, got, ratio(want), 1e-12)
 	}
-	if done != 5 {
-		t.Errorf("%d cases checked, want 5", done)
+	if done != 6 {
+		t.Errorf("%d cases checked, want 6", done)
 	}
 	relative(t, "ASTM D198 shear-free equals EN 408 local", D198ShearFree(600, 500, 50, 100, 1000, 9.0/40), 10000, 1e-12)
 }

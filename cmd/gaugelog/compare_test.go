@@ -26,7 +26,7 @@ func foreignRun(t *testing.T, dir, specimen string, span, kg float64) string {
 	rig := fmt.Sprintf(`title: board %[1]s
 specimen: {name: %[1]s, material: timber, section: {shape: rectangle, width: 100 mm, depth: 40 mm, u: 0.02 mm}, from: -100 mm, length: %[3]g mm}
 gravity: {latitude: 55.9, height: 60 m}
-supports: [{name: left, at: 0 mm}, {name: right, at: %[2]g mm}]
+supports: [{name: left, at: 0 mm, compliance: 0.0000000(5) mm/N}, {name: right, at: %[2]g mm, compliance: 0.0000000(5) mm/N}]
 gauges: [{name: mid, at: %[4]g mm, sense: down, resolution: 0.001 mm, u: 0.001 mm, serial_number: "7", calibration: {gain: 1, u_gain: 0.001, date: 2026-01-02, due: 2028-01-02}}]
 loads: [{name: pan, at: %[4]g mm}]
 read: {initial_after: 60 s, creep_gauge: mid}
