@@ -4,10 +4,8 @@ import (
 	"context"
 	"fmt"
 	"os"
-	"runtime"
+	"slices"
 	"time"
-
-	"golang.org/x/sync/errgroup"
 
 	"gaugelog/analysis/glance"
 	"gaugelog/config"
@@ -49,46 +47,93 @@ func askServer(ctx context.Context, address string, f rigsFlags) ([]rigRow, erro
 	if len(list) == 0 {
 		return nil, wrongf("see that the address names the right database, and that a run was forwarded to it", "%s holds no run", source)
 	}
-	rows := make([]rigRow, len(list))
-	group, ctx := errgroup.WithContext(ctx)
-	group.SetLimit(2 * runtime.GOMAXPROCS(0))
-	for i, st := range list {
-		group.Go(func() error { return rows[i].ask(ctx, source, st, given[st.Rig], time.Now()) })
-	}
-	return rows, group.Wait()
+	return standingRows(ctx, source, list, given)
 }
 
-// ask fills in the row of a run that a server holds. given is its rig file,
-// nil where none was named; what was forwarded of it does as well.
-func (r *rigRow) ask(ctx context.Context, source *fetch.Source, st *fetch.Standing, given *config.Rig, now time.Time) error {
-	rig := given
-	if rig == nil && st.Brief != "" {
-		var err error
-		if rig, err = config.ParseBrief("rig file of "+st.Run, []byte(st.Brief)); err != nil {
-			return fmt.Errorf("%s: %w", source, err)
+// standingRows sums up runs that a server holds. given are rig files by the
+// name of their specimen; what was forwarded of one does as well. What medians
+// a row needs is found out first, so that all can be asked for together.
+func standingRows(ctx context.Context, source *fetch.Source, list []*fetch.Standing, given map[string]*config.Rig) ([]rigRow, error) {
+	rigs, asks := make([]*config.Rig, len(list)), make([]fetch.Ask, len(list))
+	for i, st := range list {
+		asks[i].Run = st.Run
+		if rigs[i] = given[st.Rig]; rigs[i] == nil && st.Brief != "" {
+			var err error
+			if rigs[i], err = config.ParseBrief("rig file of "+st.Run, []byte(st.Brief)); err != nil {
+				return nil, fmt.Errorf("%s: %w", source, err)
+			}
+		}
+		if _, err := glance.Sum(rigs[i], inputOf(st, func(_ []string, spans []segment.Interval) ([]map[string]glance.Median, error) {
+			asks[i].Spans = spans
+			return make([]map[string]glance.Median, len(spans)), nil
+		})); err != nil {
+			return nil, wrongInput(err)
 		}
 	}
-	in := glance.Input{Marks: st.Marks, Events: st.Events, First: st.First, Last: st.Last,
-		Medians: func(gauges []string, spans []segment.Interval) ([]map[string]glance.Median, error) {
-			found, err := source.Medians(ctx, st.Run, spans)
-			return middles(found, gauges, spans, st), err
-		}}
-	s, err := glance.Sum(rig, in)
+	found, err := source.Medians(ctx, widened(asks))
 	if err != nil {
-		return wrongInput(err)
+		return nil, wrongInput(err)
 	}
-	*r = rigRow{Server: source.String(), Run: st.Run, SenseKnown: rig != nil}
-	r.fill(s)
-	r.Specimen = st.Rig
+	rows := make([]rigRow, len(list))
+	for i, st := range list {
+		s, err := glance.Sum(rigs[i], inputOf(st, func(gauges []string, spans []segment.Interval) ([]map[string]glance.Median, error) {
+			return middles(found[i], gauges, spans, st), nil
+		}))
+		if err != nil {
+			return nil, wrongInput(err)
+		}
+		rows[i] = rigRow{Server: source.String(), Run: st.Run, SenseKnown: rigs[i] != nil}
+		rows[i].fill(s)
+		rows[i].Specimen = st.Rig
+		rows[i].State = stateOf(s, time.Now())
+	}
+	return rows, nil
+}
+
+func inputOf(st *fetch.Standing, medians func([]string, []segment.Interval) ([]map[string]glance.Median, error)) glance.Input {
+	return glance.Input{Marks: st.Marks, Events: st.Events, First: st.First, Last: st.Last, Medians: medians}
+}
+
+// stateOf is how a run on a server stands.
+func stateOf(s *glance.Summary, now time.Time) string {
 	switch {
 	case s.Ended:
-		r.State = "ended"
+		return "ended"
 	case now.Sub(time.Unix(0, s.Last)) < sendingWithin:
-		r.State = "sending"
-	default:
-		r.State = "silent"
+		return "sending"
 	}
-	return nil
+	return "silent"
+}
+
+// grid is what spans of several runs are widened to, so that they can be asked
+// for together.
+const grid = int64(time.Minute)
+
+// widened widens spans of ten minutes by up to a minute at either end where
+// several runs then share them: rigs that are being recorded all end now.
+func widened(asks []fetch.Ask) []fetch.Ask {
+	wide := func(s segment.Interval) segment.Interval {
+		if s.To-s.From < 9*grid {
+			return s // a load was hung not long before it
+		}
+		return segment.Interval{From: s.From / grid * grid, To: (s.To + grid - 1) / grid * grid}
+	}
+	alike := map[segment.Interval]int{}
+	for _, a := range asks {
+		for _, s := range a.Spans[:min(2, len(a.Spans))] { // the third ends just before a load was hung
+			alike[wide(s)]++
+		}
+	}
+	out := make([]fetch.Ask, len(asks))
+	for i, a := range asks {
+		out[i] = fetch.Ask{Run: a.Run, Spans: slices.Clone(a.Spans)}
+		for j := range min(2, len(a.Spans)) {
+			if w := wide(a.Spans[j]); alike[w] > 2 {
+				out[i].Spans[j] = w
+			}
+		}
+	}
+	return out
 }
 
 // middles gives a server's medians the middle of their span, within the run, as

@@ -30,7 +30,9 @@ var told = []string{"alarm-raised", "alarm-over", "started", "stopped"}
 // stander is what a reader of a server tells of all its runs.
 type stander interface {
 	standings(ctx context.Context) ([]*Standing, error)
-	medians(ctx context.Context, run string, spans []segment.Interval) ([]map[string]float64, error)
+	// medians hands over the median of each gauge's indications in every window
+	// that has one.
+	medians(ctx context.Context, windows []window, take func(w int, run, gauge string, mm float64)) error
 }
 
 // Standings tells of all runs that a server holds, in order of rig and run, by
@@ -49,12 +51,6 @@ func (s *Source) Standings(ctx context.Context) ([]*Standing, error) {
 		return strings.Compare(a.Run, b.Run)
 	})
 	return list, err
-}
-
-// Medians are those of each gauge's indications of a run in each of the spans,
-// mm, worked out by the server.
-func (s *Source) Medians(ctx context.Context, run string, spans []segment.Interval) ([]map[string]float64, error) {
-	return s.reader().(stander).medians(ctx, run, spans)
 }
 
 // Close lets go of connections.

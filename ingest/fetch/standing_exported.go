@@ -2,6 +2,7 @@ package fetch
 
 import (
 	"bufio"
+	"cmp"
 	"context"
 	"encoding/json"
 	"errors"
@@ -12,8 +13,6 @@ import (
 	"strconv"
 	"strings"
 	"time"
-
-	"gaugelog/ingest/segment"
 )
 
 // vector is an answer to an instant query.
@@ -103,15 +102,17 @@ func (e *exported) entries(ctx context.Context, measurement, match string, all s
 	return nil
 }
 
-func (e *exported) medians(ctx context.Context, run string, spans []segment.Interval) ([]map[string]float64, error) {
-	out := make([]map[string]float64, len(spans))
-	for i, s := range spans {
-		out[i] = map[string]float64{}
-		from, to := s.From/1e6, s.To/1e6 // the server's window is open at its beginning
-		query := fmt.Sprintf(`quantile_over_time(0.5, indication_mm{run=%s}[%dms])`, strconv.Quote(run), to-from+1)
-		if err := e.ask(ctx, query, to, func(m map[string]string, v float64) { out[i][m["gauge"]] = v }); err != nil {
-			return nil, err
+func (e *exported) medians(ctx context.Context, windows []window, take func(w int, run, gauge string, mm float64)) error {
+	for i, w := range windows {
+		of := ""
+		if w.run != "" {
+			of = "{run=" + strconv.Quote(w.run) + "}"
+		}
+		from, to := w.span.From/1e6, w.span.To/1e6 // the server's window is open at its beginning
+		query := fmt.Sprintf(`quantile_over_time(0.5, indication_mm%s[%dms])`, of, to-from+1)
+		if err := e.ask(ctx, query, to, func(m map[string]string, v float64) { take(i, cmp.Or(w.run, m["run"]), m["gauge"], v) }); err != nil {
+			return err
 		}
 	}
-	return out, nil
+	return nil
 }

@@ -1,13 +1,12 @@
 package fetch
 
 import (
+	"cmp"
 	"context"
 	"encoding/json"
 	"fmt"
 	"strconv"
 	"strings"
-
-	"gaugelog/ingest/segment"
 )
 
 const byRun = ` GROUP BY "run","rig"`
@@ -80,16 +79,18 @@ func (q *queried) entries(ctx context.Context, measurement string, all standings
 	})
 }
 
-func (q *queried) medians(ctx context.Context, run string, spans []segment.Interval) ([]map[string]float64, error) {
-	out := make([]map[string]float64, len(spans))
+func (q *queried) medians(ctx context.Context, windows []window, take func(w int, run, gauge string, mm float64)) error {
 	var query strings.Builder
-	for i, s := range spans {
-		out[i] = map[string]float64{}
-		fmt.Fprintf(&query, `SELECT median("mm") FROM "indication" WHERE "run" = %s AND time >= %d AND time <= %d GROUP BY "gauge";`, quoted(run), s.From, s.To)
+	for _, w := range windows {
+		of, by := "", `"run",`
+		if w.run != "" {
+			of, by = `"run" = `+quoted(w.run)+" AND ", ""
+		}
+		fmt.Fprintf(&query, `SELECT median("mm") FROM "indication" WHERE %stime >= %d AND time <= %d GROUP BY %s"gauge";`, of, w.span.From, w.span.To, by)
 	}
-	return out, q.askAll(ctx, query.String(), len(spans), func(s *series) error {
+	return q.askAll(ctx, query.String(), len(windows), func(s *series) error {
 		for _, row := range s.Values {
-			if len(row) != 2 || s.statement < 0 || s.statement >= len(out) {
+			if len(row) != 2 || s.statement < 0 || s.statement >= len(windows) {
 				return fmt.Errorf("%s: %v of statement %d was not asked for", q.s, row, s.statement)
 			}
 			n, ok := row[1].(json.Number)
@@ -100,7 +101,7 @@ func (q *queried) medians(ctx context.Context, run string, spans []segment.Inter
 			if err != nil {
 				return fmt.Errorf("%s: %w", q.s, err)
 			}
-			out[s.statement][s.Tags["gauge"]] = v
+			take(s.statement, cmp.Or(windows[s.statement].run, s.Tags["run"]), s.Tags["gauge"], v)
 		}
 		return nil
 	})

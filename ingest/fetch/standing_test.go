@@ -3,6 +3,7 @@ package fetch
 import (
 	"fmt"
 	"net/http"
+	"slices"
 	"strings"
 	"testing"
 
@@ -80,8 +81,8 @@ func TestStandings(t *testing.T) {
 		t.Errorf("%d queries", len(s.asked))
 	}
 	spans := []segment.Interval{{From: 1, To: 2}, {From: 3, To: 4}}
-	m, err := source.Medians(t.Context(), "r-1", spans)
-	if err != nil || len(m) != 2 || m[0]["mid"] != 1.25 || len(m[1]) != 0 {
+	m, err := source.Medians(t.Context(), []Ask{{"r-1", spans}})
+	if err != nil || len(m[0]) != 2 || m[0][0]["mid"] != 1.25 || len(m[0][1]) != 0 {
 		t.Errorf("%v, %v", m, err)
 	}
 	if q := s.asked[len(s.asked)-1].URL.Query().Get("q"); !strings.Contains(q, `time >= 1 AND time <= 2 `) || !strings.Contains(q, `time >= 3 AND time <= 4 `) {
@@ -106,7 +107,7 @@ func TestStandingsGoWrong(t *testing.T) {
 		}
 		_, err = source.Standings(t.Context())
 		if err == nil {
-			_, err = source.Medians(t.Context(), "r-1", []segment.Interval{{From: 1, To: 2}, {From: 3, To: 4}})
+			_, err = source.Medians(t.Context(), []Ask{{"r-1", []segment.Interval{{From: 1, To: 2}, {From: 3, To: 4}}}})
 		}
 		if err == nil || !strings.Contains(err.Error(), c.want) {
 			t.Errorf("%s: %v, want %q", c.query, err, c.want)
@@ -150,11 +151,52 @@ func TestStandingsOfNumbers(t *testing.T) {
 	if st.First != 1790000000002e6 || st.Last != 1790000009001e6 || len(st.Marks) != 1 || st.Marks[0].Time != 1790000004e9 || len(st.Events) != 1 {
 		t.Errorf("%+v", st)
 	}
-	m, err := source.Medians(t.Context(), "r-1", []segment.Interval{{From: 1790000000e9, To: 1790000600e9}})
-	if err != nil || m[0]["mid"] != 1.5 {
+	m, err := source.Medians(t.Context(), []Ask{{"r-1", []segment.Interval{{From: 1790000000e9, To: 1790000600e9}}}})
+	if err != nil || m[0][0]["mid"] != 1.5 {
 		t.Errorf("%v, %v", m, err)
 	}
 	if at := s.asked[len(s.asked)-1].URL.Query().Get("time"); at != "1790000600.000" {
 		t.Errorf("asked at %s", at)
+	}
+}
+
+// TestSharedWindows: a span of three runs is asked for once, others run by run,
+// and every median goes where it was asked for.
+func TestSharedWindows(t *testing.T) {
+	now, own := segment.Interval{From: 1, To: 2}, segment.Interval{From: 5, To: 6}
+	asks := []Ask{{"a", []segment.Interval{now, {From: 3, To: 4}}}, {"b", []segment.Interval{now}}, {"c", []segment.Interval{own, now}}}
+	windows, targets := windowsOf(asks)
+	want := []window{{"", now}, {"a", segment.Interval{From: 3, To: 4}}, {"c", own}}
+	if !slices.Equal(windows, want) || !slices.Equal(targets[0], []target{{0, 0}, {1, 0}, {2, 1}}) || !slices.Equal(targets[2], []target{{2, 0}}) {
+		t.Fatalf("%v for %v", windows, targets)
+	}
+	s := serve(t, func(_ http.ResponseWriter, r *http.Request) string {
+		var answers []string
+		for i, q := range strings.Split(strings.TrimSuffix(r.URL.Query().Get("q"), ";"), ";") {
+			var series []string
+			for n, run := range []string{"a", "b", "c", "stranger"} {
+				if strings.Contains(q, `"run" =`) && !strings.Contains(q, `'`+run+`'`) {
+					continue
+				}
+				series = append(series, fmt.Sprintf(`{"name":"indication","tags":{"run":%q,"gauge":"mid"},"columns":["time","median"],"values":[[0,%d.%d]]}`, run, n, i))
+			}
+			answers = append(answers, fmt.Sprintf(`{"statement_id":%d,"series":[%s]}`, i, strings.Join(series, ",")))
+		}
+		return `{"results":[` + strings.Join(answers, ",") + `]}`
+	})
+	source, err := ParseSource(s.URL+"/query?db=lab", "", false)
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer source.Close()
+	m, err := source.Medians(t.Context(), asks)
+	if err != nil {
+		t.Fatal(err)
+	}
+	if m[0][0]["mid"] != 0.0 || m[0][1]["mid"] != 0.1 || m[1][0]["mid"] != 1.0 || m[2][0]["mid"] != 2.2 || m[2][1]["mid"] != 2.0 {
+		t.Errorf("%v", m)
+	}
+	if len(s.asked) != 1 {
+		t.Errorf("%d requests", len(s.asked))
 	}
 }
