@@ -21,7 +21,8 @@ func driftOf(h *history.History, t *creepTask, a *creep.Analysis, soak []Soak) D
 			what := t.record[n.Ambient]
 			unit := map[surrounding]string{ofTemperature: "mm/K", ofHumidity: "mm/%"}[what]
 			term := AmbientTerm{Gauge: name, Coefficient: quantity(n.Value, n.U, unit)}
-			if n.Ambient < len(a.Best.Lags) {
+			// A lag that ran to its bound, as it does where nothing answers, is no figure.
+			if n.Ambient < len(a.Best.Lags) && !a.Best.Lags[n.Ambient].AtBound {
 				lag := quantity(a.Best.Lags[n.Ambient].Value, a.Best.Lags[n.Ambient].U, "h")
 				term.LagH = &lag
 			}

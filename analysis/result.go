@@ -222,7 +222,8 @@ type GaugeDrift struct {
 type AmbientTerm struct {
 	Gauge       string `json:"gauge"`
 	Coefficient Q      `json:"coefficient"`
-	LagH        *Q     `json:"lag_h,omitempty"`
+	// LagH is absent where the search for it ran to its bound.
+	LagH *Q `json:"lag_h,omitempty"`
 }
 
 // Support is how far a support went down.

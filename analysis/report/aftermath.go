@@ -236,7 +236,7 @@ func (b *builder) surroundings() Section {
 
 func (b *builder) lag(d analysis.AmbientTerm) string {
 	if d.LagH == nil {
-		return ""
+		return "not to be told: at its bound"
 	}
 	return b.with(d.LagH)
 }
