@@ -44,6 +44,9 @@ says so. Readings whose clock was never set are held back until it is known. The
 recording is never touched. With the readings goes what "gaugelog rigs" needs of the
 rig file: names, senses, gains, the limit on sag and the plan, nothing else of it.
 
+An https server's certificate must be one that this machine trusts; the certificate of
+a laboratory's own authority is named by the variable SSL_CERT_FILE.
+
 --follow goes on until Ctrl-C, so that a run is sent while it is recorded.`,
 		Example: `  gaugelog forward runs/first --to 'http://lab:8086/write?db=sag' --follow
   gaugelog forward runs/first --to 'https://lab/api/v2/write?org=lab&bucket=sag' --token-file token`,
