@@ -109,6 +109,9 @@ func TestReportInUSUnits(t *testing.T) {
 // Every format is written beside the page, whole, and the same again; json is
 // what analyse prints.
 func TestReportFormats(t *testing.T) {
+	if testing.Short() {
+		t.Skip("many reports")
+	}
 	dir, into := demoRun(t), t.TempDir()
 	write := func(format, name string, more ...string) []byte {
 		t.Helper()
