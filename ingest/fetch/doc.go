@@ -10,7 +10,8 @@
 // What that costs, measured on the demo's run by TestSurviveFromServers
 // (go test -tags campaign -run SurviveFromServers ./cmd/gaugelog): by InfluxQL
 // every figure of the analysis is the folder's; from whole milliseconds every
-// quantity lies within a fiftieth of its standard uncertainty (the forecasts of
+// quantity lies within a fiftieth of its standard uncertainty, a gauge's own drift
+// within a twentieth (the forecasts of
 // single laws and the lines of the budget left out: laws that fit poorly moved
 // by 0.2 to 0.9 of theirs). The boot ids of
 // the recording are no points, so that of a gap is said that the recording broke
