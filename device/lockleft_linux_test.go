@@ -1,6 +1,7 @@
 package device
 
 import (
+	"errors"
 	"os"
 	"os/exec"
 	"path/filepath"
@@ -60,7 +61,11 @@ func TestLockLeftByAnother(t *testing.T) {
 		c := exec.Command(program, "-test.run", "^TestLockLeftByAnother$", "-test.v")
 		c.Dir, c.Env = under, append(os.Environ(), "GAUGELOG_LOCK_IN="+dir, "GOCOVERDIR=")
 		c.SysProcAttr = &syscall.SysProcAttr{Credential: &syscall.Credential{Uid: 65534, Gid: 65534}}
-		if out, err := c.CombinedOutput(); err != nil || !strings.Contains(string(out), "PASS: TestLockLeftByAnother") {
+		out, err := c.CombinedOutput()
+		if errors.Is(err, syscall.ENOEXEC) {
+			t.Skip("this program runs under an emulator that starts no other: ", err)
+		}
+		if err != nil || !strings.Contains(string(out), "PASS: TestLockLeftByAnother") {
 			t.Errorf("mode %o: %v\n%s", mode, err, out)
 		}
 	}
